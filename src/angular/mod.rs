@@ -1,0 +1,1 @@
+//! Exact angular algebra: half-integers, Wigner symbols, spherical components.

@@ -1,0 +1,1 @@
+//! What a person runs: arguments, prompt, batch, files, interrupts. The only folder that touches the outside world.

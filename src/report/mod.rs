@@ -1,0 +1,1 @@
+//! What is shown: rendered entries, records, diagnostics as text.

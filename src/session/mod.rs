@@ -1,0 +1,1 @@
+//! Entries, names, the dependency graph, records, replay, the saved form.

@@ -1,0 +1,1 @@
+//! What an expression means, with no numbers: names resolved, operator algebra, expansion, formula text.
