@@ -3,5 +3,7 @@
 //! Nothing here knows of spans, systems or sessions.
 
 pub mod effort;
+pub mod surd;
 
 pub use effort::{Effort, Interrupted};
+pub use surd::Surd;
