@@ -1,1 +1,10 @@
 //! Entries, names, the dependency graph, records, replay, the saved form.
+//!
+//! A session has no hidden state: what an entry gives depends only on the text of the entries above it. Binding a name again at the prompt revises
+//! the entry that bound it, and every entry that depends on it is evaluated again.
+
+pub mod files;
+pub mod outcome;
+
+pub use files::{DataFiles, FileProblem, NoFiles};
+pub use outcome::{Answer, AnswerKind, Outcome, Report};

@@ -4,6 +4,8 @@
 //! the rest, block by block: one exact (where functions are represented exactly), one for every numeric [`Level`]. A backend hands out opaque
 //! [`BlockKet`]s, so that `sums` walks a chain the same way for every atom. Nothing here knows of the session language.
 
+mod number;
+
 use crate::num::{Effort, Interrupted, Surd};
 use rug::{Complex, Rational};
 use std::any::Any;
