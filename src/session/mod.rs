@@ -17,4 +17,4 @@ mod words;
 pub use files::{DataFiles, FileProblem, NoFiles};
 pub use outcome::{Answer, AnswerKind, Outcome, Report};
 pub use replay::{ReplayEntry, ReplayReport, ReplayVerdict};
-pub use notebook::{Entered, EntryView, HEADER, Refusal, Session};
+pub use notebook::{Entered, EntryView, Refusal, Session};

@@ -6,15 +6,11 @@ use super::files::DataFiles;
 use super::outcome::{Outcome, Report};
 use super::scope::{Effect, Scope};
 use crate::lang::diagnostic::Diagnostic;
-use crate::lang::file::{Item as TextItem, parse_session};
-use crate::lang::parser::parse_entry;
+use crate::lang::file::{EntryText, Item as TextItem, Line, RecordLine, SessionText, parse_session};
 use crate::lang::tree::{Entry, EntryKind, Name, Span};
 use crate::num::Effort;
 use std::collections::BTreeSet;
 use std::sync::Arc;
-
-/// First line of every session file.
-pub const HEADER: &str = "ketwork session 1";
 
 /// A notebook: entries with their prose, records and results.
 pub struct Session {
@@ -25,18 +21,15 @@ pub struct Session {
 }
 
 enum Item {
-    /// A comment-only line or a blank one, as written.
-    Prose(String),
+    /// Header, provenance, a comment-only line or a blank one, as written.
+    Other(TextItem),
     Entry(Box<EntryState>),
 }
 
 struct EntryState {
     /// Stays the same when entries above come and go; places in terms refer to it.
     identity: u64,
-    text: String,
-    comment: Option<String>,
-    tree: Result<Entry, Vec<Diagnostic>>,
-    recorded: Vec<String>,
+    written: EntryText,
     outcome: Option<Outcome>,
     effect: Option<Effect>,
     words: BTreeSet<String>,
@@ -48,11 +41,13 @@ pub struct EntryView<'s> {
     pub text: &'s str,
     pub outcome: Option<&'s Outcome>,
     /// Record lines found in the file.
-    pub recorded: &'s [String],
+    pub recorded: Vec<&'s str>,
     /// Comment and blank lines between the entry before and this one.
     pub prose_before: Vec<&'s str>,
-    /// The comment behind the entry, with its `#`.
+    /// The comment behind the entry, without its `#`.
     pub comment: Option<&'s str>,
+    /// Where the text stands in the file it was read from.
+    pub span: Span,
 }
 
 /// What came of adding or changing an entry.
@@ -78,25 +73,16 @@ fn list(numbers: &[usize]) -> String {
 }
 
 impl EntryState {
-    fn new(identity: u64, text: &str, tree: Result<Entry, Vec<Diagnostic>>) -> Self {
-        let words = match &tree {
+    fn new(identity: u64, written: EntryText) -> Self {
+        let words = match &written.parsed {
             Ok(entry) => words_of(&entry.to_string()),
             Err(_) => BTreeSet::new(),
         };
-        EntryState {
-            identity,
-            text: text.to_string(),
-            comment: None,
-            tree,
-            recorded: Vec::new(),
-            outcome: None,
-            effect: None,
-            words,
-        }
+        EntryState { identity, written, outcome: None, effect: None, words }
     }
 
     fn binds(&self) -> Option<&Name> {
-        self.tree.as_ref().ok().and_then(bound_name)
+        self.written.parsed.as_ref().ok().and_then(bound_name)
     }
 
     fn forget(&mut self) {
@@ -127,7 +113,8 @@ fn words_of(text: &str) -> BTreeSet<String> {
 impl Session {
     /// An empty session.
     pub fn new(files: Arc<dyn DataFiles>) -> Self {
-        Session { items: Vec::new(), files, effort: Effort::new(), next_identity: 0 }
+        let items = SessionText::new().items.into_iter().map(Item::Other).collect();
+        Session { items, files, effort: Effort::new(), next_identity: 0 }
     }
 
     /// Reads a session file; nothing is evaluated.
@@ -135,25 +122,25 @@ impl Session {
     /// Errors: faults of the file as a whole (its first line). Entries that do not parse become entries that fail.
     pub fn open(text: &str, files: Arc<dyn DataFiles>) -> Result<Self, Vec<Diagnostic>> {
         let parsed = parse_session(text);
-        if !parsed.diagnostics.is_empty() {
-            return Err(parsed.diagnostics);
+        if !parsed.problems.is_empty() {
+            return Err(parsed.problems);
         }
-        let mut session = Session::new(files);
+        let mut session = Session { items: Vec::new(), ..Session::new(files) };
         for item in parsed.items {
-            match item {
-                TextItem::Header(_) | TextItem::Provenance(_) => {}
-                TextItem::Prose(line) => session.items.push(Item::Prose(line)),
-                TextItem::Blank(_) => session.items.push(Item::Prose(String::new())),
-                TextItem::Entry(entry) => {
-                    let mut state = EntryState::new(session.next_identity, &entry.text, entry.tree);
-                    session.next_identity += 1;
-                    state.comment = entry.comment;
-                    state.recorded = entry.records.into_iter().map(|record| record.text).collect();
-                    session.items.push(Item::Entry(Box::new(state)));
-                }
-            }
+            session.push(item);
         }
         Ok(session)
+    }
+
+    fn push(&mut self, item: TextItem) {
+        let item = match item {
+            TextItem::Entry(written) => {
+                self.next_identity += 1;
+                Item::Entry(Box::new(EntryState::new(self.next_identity, *written)))
+            }
+            other => Item::Other(other),
+        };
+        self.items.push(item);
     }
 
     /// The switch that ends a running evaluation.
@@ -164,7 +151,7 @@ impl Session {
     fn entries(&self) -> impl Iterator<Item = &EntryState> {
         self.items.iter().filter_map(|item| match item {
             Item::Entry(entry) => Some(entry.as_ref()),
-            Item::Prose(_) => None,
+            Item::Other(_) => None,
         })
     }
 
@@ -173,7 +160,7 @@ impl Session {
             .iter_mut()
             .filter_map(|item| match item {
                 Item::Entry(entry) => Some(entry.as_mut()),
-                Item::Prose(_) => None,
+                Item::Other(_) => None,
             })
             .nth(number.checked_sub(1)?)
     }
@@ -193,17 +180,18 @@ impl Session {
         let mut count = 0;
         for item in &self.items {
             match item {
-                Item::Prose(line) => prose.push(line.as_str()),
+                Item::Other(other) => prose.extend(prose_of(other)),
                 Item::Entry(entry) => {
                     count += 1;
                     if count == number {
                         return Some(EntryView {
                             number,
-                            text: &entry.text,
+                            text: &entry.written.text,
                             outcome: entry.outcome.as_ref(),
-                            recorded: &entry.recorded,
+                            recorded: entry.written.records.iter().map(|record| record.text.as_str()).collect(),
                             prose_before: prose,
-                            comment: entry.comment.as_deref(),
+                            comment: entry.written.comment(),
+                            span: entry.written.span,
                         });
                     }
                     prose.clear();
@@ -219,7 +207,7 @@ impl Session {
         self.items[last..]
             .iter()
             .filter_map(|item| match item {
-                Item::Prose(line) => Some(line.as_str()),
+                Item::Other(other) => prose_of(other),
                 Item::Entry(_) => None,
             })
             .collect()
@@ -268,7 +256,7 @@ impl Session {
     /// Evaluates one entry; tells whether it was stopped.
     fn evaluate_entry(&mut self, number: usize, scope: &Scope) -> bool {
         let Some(entry) = self.entries().nth(number - 1) else { return false };
-        let (outcome, effect) = match &entry.tree {
+        let (outcome, effect) = match &entry.written.parsed {
             Err(diagnostics) => {
                 let reports = diagnostics
                     .iter()
@@ -281,7 +269,7 @@ impl Session {
                 None => {
                     let evaluation = Evaluation {
                         scope,
-                        source: &entry.text,
+                        source: &entry.written.text,
                         entry: entry.identity,
                         effort: &self.effort,
                         files: &*self.files,
@@ -336,49 +324,73 @@ impl Session {
     ///
     /// Errors: the text does not parse; the session is unchanged.
     pub fn enter(&mut self, text: &str) -> Result<Entered, Vec<Diagnostic>> {
-        let tree = parse_entry(text)?;
-        let earlier = bound_name(&tree)
+        let written = EntryText::new(text);
+        let tree = written.parsed.as_ref().map_err(Clone::clone)?;
+        let earlier = bound_name(tree)
             .and_then(|name| self.entries().position(|entry| entry.binds().is_some_and(|n| n.text == name.text)));
         if let Some(position) = earlier {
-            return Ok(self.put(position + 1, text, tree));
+            return Ok(self.put(position + 1, written));
         }
-        let state = EntryState::new(self.next_identity, text, Ok(tree));
-        self.next_identity += 1;
-        self.items.push(Item::Entry(Box::new(state)));
+        self.end_last_line();
+        self.push(TextItem::Entry(Box::new(written)));
         let number = self.len();
         Ok(Entered { number, revised: false, evaluated: self.evaluate_from(number) })
     }
 
+    /// A file may lack its last line end; what is added below needs it.
+    fn end_last_line(&mut self) {
+        let line_end = match self.items.last_mut() {
+            Some(Item::Entry(entry)) => match entry.written.records.last_mut() {
+                Some(RecordLine { line_end, .. }) => line_end,
+                None => &mut entry.written.line_end,
+            },
+            Some(Item::Other(other)) => match line_of_mut(other) {
+                Some(line) => &mut line.line_end,
+                None => return,
+            },
+            None => return,
+        };
+        if line_end.is_empty() {
+            line_end.push('\n');
+        }
+    }
+
     /// Adds a comment line.
     pub fn add_prose(&mut self, line: &str) {
-        self.items.push(Item::Prose(line.to_string()));
+        self.end_last_line();
+        let line = Line { text: line.to_string(), line_end: "\n".into(), span: Span::default() };
+        self.items.push(Item::Other(TextItem::Prose(line)));
     }
 
     /// Replaces the text of an entry and evaluates what depends on it.
     ///
     /// Errors: no such entry, or the text does not parse; the session is unchanged.
     pub fn revise(&mut self, number: usize, text: &str) -> Result<Entered, Vec<Diagnostic>> {
-        let tree = parse_entry(text)?;
+        let written = EntryText::new(text);
+        let tree = written.parsed.as_ref().map_err(Clone::clone)?;
         if number == 0 || number > self.len() {
             let refusal = Refusal::NoEntry { number, count: self.len() };
             return Err(vec![Diagnostic::new(tree.span, refusal.to_string())]);
         }
-        Ok(self.put(number, text, tree))
+        Ok(self.put(number, written))
     }
 
-    fn put(&mut self, number: usize, text: &str, tree: Entry) -> Entered {
+    fn put(&mut self, number: usize, mut written: EntryText) -> Entered {
         let mut changed = BTreeSet::new();
         let mut settings = false;
-        let identity = self.next_identity;
         self.next_identity += 1;
+        let identity = self.next_identity;
         if let Some(entry) = self.entry_mut(number) {
             changed.extend(entry.binds().map(|name| name.text.clone()));
-            settings |= is_setting(&entry.tree);
-            let comment = entry.comment.take();
-            *entry = EntryState::new(identity, text, Ok(tree));
-            entry.comment = comment;
+            settings |= is_setting(&entry.written.parsed);
+            written.indent = std::mem::take(&mut entry.written.indent);
+            written.line_end = std::mem::take(&mut entry.written.line_end);
+            if written.comment().is_none() {
+                written.trailing = std::mem::take(&mut entry.written.trailing);
+            }
+            *entry = EntryState::new(identity, written);
             changed.extend(entry.binds().map(|name| name.text.clone()));
-            settings |= is_setting(&entry.tree);
+            settings |= is_setting(&entry.written.parsed);
         }
         self.forget_dependents(number, changed, settings);
         Entered { number, revised: true, evaluated: self.evaluate_from(number) }
@@ -422,7 +434,7 @@ impl Session {
         let Some(entry) = number.checked_sub(1).and_then(|at| self.entries().nth(at)) else {
             return Err(Refusal::NoEntry { number, count });
         };
-        let settings = is_setting(&entry.tree);
+        let settings = is_setting(&entry.written.parsed);
         if let Some(name) = entry.binds() {
             let changed = BTreeSet::from([name.text.clone()]);
             let used_by: Vec<usize> = self
@@ -438,7 +450,7 @@ impl Session {
         }
         let mut seen = 0;
         self.items.retain(|item| match item {
-            Item::Prose(_) => true,
+            Item::Other(_) => true,
             Item::Entry(_) => {
                 seen += 1;
                 seen != number
@@ -453,32 +465,47 @@ impl Session {
 
     /// The saved form: header, provenance, and every entry with its prose and record.
     pub fn to_text(&self, provenance: &[String]) -> String {
-        let mut text = format!("{HEADER}\n");
-        for line in provenance {
-            text.push_str(&format!("#@ {line}\n"));
-        }
+        let mut items = Vec::with_capacity(self.items.len());
         for item in &self.items {
             match item {
-                Item::Prose(line) => text.push_str(&format!("{line}\n")),
+                Item::Other(TextItem::Provenance(_)) => {}
+                Item::Other(header @ TextItem::Header(_)) => {
+                    items.push(header.clone());
+                    items.extend(provenance.iter().map(|line| {
+                        let text = format!("#@ {line}");
+                        TextItem::Provenance(Line { text, line_end: "\n".into(), span: Span::default() })
+                    }));
+                }
+                Item::Other(other) => items.push(other.clone()),
                 Item::Entry(entry) => {
-                    text.push_str(&entry.text);
-                    if let Some(comment) = &entry.comment {
-                        text.push_str(&format!("  {comment}"));
+                    let mut written = entry.written.clone();
+                    match &entry.outcome {
+                        // Without a result of its own an entry keeps the record it came with.
+                        None | Some(Outcome::Stopped) => {}
+                        Some(outcome) => written.set_records(outcome.record()),
                     }
-                    text.push('\n');
-                    // Without a result of its own an entry keeps the record it came with.
-                    let lines = match &entry.outcome {
-                        Some(Outcome::Result(answer)) => &answer.lines,
-                        None | Some(Outcome::Stopped) => &entry.recorded,
-                        _ => continue,
-                    };
-                    for line in lines {
-                        text.push_str(&format!("  {line}\n"));
-                    }
+                    items.push(TextItem::Entry(Box::new(written)));
                 }
             }
         }
-        text
+        SessionText { items, problems: Vec::new() }.to_text()
+    }
+}
+
+/// A comment or blank line as text.
+fn prose_of(item: &TextItem) -> Option<&str> {
+    match item {
+        TextItem::Prose(line) | TextItem::Blank(line) => Some(&line.text),
+        _ => None,
+    }
+}
+
+fn line_of_mut(item: &mut TextItem) -> Option<&mut Line> {
+    match item {
+        TextItem::Header(line) | TextItem::Provenance(line) | TextItem::Prose(line) | TextItem::Blank(line) | TextItem::Stray(line) => {
+            Some(line)
+        }
+        TextItem::Entry(_) => None,
     }
 }
 

@@ -53,7 +53,7 @@ impl Session {
                 Some(Outcome::Stopped) | None => (Vec::new(), Vec::new(), Some(ReplayVerdict::Stopped)),
                 Some(Outcome::Declared { .. }) => (Vec::new(), Vec::new(), None),
             };
-            let verdict = failed.unwrap_or_else(|| compared(view.recorded, &recomputed));
+            let verdict = failed.unwrap_or_else(|| compared(&view.recorded, &recomputed));
             match verdict {
                 ReplayVerdict::Agrees { .. } => report.agree += 1,
                 ReplayVerdict::Differs { .. } => report.differ += 1,
@@ -65,7 +65,7 @@ impl Session {
             let entry = ReplayEntry {
                 number,
                 text: view.text.to_string(),
-                recorded: view.recorded.to_vec(),
+                recorded: view.recorded.iter().map(|line| (*line).to_string()).collect(),
                 recomputed,
                 verdict,
                 reports,
@@ -77,7 +77,7 @@ impl Session {
     }
 }
 
-fn compared(recorded: &[String], recomputed: &[String]) -> ReplayVerdict {
+fn compared(recorded: &[&str], recomputed: &[String]) -> ReplayVerdict {
     match (recorded.is_empty(), recomputed.is_empty()) {
         (true, true) => return ReplayVerdict::NothingToCompare,
         (true, false) => return ReplayVerdict::NotRecorded,
@@ -181,7 +181,7 @@ mod tests {
     use super::*;
 
     fn verdict(old: &str, new: &str) -> ReplayVerdict {
-        compared(&[old.to_string()], &[new.to_string()])
+        compared(&[old], &[new.to_string()])
     }
 
     #[test]

@@ -1,26 +1,28 @@
 //! The words of the vocabulary as the names every session starts with.
 
-use crate::lang::vocabulary::{self, Kind};
+use crate::lang::vocabulary::{Status, WordKind, is_reserved, vocabulary};
 use crate::theory::Names;
 
 /// Names in scope before the first entry.
 pub fn names() -> Names {
     let mut names = Names::default();
-    for word in vocabulary::entries() {
-        if let Some(what) = word.later() {
-            names.later.insert(word.name.clone(), format!("`{}`, {what}", word.name));
-            continue;
-        }
-        match word.kind {
-            Kind::Operator => {
-                names.operators.insert(base(&word.name).to_string());
+    for (name, word) in vocabulary().names() {
+        match (&word.status, word.kind) {
+            (_, WordKind::Unit) => {
+                names.units.insert(name.to_string());
             }
-            Kind::Unit => {
-                names.units.insert(word.name.clone());
+            (Status::Later(what), WordKind::Function | WordKind::Operator | WordKind::System) => {
+                names.later.insert(base(name).to_string(), format!("`{name}`, {what}"));
+            }
+            (Status::Here, WordKind::Operator) => {
+                names.operators.insert(base(name).to_string());
             }
             _ => {}
         }
     }
+    // A word that is partly here (`p^2` of one electron, `p1^2` of two) is here.
+    let here = names.operators.clone();
+    names.later.retain(|name, _| !here.contains(name));
     names
 }
 
@@ -31,8 +33,5 @@ fn base(name: &str) -> &str {
 
 /// Tells whether a word cannot be bound by an entry, since expressions could not tell it from its meaning in the language.
 pub fn reserved(name: &str) -> bool {
-    matches!(name, "H" | "E" | "i" | "pi" | "inf")
-        || vocabulary::entries().iter().any(|word| {
-            matches!(word.kind, Kind::Function | Kind::Entry) && word.name == name
-        })
+    matches!(name, "H" | "E" | "i" | "pi" | "inf") || is_reserved(name)
 }
