@@ -1,10 +1,10 @@
 //! Values of brackets: exactly where the system can, otherwise from two levels of accuracy whose difference says what holds.
 
 use super::environment::Environment;
-use super::evaluator::{Evaluated, Evaluator, Nudge};
+use super::evaluator::{Evaluated, Evaluator, Nudge, ball};
 use super::problem::Failure;
 use super::walker::Walker;
-use crate::num::{ComplexBall, Scalar};
+use crate::num::Scalar;
 use crate::systems::{Backend, Level, Number, Obstacle, State, System};
 use crate::theory::terms::*;
 use rug::{Complex, Float};
@@ -35,7 +35,7 @@ impl Evaluator<'_> {
         let mut sum = Scalar::zero();
         for component in ['x', 'y', 'z'] {
             let value = self.bracket(term, &inner, &environment.with_index(index, component), bits)?;
-            sum = sum.add(&value, bits);
+            sum = sum.add(&value, bits).map_err(|error| Failure::new(term.place, error))?;
         }
         Ok(sum)
     }
@@ -167,7 +167,7 @@ impl Evaluator<'_> {
                         }
                         let radius =
                             radius + self.influence(system, anchor, level, bracket, environment, place, &value)?;
-                        return Ok(Scalar::Approx(ball(value, radius)));
+                        return ball(value, radius).map(Scalar::Approx).map_err(|error| Failure::new(place, error));
                     }
                     previous_step = Some(step);
                 }
@@ -217,15 +217,6 @@ fn slow_radius(step: &Float, ratio: f64) -> Float {
 
 fn magnitude(value: &Complex) -> Float {
     Float::with_val(32, Complex::with_val(32, value).abs().real())
-}
-
-/// A ball around a numeric value; real values keep an imaginary part that is exactly zero.
-fn ball(value: Complex, radius: Float) -> ComplexBall {
-    if value.imag().is_zero() {
-        ComplexBall::from_real(value.into_real_imag().0, radius)
-    } else {
-        ComplexBall::from_complex(value, radius)
-    }
 }
 
 /// The eigenstate a ket is built on.

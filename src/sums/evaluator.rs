@@ -3,7 +3,8 @@
 use super::environment::Environment;
 use super::problem::{Failure, Trouble};
 use super::walker::Kept;
-use crate::num::{ComplexBall, Effort, Function, NumberError, Scalar, Surd};
+use crate::angular::{HalfInteger, threej};
+use crate::num::{Ball, ComplexBall, Effort, Function, NumberError, Scalar, Surd};
 use crate::systems::{Level, Manifold, State, StateLabel, System};
 use crate::theory::terms::*;
 use rug::{Complex, Float, Integer, Rational};
@@ -132,7 +133,7 @@ impl<'s> Evaluator<'s> {
                 };
                 Ok(Scalar::Exact(Surd::from(moved)))
             }
-            ScalarNode::Pi => Ok(Scalar::pi(bits)),
+            ScalarNode::Pi => Scalar::pi(bits).map_err(at),
             ScalarNode::Variable(name) => environment.variable(name).cloned().ok_or_else(|| {
                 let message = format!("`{name}` has no value here");
                 Failure::new(place, Trouble::Refused { message, help: String::new() })
@@ -141,7 +142,7 @@ impl<'s> Evaluator<'s> {
                 let mut sum = Scalar::zero();
                 for inner in terms {
                     let value = self.scalar(inner, environment, bits)?;
-                    sum = sum.add(&value, bits);
+                    sum = sum.add(&value, bits).map_err(at)?;
                 }
                 Ok(sum)
             }
@@ -149,7 +150,7 @@ impl<'s> Evaluator<'s> {
                 let mut product = Scalar::one();
                 for inner in factors {
                     let value = self.scalar(inner, environment, bits)?;
-                    product = product.mul(&value, bits);
+                    product = product.mul(&value, bits).map_err(at)?;
                 }
                 Ok(product)
             }
@@ -173,7 +174,7 @@ impl<'s> Evaluator<'s> {
                 let state = self.state(state, environment)?;
                 let energy =
                     system.energy(&state, bits + 16, &self.effort).map_err(|obstacle| Failure::new(place, obstacle))?;
-                Ok(number_to_scalar(energy, bits))
+                number_to_scalar(energy, bits).map_err(at)
             }
             ScalarNode::Bracket(bracket) => self.bracket(term, bracket, environment, bits),
             ScalarNode::Call(call) => match &call.definition.body {
@@ -198,7 +199,7 @@ impl<'s> Evaluator<'s> {
                     self.effort.check().map_err(|stop| Failure::new(place, stop))?;
                     let inside = environment.with(variable, Scalar::Exact(Surd::from(Rational::from(n.clone()))));
                     let value = self.scalar(body, &inside, bits)?;
-                    sum = sum.add(&value, bits);
+                    sum = sum.add(&value, bits).map_err(at)?;
                     n += 1;
                 }
                 Ok(sum)
@@ -319,13 +320,22 @@ impl<'s> Evaluator<'s> {
 }
 
 /// A number from a system as a scalar; approximate ones are taken to hold to `bits` bits.
-pub(super) fn number_to_scalar(number: crate::systems::Number, bits: u32) -> Scalar {
+pub(super) fn number_to_scalar(number: crate::systems::Number, bits: u32) -> Result<Scalar, NumberError> {
     match number {
-        crate::systems::Number::Exact(value) => Scalar::Exact(value),
+        crate::systems::Number::Exact(value) => Ok(Scalar::Exact(value)),
         crate::systems::Number::Approx(value) => {
             let radius = Float::with_val(32, Complex::with_val(32, &value).abs().real()) >> bits;
-            Scalar::Approx(ComplexBall::from_complex(value, radius))
+            ball(value, radius).map(Scalar::Approx)
         }
+    }
+}
+
+/// A ball around a numeric value; real values keep an imaginary part that is exactly zero.
+pub(super) fn ball(value: Complex, radius: Float) -> Result<ComplexBall, NumberError> {
+    if value.imag().is_zero() {
+        Ok(ComplexBall::real(Ball::with_radius(value.into_real_imag().0, radius)?))
+    } else {
+        ComplexBall::from_complex(value, radius)
     }
 }
 

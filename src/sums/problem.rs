@@ -97,7 +97,7 @@ impl Trouble {
     /// What to write instead.
     pub fn help(&self) -> Option<String> {
         Some(match self {
-            Trouble::Number(NumberError::DivisionByZero) => "check the denominator: it is exactly zero".into(),
+            Trouble::Number(error) => return error.help().map(String::from),
             Trouble::Obstacle(Obstacle::Singular { level }) => format!(
                 "leave the level out with a prime, `1/(E(g) - H)'`, or with `without P`, or move the energy off {level}"
             ),

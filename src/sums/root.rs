@@ -3,7 +3,7 @@
 use super::environment::Environment;
 use super::evaluator::{Evaluated, Evaluator};
 use super::problem::{Failure, Trouble};
-use crate::num::{ComplexBall, Scalar, Surd};
+use crate::num::{Ball, ComplexBall, Scalar, Surd};
 use crate::theory::terms::*;
 use rug::{Float, Rational};
 use std::cmp::Ordering;
@@ -300,7 +300,7 @@ fn enclosure(low: &Rational, high: &Rational, bits: u32) -> Result<Scalar, crate
     let middle = Rational::from(low + high) / 2u32;
     let mid = Float::with_val(bits + 32, &middle);
     let width = Float::with_val_round(32, Rational::from(high - low), rug::float::Round::Up).0;
-    Ok(Scalar::Approx(ComplexBall::from_real(mid, width)?))
+    Ok(Scalar::Approx(ComplexBall::real(Ball::with_radius(mid, width)?)))
 }
 
 fn digits_of(bits: u32) -> u32 {

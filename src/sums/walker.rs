@@ -536,7 +536,10 @@ impl Walker<'_, '_> {
         match &*operator.node {
             OperatorNode::Scalar(scalar) => {
                 let value = self.evaluator.scalar(scalar, environment, self.scalar_bits())?;
-                flat.coefficient = flat.coefficient.mul(&value, self.scalar_bits());
+                flat.coefficient = flat
+                    .coefficient
+                    .mul(&value, self.scalar_bits())
+                    .map_err(|error| Failure::new(operator.place, error))?;
             }
             OperatorNode::Product(factors) => {
                 for factor in factors {
@@ -638,7 +641,7 @@ impl Walker<'_, '_> {
         let constant = self.evaluator.scalar(&linear.constant, &factor.environment, bits)?;
         let slope = self.evaluator.scalar(&linear.slope, &factor.environment, bits)?;
         let scale = Scalar::one().div(&slope, bits).map_err(|error| Failure::new(place, error))?.neg();
-        let z = constant.mul(&scale, bits);
+        let z = constant.mul(&scale, bits).map_err(|error| Failure::new(place, error))?;
         let resolvent =
             Resolvent { z: self.number(&z, place)?, omitted: self.omitted(&linear.omitted, &factor.environment)? };
         Ok((self.number(&scale, place)?, resolvent))

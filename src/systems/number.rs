@@ -12,7 +12,11 @@ impl Number {
     /// The number rounded to `bits` bits.
     pub fn to_complex(&self, bits: u32) -> Complex {
         match self {
-            Number::Exact(surd) => ComplexBall::from_surd(surd, bits).midpoint(bits),
+            Number::Exact(surd) => match ComplexBall::from_surd(surd, bits) {
+                Ok(ball) => ball.midpoint(bits),
+                // Beyond the range of exponents: no result with this number in it can hold, and NaN makes sure none does.
+                Err(_) => Complex::with_val(bits, (rug::float::Special::Nan, rug::float::Special::Nan)),
+            },
             Number::Approx(value) => Complex::with_val(bits, value),
         }
     }

@@ -3,6 +3,7 @@
 //! `theory` knows systems and operators by name only; whether an atom has an operator is asked where sums meet systems.
 
 pub mod algebra;
+pub mod formula;
 pub mod names;
 pub mod problem;
 pub mod resolve;
