@@ -20,7 +20,7 @@ impl Failure {
     pub fn is_undecided(&self) -> bool {
         matches!(
             self.trouble,
-            Trouble::Number(NumberError::Undecided)
+            Trouble::Number(NumberError::Undecided { .. })
                 | Trouble::Obstacle(Obstacle::Undecided)
                 | Trouble::Undecided { .. }
         )

@@ -3,6 +3,7 @@
 use super::environment::Environment;
 use super::evaluator::{Evaluated, Evaluator};
 use super::problem::{Failure, Trouble};
+use crate::num::render::render;
 use crate::num::{Ball, ComplexBall, Scalar, Surd};
 use crate::theory::terms::*;
 use rug::{Float, Rational};
@@ -312,6 +313,9 @@ fn short(value: &Rational) -> String {
 }
 
 /// A value to a few digits, for messages.
-fn brief(value: &Float) -> String {
-    crate::num::decimal::brief(value, 6)
+pub fn brief(value: &Float) -> String {
+    match Ball::with_radius(value.clone(), Float::new(32)) {
+        Ok(ball) => render(&Scalar::Approx(ComplexBall::real(ball)), 6).text,
+        Err(_) => value.to_string(),
+    }
 }

@@ -3,7 +3,8 @@
 use super::environment::Environment;
 use super::evaluator::{Evaluated, Evaluator};
 use super::problem::{Failure, Trouble};
-use crate::num::{Ball, Scalar, decimal};
+use crate::num::render::needs_more;
+use crate::num::{Ball, Scalar};
 use crate::theory::terms::*;
 use rug::{Float, Rational};
 
@@ -78,7 +79,7 @@ impl Evaluator<'_> {
         for _ in 0..RAISES {
             match self.scalar(term, &Environment::default(), bits) {
                 Ok(scalar) => {
-                    if !decimal::needs_more(&scalar, digits) || self.limit.is_some() {
+                    if !needs_more(&scalar, digits) || self.limit.is_some() {
                         return Ok(scalar);
                     }
                     best = Some(scalar);
