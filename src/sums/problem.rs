@@ -31,6 +31,14 @@ impl Failure {
         matches!(self.trouble, Trouble::Obstacle(Obstacle::Inexact))
     }
 
+    /// Tells whether the expression divides by exactly zero, or a resolvent stands at a level.
+    pub fn is_division_by_zero(&self) -> bool {
+        matches!(
+            self.trouble,
+            Trouble::Number(NumberError::DivisionByZero) | Trouble::Obstacle(Obstacle::Singular { .. })
+        )
+    }
+
     pub fn is_interrupted(&self) -> bool {
         matches!(
             self.trouble,
