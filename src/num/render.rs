@@ -346,7 +346,7 @@ mod tests {
         assert_eq!(digits_in_common(&third, &real("0.333332", "1e-30")), Agreement::Digits(5));
         assert_eq!(digits_in_common(&third, &root), Agreement::Digits(0));
         assert_eq!(digits_in_common(&real("1", "1e-20"), &real("1", "1e-30")), Agreement::Digits(19));
-        assert_eq!(digits_in_common(&real("0", "1e-21"), &real("0", "9e-31")), Agreement::BothBelow { power: 20 });
+        assert_eq!(digits_in_common(&real("0", "1.1e-21"), &real("0", "9e-31")), Agreement::BothBelow { power: 20 });
         assert!(matches!(digits_in_common(&root, &squared), Agreement::Digits(57..=61)));
         assert_eq!(digits_in_common(&Scalar::i(), &Scalar::i().neg()), Agreement::Digits(0));
     }
