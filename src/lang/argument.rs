@@ -57,6 +57,9 @@ impl<'a> Reading<'a> {
             height = height.max(tall);
             let comma = blanks(after);
             let Some(next) = comma.strip_prefix(',') else {
+                if bracket == '(' && comma.starts_with('=') && !comma.starts_with("==") {
+                    return fault(comma, &comma[1..], Fault::NoComma);
+                }
                 let (end, ()) = self.close(open, after, bracket)?;
                 return Ok((end, (items, height)));
             };

@@ -222,6 +222,7 @@ impl<'a> Reading<'a> {
             [b'\'', ..] => Fault::Prime { blank: false },
             [b'"', ..] => Fault::TextOutside,
             [b'\\', ..] => Fault::Backslash,
+            [b'+', ..] => Fault::LeadingPlus,
             _ => return self.missing(start, Wanted::Operand),
         };
         fault(start, &start[1..], known)
@@ -237,7 +238,7 @@ impl<'a> Reading<'a> {
         match parser(rest) {
             Err(Err::Error(trouble)) if trouble.left == blanks(rest).len() => {
                 let place = blanks(rest);
-                let after = Some(operator[..1].to_owned());
+                let after = Some(if operator.starts_with("..") { ".." } else { &operator[..1] }.to_owned());
                 fault(place, after_token(place), Fault::NoOperand { after, found: found(place) })
             }
             Err(Err::Error(trouble)) => Err(Err::Failure(trouble)),
@@ -263,13 +264,14 @@ impl<'a> Reading<'a> {
         Ok(Grown { tree: Box::new(Expr { kind, span }), height })
     }
 
-    fn before(&self, rest: &str) -> &'a str {
+    /// The text before a place.
+    pub fn before(&self, rest: &str) -> &'a str {
         &self.text()[..self.text().len() - rest.len()]
     }
 }
 
 /// Says whether a factor begins here, side by side with what stands before.
-fn begins_factor(start: &str, setting: Setting) -> bool {
+pub(super) fn begins_factor(start: &str, setting: Setting) -> bool {
     match start.as_bytes() {
         [b'(' | b'<' | b'0'..=b'9', ..] => true,
         [b'|', ..] => setting == Setting::Open,

@@ -111,7 +111,7 @@ impl<'a> Reading<'a> {
         if vocabulary::is_reserved(text) || vocabulary::is_command(text) {
             let begins_entry = vocabulary::is_entry_word(text);
             if vocabulary::is_command(text) {
-                return fault(start, after, Fault::PromptCommand(text.to_owned()));
+                return fault(start, after, Fault::CommandAsName(text.to_owned()));
             }
             return fault(start, after, Fault::Reserved { word: text.to_owned(), begins_entry });
         }

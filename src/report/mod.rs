@@ -1,1 +1,3 @@
 //! What is shown: rendered entries, records, diagnostics as text.
+
+pub mod diagnostics;
