@@ -10,6 +10,7 @@ use super::trouble::{Parsed, Wanted, fault};
 
 impl<'a> Reading<'a> {
     /// Reads `<a| X |b>`, `<a|b>`, or a lone bra where nothing that belongs to a chain follows.
+    #[inline(never)]
     pub fn bracket(&self, start: &'a str) -> Parsed<'a, Grown> {
         let Some(after) = start.strip_prefix('<') else { return self.missing(start, Wanted::Operand) };
         let (rest, (bra, bra_height)) = self.deeper(after, |rest| self.state(rest, false))?;
@@ -72,6 +73,7 @@ impl<'a> Reading<'a> {
     }
 
     /// Reads a lone `|g>`.
+    #[inline(never)]
     pub fn ket(&self, start: &'a str) -> Parsed<'a, Grown> {
         let Some(after) = start.strip_prefix('|') else { return self.missing(start, Wanted::Operand) };
         let place = blanks(after);

@@ -7,7 +7,6 @@
 //! power   = primary { "'" } [ "^" exponent ]
 //! ```
 
-use nom::branch::alt;
 use nom::combinator::{cut, opt};
 use nom::{Err, Parser};
 
@@ -164,22 +163,23 @@ impl<'a> Reading<'a> {
     }
 
     fn primary(&self, start: &'a str) -> Parsed<'a, Grown> {
-        alt((
-            |rest| self.number_literal(rest),
-            |rest| self.named(rest),
-            |rest| self.parenthesised(rest),
-            |rest| self.bracket(rest),
-            |rest| self.ket(rest),
-            |rest| self.no_operand(rest),
-        ))
-        .parse(start)
+        match start.bytes().next() {
+            Some(b'0'..=b'9') => self.number_literal(start),
+            Some(b'a'..=b'z' | b'A'..=b'Z') => self.named(start),
+            Some(b'(') => self.parenthesised(start),
+            Some(b'<') => self.bracket(start),
+            Some(b'|') => self.ket(start),
+            _ => self.no_operand(start),
+        }
     }
 
+    #[inline(never)]
     fn number_literal(&self, start: &'a str) -> Parsed<'a, Grown> {
         let (after, kind) = self.number(start, false)?;
         Ok((after, Grown::leaf(kind, self.span(start, after))))
     }
 
+    #[inline(never)]
     fn named(&self, start: &'a str) -> Parsed<'a, Grown> {
         let (after, text) = name_text(start)?;
         if vocabulary::is_reserved(text) {
@@ -204,6 +204,7 @@ impl<'a> Reading<'a> {
         }
     }
 
+    #[inline(never)]
     fn parenthesised(&self, start: &'a str) -> Parsed<'a, Grown> {
         let Some(after) = start.strip_prefix('(') else { return self.missing(start, Wanted::Operand) };
         let (rest, mut inner) =
@@ -214,6 +215,7 @@ impl<'a> Reading<'a> {
     }
 
     /// Says why no term can begin here, where that is known.
+    #[inline(never)]
     fn no_operand(&self, start: &'a str) -> Parsed<'a, Grown> {
         let known = match start.as_bytes() {
             [b'.', next, ..] if next.is_ascii_digit() => Fault::DecimalPoint,

@@ -21,7 +21,7 @@ pub const LONGEST_NUMBER: usize = 100_000;
 /// The largest power of ten in a number's `e` part.
 pub const LARGEST_EXPONENT: u32 = 100_000;
 /// How deep brackets, signs, powers and labels may be nested.
-pub const DEEPEST_NESTING: usize = 200;
+pub const DEEPEST_NESTING: usize = 100;
 /// How high the tree of an expression may grow: bounds the recursion of everything that walks it.
 pub const TALLEST_TREE: usize = 500;
 
