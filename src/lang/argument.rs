@@ -16,6 +16,7 @@ fn is_label_sign(character: char) -> bool {
 
 impl<'a> Reading<'a> {
     /// Reads `(…)` at `open` and a component behind it: the call of `name`, which begins at `start`.
+    #[inline(never)]
     pub fn call(&self, start: &'a str, open: &'a str, name: Name) -> Parsed<'a, Grown> {
         let (rest, (arguments, height)) = self.arguments(open)?;
         let (end, subscript) = opt(subscript_text).parse(rest)?;
@@ -26,39 +27,45 @@ impl<'a> Reading<'a> {
 
     /// Reads a list of arguments with its brackets, and the height of the tallest.
     pub fn arguments(&self, open: &'a str) -> Parsed<'a, (Vec<Argument>, usize)> {
-        self.listed(open, '(', |reading, rest| reading.argument(rest))
+        let mut arguments = Vec::new();
+        let (end, height) = self.listed(open, '(', &mut |rest| self.argument(rest, &mut arguments))?;
+        Ok((end, (arguments, height)))
     }
 
     fn list(&self, open: &'a str) -> Parsed<'a, Grown> {
-        let (end, (elements, height)) = self.listed(open, '[', |reading, rest| {
-            let (rest, element) = reading.argument_value(rest)?;
-            Ok((rest, (*element.tree, element.height)))
+        let mut elements = Vec::new();
+        let (end, height) = self.listed(open, '[', &mut |rest| {
+            let (rest, element) = self.argument_value(rest)?;
+            elements.push(*element.tree);
+            Ok((rest, element.height))
         })?;
         Ok((end, self.raised(ExprKind::List(elements), self.span(open, end), height, end)?))
     }
 
-    /// Reads `item, item, …` between the bracket at `open` and its partner.
-    fn listed<T>(
+    /// Reads `item, item, …` between the bracket at `open` and its partner; `item` keeps what it reads and gives its height.
+    fn listed(
         &self,
         open: &'a str,
         bracket: char,
-        item: impl Fn(&Self, &'a str) -> Parsed<'a, (T, usize)>,
-    ) -> Parsed<'a, (Vec<T>, usize)> {
-        let (mut items, mut height) = (Vec::new(), 0);
+        item: &mut dyn FnMut(&'a str) -> Parsed<'a, usize>,
+    ) -> Parsed<'a, usize> {
+        let mut height = 0;
         let mut rest = &open[1..];
         let close = if bracket == '(' { ')' } else { ']' };
         if let Some(end) = blanks(rest).strip_prefix(close) {
-            return Ok((end, (items, height)));
+            return Ok((end, height));
         }
         let mut opener = open;
         loop {
-            let (after, (value, tall)) = self.operand_after(rest, opener, |rest| item(self, rest))?;
-            items.push(value);
+            let (after, tall) = self.operand_after(rest, opener, &mut *item)?;
             height = height.max(tall);
             let comma = blanks(after);
             let Some(next) = comma.strip_prefix(',') else {
+                if bracket == '(' && comma.starts_with('=') && !comma.starts_with("==") {
+                    return fault(comma, &comma[1..], Fault::NoComma);
+                }
                 let (end, ()) = self.close(open, after, bracket)?;
-                return Ok((end, (items, height)));
+                return Ok((end, height));
             };
             if blanks(next).starts_with(close) {
                 return fault(comma, next, Fault::TrailingComma);
@@ -67,43 +74,67 @@ impl<'a> Reading<'a> {
         }
     }
 
-    fn argument(&self, rest: &'a str) -> Parsed<'a, (Argument, usize)> {
+    // The forms are kept out of line: their values are large, and nested calls must not carry all of them on the stack.
+    fn argument(&self, rest: &'a str, arguments: &mut Vec<Argument>) -> Parsed<'a, usize> {
         let start = blanks(rest);
         if let Some((after, relation)) = relation_after_name(start) {
-            return self.related_argument(start, after, relation);
+            let (_, name) = self.name(start)?;
+            let rest = &after[relation.length()..];
+            return match relation {
+                Relation::Equals => self.named_argument(rest, after, name, arguments),
+                Relation::In => self.range_argument(rest, name, arguments),
+                Relation::At => self.point_argument(rest, name, arguments),
+            };
         }
         if begins_level(start) {
-            let (rest, (parts, below)) = self.label_parts(start)?;
-            let label = Label { parts, options: Vec::new(), span: self.span(start, rest) };
-            let (rest, colon) = self.symbol(rest, ":", Wanted::Colon)?;
-            let (end, value) = self.operand_after(rest, colon, |rest| self.expression(rest, Setting::Open))?;
-            return Ok((end, (Argument::Level { label, value: *value.tree }, below.max(value.height))));
+            return self.level_argument(start, arguments);
         }
         let (end, value) = self.argument_value(start)?;
-        Ok((end, (Argument::Positional(*value.tree), value.height)))
+        arguments.push(Argument::Positional(*value.tree));
+        Ok((end, value.height))
     }
 
-    /// `Z=1`, `w in a .. b`, `w at w0`; `after` begins with the relation.
-    fn related_argument(&self, start: &'a str, after: &'a str, relation: Relation) -> Parsed<'a, (Argument, usize)> {
-        let (_, name) = self.name(start)?;
-        let rest = &after[relation.length()..];
-        match relation {
-            Relation::Equals => {
-                let (end, value) = self.operand_after(rest, after, |rest| self.argument_value(rest))?;
-                Ok((end, (Argument::Named { name, value: *value.tree }, value.height)))
-            }
-            Relation::In => {
-                let (rest, from) = cut(|rest| self.expression(rest, Setting::Open)).parse(rest)?;
-                let (rest, dots) = cut(|rest| self.symbol(rest, "..", Wanted::Dots)).parse(rest)?;
-                let (end, to) = self.operand_after(rest, dots, |rest| self.expression(rest, Setting::Open))?;
-                let height = from.height.max(to.height);
-                Ok((end, (Argument::Range { variable: name, from: *from.tree, to: *to.tree }, height)))
-            }
-            Relation::At => {
-                let (end, point) = cut(|rest| self.expression(rest, Setting::Open)).parse(rest)?;
-                Ok((end, (Argument::At { variable: name, point: *point.tree }, point.height)))
-            }
-        }
+    /// `Z=1`; `equals` begins with the `=`.
+    #[inline(never)]
+    fn named_argument(
+        &self,
+        rest: &'a str,
+        equals: &'a str,
+        name: Name,
+        arguments: &mut Vec<Argument>,
+    ) -> Parsed<'a, usize> {
+        let (end, value) = self.operand_after(rest, equals, |rest| self.argument_value(rest))?;
+        arguments.push(Argument::Named { name, value: *value.tree });
+        Ok((end, value.height))
+    }
+
+    /// `w in a .. b`
+    #[inline(never)]
+    fn range_argument(&self, rest: &'a str, variable: Name, arguments: &mut Vec<Argument>) -> Parsed<'a, usize> {
+        let (rest, from) = cut(|rest| self.expression(rest, Setting::Open)).parse(rest)?;
+        let (rest, dots) = cut(|rest| self.symbol(rest, "..", Wanted::Dots)).parse(rest)?;
+        let (end, to) = self.operand_after(rest, dots, |rest| self.expression(rest, Setting::Open))?;
+        arguments.push(Argument::Range { variable, from: *from.tree, to: *to.tree });
+        Ok((end, from.height.max(to.height)))
+    }
+
+    /// `w at w0`
+    #[inline(never)]
+    fn point_argument(&self, rest: &'a str, variable: Name, arguments: &mut Vec<Argument>) -> Parsed<'a, usize> {
+        let (end, point) = cut(|rest| self.expression(rest, Setting::Open)).parse(rest)?;
+        arguments.push(Argument::At { variable, point: *point.tree });
+        Ok((end, point.height))
+    }
+
+    /// `2^3P_0: 31.9 GHz`
+    #[inline(never)]
+    fn level_argument(&self, start: &'a str, arguments: &mut Vec<Argument>) -> Parsed<'a, usize> {
+        let (rest, (parts, below)) = self.label_parts(start)?;
+        let label = Label { parts, options: Vec::new(), span: self.span(start, rest) };
+        let (rest, _) = self.symbol(rest, ":", Wanted::Colon)?;
+        let (end, value) = self.operand_after(rest, ":", |rest| self.expression(rest, Setting::Open))?;
+        arguments.push(Argument::Level { label, value: *value.tree });
+        Ok((end, below.max(value.height)))
     }
 
     /// Reads a value where file names and lists may stand too.
@@ -119,6 +150,7 @@ impl<'a> Reading<'a> {
         }
     }
 
+    #[inline(never)]
     /// Reads `[1s]`, `[2p, m=1]`, `[{n}p]`, `[n=7, l=5, m=2]` at `open`, with the height of what is computed in it.
     pub fn label(&self, open: &'a str) -> Parsed<'a, (Label, usize)> {
         let (mut parts, mut options, mut height) = (Vec::new(), Vec::new(), 0);

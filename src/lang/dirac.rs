@@ -2,7 +2,7 @@
 
 use nom::Err;
 
-use super::expression::{Grown, Setting};
+use super::expression::{Grown, Setting, begins_factor};
 use super::fault::Fault;
 use super::lexis::{Reading, after_token, blanks, found, name_text};
 use super::tree::{Argument, Expr, ExprKind, Name, StateRef, StateRefKind};
@@ -10,6 +10,7 @@ use super::trouble::{Parsed, Wanted, fault};
 
 impl<'a> Reading<'a> {
     /// Reads `<a| X |b>`, `<a|b>`, or a lone bra where nothing that belongs to a chain follows.
+    #[inline(never)]
     pub fn bracket(&self, start: &'a str) -> Parsed<'a, Grown> {
         let Some(after) = start.strip_prefix('<') else { return self.missing(start, Wanted::Operand) };
         let (rest, (bra, bra_height)) = self.deeper(after, |rest| self.state(rest, false))?;
@@ -22,7 +23,7 @@ impl<'a> Reading<'a> {
         if let Some(after_bar) = chain_start.strip_prefix('|') {
             return self.finish(start, bra, None, bra_height, after_bar);
         }
-        if !begins_chain(chain_start) {
+        if !begins_factor(chain_start, Setting::Open) && !chain_start.starts_with(['-', '[', '"', '{', '\'', '^']) {
             let span = self.span(start, inside);
             return Ok((inside, self.raised(ExprKind::Bra(bra), span, bra_height, inside)?));
         }
@@ -43,10 +44,11 @@ impl<'a> Reading<'a> {
             _ => {
                 self.refuse_unexpected(end, &[b')', b']', b'}', b',', b':'])?;
                 let bra_text = self.between(start, inside).to_owned();
+                let behind_ket = self.before(start).trim_end().ends_with('>');
                 fault(
                     end,
                     after_token(end),
-                    Fault::MissingKet { bra: self.span(start, inside), bra_text, found: found(end) },
+                    Fault::MissingKet { bra: self.span(start, inside), bra_text, behind_ket, found: found(end) },
                 )
             }
         }
@@ -71,6 +73,7 @@ impl<'a> Reading<'a> {
     }
 
     /// Reads a lone `|g>`.
+    #[inline(never)]
     pub fn ket(&self, start: &'a str) -> Parsed<'a, Grown> {
         let Some(after) = start.strip_prefix('|') else { return self.missing(start, Wanted::Operand) };
         let place = blanks(after);
@@ -176,9 +179,7 @@ impl<'a> Reading<'a> {
         let fault = match place.as_bytes() {
             [b'=', b'=', ..] => return Some((&place[2..], Fault::Relation("==".to_owned()))),
             [b'!', b'=', ..] => return Some((&place[2..], Fault::Relation("!=".to_owned()))),
-            [b'&', ..] | [b'%', ..] | [b'~', ..] | [b'@', ..] | [b'$', ..] | [b'?', ..] | [b'`', ..] => {
-                Fault::Relation(place[..1].to_owned())
-            }
+            [sign @ (b'&' | b'%' | b'~' | b'@' | b'$' | b'?' | b'`' | b'#'), ..] => Fault::Sign(char::from(*sign)),
             [b'!', ..] => Fault::Factorial,
             [b'=', ..] => Fault::StrayEquals,
             [b';', ..] => Fault::Semicolon,
@@ -187,9 +188,9 @@ impl<'a> Reading<'a> {
             [b'"', ..] => Fault::TextOutside,
             [b'>', ..] => Fault::StrayAngle,
             [b'|', ..] => Fault::StrayBar,
-            [b'.', next, ..] if *next != b'.' => Fault::DecimalPoint,
+            [b'.', next, ..] if next.is_ascii_digit() => Fault::DecimalPoint,
             [b'[', ..] => {
-                let before = &self.text()[..self.text().len() - place.len()];
+                let before = self.before(place);
                 let name_before = before.trim_end().ends_with(|c: char| c.is_ascii_alphanumeric() || c == '_');
                 if name_before { Fault::LabelApart } else { Fault::SquareBrackets }
             }
@@ -198,17 +199,6 @@ impl<'a> Reading<'a> {
             _ => return None,
         };
         Some((&place[1..], fault))
-    }
-}
-
-/// Says whether a chain can begin here, behind the bar of a bra.
-fn begins_chain(start: &str) -> bool {
-    match start.bytes().next() {
-        None | Some(b')' | b']' | b'}' | b',' | b'+' | b'*' | b'/' | b':' | b'>') => false,
-        Some(first) if first.is_ascii_alphabetic() => {
-            super::lexis::word_text(start).is_ok_and(|(_, word)| !super::vocabulary::is_reserved(word))
-        }
-        Some(_) => true,
     }
 }
 

@@ -207,7 +207,7 @@ impl<'a> Reading<'a> {
 
     fn compare(&self, rest: &'a str, word: &'a str) -> Parsed<'a, EntryKind> {
         let (rest, left) = self.whole(rest, word)?;
-        self.refuse_unexpected(blanks(rest), &[])?;
+        self.refuse_unexpected(blanks(rest), b"=")?;
         let (rest, _) = cut(|rest| self.keyword(rest, "with", Wanted::With)).parse(rest)?;
         let (rest, right) = self.whole(rest, "with")?;
         Ok((rest, EntryKind::Compare { left, right }))
@@ -257,7 +257,7 @@ impl<'a> Reading<'a> {
 
     fn converge(&self, rest: &'a str, word: &'a str) -> Parsed<'a, EntryKind> {
         let (rest, expression) = self.whole(rest, word)?;
-        self.refuse_unexpected(blanks(rest), &[])?;
+        self.refuse_unexpected(blanks(rest), b"=")?;
         let (rest, _) = cut(|rest| self.keyword(rest, "over", Wanted::Over)).parse(rest)?;
         let (rest, system) = cut(|rest| self.name(rest)).parse(rest)?;
         let (rest, _) = cut(|rest| self.symbol(rest, ".", Wanted::Dot)).parse(rest)?;
@@ -309,6 +309,9 @@ impl<'a> Reading<'a> {
     /// Reads `in UNIT`, or nothing.
     fn unit(&self, rest: &'a str) -> Parsed<'a, Option<Expr>> {
         let (after, Some("in")) = opt(word_text).parse(blanks(rest))? else { return Ok((rest, None)) };
+        if blanks(after).starts_with('{') || blanks(after).is_empty() {
+            return cut(|rest| self.missing(rest, Wanted::Unit)).parse(blanks(after));
+        }
         let (rest, unit): (_, Grown) = self.following(after, "in", |rest| self.product_only(rest))?;
         Ok((rest, Some(*unit.tree)))
     }

@@ -7,7 +7,6 @@
 //! power   = primary { "'" } [ "^" exponent ]
 //! ```
 
-use nom::branch::alt;
 use nom::combinator::{cut, opt};
 use nom::{Err, Parser};
 
@@ -164,22 +163,23 @@ impl<'a> Reading<'a> {
     }
 
     fn primary(&self, start: &'a str) -> Parsed<'a, Grown> {
-        alt((
-            |rest| self.number_literal(rest),
-            |rest| self.named(rest),
-            |rest| self.parenthesised(rest),
-            |rest| self.bracket(rest),
-            |rest| self.ket(rest),
-            |rest| self.no_operand(rest),
-        ))
-        .parse(start)
+        match start.bytes().next() {
+            Some(b'0'..=b'9') => self.number_literal(start),
+            Some(b'a'..=b'z' | b'A'..=b'Z') => self.named(start),
+            Some(b'(') => self.parenthesised(start),
+            Some(b'<') => self.bracket(start),
+            Some(b'|') => self.ket(start),
+            _ => self.no_operand(start),
+        }
     }
 
+    #[inline(never)]
     fn number_literal(&self, start: &'a str) -> Parsed<'a, Grown> {
         let (after, kind) = self.number(start, false)?;
         Ok((after, Grown::leaf(kind, self.span(start, after))))
     }
 
+    #[inline(never)]
     fn named(&self, start: &'a str) -> Parsed<'a, Grown> {
         let (after, text) = name_text(start)?;
         if vocabulary::is_reserved(text) {
@@ -204,6 +204,7 @@ impl<'a> Reading<'a> {
         }
     }
 
+    #[inline(never)]
     fn parenthesised(&self, start: &'a str) -> Parsed<'a, Grown> {
         let Some(after) = start.strip_prefix('(') else { return self.missing(start, Wanted::Operand) };
         let (rest, mut inner) =
@@ -214,6 +215,7 @@ impl<'a> Reading<'a> {
     }
 
     /// Says why no term can begin here, where that is known.
+    #[inline(never)]
     fn no_operand(&self, start: &'a str) -> Parsed<'a, Grown> {
         let known = match start.as_bytes() {
             [b'.', next, ..] if next.is_ascii_digit() => Fault::DecimalPoint,
@@ -222,6 +224,7 @@ impl<'a> Reading<'a> {
             [b'\'', ..] => Fault::Prime { blank: false },
             [b'"', ..] => Fault::TextOutside,
             [b'\\', ..] => Fault::Backslash,
+            [b'+', ..] => Fault::LeadingPlus,
             _ => return self.missing(start, Wanted::Operand),
         };
         fault(start, &start[1..], known)
@@ -237,7 +240,7 @@ impl<'a> Reading<'a> {
         match parser(rest) {
             Err(Err::Error(trouble)) if trouble.left == blanks(rest).len() => {
                 let place = blanks(rest);
-                let after = Some(operator[..1].to_owned());
+                let after = Some(if operator.starts_with("..") { ".." } else { &operator[..1] }.to_owned());
                 fault(place, after_token(place), Fault::NoOperand { after, found: found(place) })
             }
             Err(Err::Error(trouble)) => Err(Err::Failure(trouble)),
@@ -263,13 +266,14 @@ impl<'a> Reading<'a> {
         Ok(Grown { tree: Box::new(Expr { kind, span }), height })
     }
 
-    fn before(&self, rest: &str) -> &'a str {
+    /// The text before a place.
+    pub fn before(&self, rest: &str) -> &'a str {
         &self.text()[..self.text().len() - rest.len()]
     }
 }
 
 /// Says whether a factor begins here, side by side with what stands before.
-fn begins_factor(start: &str, setting: Setting) -> bool {
+pub(super) fn begins_factor(start: &str, setting: Setting) -> bool {
     match start.as_bytes() {
         [b'(' | b'<' | b'0'..=b'9', ..] => true,
         [b'|', ..] => setting == Setting::Open,

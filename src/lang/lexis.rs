@@ -21,7 +21,7 @@ pub const LONGEST_NUMBER: usize = 100_000;
 /// The largest power of ten in a number's `e` part.
 pub const LARGEST_EXPONENT: u32 = 100_000;
 /// How deep brackets, signs, powers and labels may be nested.
-pub const DEEPEST_NESTING: usize = 200;
+pub const DEEPEST_NESTING: usize = 100;
 /// How high the tree of an expression may grow: bounds the recursion of everything that walks it.
 pub const TALLEST_TREE: usize = 500;
 
@@ -111,7 +111,7 @@ impl<'a> Reading<'a> {
         if vocabulary::is_reserved(text) || vocabulary::is_command(text) {
             let begins_entry = vocabulary::is_entry_word(text);
             if vocabulary::is_command(text) {
-                return fault(start, after, Fault::PromptCommand(text.to_owned()));
+                return fault(start, after, Fault::CommandAsName(text.to_owned()));
             }
             return fault(start, after, Fault::Reserved { word: text.to_owned(), begins_entry });
         }

@@ -16,6 +16,7 @@ mod entry;
 mod expression;
 mod lexis;
 mod lone;
+mod sentences;
 mod spans;
 mod spelling;
 

@@ -5,11 +5,12 @@ use nom::Err;
 use super::diagnostic::Diagnostic;
 use super::extent;
 use super::fault::{Fault, Found};
-use super::lexis::{LONGEST_ENTRY, Reading, found};
+use super::lexis::{LONGEST_ENTRY, Reading, blanks, found, word_text};
 use super::lone::lone_states;
 use super::spelling::{Spelling, spell};
 use super::tree::{Entry, Expr, Span};
 use super::trouble::{Parsed, Reason, Trouble, WantedSet};
+use super::vocabulary::{self, WordKind};
 
 /// Reads one entry. Spans are bytes of `text`.
 ///
@@ -65,6 +66,21 @@ fn read<T>(
 
 fn explain(reading: &Reading<'_>, trouble: Trouble) -> Diagnostic {
     let text = reading.text();
+    let mut diagnostic = explain_place(text, reading, trouble);
+    if diagnostic.help.is_none() {
+        diagnostic.help = form_of_entry(text);
+    }
+    diagnostic
+}
+
+/// Says how the entry is written whose word begins the text.
+fn form_of_entry(text: &str) -> Option<String> {
+    let (_, word) = word_text(blanks(text)).ok()?;
+    let page = vocabulary::vocabulary().find(word).filter(|page| page.kind == WordKind::Entry)?;
+    Some(format!("the entry is written `{}`", page.signature))
+}
+
+fn explain_place(text: &str, reading: &Reading<'_>, trouble: Trouble) -> Diagnostic {
     let start = text.len() - trouble.left.min(text.len());
     let rest = &text[start..];
     match trouble.reason {
@@ -182,7 +198,8 @@ mod tests {
             "<h[2p, m=1]|h[{n}p, m=m]>",
             "<u(w)| V |u(-w)>",
             "ket u(w) = R(w) D_z |g>",
-            "operator A = |a> (<a|)",
+            "operator A = |a><a|",
+            "operator A = (|a><a|) V (|b><b|) - V",
             "sum(n in 1 .. 20, <g| D_z |h[{n}p]>^2/(E(g) - E(h[{n}p])))",
         ] {
             assert_eq!(printed(text), text);

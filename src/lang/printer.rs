@@ -10,6 +10,8 @@ use super::tree::{
 /// How tightly a piece of text holds together, loosest first.
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
 enum Binding {
+    /// Where nothing follows that could be taken for part of a bracket: a projector `|a><b|` stands bare only there.
+    Whole,
     Sum,
     /// `-a`
     Sign,
@@ -39,7 +41,7 @@ fn piece(expr: &Expr, at_least: Binding, setting: Setting) -> Piece<'_> {
 }
 
 fn whole(expr: &Expr) -> Piece<'_> {
-    piece(expr, Binding::Sum, Setting::Open)
+    piece(expr, Binding::Whole, Setting::Open)
 }
 
 impl Display for Expr {
@@ -53,6 +55,7 @@ fn binding(expr: &Expr) -> Binding {
         ExprKind::Negate(_) => Binding::Sign,
         ExprKind::Without { .. } => Binding::Without,
         ExprKind::Primed(_) => Binding::Primed,
+        _ if is_projector(expr) => Binding::Whole,
         ExprKind::Binary { operation, .. } => match operation {
             Operation::Add | Operation::Subtract => Binding::Sum,
             Operation::Multiply | Operation::Juxtapose | Operation::Divide => Binding::Product,
@@ -62,6 +65,12 @@ fn binding(expr: &Expr) -> Binding {
         ExprKind::Measured { value, uncertainty } if concise(value, uncertainty).is_none() => Binding::Product,
         _ => Binding::Primary,
     }
+}
+
+/// Says whether an expression is `|a><b|`.
+fn is_projector(expr: &Expr) -> bool {
+    matches!(&expr.kind, ExprKind::Binary { operation: Operation::Juxtapose, left, right }
+        if matches!(left.kind, ExprKind::Ket(_)) && matches!(right.kind, ExprKind::Bra(_)))
 }
 
 impl Display for Piece<'_> {
@@ -93,6 +102,10 @@ fn write_expr(out: &mut Formatter<'_>, expr: &Expr, setting: Setting) -> fmt::Re
         }
         ExprKind::Labelled { system, label } => write!(out, "{system}{label}"),
         ExprKind::Negate(inner) => write!(out, "-{}", piece(inner, Binding::Without, setting)),
+        ExprKind::Binary { left, right, .. } if is_projector(expr) => {
+            write_expr(out, left, Setting::Open)?;
+            write_expr(out, right, Setting::Open)
+        }
         ExprKind::Binary { operation, left, right } => write_binary(out, *operation, left, right, setting),
         ExprKind::Primed(inner) => write!(out, "{}'", piece(inner, Binding::Primed, setting)),
         ExprKind::Without { body, manifold } => {

@@ -188,6 +188,9 @@ impl ParseError<&str> for Trouble {
 pub(super) type Parsed<'a, T> = IResult<&'a str, T, Trouble>;
 
 /// Stops reading for good at the text between `from` and `to` (both are rests of the same text).
+// Kept out of line: these values are large, and the parsers that recurse must not carry them in their frames.
+#[cold]
+#[inline(never)]
 pub(super) fn fault<T>(from: &str, to: &str, fault: Fault) -> Result<T, Err<Trouble>> {
     Err(Err::Failure(Trouble { left: from.len(), left_after: to.len(), reason: Reason::Fault(Box::new(fault)) }))
 }

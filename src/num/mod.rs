@@ -5,15 +5,21 @@
 pub mod ball;
 mod ball_functions;
 pub mod complex_ball;
+pub mod decimal;
 pub mod effort;
 pub mod error;
 mod exact_roots;
+pub mod render;
 pub mod scalar;
 pub mod surd;
+pub mod uncertain;
 
 pub use ball::Ball;
 pub use complex_ball::ComplexBall;
+pub use decimal::{Decimal, DecimalError, bits_for_digits, parse_decimal};
 pub use effort::{Effort, Interrupted};
 pub use error::{DigitCount, NumberError, Question};
+pub use render::{Agreement, Rendered, RenderedKind, digits_in_common, needs_more, render};
 pub use scalar::{Function, Scalar};
 pub use surd::Surd;
+pub use uncertain::{Measured, combine, concise, concise_float, parse_measured, parse_uncertain};

@@ -2,8 +2,9 @@
 
 use super::outcome::{Answer, AnswerKind};
 use crate::lang::tree::{Expr, ExprKind};
+use crate::num::render::{Agreement, RenderedKind, digits_in_common, render};
 use crate::num::{Scalar, decimal};
-use crate::sums::{Value, bits_for};
+use crate::sums::{Value, bits_for, brief};
 use rug::{Float, Rational};
 
 /// `compare A with B`: equal, or both values with difference, ratio and digits in common.
@@ -27,9 +28,9 @@ pub(super) fn comparison(a: &Value, b: &Value, digits: u32) -> Answer {
         answer.verdict = "equal".into();
         return answer;
     }
-    let common = decimal::digits_in_common(&a.scalar, &b.scalar, digits);
+    let common = common_digits(&a.scalar, &b.scalar, digits);
     if common >= digits {
-        let rendered = decimal::render(&a.scalar, digits);
+        let rendered = render(&a.scalar, digits);
         answer.lines.push(format!("~ equal to {digits} digits: {}", rendered.text));
         answer.value = Some(rendered.text);
         answer.digits = Some(digits);
@@ -54,13 +55,22 @@ pub(super) fn add_distance(answer: &mut Answer, difference: &Value) {
     let Some(sigma) = difference.sigma().filter(|sigma| !sigma.is_zero()) else { return };
     let Ok(ball) = difference.scalar.to_ball(128) else { return };
     let distance = Float::with_val(64, ball.re.mid() / sigma).abs();
-    answer.lines.push(format!(": {} standard uncertainties apart", decimal::brief(&distance, 2)));
+    answer.lines.push(format!(": {} standard uncertainties apart", brief(&distance)));
+}
+
+/// Digits in which two values agree, at most the number asked.
+fn common_digits(a: &Scalar, b: &Scalar, digits: u32) -> u32 {
+    match digits_in_common(a, b) {
+        Agreement::Equal => digits,
+        Agreement::Digits(common) => common.min(digits),
+        Agreement::SignsDiffer | Agreement::BothBelow { .. } => 0,
+    }
 }
 
 fn marked(scalar: &Scalar, digits: u32) -> String {
-    let rendered = decimal::render(scalar, digits);
+    let rendered = render(scalar, digits);
     match rendered.kind {
-        decimal::RenderedKind::Exact => format!("= {}", rendered.text),
+        RenderedKind::Exact => format!("= {}", rendered.text),
         _ => format!("~ {}", rendered.text),
     }
 }
@@ -105,7 +115,7 @@ pub(super) fn expectation(a: &Value, b: &Value, written: &Expr, digits: u32) -> 
     if a.scalar.is_exact() && b.scalar.is_exact() {
         return Err(missed());
     }
-    let common = decimal::digits_in_common(&a.scalar, &b.scalar, digits);
+    let common = common_digits(&a.scalar, &b.scalar, digits);
     if common >= digits {
         Ok(met(format!("~ holds to {digits} digits"), Some(digits)))
     } else {

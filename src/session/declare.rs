@@ -27,7 +27,12 @@ impl Declaration<'_> {
         Place { entry: self.entry, span }
     }
 
-    fn refuse<T>(&self, span: crate::lang::tree::Span, message: impl Into<String>, help: impl Into<String>) -> Result<T, Wrong> {
+    fn refuse<T>(
+        &self,
+        span: crate::lang::tree::Span,
+        message: impl Into<String>,
+        help: impl Into<String>,
+    ) -> Result<T, Wrong> {
         let fault = Fault::Other { message: message.into(), help: help.into() };
         Err(Wrong::Meaning(Problem::new(self.place(span), fault)))
     }
@@ -60,7 +65,11 @@ impl Declaration<'_> {
         let mut seen: Vec<&str> = Vec::new();
         for argument in arguments {
             let Argument::Named { name, value } = argument else {
-                return self.refuse(kind.span, "`hydrogenic` takes its arguments by name", "write `hydrogenic(Z=1)` or `hydrogenic(Z=2, mass=7294.3)`");
+                return self.refuse(
+                    kind.span,
+                    "`hydrogenic` takes its arguments by name",
+                    "write `hydrogenic(Z=1)` or `hydrogenic(Z=2, mass=7294.3)`",
+                );
             };
             if seen.contains(&name.text.as_str()) {
                 return self.refuse(name.span, format!("`{}` is given twice", name.text), "give it once");
@@ -120,7 +129,11 @@ impl Declaration<'_> {
         let mut matrices: Vec<(String, ExactMatrix)> = Vec::new();
         for argument in arguments {
             let Argument::Named { name, value } = argument else {
-                return self.refuse(kind.span, "`matrix` takes its arguments by name", "write `matrix(H = \"h.mtx\", V = [[0, 1], [1, 0]])`");
+                return self.refuse(
+                    kind.span,
+                    "`matrix` takes its arguments by name",
+                    "write `matrix(H = \"h.mtx\", V = [[0, 1], [1, 0]])`",
+                );
             };
             if matrices.iter().any(|(earlier, _)| *earlier == name.text) {
                 return self.refuse(name.span, format!("`{}` is given twice", name.text), "give it once");
@@ -128,8 +141,8 @@ impl Declaration<'_> {
             matrices.push((name.text.clone(), self.entries(value)?));
         }
         let operators = matrices.iter().map(|(name, _)| name.clone()).filter(|name| name != "H").collect();
-        let system = MatrixSystem::new(matrices)
-            .or_else(|error| self.refuse(kind.span, error.to_string(), error.help()))?;
+        let system =
+            MatrixSystem::new(matrices).or_else(|error| self.refuse(kind.span, error.to_string(), error.help()))?;
         Ok((system, operators))
     }
 
@@ -137,10 +150,13 @@ impl Declaration<'_> {
     fn entries(&self, value: &Expr) -> Result<ExactMatrix, Wrong> {
         let built = match &value.kind {
             ExprKind::Text(file) => {
-                let text = self
-                    .files
-                    .read(file)
-                    .or_else(|problem| self.refuse(value.span, problem.to_string(), "data files stand in the folder of the session file, or below it"))?;
+                let text = self.files.read(file).or_else(|problem| {
+                    self.refuse(
+                        value.span,
+                        problem.to_string(),
+                        "data files stand in the folder of the session file, or below it",
+                    )
+                })?;
                 ExactMatrix::from_matrix_market(&text)
             }
             ExprKind::List(rows) => {
@@ -170,7 +186,9 @@ impl Declaration<'_> {
     fn plain<'a>(&self, argument: &'a Argument, around: &Expr) -> Result<&'a Expr, Wrong> {
         match argument {
             Argument::Positional(expr) => Ok(expr),
-            _ => self.refuse(around.span, "numbers between commas are needed here", "write for instance `diag(1, 2, 3)`"),
+            _ => {
+                self.refuse(around.span, "numbers between commas are needed here", "write for instance `diag(1, 2, 3)`")
+            }
         }
     }
 

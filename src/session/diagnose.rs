@@ -12,8 +12,7 @@ pub(super) fn report_of(wrong: &Wrong) -> (Place, Diagnostic) {
         Wrong::Meaning(problem) => (problem.place, diagnostic_of_fault(problem.place.span, &problem.fault)),
         Wrong::Evaluation(failure) => {
             let trouble = &failure.trouble;
-            let mut diagnostic =
-                Diagnostic::new(failure.place.span, trouble.to_string()).with_label(trouble.label());
+            let mut diagnostic = Diagnostic::new(failure.place.span, trouble.to_string()).with_label(trouble.label());
             diagnostic.help = trouble.help();
             (failure.place, diagnostic)
         }

@@ -5,7 +5,8 @@ use super::files::DataFiles;
 use super::outcome::{Answer, AnswerKind};
 use super::scope::{Effect, Scope};
 use crate::lang::tree::{DigitsWanted, Entry, EntryKind, Expr, InspectVerb, Span};
-use crate::num::{Effort, Scalar, decimal, uncertain};
+use crate::num::render::{RenderedKind, render};
+use crate::num::{Effort, Scalar, uncertain};
 use crate::sums::{Environment, Failure, Trouble, Value, Wanted};
 use crate::theory::terms::{Place, ScalarTerm};
 use crate::theory::{Binding, Fault, Problem, Resolver, formula};
@@ -91,7 +92,9 @@ impl Evaluation<'_> {
                 let binding = Binding::Definition(Arc::new(definition));
                 Ok(Done::Declared(Effect::Bind(name.text.clone(), binding), Vec::new()))
             }
-            EntryKind::Evaluate { unit: Some(unit), .. } => self.not_yet(unit.span, "units (results are in atomic units)"),
+            EntryKind::Evaluate { unit: Some(unit), .. } => {
+                self.not_yet(unit.span, "units (results are in atomic units)")
+            }
             EntryKind::Evaluate { expression, unit: None } => {
                 let term = self.resolver().scalar(expression)?;
                 let value = self.scope.evaluator(self.effort).value(&term, self.scope.wanted)?;
@@ -130,7 +133,9 @@ impl Evaluation<'_> {
             self.fault(
                 expr.span,
                 Fault::Other {
-                    message: format!("the number of digits is a whole number from 1 to {LARGEST_DIGITS}, and this is {got}"),
+                    message: format!(
+                        "the number of digits is a whole number from 1 to {LARGEST_DIGITS}, and this is {got}"
+                    ),
                     help: "write for instance `digits 40`, or `digits exact`".into(),
                 },
             )
@@ -162,7 +167,7 @@ impl Evaluation<'_> {
 
     fn answer(&self, value: &Value) -> Answer {
         if let Some(sigma) = value.sigma() {
-            let text = uncertain::concise_of_scalar(&value.scalar, &sigma);
+            let text = concise(&value.scalar, &sigma);
             return Answer {
                 lines: vec![format!("~ {text}")],
                 kind: AnswerKind::Uncertain,
@@ -174,10 +179,10 @@ impl Evaluation<'_> {
             };
         }
         let asked = self.digits_wanted();
-        let rendered = decimal::render(&value.scalar, asked);
+        let rendered = render(&value.scalar, asked);
         let mut notes = Vec::new();
         let (line, kind, digits, verdict) = match rendered.kind {
-            decimal::RenderedKind::Exact => {
+            RenderedKind::Exact => {
                 let zero = matches!(&value.scalar, Scalar::Exact(x) if x.is_zero());
                 if zero && !value.rules.is_empty() {
                     (format!("= 0 exactly: {}", value.rules.join("; ")), AnswerKind::Zero, None, "zero, proved")
@@ -185,14 +190,14 @@ impl Evaluation<'_> {
                     (format!("= {}", rendered.text), AnswerKind::Exact, None, "exact")
                 }
             }
-            decimal::RenderedKind::Approximate { digits_held } if digits_held >= asked => {
+            RenderedKind::Approx { digits_held } if digits_held >= asked => {
                 (format!("~ {}", rendered.text), AnswerKind::Approximate, Some(asked), "digits hold")
             }
-            decimal::RenderedKind::Approximate { digits_held } => {
+            RenderedKind::Approx { digits_held } => {
                 notes.push(format!("{digits_held} of the {asked} digits asked hold{}", because(value)));
                 (format!("~ {}", rendered.text), AnswerKind::Approximate, Some(digits_held), "fewer digits than asked")
             }
-            decimal::RenderedKind::BelowZero { .. } => {
+            RenderedKind::BelowZero { .. } => {
                 notes.push(format!("the value cannot be told from zero{}", because(value)));
                 (format!("~ {}, not proved", rendered.text), AnswerKind::Zero, None, "zero, not proved")
             }
@@ -250,6 +255,14 @@ impl Evaluation<'_> {
                 }))
             }
         }
+    }
+}
+
+/// A real value with its standard uncertainty in the concise form.
+fn concise(scalar: &Scalar, sigma: &rug::Float) -> String {
+    match scalar.to_ball(256) {
+        Ok(ball) => uncertain::concise_float(ball.re.mid(), sigma),
+        Err(_) => render(scalar, 10).text,
     }
 }
 

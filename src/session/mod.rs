@@ -8,13 +8,13 @@ mod declare;
 mod diagnose;
 mod evaluate;
 pub mod files;
+mod notebook;
 pub mod outcome;
 mod replay;
 mod scope;
-mod notebook;
 mod words;
 
 pub use files::{DataFiles, FileProblem, NoFiles};
+pub use notebook::{Entered, EntryView, Refusal, Session};
 pub use outcome::{Answer, AnswerKind, Outcome, Report};
 pub use replay::{ReplayEntry, ReplayReport, ReplayVerdict};
-pub use notebook::{Entered, EntryView, Refusal, Session};

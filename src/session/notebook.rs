@@ -502,9 +502,11 @@ fn prose_of(item: &TextItem) -> Option<&str> {
 
 fn line_of_mut(item: &mut TextItem) -> Option<&mut Line> {
     match item {
-        TextItem::Header(line) | TextItem::Provenance(line) | TextItem::Prose(line) | TextItem::Blank(line) | TextItem::Stray(line) => {
-            Some(line)
-        }
+        TextItem::Header(line)
+        | TextItem::Provenance(line)
+        | TextItem::Prose(line)
+        | TextItem::Blank(line)
+        | TextItem::Stray(line) => Some(line),
         TextItem::Entry(_) => None,
     }
 }

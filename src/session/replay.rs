@@ -1,7 +1,7 @@
 //! Recomputes a session and compares with its record.
 
-use super::outcome::{Outcome, Report};
 use super::notebook::Session;
+use super::outcome::{Outcome, Report};
 use crate::num::decimal;
 use crate::sums::bits_for;
 use rug::{Float, Rational};
@@ -20,8 +20,12 @@ pub struct ReplayEntry {
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
 pub enum ReplayVerdict {
     /// The record holds; with the digits that were compared, where it is approximate.
-    Agrees { digits: Option<u32> },
-    Differs { digits_in_common: Option<u32> },
+    Agrees {
+        digits: Option<u32>,
+    },
+    Differs {
+        digits_in_common: Option<u32>,
+    },
     /// The entry has a result and the file records none.
     NotRecorded,
     /// A declaration or setting.
@@ -196,6 +200,9 @@ mod tests {
     fn exact_records_agree_to_the_letter() {
         assert_eq!(verdict("= 9/2", "= 9/2"), ReplayVerdict::Agrees { digits: None });
         assert_eq!(verdict("= 9/2", "~ 4.5"), ReplayVerdict::Differs { digits_in_common: None });
-        assert_eq!(verdict("~ 0 below 1e-40, not proved", "~ 0 below 1e-40, not proved"), ReplayVerdict::Agrees { digits: None });
+        assert_eq!(
+            verdict("~ 0 below 1e-40, not proved", "~ 0 below 1e-40, not proved"),
+            ReplayVerdict::Agrees { digits: None }
+        );
     }
 }

@@ -155,7 +155,9 @@ impl Evaluator<'_> {
                         .map(|s| Float::with_val(32, &step / s).to_f64());
                     let slow = range.is_some() && ratio.is_some_and(|ratio| ratio > SLOW_RATIO);
                     let radius = if slow { slow_radius(&step, ratio.unwrap_or(1.0)) } else { step.clone() };
-                    let wanted = magnitude(&value) >> bits;
+                    let size = magnitude(&value);
+                    // A zero has no size of its own to measure digits by.
+                    let wanted = if size.is_zero() { Float::with_val(32, 1) >> bits } else { size >> bits };
                     let exhausted = match range {
                         Some(_) => level.basis >= largest,
                         None => steps >= FIXED_SIZE_LEVELS,

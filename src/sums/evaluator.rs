@@ -205,23 +205,26 @@ impl<'s> Evaluator<'s> {
                 Ok(sum)
             }
             ScalarNode::ThreeJ(arguments) => {
+                let refused = |place, message: String| {
+                    Failure::new(place, Trouble::Refused { message, help: "write 0, 1/2, 1, 3/2, …".into() })
+                };
                 let mut values = Vec::with_capacity(arguments.len());
                 for argument in arguments {
                     let value = self.exact_scalar(argument, environment)?;
-                    values.push(value.as_rational().map(std::borrow::Cow::into_owned).ok_or_else(|| {
-                        let message = format!("a 3j symbol is asked of {value}, which is not a half-integer");
-                        Failure::new(
-                            argument.place,
-                            Trouble::Refused { message, help: "write 0, 1/2, 1, 3/2, …".into() },
-                        )
-                    })?);
+                    let Some(rational) = value.as_rational() else {
+                        return Err(refused(argument.place, format!("{value} is not a half-integer")));
+                    };
+                    values.push(
+                        HalfInteger::from_rational(&rational)
+                            .map_err(|error| refused(argument.place, error.to_string()))?,
+                    );
                 }
-                crate::angular::threej_of_rationals(&values).map(Scalar::Exact).map_err(|error| {
-                    Failure::new(
-                        place,
-                        Trouble::Refused { message: error.to_string(), help: "write 0, 1/2, 1, 3/2, …".into() },
-                    )
-                })
+                let [j1, j2, j3, m1, m2, m3] = values.as_slice() else {
+                    return Err(refused(place, "a 3j symbol has six arguments".into()));
+                };
+                threej(*j1, *j2, *j3, *m1, *m2, *m3)
+                    .map(Scalar::Exact)
+                    .map_err(|error| refused(place, error.to_string()))
             }
         }
     }

@@ -14,4 +14,5 @@ mod walker;
 pub use environment::Environment;
 pub use evaluator::{Evaluator, Systems};
 pub use problem::{Failure, Trouble};
+pub use root::brief;
 pub use value::{Value, Wanted, bits_for, measured_sources};

@@ -20,7 +20,7 @@ impl Failure {
     pub fn is_undecided(&self) -> bool {
         matches!(
             self.trouble,
-            Trouble::Number(NumberError::Undecided)
+            Trouble::Number(NumberError::Undecided { .. })
                 | Trouble::Obstacle(Obstacle::Undecided)
                 | Trouble::Undecided { .. }
         )
@@ -29,6 +29,14 @@ impl Failure {
     /// Tells whether a numeric evaluation may succeed where the exact one did not.
     pub fn is_inexact(&self) -> bool {
         matches!(self.trouble, Trouble::Obstacle(Obstacle::Inexact))
+    }
+
+    /// Tells whether the expression divides by exactly zero, or a resolvent stands at a level.
+    pub fn is_division_by_zero(&self) -> bool {
+        matches!(
+            self.trouble,
+            Trouble::Number(NumberError::DivisionByZero) | Trouble::Obstacle(Obstacle::Singular { .. })
+        )
     }
 
     pub fn is_interrupted(&self) -> bool {

@@ -3,6 +3,7 @@
 use super::environment::Environment;
 use super::evaluator::{Evaluated, Evaluator};
 use super::problem::{Failure, Trouble};
+use crate::num::render::render;
 use crate::num::{Ball, ComplexBall, Scalar, Surd};
 use crate::theory::terms::*;
 use rug::{Float, Rational};
@@ -167,6 +168,24 @@ impl Evaluator<'_> {
     /// close in with order 7/4; halving steps in between keep it safe.
     fn close_in(&mut self, sought: &Sought<'_>, mut low: Sample, mut high: Sample, bits: u32) -> Evaluated<Scalar> {
         let start = (low.clone(), high.clone());
+        if low.at < 0 && high.at > 0 {
+            // Digits are relative: zero itself is asked first, and then the bracket lies on one side of it.
+            let here = match self.sample(sought, Rational::new(), COARSE_BITS) {
+                Ok(here) => here,
+                Err(failure) if failure.is_division_by_zero() => {
+                    return Err(Failure::new(
+                        sought.place,
+                        Trouble::Pole { variable: sought.variable.to_string(), near: "0".into() },
+                    ));
+                }
+                Err(failure) => return Err(failure),
+            };
+            match here.sign {
+                Ordering::Equal => return Ok(Scalar::zero()),
+                sign if sign == low.sign => low = here,
+                _ => high = here,
+            }
+        }
         let target = bits + 8;
         let mut checked_pole = false;
         let mut slow_steps = 0;
@@ -312,6 +331,9 @@ fn short(value: &Rational) -> String {
 }
 
 /// A value to a few digits, for messages.
-fn brief(value: &Float) -> String {
-    crate::num::decimal::brief(value, 6)
+pub fn brief(value: &Float) -> String {
+    match Ball::with_radius(value.clone(), Float::new(32)) {
+        Ok(ball) => render(&Scalar::Approx(ComplexBall::real(ball)), 6).text,
+        Err(_) => value.to_string(),
+    }
 }

@@ -3,7 +3,8 @@
 use super::environment::Environment;
 use super::evaluator::{Evaluated, Evaluator};
 use super::problem::{Failure, Trouble};
-use crate::num::{Ball, Scalar, decimal};
+use crate::num::render::needs_more;
+use crate::num::{Ball, Scalar};
 use crate::theory::terms::*;
 use rug::{Float, Rational};
 
@@ -14,7 +15,7 @@ const GRADIENT_DIGITS: u32 = 12;
 const SHIFT_BITS: u32 = 24;
 
 /// How often precision is raised for a value before it is given with the digits it has.
-const RAISES: u32 = 6;
+const RAISES: u32 = 4;
 
 /// What was asked of a value.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
@@ -62,7 +63,9 @@ impl Evaluator<'_> {
         for (place, sigma) in measured_sources(term) {
             if sigma != 0 {
                 let gradient = self.gradient(term, place, &sigma)?;
-                sources.push((place, gradient));
+                if !gradient.is_zero() {
+                    sources.push((place, gradient));
+                }
             }
         }
         if wanted == Wanted::Exact && (!sources.is_empty() || matches!(scalar, Scalar::Approx(_))) {
@@ -78,7 +81,7 @@ impl Evaluator<'_> {
         for _ in 0..RAISES {
             match self.scalar(term, &Environment::default(), bits) {
                 Ok(scalar) => {
-                    if !decimal::needs_more(&scalar, digits) || self.limit.is_some() {
+                    if !needs_more(&scalar, digits) || self.limit.is_some() {
                         return Ok(scalar);
                     }
                     best = Some(scalar);

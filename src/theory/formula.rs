@@ -285,7 +285,11 @@ impl Expansion<'_, '_> {
 
     fn single(&mut self, factor: Expr) -> Monomial {
         let mut term = Monomial { number: Rational::from(1), scalars: Vec::new(), operators: Vec::new() };
-        if self.is_operator(&factor) { term.operators.push(factor) } else { term.scalars.push(factor) }
+        if self.is_operator(&factor) {
+            term.operators.push(factor)
+        } else {
+            term.scalars.push(factor)
+        }
         term
     }
 
@@ -392,9 +396,14 @@ fn written(terms: Vec<(Rational, Vec<Expr>)>) -> String {
         };
         text.push_str(sign);
         // Printed as one product, so that the printer sets the parentheses that reading back needs.
-        let front = (size != 1 || factors.is_empty()).then(|| expr(ExprKind::Number(size.numer().to_string()))).map(|n| {
-            if *size.denom() == 1 { n } else { binary(Operation::Divide, n, expr(ExprKind::Number(size.denom().to_string()))) }
-        });
+        let front =
+            (size != 1 || factors.is_empty()).then(|| expr(ExprKind::Number(size.numer().to_string()))).map(|n| {
+                if *size.denom() == 1 {
+                    n
+                } else {
+                    binary(Operation::Divide, n, expr(ExprKind::Number(size.denom().to_string())))
+                }
+            });
         let product = front.into_iter().chain(factors).reduce(|a, b| binary(Operation::Juxtapose, a, b));
         if let Some(product) = product {
             text.push_str(&product.to_string());
