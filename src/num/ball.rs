@@ -19,7 +19,7 @@ pub struct Ball {
     rad: Float,
 }
 
-/// Rounds a bound up to the bits of a radius.
+/// Rounds a bound up to the bits of a radius. Operands are references: an operator that owns one has rounded, to nearest, before this can.
 pub(crate) fn up<T>(value: T) -> Float
 where
     Float: AssignRound<T, Round = Round, Ordering = Ordering>,
@@ -27,7 +27,7 @@ where
     Float::with_val_round(RADIUS_BITS, value, Round::Up).0
 }
 
-/// Rounds a bound down to the bits of a radius.
+/// Rounds a bound down to the bits of a radius. Operands are references, as for [`up`].
 pub(crate) fn down<T>(value: T) -> Float
 where
     Float: AssignRound<T, Round = Round, Ordering = Ordering>,
@@ -50,7 +50,8 @@ impl Ball {
     /// Errors: `TooLarge` when either is not finite.
     pub(crate) fn enclose((mid, rounding): (Float, Ordering), mut rad: Float) -> Result<Self, NumberError> {
         if rounding != Ordering::Equal {
-            rad = up(&rad + unit_in_last_place(&mid));
+            let unit = unit_in_last_place(&mid);
+            rad = up(&rad + &unit);
         }
         if mid.is_finite() && rad.is_finite() {
             Ok(Ball { mid, rad })
@@ -127,7 +128,8 @@ impl Ball {
     ///
     /// Errors: `TooLarge` when the radius is not finite.
     pub fn widened(&self, more: &Float) -> Result<Self, NumberError> {
-        Self::enclose((self.mid.clone(), Ordering::Equal), up(&self.rad + Float::with_val(more.prec(), more.abs_ref())))
+        let more = up(more.abs_ref());
+        Self::enclose((self.mid.clone(), Ordering::Equal), up(&self.rad + &more))
     }
 
     /// Tells whether the ball is one point.

@@ -150,8 +150,9 @@ impl ComplexBall {
         })
     }
 
-    /// The quotient.
+    /// The quotient x / y.
     ///
+    /// Accuracy: radius (r_x + |x / y| r_y) / d with d the least distance of the divisor's ball from zero.
     /// Errors: `DivisionByZero` for the point zero, `Undecided` when the divisor's ball contains zero.
     pub fn div(&self, other: &Self) -> Result<Self, NumberError> {
         if other.is_exact_zero() {
@@ -163,11 +164,23 @@ impl ComplexBall {
         if other.is_real() {
             return Ok(ComplexBall { re: self.re.div(&other.re)?, im: self.im.div(&other.re)? });
         }
+        if other.re.is_exact_zero() {
+            return Ok(ComplexBall { re: self.im.div(&other.im)?, im: self.re.div(&other.im)?.neg() });
+        }
         // Twice through the length of the divisor rather than once through its square, which could leave the range of exponents.
-        let length = other.abs()?;
-        let direction = ComplexBall { re: other.re.div(&length)?, im: other.im.div(&length)?.neg() };
-        let product = self.mul(&direction)?;
-        Ok(ComplexBall { re: product.re.div(&length)?, im: product.im.div(&length)? })
+        let (numerator, divisor) = (self.without_radius()?, other.without_radius()?);
+        let length = divisor.re.hypot(&divisor.im)?;
+        let direction = ComplexBall { re: divisor.re.div(&length)?, im: divisor.im.div(&length)?.neg() };
+        let product = numerator.mul(&direction)?;
+        let quotient = ComplexBall { re: product.re.div(&length)?, im: product.im.div(&length)? };
+        let through_divisor = up(&quotient.magnitude_above() * &other.radius());
+        let moved = up(&self.radius() + &through_divisor);
+        quotient.widened(&up(&moved / &other.magnitude_below()))
+    }
+
+    /// The midpoint alone.
+    fn without_radius(&self) -> Result<Self, NumberError> {
+        Ok(ComplexBall { re: Ball::from_float(self.re.mid().clone())?, im: Ball::from_float(self.im.mid().clone())? })
     }
 
     /// The magnitude.
@@ -187,6 +200,7 @@ impl ComplexBall {
 
     /// The principal logarithm, imaginary part in (-pi, pi]; an exactly real negative number has imaginary part pi.
     ///
+    /// Accuracy: radius |r| / d with d the least distance of the ball from zero.
     /// Errors: `LogarithmOfZero`; `Undecided` when the ball touches zero or the negative real axis without lying in it.
     pub fn ln(&self) -> Result<Self, NumberError> {
         if self.is_exact_zero() {
@@ -195,7 +209,14 @@ impl ComplexBall {
         if self.contains_zero() {
             return Err(NumberError::Undecided { question: Question::LogarithmOfZero });
         }
-        Ok(ComplexBall { re: self.abs()?.ln()?, im: self.im.atan2(&self.re)? })
+        let im = self.im.atan2(&self.re)?;
+        let re = if self.is_real() {
+            self.re.abs().ln()?
+        } else {
+            let length = self.without_radius()?.abs()?;
+            length.ln()?.widened(&up(&self.radius() / &self.magnitude_below()))?
+        };
+        Ok(ComplexBall { re, im })
     }
 
     /// The principal square root, real part not negative; of an exactly real negative number the root on the positive imaginary axis.
