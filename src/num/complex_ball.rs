@@ -323,3 +323,58 @@ fn relative_sum(terms: &[(&Integer, &Rational)], bits: u32) -> Result<Ball, Numb
         working = working.saturating_mul(2).min(EVALUATION_BITS);
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn ball(re: (f64, f64), im: (f64, f64)) -> ComplexBall {
+        let part = |(mid, rad)| Ball::with_radius(Float::with_val(64, mid), Float::with_val(32, rad)).expect("finite");
+        ComplexBall::new(part(re), part(im))
+    }
+
+    #[test]
+    fn the_cut_belongs_to_its_upper_side() {
+        let minus_two = ball((-2.0, 0.0), (0.0, 0.0));
+        assert!(minus_two.ln().expect("defined").im.overlaps(&Ball::pi(64).expect("finite")));
+        let root = minus_two.sqrt().expect("defined");
+        assert!(root.re.is_exact_zero() && root.im.is_positive());
+        let below = ball((-2.0, 0.0), (-1e-9, 1e-10));
+        assert!(below.ln().expect("defined").im.is_negative() && below.sqrt().expect("defined").im.is_negative());
+        let touching = ball((-2.0, 0.0), (0.0, 1e-10));
+        let undecided = Err(NumberError::Undecided { question: Question::SideOfCut });
+        assert_eq!(touching.ln(), undecided);
+        assert_eq!(touching.sqrt(), undecided);
+        assert_eq!(touching.pow(&touching), undecided);
+    }
+
+    #[test]
+    fn reals_stay_real_and_imaginaries_divide_to_reals() {
+        let (x, y) = (ball((3.0, 1e-9), (0.0, 0.0)), ball((0.0, 0.0), (2.0, 1e-9)));
+        for result in
+            [x.exp(), x.ln(), x.sqrt(), x.sin(), x.cos(), x.pow(&x), x.powi(-3), y.div(&y), y.mul(&y), x.div(&x)]
+        {
+            assert!(result.expect("defined").is_real());
+        }
+    }
+
+    #[test]
+    fn exact_numbers_keep_their_bits_through_cancellation() {
+        let root = Surd::sqrt_of(&Rational::from(2)).expect("small");
+        let tiny = (&root - &Surd::one()).pow(300).expect("short");
+        let value = ComplexBall::from_surd(&tiny, 100).expect("nonzero");
+        let relative = Float::with_val(64, value.re.rad() / value.re.mid());
+        assert!(relative > 0 && relative < Float::with_val(64, Float::i_exp(1, -98)));
+        assert!(value.is_real());
+    }
+
+    #[test]
+    fn computed_numbers_come_in_with_their_error() {
+        let radius = Float::with_val(53, 0.5);
+        let value = ComplexBall::from_complex(Complex::with_val(64, (3, 4)), radius.clone()).expect("finite");
+        assert_eq!(value.midpoint(20), Complex::with_val(64, (3, 4)));
+        assert!(value.radius() >= 0.5f64.hypot(0.5) && value.radius() < 0.7072);
+        assert!(value.magnitude_below() <= 4.3012 && value.magnitude_above() >= 5.7);
+        assert!(ComplexBall::from_complex(Complex::with_val(64, (f64::NAN, 0)), radius).is_err());
+    }
+}
