@@ -102,7 +102,7 @@ proptest! {
                 let exact = if n < 0 { exact.recip() } else { exact };
                 prop_assert!(holds_rational(&power, &exact));
             }
-            Err(error) => prop_assert!(n < 0 && a.contains_zero() || n < 0 && a.powi(-n).unwrap().contains_zero(), "{error}"),
+            Err(error) => prop_assert!(n < 0 && (a.contains_zero() || a.powi(-n).unwrap().contains_zero()), "{error}"),
         }
         if let Some(order) = a.compare(b) {
             prop_assert_eq!(order, x.point.cmp(&y.point));
