@@ -5,7 +5,7 @@
 //! - A [`Surd`] is exact. It is zero only if the number is.
 //! - A [`Ball`] or [`ComplexBall`] contains the number it stands for, whatever was done to it; no infinity and nothing undefined leaves an operation.
 //! - A [`Scalar`] is exact as long as it can be; [`Scalar::is_zero`] is a proof.
-//! - [`render`] prints no digit that another number in the ball would not have.
+//! - [`fn@render`] prints no digit that another number in the ball would not have.
 
 pub mod ball;
 mod ball_functions;
