@@ -2,7 +2,7 @@
 
 use super::environment::Environment;
 use super::evaluator::{Evaluated, Evaluator};
-use super::problem::{Failure, Trouble};
+use super::problem::{Failure, NoSignChange, Trouble};
 use crate::num::render::render;
 use crate::num::{Ball, ComplexBall, Scalar, Surd};
 use crate::theory::terms::*;
@@ -151,14 +151,14 @@ impl Evaluator<'_> {
         }
         Ok(Failure::new(
             sought.place,
-            Trouble::NoSignChange {
+            Trouble::NoSignChange(Box::new(NoSignChange {
                 variable: sought.variable.to_string(),
                 from: short(&low.at),
                 to: short(&high.at),
                 at_from: brief(&low.value),
                 at_to: brief(&high.value),
                 inside,
-            },
+            })),
         ))
     }
 
