@@ -64,7 +64,7 @@ fn alternating_sum(lower: &[i32; 4], upper: &[i32; 3]) -> Rational {
         }
         // 1 - (up/down) (numer/denom)
         denom *= down;
-        numer = Integer::from(&denom - up * numer);
+        numer = &denom - up * numer;
     }
     leading * Rational::from((numer, denom))
 }
