@@ -139,7 +139,7 @@ impl Evaluator<'_> {
         let width = Rational::from(&high.at - &low.at);
         let mut last = low.clone();
         for step in 1..SCAN_POINTS {
-            let at = (&low.at + (&width * Rational::from((step, SCAN_POINTS))));
+            let at = &low.at + (&width * Rational::from((step, SCAN_POINTS)));
             let Ok(here) = self.sample(sought, at, COARSE_BITS) else { continue };
             if here.sign != last.sign {
                 inside.push((short(&last.at), short(&here.at)));
