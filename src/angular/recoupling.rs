@@ -64,7 +64,7 @@ fn alternating_sum(lower: &[i32; 4], upper: &[i32; 3]) -> Rational {
         }
         // 1 - (up/down) (numer/denom)
         denom *= down;
-        numer = &denom - up * numer;
+        numer = Integer::from(&denom - up * numer);
     }
     leading * Rational::from((numer, denom))
 }
