@@ -19,7 +19,7 @@ pub struct Ball {
     rad: Float,
 }
 
-/// Rounds a bound up to the bits of a radius.
+/// Rounds a bound up to the bits of a radius. Operands are references: an operator that owns one has rounded, to nearest, before this can.
 pub(crate) fn up<T>(value: T) -> Float
 where
     Float: AssignRound<T, Round = Round, Ordering = Ordering>,
@@ -27,7 +27,7 @@ where
     Float::with_val_round(RADIUS_BITS, value, Round::Up).0
 }
 
-/// Rounds a bound down to the bits of a radius.
+/// Rounds a bound down to the bits of a radius. Operands are references, as for [`up`].
 pub(crate) fn down<T>(value: T) -> Float
 where
     Float: AssignRound<T, Round = Round, Ordering = Ordering>,
@@ -50,7 +50,8 @@ impl Ball {
     /// Errors: `TooLarge` when either is not finite.
     pub(crate) fn enclose((mid, rounding): (Float, Ordering), mut rad: Float) -> Result<Self, NumberError> {
         if rounding != Ordering::Equal {
-            rad = up(&rad + unit_in_last_place(&mid));
+            let unit = unit_in_last_place(&mid);
+            rad = up(&rad + &unit);
         }
         if mid.is_finite() && rad.is_finite() {
             Ok(Ball { mid, rad })
@@ -127,7 +128,8 @@ impl Ball {
     ///
     /// Errors: `TooLarge` when the radius is not finite.
     pub fn widened(&self, more: &Float) -> Result<Self, NumberError> {
-        Self::enclose((self.mid.clone(), Ordering::Equal), up(&self.rad + Float::with_val(more.prec(), more.abs_ref())))
+        let more = up(more.abs_ref());
+        Self::enclose((self.mid.clone(), Ordering::Equal), up(&self.rad + &more))
     }
 
     /// Tells whether the ball is one point.
@@ -287,5 +289,60 @@ impl Ball {
             }
         }
         if exponent < 0 { Self::from_i32(1, self.bits()).div(&result) } else { Ok(result) }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn ball(mid: f64, rad: f64) -> Ball {
+        Ball::with_radius(Float::with_val(64, mid), Float::with_val(32, rad)).expect("finite")
+    }
+
+    #[test]
+    fn exact_operations_stay_points() {
+        let (a, b) = (ball(1.5, 0.0), ball(-0.25, 0.0));
+        for result in [a.add(&b), a.sub(&b), a.mul(&b), a.div(&b), a.powi(7), b.powi(-3), Ok(a.neg())] {
+            assert!(result.expect("finite").is_exact());
+        }
+    }
+
+    #[test]
+    fn a_rounded_result_is_one_unit_wide() {
+        let third = ball(1.0, 0.0).div(&ball(3.0, 0.0)).expect("nonzero");
+        // 1/3 lies in [2^-2, 2^-1): its last place at 64 bits is 2^-65
+        assert_eq!(*third.rad(), Float::with_val(32, Float::i_exp(1, -65)));
+    }
+
+    #[test]
+    fn division_by_what_may_be_zero() {
+        let one = ball(1.0, 0.0);
+        assert_eq!(one.div(&ball(0.0, 0.0)), Err(NumberError::DivisionByZero));
+        assert_eq!(one.div(&ball(1.0, 1.0)), Err(NumberError::Undecided { question: Question::DivisorIsZero }));
+        assert_eq!(one.powi(0).map(|x| x.mid().to_f64()), Ok(1.0));
+    }
+
+    #[test]
+    fn signs_are_certain_or_absent() {
+        assert!(ball(1.0, 0.999).is_positive() && !ball(1.0, 1.0).is_positive());
+        assert!(ball(-1.0, 0.999).is_negative() && !ball(-1.0, 1.0).is_negative());
+        assert_eq!(ball(0.0, 0.0).sign(), Some(Ordering::Equal));
+        assert_eq!(ball(0.0, 1e-30).sign(), None);
+        assert_eq!(ball(1.0, 0.25).compare(&ball(2.0, 0.25)), Some(Ordering::Less));
+        assert_eq!(ball(1.0, 0.5).compare(&ball(2.0, 0.5)), None);
+    }
+
+    #[test]
+    fn numbers_out_of_range_are_errors() {
+        let huge = Ball::from_float(Float::with_val(64, Float::i_exp(1, 1 << 29))).expect("finite");
+        assert_eq!(huge.mul(&huge).and_then(|x| x.mul(&huge)), Err(NumberError::beyond_exponent_range()));
+        assert_eq!(huge.powi(i64::MAX), Err(NumberError::beyond_exponent_range()));
+        assert!(Ball::from_float(Float::with_val(64, rug::float::Special::Nan)).is_err());
+        assert!(Ball::with_radius(Float::new(64), Float::with_val(32, rug::float::Special::Infinity)).is_err());
+        // towards zero a product is lost, but not claimed to be zero
+        let tiny = ball(1.0, 0.0).div(&huge).expect("nonzero");
+        let product = tiny.mul(&tiny).and_then(|x| x.mul(&tiny)).expect("contained");
+        assert!(product.contains_zero() && !product.is_exact_zero());
     }
 }

@@ -149,3 +149,52 @@ impl Ball {
         Self::enclose(nearest(bits, self.mid().atan2_ref(x.mid())), rad)
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use rug::Rational;
+
+    fn ball(mid: f64, rad: f64) -> Ball {
+        Ball::with_radius(Float::with_val(64, mid), Float::with_val(32, rad)).expect("finite")
+    }
+
+    #[test]
+    fn functions_of_a_point_lose_no_more_than_a_unit() {
+        let x = ball(1.25, 0.0);
+        let (sine, cosine) = x.sin_cos().expect("defined");
+        let (hyperbolic_sine, hyperbolic_cosine) = x.sinh_cosh().expect("defined");
+        let functions = [x.sqrt(), x.exp(), x.ln(), x.hypot(&x), x.atan2(&ball(3.0, 0.0)), Ball::pi(64)];
+        for y in
+            functions.into_iter().map(|y| y.expect("defined")).chain([sine, cosine, hyperbolic_sine, hyperbolic_cosine])
+        {
+            let relative = Float::with_val(64, y.rad() / y.mid());
+            assert!(relative > 0 && relative <= Float::with_val(64, Float::i_exp(1, -63)), "{y:?}");
+        }
+    }
+
+    #[test]
+    fn roots_and_logarithms_at_the_edge_of_their_domain() {
+        let zero = ball(0.0, 0.0);
+        assert_eq!(zero.sqrt(), Ok(zero.clone()));
+        assert_eq!(zero.ln(), Err(NumberError::LogarithmOfZero));
+        assert_eq!(ball(-1.0, 0.5).sqrt(), Err(NumberError::NotReal { function: "the square root" }));
+        assert_eq!(ball(1.0, 1.0).sqrt(), Err(NumberError::Undecided { question: Question::SideOfCut }));
+        assert_eq!(ball(1.0, 1.0).ln(), Err(NumberError::Undecided { question: Question::LogarithmOfZero }));
+        assert_eq!(zero.atan2(&zero), Err(NumberError::LogarithmOfZero));
+        assert_eq!(
+            ball(0.0, 0.1).atan2(&ball(-1.0, 0.0)),
+            Err(NumberError::Undecided { question: Question::SideOfCut })
+        );
+        assert!(zero.atan2(&ball(-1.0, 0.5)).expect("on the cut").overlaps(&Ball::pi(64).expect("finite")));
+    }
+
+    #[test]
+    fn an_angle_known_to_no_period_has_any_sine() {
+        let sine = ball(1e9, 100.0).sin().expect("bounded");
+        assert!(sine.contains_rational(&Rational::from(1)) && sine.contains_rational(&Rational::from(-1)));
+        let far = Ball::from_float(Float::with_val(64, Float::i_exp(1, 1 << 28))).expect("finite");
+        assert_eq!(far.sin(), Err(NumberError::TooLarge { decimal_digits: DigitCount::About(80_807_124) }));
+        assert_eq!(far.exp(), Err(NumberError::beyond_exponent_range()));
+    }
+}

@@ -150,8 +150,9 @@ impl ComplexBall {
         })
     }
 
-    /// The quotient.
+    /// The quotient x / y.
     ///
+    /// Accuracy: radius (r_x + |x / y| r_y) / d with d the least distance of the divisor's ball from zero.
     /// Errors: `DivisionByZero` for the point zero, `Undecided` when the divisor's ball contains zero.
     pub fn div(&self, other: &Self) -> Result<Self, NumberError> {
         if other.is_exact_zero() {
@@ -163,11 +164,23 @@ impl ComplexBall {
         if other.is_real() {
             return Ok(ComplexBall { re: self.re.div(&other.re)?, im: self.im.div(&other.re)? });
         }
+        if other.re.is_exact_zero() {
+            return Ok(ComplexBall { re: self.im.div(&other.im)?, im: self.re.div(&other.im)?.neg() });
+        }
         // Twice through the length of the divisor rather than once through its square, which could leave the range of exponents.
-        let length = other.abs()?;
-        let direction = ComplexBall { re: other.re.div(&length)?, im: other.im.div(&length)?.neg() };
-        let product = self.mul(&direction)?;
-        Ok(ComplexBall { re: product.re.div(&length)?, im: product.im.div(&length)? })
+        let (numerator, divisor) = (self.without_radius()?, other.without_radius()?);
+        let length = divisor.re.hypot(&divisor.im)?;
+        let direction = ComplexBall { re: divisor.re.div(&length)?, im: divisor.im.div(&length)?.neg() };
+        let product = numerator.mul(&direction)?;
+        let quotient = ComplexBall { re: product.re.div(&length)?, im: product.im.div(&length)? };
+        let through_divisor = up(&quotient.magnitude_above() * &other.radius());
+        let moved = up(&self.radius() + &through_divisor);
+        quotient.widened(&up(&moved / &other.magnitude_below()))
+    }
+
+    /// The midpoint alone.
+    fn without_radius(&self) -> Result<Self, NumberError> {
+        Ok(ComplexBall { re: Ball::from_float(self.re.mid().clone())?, im: Ball::from_float(self.im.mid().clone())? })
     }
 
     /// The magnitude.
@@ -187,6 +200,7 @@ impl ComplexBall {
 
     /// The principal logarithm, imaginary part in (-pi, pi]; an exactly real negative number has imaginary part pi.
     ///
+    /// Accuracy: radius |r| / d with d the least distance of the ball from zero.
     /// Errors: `LogarithmOfZero`; `Undecided` when the ball touches zero or the negative real axis without lying in it.
     pub fn ln(&self) -> Result<Self, NumberError> {
         if self.is_exact_zero() {
@@ -195,7 +209,14 @@ impl ComplexBall {
         if self.contains_zero() {
             return Err(NumberError::Undecided { question: Question::LogarithmOfZero });
         }
-        Ok(ComplexBall { re: self.abs()?.ln()?, im: self.im.atan2(&self.re)? })
+        let im = self.im.atan2(&self.re)?;
+        let re = if self.is_real() {
+            self.re.abs().ln()?
+        } else {
+            let length = self.without_radius()?.abs()?;
+            length.ln()?.widened(&up(&self.radius() / &self.magnitude_below()))?
+        };
+        Ok(ComplexBall { re, im })
     }
 
     /// The principal square root, real part not negative; of an exactly real negative number the root on the positive imaginary axis.
@@ -300,5 +321,60 @@ fn relative_sum(terms: &[(&Integer, &Rational)], bits: u32) -> Result<Ball, Numb
             return Err(NumberError::Undecided { question: Question::Sign });
         }
         working = working.saturating_mul(2).min(EVALUATION_BITS);
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn ball(re: (f64, f64), im: (f64, f64)) -> ComplexBall {
+        let part = |(mid, rad)| Ball::with_radius(Float::with_val(64, mid), Float::with_val(32, rad)).expect("finite");
+        ComplexBall::new(part(re), part(im))
+    }
+
+    #[test]
+    fn the_cut_belongs_to_its_upper_side() {
+        let minus_two = ball((-2.0, 0.0), (0.0, 0.0));
+        assert!(minus_two.ln().expect("defined").im.overlaps(&Ball::pi(64).expect("finite")));
+        let root = minus_two.sqrt().expect("defined");
+        assert!(root.re.is_exact_zero() && root.im.is_positive());
+        let below = ball((-2.0, 0.0), (-1e-9, 1e-10));
+        assert!(below.ln().expect("defined").im.is_negative() && below.sqrt().expect("defined").im.is_negative());
+        let touching = ball((-2.0, 0.0), (0.0, 1e-10));
+        let undecided = Err(NumberError::Undecided { question: Question::SideOfCut });
+        assert_eq!(touching.ln(), undecided);
+        assert_eq!(touching.sqrt(), undecided);
+        assert_eq!(touching.pow(&touching), undecided);
+    }
+
+    #[test]
+    fn reals_stay_real_and_imaginaries_divide_to_reals() {
+        let (x, y) = (ball((3.0, 1e-9), (0.0, 0.0)), ball((0.0, 0.0), (2.0, 1e-9)));
+        for result in
+            [x.exp(), x.ln(), x.sqrt(), x.sin(), x.cos(), x.pow(&x), x.powi(-3), y.div(&y), y.mul(&y), x.div(&x)]
+        {
+            assert!(result.expect("defined").is_real());
+        }
+    }
+
+    #[test]
+    fn exact_numbers_keep_their_bits_through_cancellation() {
+        let root = Surd::sqrt_of(&Rational::from(2)).expect("small");
+        let tiny = (&root - &Surd::one()).pow(300).expect("short");
+        let value = ComplexBall::from_surd(&tiny, 100).expect("nonzero");
+        let relative = Float::with_val(64, value.re.rad() / value.re.mid());
+        assert!(relative > 0 && relative < Float::with_val(64, Float::i_exp(1, -98)));
+        assert!(value.is_real());
+    }
+
+    #[test]
+    fn computed_numbers_come_in_with_their_error() {
+        let radius = Float::with_val(53, 0.5);
+        let value = ComplexBall::from_complex(Complex::with_val(64, (3, 4)), radius.clone()).expect("finite");
+        assert_eq!(value.midpoint(20), Complex::with_val(64, (3, 4)));
+        assert!(value.radius() >= 0.5f64.hypot(0.5) && value.radius() < 0.7072);
+        assert!(value.magnitude_below() <= 4.3012 && value.magnitude_above() >= 5.7);
+        assert!(ComplexBall::from_complex(Complex::with_val(64, (f64::NAN, 0)), radius).is_err());
     }
 }

@@ -148,7 +148,8 @@ impl Decimal {
                 format!("{sign}{digits}{}", "0".repeat(if digits == "0" { 0 } else { zeros }))
             }
             Ok(places) => {
-                let padded = format!("{digits:0>width$}", width = places + 1);
+                // A format width would end at 65,535.
+                let padded = format!("{}{digits}", "0".repeat((places + 1).saturating_sub(digits.len())));
                 let (whole, fraction) = padded.split_at(padded.len() - places);
                 format!("{sign}{whole}.{fraction}")
             }
@@ -255,6 +256,7 @@ mod tests {
         assert_eq!(number(10, -2).plain(), "0.10");
         assert_eq!(number(-12, 2).plain(), "-1200");
         assert_eq!(number(0, -3).plain(), "0.000");
+        assert_eq!(number(5, -100_000).plain().len(), 100_002);
         assert_eq!(number(-150, -14).scientific(-12), "-1.50e-12");
         assert_eq!(number(999, 0).leading_power(), Some(2));
     }

@@ -100,3 +100,24 @@ impl NumberError {
         }
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn messages_say_what_and_how_long() {
+        let error = |decimal_digits| NumberError::TooLarge { decimal_digits }.to_string();
+        assert_eq!(
+            error(DigitCount::About(301_029_995_664)),
+            "the number would have about 301029995664 digits, more than can be worked with"
+        );
+        assert_eq!(
+            error(DigitCount::MoreThan(1_000_000_000_000_000_000)),
+            "the number would have more than 10^18 digits, more than can be worked with"
+        );
+        let undecided = NumberError::Undecided { question: Question::DivisorIsZero };
+        assert_eq!(undecided.to_string(), "whether the divisor is zero cannot be decided at this precision");
+        assert!(undecided.is_undecided() && undecided.help().is_some());
+    }
+}

@@ -10,7 +10,8 @@
 
 use super::ball::Ball;
 use super::complex_ball::ComplexBall;
-use super::decimal::Decimal;
+use super::decimal::{Decimal, bits_for_digits};
+use super::error::NumberError;
 use super::scalar::Scalar;
 use super::uncertain::{SMALLEST_PLAIN_POWER, concise_text};
 use rug::float::Round;
@@ -57,6 +58,14 @@ pub fn render(value: &Scalar, digits: u32) -> Rendered {
     }
 }
 
+/// Writes a number as a decimal to `digits` significant digits, an exact one too.
+///
+/// Errors: as the conversion of an exact number to a ball.
+pub fn render_decimal(value: &Scalar, digits: u32) -> Result<Rendered, NumberError> {
+    let guarded = bits_for_digits(digits.saturating_add(20));
+    Ok(render(&Scalar::Approx(value.to_ball(guarded)?), digits))
+}
+
 /// Tells whether a wider working precision is needed to print `digits` certain digits. A number that may be zero always needs more.
 pub fn needs_more(value: &Scalar, digits: u32) -> bool {
     match value {
@@ -77,7 +86,7 @@ pub fn digits_in_common(left: &Scalar, right: &Scalar) -> Agreement {
         Scalar::Approx(ball) => ball.bits().saturating_add(64),
         Scalar::Exact(_) => 128,
     };
-    let agreement = || -> Result<Agreement, super::NumberError> {
+    let agreement = || -> Result<Agreement, NumberError> {
         let difference = left.sub(right, exact_bits(left).max(exact_bits(right)))?;
         if difference.is_zero() {
             return Ok(Agreement::Equal);
@@ -334,6 +343,11 @@ mod tests {
         let value = Scalar::from(Rational::from((9, 2)));
         assert_eq!(render(&value, 3), Rendered { text: "9/2".into(), kind: RenderedKind::Exact });
         assert!(!needs_more(&value, 1_000_000));
+        assert_eq!(render_decimal(&value, 3).map(|r| r.text), Ok("4.50".to_string()));
+        assert_eq!(
+            render_decimal(&Scalar::from(Rational::from((-1, 3))), 4).map(|r| r.text),
+            Ok("-0.3333".to_string())
+        );
     }
 
     #[test]

@@ -18,7 +18,7 @@ const LARGEST_TERM_COUNT: usize = 64;
 /// Largest numerator or denominator of an exact number, in bits.
 const LARGEST_EXACT_BITS: u64 = 4_000_000;
 
-/// Largest size of a product of exact numbers: number of products of terms times bits in each.
+/// Largest size of a product or sum of exact numbers: number of terms multiplied or added times bits in each.
 const LARGEST_PRODUCT: u64 = 1 << 26;
 
 /// An exact number, or a ball that contains the number.
@@ -138,7 +138,7 @@ impl Scalar {
 
     pub fn add(&self, other: &Self, bits: u32) -> Result<Self, NumberError> {
         if let (Scalar::Exact(a), Scalar::Exact(b)) = (self, other)
-            && let Some(sum) = short_enough(a + b)
+            && let Some(sum) = short_sum(a, b)
         {
             return Ok(Scalar::Exact(sum));
         }
@@ -334,6 +334,16 @@ fn short_enough(value: Surd) -> Option<Surd> {
     (value.term_count() <= LARGEST_TERM_COUNT && u64::from(value.bits()) <= LARGEST_EXACT_BITS).then_some(value)
 }
 
+/// The sum unless it is, or would be on the way, too long.
+fn short_sum(a: &Surd, b: &Surd) -> Option<Surd> {
+    let bits = u64::from(a.bits()) + u64::from(b.bits());
+    let sums = (a.term_count() + b.term_count()) as u64;
+    if sums.saturating_mul(bits) > LARGEST_PRODUCT {
+        return None;
+    }
+    short_enough(a + b)
+}
+
 /// The product unless it is, or would be on the way, too long.
 fn short_product(a: &Surd, b: &Surd) -> Option<Surd> {
     let bits = u64::from(a.bits()) + u64::from(b.bits());
@@ -352,4 +362,92 @@ fn short_inverse(value: &Surd) -> Option<Surd> {
         return None;
     }
     short_enough(value.inverse()?)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn root(n: i64) -> Scalar {
+        Scalar::from(n).apply(Function::Sqrt, 64).expect("defined")
+    }
+
+    #[test]
+    fn exact_functions_of_exact_numbers() {
+        for (argument, function, expected) in [
+            (Scalar::zero(), Function::Exp, Scalar::one()),
+            (Scalar::zero(), Function::Sin, Scalar::zero()),
+            (Scalar::zero(), Function::Cos, Scalar::one()),
+            (Scalar::one(), Function::Ln, Scalar::zero()),
+            (Scalar::from(Rational::from((9, 4))), Function::Sqrt, Scalar::from(Rational::from((3, 2)))),
+            (Scalar::from(-4), Function::Sqrt, Scalar::from(2).mul(&Scalar::i(), 64).expect("exact")),
+            (Scalar::from(-3), Function::Abs, Scalar::from(3)),
+            (Scalar::from(Surd::gaussian(Rational::from(3), Rational::from(4))), Function::Abs, Scalar::from(5)),
+            (Scalar::from(Surd::gaussian(Rational::from(1), Rational::from(1))), Function::Abs, root(2)),
+            (root(2).sub(&root(3), 64).expect("exact"), Function::Abs, root(3).sub(&root(2), 64).expect("exact")),
+            (Scalar::i(), Function::Re, Scalar::zero()),
+            (Scalar::i(), Function::Im, Scalar::one()),
+            (Scalar::i(), Function::Conj, Scalar::i().neg()),
+        ] {
+            assert_eq!(argument.apply(function, 64), Ok(expected), "{function:?} of {argument:?}");
+        }
+        assert_eq!(Scalar::zero().apply(Function::Ln, 64), Err(NumberError::LogarithmOfZero));
+        assert!(!Scalar::one().apply(Function::Exp, 64).expect("defined").is_exact());
+    }
+
+    #[test]
+    fn quotients_of_sums_of_roots_are_exact() {
+        let x = root(2).add(&root(3), 64).expect("exact");
+        let inverse = Scalar::one().div(&x, 64).expect("nonzero");
+        assert_eq!(inverse, root(3).sub(&root(2), 64).expect("exact"));
+        assert_eq!(x.div(&Scalar::zero(), 64), Err(NumberError::DivisionByZero));
+        assert_eq!(x.sub(&x, 64).expect("exact"), Scalar::zero());
+    }
+
+    #[test]
+    fn numbers_too_long_to_stay_exact_become_balls() {
+        let mut sum = Scalar::zero();
+        let mut primes = Vec::new();
+        for n in 2..400i64 {
+            if primes.iter().all(|p| n % p != 0) {
+                primes.push(n);
+                sum = sum.add(&root(n), 64).expect("finite");
+            }
+        }
+        assert_eq!(primes.len(), 78);
+        let Scalar::Approx(ball) = &sum else { panic!("78 roots are too many") };
+        let reference: f64 = primes.iter().map(|p| (*p as f64).sqrt()).sum();
+        assert!((ball.re.mid().to_f64() - reference).abs() < 1e-9 && ball.is_real());
+        let long = Scalar::from(Rational::from(Integer::from(1) << 2_100_000u32));
+        assert!(long.is_exact() && !long.mul(&long, 64).expect("finite").is_exact());
+        assert!(long.mul(&Scalar::zero(), 64).expect("finite").is_zero());
+    }
+
+    #[test]
+    fn powers_of_balls() {
+        let pi = Scalar::pi(128).expect("finite");
+        assert_eq!(pi.pow(&Scalar::zero(), 128), Ok(Scalar::one()));
+        let square = pi.pow(&Scalar::from(2), 128).expect("finite");
+        let back = square.pow(&Scalar::from(Rational::from((1, 2))), 128).expect("positive");
+        let difference = back.sub(&pi, 128).expect("finite");
+        assert!(difference.may_be_zero() && !difference.is_zero() && difference.is_real());
+        assert!(matches!(pi.pow(&Scalar::from(1_000_000_000_000), 128), Err(NumberError::TooLarge { .. })));
+        let around_zero = difference.pow(&Scalar::from(Rational::from((1, 3))), 128);
+        assert_eq!(around_zero, Err(NumberError::Undecided { question: Question::BaseIsZero }));
+        assert_eq!(Scalar::zero().pow(&pi, 128), Ok(Scalar::zero()));
+        assert_eq!(Scalar::zero().pow(&pi.neg(), 128), Err(NumberError::DivisionByZero));
+        // i^i = exp(-pi/2)
+        let power = Scalar::i().pow(&Scalar::i(), 128).expect("defined");
+        let expected = pi.div(&Scalar::from(-2), 128).and_then(|x| x.apply(Function::Exp, 128)).expect("finite");
+        assert!(power.is_real() || power.im().may_be_zero());
+        assert!(power.re().sub(&expected, 128).expect("finite").may_be_zero());
+    }
+
+    #[test]
+    fn order_of_real_numbers() {
+        assert_eq!(root(2).compare(&Scalar::from(Rational::from((7, 5))), 64), Ok(Ordering::Greater));
+        assert_eq!(Scalar::i().sign(), Err(NumberError::NotOrdered));
+        let pi = Scalar::pi(64).expect("finite");
+        assert_eq!(pi.compare(&pi, 64), Err(NumberError::Undecided { question: Question::Sign }));
+    }
 }

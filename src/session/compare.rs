@@ -90,12 +90,11 @@ pub(super) fn expectation(a: &Value, b: &Value, written: &Expr, digits: u32) -> 
         verdict: "holds".into(),
         notes: Vec::new(),
     };
-    if a.scalar.is_exact() && b.scalar.is_exact() && b.sigma().is_none() {
-        if let (Scalar::Exact(x), Scalar::Exact(y)) = (&a.scalar, &b.scalar)
-            && x == y
-        {
-            return Ok(met("= holds".into(), None));
-        }
+    if let (Scalar::Exact(x), Scalar::Exact(y)) = (&a.scalar, &b.scalar)
+        && b.sigma().is_none()
+        && x == y
+    {
+        return Ok(met("= holds".into(), None));
     }
     let missed = || {
         format!(

@@ -34,7 +34,7 @@ impl Declaration<'_> {
         help: impl Into<String>,
     ) -> Result<T, Wrong> {
         let fault = Fault::Other { message: message.into(), help: help.into() };
-        Err(Wrong::Meaning(Problem::new(self.place(span), fault)))
+        Err(Problem::new(self.place(span), fault).into())
     }
 
     /// `system name = kind(arguments)`
@@ -54,7 +54,7 @@ impl Declaration<'_> {
                             .into(),
                     },
                 };
-                return Err(Wrong::Meaning(Problem::new(self.place(kind.span), fault)));
+                return Err(Problem::new(self.place(kind.span), fault).into());
             }
         };
         Ok(Effect::System { name: name.text.clone(), system, operators })

@@ -18,19 +18,19 @@ pub const LARGEST_DIGITS: u32 = 20_000;
 /// Why an entry failed.
 #[derive(Debug)]
 pub(super) enum Wrong {
-    Meaning(Problem),
-    Evaluation(Failure),
+    Meaning(Box<Problem>),
+    Evaluation(Box<Failure>),
 }
 
 impl From<Problem> for Wrong {
     fn from(problem: Problem) -> Self {
-        Wrong::Meaning(problem)
+        Wrong::Meaning(Box::new(problem))
     }
 }
 
 impl From<Failure> for Wrong {
     fn from(failure: Failure) -> Self {
-        Wrong::Evaluation(failure)
+        Wrong::Evaluation(Box::new(failure))
     }
 }
 
@@ -55,7 +55,7 @@ impl Evaluation<'_> {
     }
 
     fn fault<T>(&self, span: Span, fault: Fault) -> Result<T, Wrong> {
-        Err(Wrong::Meaning(Problem::new(Place { entry: self.entry, span }, fault)))
+        Err(Problem::new(Place { entry: self.entry, span }, fault).into())
     }
 
     fn not_yet<T>(&self, span: Span, what: &str) -> Result<T, Wrong> {
@@ -249,7 +249,7 @@ impl Evaluation<'_> {
             Err(message) => {
                 let span = left.span.to(right.span);
                 let help = "correct the entry that is wrong, or what is expected of it".into();
-                Err(Wrong::Evaluation(Failure {
+                Err(Wrong::from(Failure {
                     place: Place { entry: self.entry, span },
                     trouble: Trouble::Refused { message, help },
                 }))

@@ -85,6 +85,15 @@ impl EntryState {
         self.written.parsed.as_ref().ok().and_then(bound_name)
     }
 
+    /// Puts what the entry has done, or failed to do, into the scope of the entries below.
+    fn take_part(&self, number: usize, scope: &mut Scope) {
+        match (&self.effect, self.binds()) {
+            (Some(effect), _) => scope.apply(number, effect),
+            (None, Some(name)) => scope.apply_failure(number, &name.text),
+            (None, None) => {}
+        }
+    }
+
     fn forget(&mut self) {
         self.outcome = None;
         self.effect = None;
@@ -226,9 +235,7 @@ impl Session {
     fn scope_before(&self, number: usize) -> Scope {
         let mut scope = Scope::new();
         for (position, entry) in self.entries().take(number - 1).enumerate() {
-            if let Some(effect) = &entry.effect {
-                scope.apply(position + 1, effect);
-            }
+            entry.take_part(position + 1, &mut scope);
         }
         scope
     }
@@ -247,8 +254,8 @@ impl Session {
                     return;
                 }
             }
-            if let Some(effect) = self.entries().nth(number - 1).and_then(|entry| entry.effect.clone()) {
-                scope.apply(number, &effect);
+            if let Some(entry) = self.entries().nth(number - 1) {
+                entry.take_part(number, &mut scope);
             }
         }
     }
@@ -419,8 +426,8 @@ impl Session {
                     break;
                 }
             }
-            if let Some(effect) = self.entries().nth(at - 1).and_then(|entry| entry.effect.clone()) {
-                scope.apply(at, &effect);
+            if let Some(entry) = self.entries().nth(at - 1) {
+                entry.take_part(at, &mut scope);
             }
         }
         evaluated

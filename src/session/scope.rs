@@ -60,6 +60,13 @@ impl Scope {
         }
     }
 
+    /// Takes in that the entry with this number fails and binds nothing.
+    pub fn apply_failure(&mut self, number: usize, name: &str) {
+        if !self.names.bound.contains_key(name) {
+            self.names.broken.insert(name.to_string(), number);
+        }
+    }
+
     pub fn evaluator(&self, effort: &Effort) -> Evaluator<'_> {
         Evaluator::new(&self.systems, effort.clone())
     }

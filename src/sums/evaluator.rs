@@ -313,7 +313,7 @@ impl<'s> Evaluator<'s> {
             match self.nudge {
                 None => {}
                 Some(Nudge::Up) => value += &radius,
-                Some(Nudge::Alternating) if self.nudged_numbers % 2 == 0 => value += &radius,
+                Some(Nudge::Alternating) if self.nudged_numbers.is_multiple_of(2) => value += &radius,
                 Some(Nudge::Alternating) => value -= &radius,
             }
             self.nudged_numbers += 1;

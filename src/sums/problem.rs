@@ -69,21 +69,26 @@ pub enum Trouble {
     NotWhole { variable: String, what: String },
     #[error("{message}")]
     Refused { message: String, help: String },
-    #[error(
-        "the expression has the same sign at both ends: {at_from} at {variable} = {from} and {at_to} at {variable} = {to}"
-    )]
-    NoSignChange {
-        variable: String,
-        from: String,
-        to: String,
-        at_from: String,
-        at_to: String,
-        inside: Vec<(String, String)>,
-    },
+    #[error(transparent)]
+    NoSignChange(Box<NoSignChange>),
     #[error("the sign changes at {variable} = {near} through a pole, not through zero")]
     Pole { variable: String, near: String },
     #[error("not available yet: {0}")]
     NotYet(String),
+}
+
+/// The ends of an interval at which an expression has the same sign, and where inside it changes sign all the same.
+#[derive(Clone, PartialEq, Debug, thiserror::Error)]
+#[error(
+    "the expression has the same sign at both ends: {at_from} at {variable} = {from} and {at_to} at {variable} = {to}"
+)]
+pub struct NoSignChange {
+    pub variable: String,
+    pub from: String,
+    pub to: String,
+    pub at_from: String,
+    pub at_to: String,
+    pub inside: Vec<(String, String)>,
 }
 
 impl Trouble {
@@ -93,7 +98,7 @@ impl Trouble {
             Trouble::Obstacle(Obstacle::Singular { .. }) => "divides by zero on this state".into(),
             Trouble::Obstacle(Obstacle::Diverges { .. }) => "this matrix element does not exist".into(),
             Trouble::Obstacle(Obstacle::OnCut) => "a real energy above threshold".into(),
-            Trouble::NoSignChange { .. } => "no change of sign in this interval".into(),
+            Trouble::NoSignChange(_) => "no change of sign in this interval".into(),
             Trouble::Pole { .. } => "a pole lies in this interval".into(),
             Trouble::NotYet(_) | Trouble::Obstacle(Obstacle::NotYet(_)) | Trouble::System(SystemError::NotYet(_)) => {
                 "this part is still to come".into()
@@ -122,11 +127,11 @@ impl Trouble {
             Trouble::NotExact => {
                 "write `digits 30` (or another number) before this entry to allow approximate values".into()
             }
-            Trouble::NoSignChange { inside, .. } if !inside.is_empty() => {
-                let list: Vec<String> = inside.iter().map(|(a, b)| format!("{a} .. {b}")).collect();
+            Trouble::NoSignChange(found) if !found.inside.is_empty() => {
+                let list: Vec<String> = found.inside.iter().map(|(a, b)| format!("{a} .. {b}")).collect();
                 format!("the sign changes inside {}", list.join(" and "))
             }
-            Trouble::NoSignChange { .. } => "choose an interval at whose ends the expression has opposite signs".into(),
+            Trouble::NoSignChange(_) => "choose an interval at whose ends the expression has opposite signs".into(),
             Trouble::Pole { .. } => "choose an interval between two poles (resonances)".into(),
             Trouble::NotWhole { .. } => "write whole numbers, as in `sum(n in 1 .. 20, …)`".into(),
             _ => return None,

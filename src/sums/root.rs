@@ -2,7 +2,7 @@
 
 use super::environment::Environment;
 use super::evaluator::{Evaluated, Evaluator};
-use super::problem::{Failure, Trouble};
+use super::problem::{Failure, NoSignChange, Trouble};
 use crate::num::render::render;
 use crate::num::{Ball, ComplexBall, Scalar, Surd};
 use crate::theory::terms::*;
@@ -139,7 +139,7 @@ impl Evaluator<'_> {
         let width = Rational::from(&high.at - &low.at);
         let mut last = low.clone();
         for step in 1..SCAN_POINTS {
-            let at = Rational::from(&low.at + Rational::from(&width * Rational::from((step, SCAN_POINTS))));
+            let at = &low.at + (&width * Rational::from((step, SCAN_POINTS)));
             let Ok(here) = self.sample(sought, at, COARSE_BITS) else { continue };
             if here.sign != last.sign {
                 inside.push((short(&last.at), short(&here.at)));
@@ -151,14 +151,14 @@ impl Evaluator<'_> {
         }
         Ok(Failure::new(
             sought.place,
-            Trouble::NoSignChange {
+            Trouble::NoSignChange(Box::new(NoSignChange {
                 variable: sought.variable.to_string(),
                 from: short(&low.at),
                 to: short(&high.at),
                 at_from: brief(&low.value),
                 at_to: brief(&high.value),
                 inside,
-            },
+            })),
         ))
     }
 
@@ -210,7 +210,7 @@ impl Evaluator<'_> {
             let (guess, margin) = match guess {
                 // A margin well inside the present bracket but larger than the error of a converging secant step.
                 Some(guess) => (guess, Rational::from(&width >> margin_bits(have))),
-                None => (rounded(&Rational::from(&low.at + Rational::from(&width / 2)), work), Rational::new()),
+                None => (rounded(&(&low.at + Rational::from(&width / 2)), work), Rational::new()),
             };
             slow_steps = if slow_steps >= 3 { 0 } else { slow_steps };
             let Some(side) = self.step(sought, &guess, target, work, &mut low, &mut high)? else {
@@ -293,7 +293,7 @@ fn secant(low: &Sample, high: &Sample, bits: u32) -> Option<Rational> {
     }
     let width = Rational::from(&high.at - &low.at);
     let step = Rational::from(&width * &a) / slope;
-    let estimate = Rational::from(&low.at - step);
+    let estimate = &low.at - step;
     Some(rounded(&estimate, bits))
 }
 

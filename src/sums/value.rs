@@ -56,7 +56,7 @@ impl Evaluator<'_> {
         };
         self.limit = None;
         self.take_rules();
-        let scalar = self.to_digits(term, digits)?;
+        let scalar = self.certain_to(term, digits)?;
         let rules = self.take_rules();
         let limit = self.limit.clone();
         let mut sources = Vec::new();
@@ -75,7 +75,7 @@ impl Evaluator<'_> {
     }
 
     /// Raises the working precision until `digits` digits are certain.
-    fn to_digits(&mut self, term: &ScalarTerm, digits: u32) -> Evaluated<Scalar> {
+    fn certain_to(&mut self, term: &ScalarTerm, digits: u32) -> Evaluated<Scalar> {
         let mut bits = bits_for(digits) + 32;
         let mut best: Option<Scalar> = None;
         for _ in 0..RAISES {
@@ -107,7 +107,7 @@ impl Evaluator<'_> {
             self.forget();
             self.shift = Some((source, delta));
             // The difference of the two ends is smaller than they are by the shift.
-            let value = self.to_digits(term, GRADIENT_DIGITS + SHIFT_BITS / 2 + 10);
+            let value = self.certain_to(term, GRADIENT_DIGITS + SHIFT_BITS / 2 + 10);
             self.shift = None;
             ends.push(value?);
         }

@@ -605,13 +605,10 @@ impl Walker<'_, '_> {
             };
             arguments.push(rational.into_owned());
         }
-        let component = match &term.component {
-            Some(index) => Some(match factor.environment.index(index) {
-                Some(component) => component.to_string(),
-                None => index.clone(),
-            }),
-            None => None,
-        };
+        let component = term.component.as_ref().map(|index| match factor.environment.index(index) {
+            Some(component) => component.to_string(),
+            None => index.clone(),
+        });
         Ok(Atom { name: term.name.clone(), component, arguments, power: term.power })
     }
 

@@ -41,6 +41,8 @@ pub struct Names {
     pub matrix_operators: BTreeSet<String>,
     /// Words of the vocabulary that are not available yet, with what they belong to.
     pub later: BTreeMap<String, String>,
+    /// Names an entry above should have bound, had it not failed, with its number.
+    pub broken: BTreeMap<String, usize>,
     /// Units, recognised behind a number only.
     pub units: BTreeSet<String>,
 }

@@ -39,6 +39,8 @@ impl std::fmt::Display for Kind {
 pub enum Fault {
     #[error("`{name}` is not known here")]
     UnknownName { name: String, near: Option<String> },
+    #[error("`{name}` has no meaning, since entry {entry}, which declares it, fails")]
+    Broken { name: String, entry: usize },
     #[error("`{name}` is {got}, where {wanted} is needed")]
     WrongBinding { name: String, got: String, wanted: String },
     #[error("{wanted} is needed here, and this is {got}")]
@@ -95,6 +97,7 @@ impl Fault {
             Fault::UnknownName { name, near: None } => format!(
                 "declare it above: `define {name} = …`, `operator {name} = …`, `state {name} = h[1s]`; `help operators` lists those that every system has"
             ),
+            Fault::Broken { entry, .. } => format!("mend entry {entry} first"),
             Fault::WrongBinding { wanted, .. } => format!("write {wanted} instead"),
             Fault::WrongKind { wanted: Kind::Number, got: Kind::Operator } => {
                 "put the operator between a bra and a ket: `<g| … |g>`".into()

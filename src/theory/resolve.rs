@@ -225,6 +225,9 @@ impl<'a> Resolver<'a> {
         if let Some(what) = self.names.later.get(name) {
             return self.fault(span, Fault::NotYet { what: what.clone() });
         }
+        if let Some(entry) = self.names.broken.get(name) {
+            return self.fault(span, Fault::Broken { name: name.into(), entry: *entry });
+        }
         self.fault(span, Fault::UnknownName { name: name.into(), near: self.names.near(name) })
     }
 

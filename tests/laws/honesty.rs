@@ -11,7 +11,9 @@ fn cancelling(random: &mut Random) -> String {
         format!("<g|V R V|g> - <g|V S V|g>"),
         format!("<g|V R W R V|g> + 10^-{tiny} <g|W|g>"),
         format!("(<g|V R V|g> + 10^{tiny}) - 10^{tiny}"),
-        format!("<g|(V - <g|V|g>) R (V - <g|V|g>)|g> - <g|V R V|g> + 2 <g|V|g> <g|R V|g> - <g|V|g>^2 <g|R|g> + 10^-{tiny}"),
+        format!(
+            "<g|(V - <g|V|g>) R (V - <g|V|g>)|g> - <g|V R V|g> + 2 <g|V|g> <g|R V|g> - <g|V|g>^2 <g|R|g> + 10^-{tiny}"
+        ),
         format!("<g|V Q V|g> - <g|V 1/(E(g) + {w}/10^{tiny} - H)' V|g>"),
         format!("exp(<g|V R V|g>/10^{tiny}) - 1"),
         format!("sqrt(1 + <g|V|m[1]>^2/10^{tiny}) - 1"),
@@ -60,7 +62,11 @@ fn no_printed_digit_changes_at_three_times_the_precision() {
                     (_, true) => true,
                     _ => agrees_to_every_digit(a, b),
                 };
-                assert!(honest, "seed {seed}: {a} at {digits} digits and {b} at three times as many, from\n{}", text(digits));
+                assert!(
+                    honest,
+                    "seed {seed}: {a} at {digits} digits and {b} at three times as many, from\n{}",
+                    text(digits)
+                );
             }
             // A degenerate ground level may refuse a chain; then it does so at every precision.
             (Outcome::Failed(a), Outcome::Failed(b)) => {

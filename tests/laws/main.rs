@@ -2,6 +2,7 @@
 //!
 //! Every case is a small session; a failing one is printed ready to paste. `KETWORK_CASES` scales the number of cases.
 
+mod formula;
 mod honesty;
 mod matrices;
 mod random;

@@ -24,7 +24,12 @@ fn chains_equal_spectral_sums() {
         let random = &mut Random::new(u64::from(seed));
         let n = 2 + random.below(4) as usize;
         let known = random.below(2) == 0;
-        let h = if known { let list = levels(random, n); with_spectrum(random, &list) } else { symmetric(random, n) };
+        let h = if known {
+            let list = levels(random, n);
+            with_spectrum(random, &list)
+        } else {
+            symmetric(random, n)
+        };
         let v = symmetric(random, n);
         let base = session(&h, &v, 40);
         // `same(n)` is one where the level coincides with the ground level, which the case avoids, so the sum runs over all others.
@@ -87,7 +92,8 @@ fn chains_equal_finite_differences() {
             let record = last_record(&text);
             let value = number(&record).unwrap_or_else(|| panic!("{record} from\n{text}"));
             assert!(
-                agreement(&value, &difference) > 25.0 || Rational::from(&value - &difference).abs() < Rational::from((1, 10u64.pow(18))) && value == 0,
+                agreement(&value, &difference) > 25.0
+                    || Rational::from(&value - &difference).abs() < Rational::from((1, 10u64.pow(18))) && value == 0,
                 "seed {seed}, order {order}: {record} and {} from\n{text}",
                 difference.to_f64()
             );

@@ -118,7 +118,10 @@ pub fn last_outcome(text: &str) -> Outcome {
             panic!("entry {number} fails with {reports:?} in\n{text}");
         }
     }
-    session.entry(session.len()).and_then(|entry| entry.outcome.cloned()).unwrap_or_else(|| panic!("nothing in\n{text}"))
+    session
+        .entry(session.len())
+        .and_then(|entry| entry.outcome.cloned())
+        .unwrap_or_else(|| panic!("nothing in\n{text}"))
 }
 
 /// The number of a record line, exact or approximate; `None` for what is not one real rational or decimal.
@@ -151,4 +154,3 @@ pub fn agreement(a: &Rational, b: &Rational) -> f64 {
     }
     -rug::Float::with_val(64, difference / size).log10().to_f64()
 }
-
