@@ -14,6 +14,9 @@ const INVERSE_TERMS: usize = 16;
 /// Trial division goes up to this bound when a square root is made squarefree.
 const TRIAL_BOUND: u32 = 1 << 16;
 
+/// Bits that are read in trial divisions of one number before it is given up: up to the bound for radicands of about 10,000 digits.
+const TRIAL_BITS: u64 = 1 << 30;
+
 /// A finite sum of (a + b i) sqrt(n) with rational a, b and squarefree n.
 #[derive(Clone, PartialEq, Eq, Debug, Default, Hash)]
 pub struct Surd {
@@ -74,8 +77,11 @@ impl Surd {
         if q.cmp0() == Ordering::Equal {
             return Some(Self::zero());
         }
-        let (square, free) = squarefree_part(Integer::from(q.numer() * q.denom()).abs())?;
-        let factor = Rational::from((square, q.denom().clone()));
+        // Numerator and denominator have no common factor, so the product of their squarefree parts is squarefree.
+        let (square_above, free_above) = squarefree_part(q.numer().clone().abs())?;
+        let (square_below, free_below) = squarefree_part(q.denom().clone())?;
+        let factor = Rational::from((square_above, square_below * &free_below));
+        let free = free_above * free_below;
         let value = if q.cmp0() == Ordering::Less {
             GaussianRational { re: Rational::new(), im: factor }
         } else {
@@ -257,7 +263,12 @@ fn squarefree_part(mut n: Integer) -> Option<(Integer, Integer)> {
     };
     take(&mut n, 2);
     let mut p = 3;
+    let mut bits_left = TRIAL_BITS;
     while p < TRIAL_BOUND && Integer::from(p) * p <= n {
+        match bits_left.checked_sub(u64::from(n.significant_bits())) {
+            Some(left) => bits_left = left,
+            None => break,
+        }
         if n.is_divisible_u(p) {
             take(&mut n, p);
         }
@@ -265,8 +276,8 @@ fn squarefree_part(mut n: Integer) -> Option<(Integer, Integer)> {
     }
     if n.is_perfect_square() {
         square *= n.sqrt();
-    } else if n < Integer::from(TRIAL_BOUND).square() * TRIAL_BOUND {
-        // No factor below the bound and not a square: at most two distinct primes are left.
+    } else if n < Integer::from(p).square() * p {
+        // No factor below p and not a square: at most two distinct primes are left.
         free *= n;
     } else {
         return None;
@@ -397,6 +408,7 @@ mod tests {
         assert_eq!(root(8, 9).to_string(), "2/3 sqrt(2)");
         assert_eq!(root(-1, 4).to_string(), "1/2 i");
         assert_eq!(root(49, 1).to_string(), "7");
+        assert_eq!(root(50, 12).to_string(), "5/6 sqrt(6)");
         assert_eq!((&root(6, 1) * &root(10, 1)).to_string(), "2 sqrt(15)");
     }
 
@@ -419,6 +431,11 @@ mod tests {
         let p = (Integer::from(1) << 89u32) - 1u32;
         let q = (Integer::from(1) << 107u32) - 1u32;
         assert!(Surd::sqrt_of(&Rational::from(Integer::from(&p * &q))).is_none());
-        assert_eq!(Surd::sqrt_of(&Rational::from(Integer::from(&p * &p))), Some(Surd::from(Rational::from(p))));
+        assert_eq!(Surd::sqrt_of(&Rational::from(Integer::from(&p * &p))), Some(Surd::from(Rational::from(p.clone()))));
+        // too long for trial division, and a smooth number of the same length
+        let long = (Integer::from(1) << 400_001u32) + 1u32;
+        assert!(Surd::sqrt_of(&Rational::from(long)).is_none());
+        let smooth = Integer::from(15) << 400_000u32;
+        assert_eq!(Surd::sqrt_of(&Rational::from(smooth)).map(|root| root.term_count()), Some(1));
     }
 }

@@ -5,6 +5,8 @@
 //! [`BlockKet`]s, so that `sums` walks a chain the same way for every atom. Nothing here knows of the session language.
 
 pub mod hydrogenic;
+pub mod matrix;
+mod number;
 
 use crate::num::{Effort, Interrupted, Surd};
 use rug::{Complex, Rational};
@@ -135,6 +137,16 @@ pub enum SystemError {
     NotYet(String),
     #[error(transparent)]
     Interrupted(#[from] Interrupted),
+}
+
+impl SystemError {
+    /// What to write instead, where that is known.
+    pub fn help(&self) -> String {
+        match self {
+            SystemError::Refused { help, .. } => help.clone(),
+            _ => String::new(),
+        }
+    }
 }
 
 /// Why a step of a chain did not give a ket or a number.
