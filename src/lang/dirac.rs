@@ -16,7 +16,7 @@ impl<'a> Reading<'a> {
         let (rest, (bra, bra_height)) = self.deeper(after, |rest| self.state(rest, false))?;
         let bar = blanks(rest);
         let Some(inside) = bar.strip_prefix('|') else {
-            let bra = self.between(after, rest).trim().to_owned();
+            let bra = self.between(blanks(after), rest).to_owned();
             return fault(bar, after_token(bar), Fault::BraWithoutBar { bra, found: found(bar) });
         };
         let chain_start = blanks(inside);

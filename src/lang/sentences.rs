@@ -47,11 +47,12 @@ fn either(wanted: WantedSet) -> String {
     }
 }
 
-/// Cuts a quoted piece of the user's text to what fits into a sentence.
+/// Cuts a quoted piece of the user's text to what fits into a sentence, on one line.
 fn brief(text: &str) -> String {
     const LONGEST: usize = 32;
+    let text = text.split_whitespace().collect::<Vec<_>>().join(" ");
     if text.chars().count() <= LONGEST {
-        return text.to_owned();
+        return text;
     }
     text.chars().take(LONGEST).chain("...".chars()).collect()
 }
