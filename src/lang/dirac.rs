@@ -190,8 +190,9 @@ impl<'a> Reading<'a> {
             [b'|', ..] => Fault::StrayBar,
             [b'.', next, ..] if next.is_ascii_digit() => Fault::DecimalPoint,
             [b'[', ..] => {
-                let before = self.before(place);
-                let name_before = before.trim_end().ends_with(|c: char| c.is_ascii_alphanumeric() || c == '_');
+                let before = self.before(place).trim_end();
+                let word = before.trim_end_matches(|c: char| c.is_ascii_alphanumeric() || c == '_').len();
+                let name_before = before[word..].starts_with(|c: char| c.is_ascii_alphabetic());
                 if name_before { Fault::LabelApart } else { Fault::SquareBrackets }
             }
             [b'{', ..] => Fault::CurlyBrackets,

@@ -77,7 +77,7 @@ fn explain(reading: &Reading<'_>, trouble: Trouble) -> Diagnostic {
 fn form_of_entry(text: &str) -> Option<String> {
     let (_, word) = word_text(blanks(text)).ok()?;
     let page = vocabulary::vocabulary().find(word).filter(|page| page.kind == WordKind::Entry)?;
-    Some(format!("the entry is written `{}`", page.signature))
+    Some(format!("the entry is written `{}`", page.signature.replace(" | ", "` or `")))
 }
 
 fn explain_place(text: &str, reading: &Reading<'_>, trouble: Trouble) -> Diagnostic {

@@ -171,10 +171,13 @@ impl Fault {
                 .help("to assert an equality write `expect A = B`; to see two values side by side, `compare A with B`"),
             Fault::StrayEquals => prose("`=` stands where nothing is being defined", "here")
                 .help("bind a name with `define x = …`, or assert an equality with `expect A = B`"),
-            Fault::Wanted { wanted, found } => prose(
-                format!("{} where {} is wanted", found.phrase(), either(*wanted)),
-                format!("{} here", either(*wanted)),
-            ),
+            Fault::Wanted { wanted, found } => {
+                let answer = prose(
+                    format!("{} where {} is wanted", found.phrase(), either(*wanted)),
+                    format!("{} here", either(*wanted)),
+                );
+                if wanted.contains(Wanted::Dots) { answer.help("a range is written `w in a .. b`") } else { answer }
+            }
             _ => prose("this cannot be read", "here"),
         }
     }
