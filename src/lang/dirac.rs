@@ -42,7 +42,7 @@ impl<'a> Reading<'a> {
                 Ok((&end[1..], self.raised(bracket, span, height, end)?))
             }
             _ => {
-                self.refuse_unexpected(end, &[b')', b']', b'}', b',', b':'])?;
+                self.refuse_unexpected(end, b")]},:")?;
                 let bra_text = self.between(start, inside).to_owned();
                 let behind_ket = self.before(start).trim_end().ends_with('>');
                 fault(
@@ -156,7 +156,7 @@ impl<'a> Reading<'a> {
         if let Some(end) = place.strip_prefix(close) {
             return Ok((end, ()));
         }
-        self.refuse_unexpected(place, &[b')', b']', b'}', b',', b'>', b'|', b':'])?;
+        self.refuse_unexpected(place, b")]},>|:")?;
         let opened = self.span(open, &open[1..]);
         fault(place, after_token(place), Fault::Unclosed { bracket, opened, found: found(place) })
     }
