@@ -3,6 +3,9 @@
 //! The tree is untyped: whether `V` is a number, an operator or a state is decided in `theory`, where the session's names are known.
 //! Every node carries the byte span of the text it came from; two trees are *the same* when they agree apart from spans (`same_as`).
 
+// Variants differ in size; a session holds a few hundred of them, and boxes in patterns would cost more than they save.
+#![allow(clippy::large_enum_variant)]
+
 use serde::Serialize;
 
 /// Byte range `start..end` in the source text.

@@ -1,1 +1,15 @@
 //! What an expression means, with no numbers: names resolved, operator algebra, expansion, formula text.
+//!
+//! `theory` knows systems and operators by name only; whether an atom has an operator is asked where sums meet systems.
+
+pub mod algebra;
+pub mod formula;
+pub mod names;
+pub mod problem;
+pub mod resolve;
+pub mod terms;
+pub mod visit;
+
+pub use names::{Binding, Names};
+pub use problem::{Fault, Kind, Problem};
+pub use resolve::Resolver;

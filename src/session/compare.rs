@@ -1,0 +1,140 @@
+//! What `compare` and `expect` say of two values.
+
+use super::outcome::{Answer, AnswerKind};
+use crate::lang::tree::{Expr, ExprKind};
+use crate::num::render::{Agreement, RenderedKind, digits_in_common, render};
+use crate::num::{Scalar, decimal};
+use crate::sums::{Value, bits_for, brief};
+use rug::{Float, Rational};
+
+/// `compare A with B`: equal, or both values with difference, ratio and digits in common.
+pub(super) fn comparison(a: &Value, b: &Value, digits: u32) -> Answer {
+    let bits = bits_for(digits) + 64;
+    let mut answer = Answer {
+        lines: Vec::new(),
+        kind: AnswerKind::Comparison,
+        value: None,
+        digits: None,
+        unit: None,
+        verdict: "different".into(),
+        notes: Vec::new(),
+    };
+    let show = |scalar: &Scalar| marked(scalar, digits);
+    if let (Scalar::Exact(x), Scalar::Exact(y)) = (&a.scalar, &b.scalar)
+        && x == y
+    {
+        answer.lines.push(format!("= equal: {x}"));
+        answer.value = Some(x.to_string());
+        answer.verdict = "equal".into();
+        return answer;
+    }
+    let common = common_digits(&a.scalar, &b.scalar, digits);
+    if common >= digits {
+        let rendered = render(&a.scalar, digits);
+        answer.lines.push(format!("~ equal to {digits} digits: {}", rendered.text));
+        answer.value = Some(rendered.text);
+        answer.digits = Some(digits);
+        answer.verdict = "equal".into();
+        return answer;
+    }
+    answer.lines.push(format!(": left {}", show(&a.scalar)));
+    answer.lines.push(format!(": right {}", show(&b.scalar)));
+    if let Ok(difference) = a.scalar.sub(&b.scalar, bits) {
+        answer.lines.push(format!(": difference {}", marked(&difference, digits.min(10))));
+    }
+    if let Ok(ratio) = a.scalar.div(&b.scalar, bits) {
+        answer.lines.push(format!(": ratio {}", marked(&ratio, digits.min(20))));
+    }
+    answer.lines.push(format!(": {common} digits in common"));
+    answer.digits = Some(common);
+    answer
+}
+
+/// Adds the distance in standard uncertainties to a comparison of values that have them.
+pub(super) fn add_distance(answer: &mut Answer, difference: &Value) {
+    let Some(sigma) = difference.sigma().filter(|sigma| !sigma.is_zero()) else { return };
+    let Ok(ball) = difference.scalar.to_ball(128) else { return };
+    let distance = Float::with_val(64, ball.re.mid() / sigma).abs();
+    answer.lines.push(format!(": {} standard uncertainties apart", brief(&distance)));
+}
+
+/// Digits in which two values agree, at most the number asked.
+fn common_digits(a: &Scalar, b: &Scalar, digits: u32) -> u32 {
+    match digits_in_common(a, b) {
+        Agreement::Equal => digits,
+        Agreement::Digits(common) => common.min(digits),
+        Agreement::SignsDiffer | Agreement::BothBelow { .. } => 0,
+    }
+}
+
+fn marked(scalar: &Scalar, digits: u32) -> String {
+    let rendered = render(scalar, digits);
+    match rendered.kind {
+        RenderedKind::Exact => format!("= {}", rendered.text),
+        _ => format!("~ {}", rendered.text),
+    }
+}
+
+/// `expect A = B`. A decimal on the right is met to its last written digit (which may be off by one), a value with an uncertainty within that
+/// uncertainty, anything else exactly or to the digits asked.
+///
+/// Errors: the sentence that says what came out instead.
+pub(super) fn expectation(a: &Value, b: &Value, written: &Expr, digits: u32) -> Result<Answer, String> {
+    let bits = bits_for(digits) + 64;
+    let met = |line: String, digits: Option<u32>| Answer {
+        lines: vec![line],
+        kind: AnswerKind::Expectation,
+        value: None,
+        digits,
+        unit: None,
+        verdict: "holds".into(),
+        notes: Vec::new(),
+    };
+    if let (Scalar::Exact(x), Scalar::Exact(y)) = (&a.scalar, &b.scalar)
+        && b.sigma().is_none()
+        && x == y
+    {
+        return Ok(met("= holds".into(), None));
+    }
+    let missed = || {
+        format!(
+            "expected {}, and the value is {}",
+            marked(&b.scalar, digits).trim_start_matches(['=', '~', ' ']),
+            marked(&a.scalar, digits).trim_start_matches(['=', '~', ' '])
+        )
+    };
+    let difference = a.scalar.sub(&b.scalar, bits).and_then(|d| d.to_ball(bits)).map_err(|_| missed())?;
+    let distance = difference.magnitude_above();
+    if let Some(sigma) = b.sigma() {
+        return if distance <= sigma { Ok(met("~ holds within the uncertainty".into(), None)) } else { Err(missed()) };
+    }
+    if let Some(unit) = last_place(written) {
+        return if distance <= unit { Ok(met("~ holds to the digits written".into(), None)) } else { Err(missed()) };
+    }
+    if a.scalar.is_exact() && b.scalar.is_exact() {
+        return Err(missed());
+    }
+    let common = common_digits(&a.scalar, &b.scalar, digits);
+    if common >= digits {
+        Ok(met(format!("~ holds to {digits} digits"), Some(digits)))
+    } else {
+        Err(format!("{}: {common} digits in common", missed()))
+    }
+}
+
+/// One unit of the last digit of a number written as a decimal.
+fn last_place(written: &Expr) -> Option<Rational> {
+    match &written.kind {
+        ExprKind::Negate(inner) => last_place(inner),
+        ExprKind::Number(text) => {
+            let (mantissa, exponent) = match text.split_once(['e', 'E']) {
+                Some((mantissa, exponent)) => (mantissa, exponent.parse::<i32>().ok()?),
+                None => (text.as_str(), 0),
+            };
+            let (_, fraction) = mantissa.split_once('.')?;
+            let place = exponent.checked_sub(i32::try_from(fraction.len()).ok()?)?;
+            decimal::parse_decimal(&format!("1e{place}")).ok()
+        }
+        _ => None,
+    }
+}

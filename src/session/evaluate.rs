@@ -1,0 +1,280 @@
+//! Evaluates one entry in its scope.
+
+use super::declare::Declaration;
+use super::files::DataFiles;
+use super::outcome::{Answer, AnswerKind};
+use super::scope::{Effect, Scope};
+use crate::lang::tree::{DigitsWanted, Entry, EntryKind, Expr, InspectVerb, Span};
+use crate::num::render::{RenderedKind, render};
+use crate::num::{Effort, Scalar, uncertain};
+use crate::sums::{Environment, Failure, Trouble, Value, Wanted};
+use crate::theory::terms::{Place, ScalarTerm};
+use crate::theory::{Binding, Fault, Problem, Resolver, formula};
+use std::sync::Arc;
+
+/// Most digits that may be asked for.
+pub const LARGEST_DIGITS: u32 = 20_000;
+
+/// Why an entry failed.
+#[derive(Debug)]
+pub(super) enum Wrong {
+    Meaning(Box<Problem>),
+    Evaluation(Box<Failure>),
+}
+
+impl From<Problem> for Wrong {
+    fn from(problem: Problem) -> Self {
+        Wrong::Meaning(Box::new(problem))
+    }
+}
+
+impl From<Failure> for Wrong {
+    fn from(failure: Failure) -> Self {
+        Wrong::Evaluation(Box::new(failure))
+    }
+}
+
+/// What an entry did.
+pub(super) enum Done {
+    Declared(Effect, Vec<String>),
+    Answered(Answer),
+}
+
+/// One entry being evaluated.
+pub(super) struct Evaluation<'e> {
+    pub scope: &'e Scope,
+    pub source: &'e str,
+    pub entry: u64,
+    pub effort: &'e Effort,
+    pub files: &'e dyn DataFiles,
+}
+
+impl Evaluation<'_> {
+    fn resolver(&self) -> Resolver<'_> {
+        Resolver::new(&self.scope.names, self.source, self.entry)
+    }
+
+    fn fault<T>(&self, span: Span, fault: Fault) -> Result<T, Wrong> {
+        Err(Problem::new(Place { entry: self.entry, span }, fault).into())
+    }
+
+    fn not_yet<T>(&self, span: Span, what: &str) -> Result<T, Wrong> {
+        self.fault(span, Fault::NotYet { what: what.into() })
+    }
+
+    pub fn run(&self, entry: &Entry) -> Result<Done, Wrong> {
+        match &entry.kind {
+            EntryKind::Digits(DigitsWanted::Exact) => Ok(Done::Declared(Effect::Digits(Wanted::Exact), Vec::new())),
+            EntryKind::Digits(DigitsWanted::Count(expr)) => self.digits(expr),
+            EntryKind::Constants(name) => self.not_yet(name.span, "sets of constants (numbers are in atomic units)"),
+            EntryKind::System { name, kind, arguments } => {
+                let declaration = Declaration {
+                    scope: self.scope,
+                    source: self.source,
+                    entry: self.entry,
+                    effort: self.effort,
+                    files: self.files,
+                };
+                Ok(Done::Declared(declaration.system(name, kind, arguments)?, Vec::new()))
+            }
+            EntryKind::State { name, system, label } => {
+                let term = self.resolver().state(system, label)?;
+                self.scope.evaluator(self.effort).state(&term, &Environment::default())?;
+                Ok(Done::Declared(Effect::Bind(name.text.clone(), Binding::State(term)), Vec::new()))
+            }
+            EntryKind::Manifold { name, system, label } => {
+                let term = self.resolver().manifold(system, label)?;
+                self.scope.evaluator(self.effort).manifold(&term, &Environment::default())?;
+                Ok(Done::Declared(Effect::Bind(name.text.clone(), Binding::Manifold(term)), Vec::new()))
+            }
+            EntryKind::Definition { kind, name, parameters, body } => {
+                let definition = self.resolver().definition(*kind, name, parameters, body)?;
+                let binding = Binding::Definition(Arc::new(definition));
+                Ok(Done::Declared(Effect::Bind(name.text.clone(), binding), Vec::new()))
+            }
+            EntryKind::Evaluate { unit: Some(unit), .. } => {
+                self.not_yet(unit.span, "units (results are in atomic units)")
+            }
+            EntryKind::Evaluate { expression, unit: None } => {
+                let term = self.resolver().scalar(expression)?;
+                let value = self.scope.evaluator(self.effort).value(&term, self.scope.wanted)?;
+                Ok(Done::Answered(self.answer(&value)))
+            }
+            EntryKind::Inspect { verb: InspectVerb::Formula, expression } => {
+                let text = formula::expanded(&mut self.resolver(), expression)?;
+                Ok(Done::Answered(Answer {
+                    lines: vec![format!(": {text}")],
+                    kind: AnswerKind::Formula,
+                    value: Some(text),
+                    digits: None,
+                    unit: None,
+                    verdict: "formula".into(),
+                    notes: Vec::new(),
+                }))
+            }
+            EntryKind::Inspect { verb, .. } => {
+                let what = match verb {
+                    InspectVerb::Paths => "`paths`, the decomposition over intermediate blocks",
+                    InspectVerb::Crosscheck => "`crosscheck`, the second way of evaluating",
+                    _ => "`contributions`, the largest terms of a sum",
+                };
+                self.not_yet(entry.span, what)
+            }
+            EntryKind::Compare { left, right } => self.compare(left, right),
+            EntryKind::Expect { left, right } => self.expect(left, right),
+            EntryKind::Sweep { .. } => self.not_yet(entry.span, "`sweep`, tables over a range"),
+            EntryKind::Converge { .. } => self.not_yet(entry.span, "`converge`, limits of growing bases"),
+            EntryKind::Budget { .. } => self.not_yet(entry.span, "`budget`, labelled contributions"),
+        }
+    }
+
+    fn digits(&self, expr: &Expr) -> Result<Done, Wrong> {
+        let refuse = |got: &str| {
+            self.fault(
+                expr.span,
+                Fault::Other {
+                    message: format!(
+                        "the number of digits is a whole number from 1 to {LARGEST_DIGITS}, and this is {got}"
+                    ),
+                    help: "write for instance `digits 40`, or `digits exact`".into(),
+                },
+            )
+        };
+        let term = self.resolver().scalar(expr)?;
+        let value = match self.scope.evaluator(self.effort).scalar(&term, &Environment::default(), 128) {
+            Ok(Scalar::Exact(value)) => value,
+            Ok(Scalar::Approx(_)) => return refuse("not a whole number"),
+            Err(failure) => return Err(failure.into()),
+        };
+        let count = value
+            .as_rational()
+            .filter(|q| q.is_integer())
+            .and_then(|q| q.numer().to_u32())
+            .filter(|count| (1..=LARGEST_DIGITS).contains(count));
+        match count {
+            Some(count) => Ok(Done::Declared(Effect::Digits(Wanted::Digits(count)), Vec::new())),
+            None => refuse(&shortened(&value.to_string())),
+        }
+    }
+
+    /// Digits of approximate results in force.
+    fn digits_wanted(&self) -> u32 {
+        match self.scope.wanted {
+            Wanted::Exact => super::scope::DEFAULT_DIGITS,
+            Wanted::Digits(digits) => digits,
+        }
+    }
+
+    fn answer(&self, value: &Value) -> Answer {
+        if let Some(sigma) = value.sigma() {
+            let text = concise(&value.scalar, &sigma);
+            return Answer {
+                lines: vec![format!("~ {text}")],
+                kind: AnswerKind::Uncertain,
+                value: Some(text),
+                digits: None,
+                unit: None,
+                verdict: "uncertain".into(),
+                notes: value.limit.iter().cloned().collect(),
+            };
+        }
+        let asked = self.digits_wanted();
+        let rendered = render(&value.scalar, asked);
+        let mut notes = Vec::new();
+        let (line, kind, digits, verdict) = match rendered.kind {
+            RenderedKind::Exact => {
+                let zero = matches!(&value.scalar, Scalar::Exact(x) if x.is_zero());
+                if zero && !value.rules.is_empty() {
+                    (format!("= 0 exactly: {}", value.rules.join("; ")), AnswerKind::Zero, None, "zero, proved")
+                } else {
+                    (format!("= {}", rendered.text), AnswerKind::Exact, None, "exact")
+                }
+            }
+            RenderedKind::Approx { digits_held } if digits_held >= asked => {
+                (format!("~ {}", rendered.text), AnswerKind::Approximate, Some(asked), "digits hold")
+            }
+            RenderedKind::Approx { digits_held } => {
+                notes.push(format!("{digits_held} of the {asked} digits asked hold{}", because(value)));
+                (format!("~ {}", rendered.text), AnswerKind::Approximate, Some(digits_held), "fewer digits than asked")
+            }
+            RenderedKind::BelowZero { .. } => {
+                notes.push(format!("the value cannot be told from zero{}", because(value)));
+                (format!("~ {}, not proved", rendered.text), AnswerKind::Zero, None, "zero, not proved")
+            }
+        };
+        Answer {
+            lines: vec![line],
+            kind,
+            value: Some(rendered.text),
+            digits,
+            unit: None,
+            verdict: verdict.into(),
+            notes,
+        }
+    }
+
+    /// The value of one side of a comparison, and of the difference of both with what they share cancelled.
+    fn value(&self, term: &ScalarTerm) -> Result<Value, Wrong> {
+        Ok(self.scope.evaluator(self.effort).value(term, self.scope.wanted)?)
+    }
+
+    fn compare(&self, left: &Expr, right: &Expr) -> Result<Done, Wrong> {
+        let a = self.value(&self.resolver().scalar(left)?)?;
+        let b = self.value(&self.resolver().scalar(right)?)?;
+        let mut answer = super::compare::comparison(&a, &b, self.digits_wanted());
+        answer.notes.extend(a.limit.iter().chain(&b.limit).cloned());
+        if let (Some(_), _) | (_, Some(_)) = (a.sigma(), b.sigma()) {
+            let difference = self.value(&self.difference(left, right)?)?;
+            super::compare::add_distance(&mut answer, &difference);
+        }
+        Ok(Done::Answered(answer))
+    }
+
+    /// left - right as one term, so that a source in both counts once.
+    fn difference(&self, left: &Expr, right: &Expr) -> Result<ScalarTerm, Wrong> {
+        use crate::theory::terms::{ScalarNode, Term};
+        let left = self.resolver().scalar(left)?;
+        let right = self.resolver().scalar(right)?;
+        let place = left.place;
+        let text = format!("({}) - ({})", left.text, right.text);
+        let minus = Term::new(ScalarNode::Negated(right), place, format!("-({text})"));
+        Ok(Term::new(ScalarNode::Sum(vec![left, minus]), place, text))
+    }
+
+    fn expect(&self, left: &Expr, right: &Expr) -> Result<Done, Wrong> {
+        let a = self.value(&self.resolver().scalar(left)?)?;
+        let b = self.value(&self.resolver().scalar(right)?)?;
+        match super::compare::expectation(&a, &b, right, self.digits_wanted()) {
+            Ok(answer) => Ok(Done::Answered(answer)),
+            Err(message) => {
+                let span = left.span.to(right.span);
+                let help = "correct the entry that is wrong, or what is expected of it".into();
+                Err(Wrong::from(Failure {
+                    place: Place { entry: self.entry, span },
+                    trouble: Trouble::Refused { message, help },
+                }))
+            }
+        }
+    }
+}
+
+/// A real value with its standard uncertainty in the concise form.
+fn concise(scalar: &Scalar, sigma: &rug::Float) -> String {
+    match scalar.to_ball(256) {
+        Ok(ball) => uncertain::concise_float(ball.re.mid(), sigma),
+        Err(_) => render(scalar, 10).text,
+    }
+}
+
+fn because(value: &Value) -> String {
+    value.limit.as_ref().map_or_else(String::new, |limit| format!(": {limit}"))
+}
+
+/// A number too long to repeat in a message.
+fn shortened(text: &str) -> String {
+    if text.chars().count() <= 40 {
+        return text.to_string();
+    }
+    let head: String = text.chars().take(20).collect();
+    format!("{head}… ({} digits)", text.len())
+}

@@ -1,0 +1,357 @@
+//! Evaluates scalar terms at a working precision.
+
+use super::environment::Environment;
+use super::problem::{Failure, Trouble};
+use super::walker::Kept;
+use crate::angular::{HalfInteger, threej};
+use crate::num::{Ball, ComplexBall, Effort, Function, NumberError, Scalar, Surd};
+use crate::systems::{Level, Manifold, State, StateLabel, System};
+use crate::theory::terms::*;
+use rug::{Complex, Float, Integer, Rational};
+use std::collections::{BTreeMap, BTreeSet, HashMap};
+use std::sync::Arc;
+
+pub(super) type Evaluated<T> = Result<T, Failure>;
+
+/// Nested definitions and sums deeper than this are refused rather than risking the stack.
+const CALL_DEPTH: usize = 200;
+
+/// The systems of a session by name.
+pub type Systems = BTreeMap<String, Arc<dyn System>>;
+
+/// Evaluates the terms of one entry.
+pub struct Evaluator<'s> {
+    pub(super) systems: &'s Systems,
+    pub(super) effort: Effort,
+    /// Precision at which numbers inside exact chains are tried.
+    pub(super) exact_bits: u32,
+    /// One measured source is moved by this much; used for gradients.
+    pub(super) shift: Option<(Place, Rational)>,
+    /// Inexact numbers inside chains are moved to the edge of their radius, all up or alternating; used to see what they do to the value.
+    pub(super) nudge: Option<Nudge>,
+    pub(super) nudged_numbers: usize,
+    pub(super) imprecise_numbers: bool,
+    /// Selection rules met, for the reason of an exact zero.
+    rules: BTreeSet<String>,
+    /// Why a value cannot be had to more digits.
+    pub(super) limit: Option<String>,
+    pub(super) kept: HashMap<(String, String, Option<Level>), Kept>,
+    /// Brackets whose exact evaluation is known not to work.
+    pub(super) never_exact: BTreeSet<String>,
+    /// Values of brackets at a precision.
+    pub(super) known: HashMap<(String, u32), Scalar>,
+    depth: usize,
+}
+
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub(super) enum Nudge {
+    Up,
+    Alternating,
+}
+
+impl<'s> Evaluator<'s> {
+    pub fn new(systems: &'s Systems, effort: Effort) -> Self {
+        Evaluator {
+            systems,
+            effort,
+            exact_bits: 128,
+            shift: None,
+            nudge: None,
+            nudged_numbers: 0,
+            imprecise_numbers: false,
+            rules: BTreeSet::new(),
+            limit: None,
+            kept: HashMap::new(),
+            never_exact: BTreeSet::new(),
+            known: HashMap::new(),
+            depth: 0,
+        }
+    }
+
+    pub(super) fn note_rule(&mut self, rule: String) {
+        if self.rules.len() < 8 {
+            self.rules.insert(rule);
+        }
+    }
+
+    /// The selection rules met so far, and forgets them.
+    pub fn take_rules(&mut self) -> Vec<String> {
+        std::mem::take(&mut self.rules).into_iter().collect()
+    }
+
+    /// Why more digits are not to be had, if that came up.
+    pub fn limit(&self) -> Option<&str> {
+        self.limit.as_deref()
+    }
+
+    /// Forgets every computed ket and value; what does not depend on the shift of a source stays in the systems.
+    pub(super) fn forget(&mut self) {
+        self.kept.clear();
+        self.known.clear();
+        self.never_exact.clear();
+    }
+
+    pub(super) fn system(&self, name: &str, place: Place) -> Evaluated<Arc<dyn System>> {
+        self.systems.get(name).cloned().ok_or_else(|| {
+            Failure::new(
+                place,
+                Trouble::Refused { message: format!("the system `{name}` is not there"), help: String::new() },
+            )
+        })
+    }
+
+    /// The value of a term, exact or as a ball from work at `bits` bits.
+    pub fn scalar(&mut self, term: &ScalarTerm, environment: &Environment, bits: u32) -> Evaluated<Scalar> {
+        self.depth += 1;
+        let result = if self.depth > CALL_DEPTH {
+            Err(Failure::new(
+                term.place,
+                Trouble::Refused {
+                    message: format!("definitions are nested deeper than {CALL_DEPTH}"),
+                    help: "bring intermediate results into entries of their own".into(),
+                },
+            ))
+        } else {
+            self.effort
+                .check()
+                .map_err(|stop| Failure::new(term.place, stop))
+                .and_then(|()| self.scalar_node(term, environment, bits))
+        };
+        self.depth -= 1;
+        result
+    }
+
+    fn scalar_node(&mut self, term: &ScalarTerm, environment: &Environment, bits: u32) -> Evaluated<Scalar> {
+        let place = term.place;
+        let at = |error: NumberError| Failure::new(place, error);
+        match &*term.node {
+            ScalarNode::Exact(value) => Ok(Scalar::Exact(value.clone())),
+            ScalarNode::Measured { value, .. } => {
+                let moved = match &self.shift {
+                    Some((source, delta)) if *source == place => Rational::from(value + delta),
+                    _ => value.clone(),
+                };
+                Ok(Scalar::Exact(Surd::from(moved)))
+            }
+            ScalarNode::Pi => Scalar::pi(bits).map_err(at),
+            ScalarNode::Variable(name) => environment.variable(name).cloned().ok_or_else(|| {
+                let message = format!("`{name}` has no value here");
+                Failure::new(place, Trouble::Refused { message, help: String::new() })
+            }),
+            ScalarNode::Sum(terms) => {
+                let mut sum = Scalar::zero();
+                for inner in terms {
+                    let value = self.scalar(inner, environment, bits)?;
+                    sum = sum.add(&value, bits).map_err(at)?;
+                }
+                Ok(sum)
+            }
+            ScalarNode::Product(factors) => {
+                let mut product = Scalar::one();
+                for inner in factors {
+                    let value = self.scalar(inner, environment, bits)?;
+                    product = product.mul(&value, bits).map_err(at)?;
+                }
+                Ok(product)
+            }
+            ScalarNode::Negated(inner) => Ok(self.scalar(inner, environment, bits)?.neg()),
+            ScalarNode::Quotient(a, b) => {
+                let a = self.scalar(a, environment, bits)?;
+                let divisor = self.scalar(b, environment, bits)?;
+                a.div(&divisor, bits).map_err(|error| Failure::new(b.place, error))
+            }
+            ScalarNode::Power(a, b) => {
+                let a = self.scalar(a, environment, bits)?;
+                let b = self.scalar(b, environment, bits)?;
+                a.pow(&b, bits).map_err(at)
+            }
+            ScalarNode::Function(function, inner) => {
+                let value = self.scalar(inner, environment, bits)?;
+                value.apply(numeric_function(*function), bits).map_err(at)
+            }
+            ScalarNode::Energy(state) => {
+                let system = self.system(&state.system, state.place)?;
+                let state = self.state(state, environment)?;
+                let energy =
+                    system.energy(&state, bits + 16, &self.effort).map_err(|obstacle| Failure::new(place, obstacle))?;
+                number_to_scalar(energy, bits).map_err(at)
+            }
+            ScalarNode::Bracket(bracket) => self.bracket(term, bracket, environment, bits),
+            ScalarNode::Call(call) => match &call.definition.body {
+                Meaning::Scalar(body) => {
+                    let inside = self.enter(call, environment, bits)?;
+                    self.scalar(body, &inside, bits)
+                }
+                _ => Err(Failure::new(
+                    place,
+                    Trouble::Refused { message: "a number is needed here".into(), help: String::new() },
+                )),
+            },
+            ScalarNode::Root { variable, from, to, body } => {
+                self.root(variable, from, to, body, environment, bits, place)
+            }
+            ScalarNode::Series { variable, from, to, body } => {
+                let first = self.whole(from, environment, variable)?;
+                let last = self.whole(to, environment, variable)?;
+                let mut sum = Scalar::zero();
+                let mut n = first;
+                while n <= last {
+                    self.effort.check().map_err(|stop| Failure::new(place, stop))?;
+                    let inside = environment.with(variable, Scalar::Exact(Surd::from(Rational::from(n.clone()))));
+                    let value = self.scalar(body, &inside, bits)?;
+                    sum = sum.add(&value, bits).map_err(at)?;
+                    n += 1;
+                }
+                Ok(sum)
+            }
+            ScalarNode::ThreeJ(arguments) => {
+                let refused = |place, message: String| {
+                    Failure::new(place, Trouble::Refused { message, help: "write 0, 1/2, 1, 3/2, …".into() })
+                };
+                let mut values = Vec::with_capacity(arguments.len());
+                for argument in arguments {
+                    let value = self.exact_scalar(argument, environment)?;
+                    let Some(rational) = value.as_rational() else {
+                        return Err(refused(argument.place, format!("{value} is not a half-integer")));
+                    };
+                    values.push(
+                        HalfInteger::from_rational(&rational)
+                            .map_err(|error| refused(argument.place, error.to_string()))?,
+                    );
+                }
+                let [j1, j2, j3, m1, m2, m3] = values.as_slice() else {
+                    return Err(refused(place, "a 3j symbol has six arguments".into()));
+                };
+                threej(*j1, *j2, *j3, *m1, *m2, *m3)
+                    .map(Scalar::Exact)
+                    .map_err(|error| refused(place, error.to_string()))
+            }
+        }
+    }
+
+    /// The value of a term that has to be exact (arguments of operators, limits of sums).
+    pub(super) fn exact_scalar(&mut self, term: &ScalarTerm, environment: &Environment) -> Evaluated<Surd> {
+        match self.scalar(term, environment, self.exact_bits)? {
+            Scalar::Exact(value) => Ok(value),
+            Scalar::Approx(_) => Err(Failure::new(
+                term.place,
+                Trouble::Refused {
+                    message: "an exact number is needed here, and this one is approximate".into(),
+                    help: "write a whole number or a fraction".into(),
+                },
+            )),
+        }
+    }
+
+    fn whole(&mut self, term: &ScalarTerm, environment: &Environment, variable: &str) -> Evaluated<Integer> {
+        let value = self.exact_scalar(term, environment)?;
+        match value.as_rational() {
+            Some(q) if q.is_integer() => Ok(q.numer().clone()),
+            _ => Err(Failure::new(
+                term.place,
+                Trouble::NotWhole { variable: variable.to_string(), what: value.to_string() },
+            )),
+        }
+    }
+
+    /// The environment inside a called definition: its parameters with the values of the arguments.
+    pub(super) fn enter(&mut self, call: &Call, environment: &Environment, bits: u32) -> Evaluated<Environment> {
+        let mut variables = Vec::with_capacity(call.arguments.len());
+        for (name, argument) in call.definition.parameters.iter().zip(&call.arguments) {
+            variables.push((name.clone(), self.scalar(argument, environment, bits)?));
+        }
+        Ok(environment.for_call(variables))
+    }
+
+    /// The state a term names.
+    pub fn state(&mut self, term: &StateTerm, environment: &Environment) -> Evaluated<State> {
+        let system = self.system(&term.system, term.place)?;
+        let label = self.label(&term.label, environment, term.place)?;
+        system.state(&label, &self.effort).map_err(|error| Failure::new(term.place, error))
+    }
+
+    /// The manifold a term names.
+    pub fn manifold(&mut self, term: &ManifoldTerm, environment: &Environment) -> Evaluated<Manifold> {
+        let system = self.system(&term.system, term.place)?;
+        let label = self.label(&term.label, environment, term.place)?;
+        system.manifold(&label, &self.effort).map_err(|error| Failure::new(term.place, error))
+    }
+
+    fn label(&mut self, label: &LabelTerm, environment: &Environment, place: Place) -> Evaluated<StateLabel> {
+        let mut text = String::new();
+        for piece in &label.parts {
+            match piece {
+                LabelPiece::Text(part) => text.push_str(part),
+                LabelPiece::Computed(term) => {
+                    let value = self.whole(term, environment, "the number in braces")?;
+                    text.push_str(&value.to_string());
+                }
+            }
+        }
+        let mut options = Vec::with_capacity(label.options.len());
+        for (name, term) in &label.options {
+            let value = self.exact_scalar(term, environment)?;
+            let Some(rational) = value.as_rational() else {
+                let message = format!("{name} = {value} is not a quantum number");
+                return Err(Failure::new(
+                    place,
+                    Trouble::Refused { message, help: "quantum numbers are whole or half-integer".into() },
+                ));
+            };
+            options.push((name.clone(), rational.into_owned()));
+        }
+        Ok(StateLabel { text, options })
+    }
+
+    /// The midpoint of a ball, moved to its edge when the influence of inexact numbers is being measured.
+    pub(super) fn nudged(&mut self, ball: &ComplexBall, bits: u32) -> Complex {
+        let mut value = ball.midpoint(bits);
+        let radius = ball.radius();
+        let size = Float::with_val(32, Complex::with_val(32, &value).abs().real());
+        if radius > size * (Float::with_val(32, 1) >> (bits - bits / 8)) {
+            self.imprecise_numbers = true;
+            match self.nudge {
+                None => {}
+                Some(Nudge::Up) => value += &radius,
+                Some(Nudge::Alternating) if self.nudged_numbers.is_multiple_of(2) => value += &radius,
+                Some(Nudge::Alternating) => value -= &radius,
+            }
+            self.nudged_numbers += 1;
+        }
+        value
+    }
+}
+
+/// A number from a system as a scalar; approximate ones are taken to hold to `bits` bits.
+pub(super) fn number_to_scalar(number: crate::systems::Number, bits: u32) -> Result<Scalar, NumberError> {
+    match number {
+        crate::systems::Number::Exact(value) => Ok(Scalar::Exact(value)),
+        crate::systems::Number::Approx(value) => {
+            let radius = Float::with_val(32, Complex::with_val(32, &value).abs().real()) >> bits;
+            ball(value, radius).map(Scalar::Approx)
+        }
+    }
+}
+
+/// A ball around a numeric value; real values keep an imaginary part that is exactly zero.
+pub(super) fn ball(value: Complex, radius: Float) -> Result<ComplexBall, NumberError> {
+    if value.imag().is_zero() {
+        Ok(ComplexBall::real(Ball::with_radius(value.into_real_imag().0, radius)?))
+    } else {
+        ComplexBall::from_complex(value, radius)
+    }
+}
+
+fn numeric_function(function: ScalarFunction) -> Function {
+    match function {
+        ScalarFunction::Sqrt => Function::Sqrt,
+        ScalarFunction::Exp => Function::Exp,
+        ScalarFunction::Ln => Function::Ln,
+        ScalarFunction::Sin => Function::Sin,
+        ScalarFunction::Cos => Function::Cos,
+        ScalarFunction::Abs => Function::Abs,
+        ScalarFunction::Conj => Function::Conj,
+        ScalarFunction::Re => Function::Re,
+        ScalarFunction::Im => Function::Im,
+    }
+}

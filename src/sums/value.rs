@@ -1,0 +1,147 @@
+//! The value of an expression to the asked digits, with its uncertainty from measured inputs.
+
+use super::environment::Environment;
+use super::evaluator::{Evaluated, Evaluator};
+use super::problem::{Failure, Trouble};
+use crate::num::render::needs_more;
+use crate::num::{Ball, Scalar};
+use crate::theory::terms::*;
+use rug::{Float, Rational};
+
+/// Digits of gradients; an uncertainty is printed with two.
+const GRADIENT_DIGITS: u32 = 12;
+
+/// A source is moved by its uncertainty over two to this power, so that the gradient is that of the tangent.
+const SHIFT_BITS: u32 = 24;
+
+/// How often precision is raised for a value before it is given with the digits it has.
+const RAISES: u32 = 4;
+
+/// What was asked of a value.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub enum Wanted {
+    Exact,
+    Digits(u32),
+}
+
+/// A value and what it is worth.
+#[derive(Clone, Debug)]
+pub struct Value {
+    pub scalar: Scalar,
+    /// Contributions of the measured sources to the value, one standard uncertainty each, signed.
+    pub sources: Vec<(Place, Float)>,
+    /// Selection rules behind an exact zero.
+    pub rules: Vec<String>,
+    /// Why there are fewer digits than asked, if so.
+    pub limit: Option<String>,
+}
+
+impl Value {
+    /// The standard uncertainty from all sources, each source once; `None` without sources.
+    pub fn sigma(&self) -> Option<Float> {
+        if self.sources.is_empty() {
+            return None;
+        }
+        let squares = self.sources.iter().map(|(_, part)| Float::with_val(64, part.square_ref()));
+        Some(squares.fold(Float::new(64), |sum, square| sum + square).sqrt())
+    }
+}
+
+impl Evaluator<'_> {
+    /// The value of a term to the wanted digits, or with the digits that hold.
+    pub fn value(&mut self, term: &ScalarTerm, wanted: Wanted) -> Evaluated<Value> {
+        let digits = match wanted {
+            Wanted::Exact => 30,
+            Wanted::Digits(digits) => digits,
+        };
+        self.limit = None;
+        self.take_rules();
+        let scalar = self.certain_to(term, digits)?;
+        let rules = self.take_rules();
+        let limit = self.limit.clone();
+        let mut sources = Vec::new();
+        for (place, sigma) in measured_sources(term) {
+            if sigma != 0 {
+                let gradient = self.gradient(term, place, &sigma)?;
+                if !gradient.is_zero() {
+                    sources.push((place, gradient));
+                }
+            }
+        }
+        if wanted == Wanted::Exact && (!sources.is_empty() || matches!(scalar, Scalar::Approx(_))) {
+            return Err(Failure::new(term.place, Trouble::NotExact));
+        }
+        Ok(Value { scalar, sources, rules, limit })
+    }
+
+    /// Raises the working precision until `digits` digits are certain.
+    fn certain_to(&mut self, term: &ScalarTerm, digits: u32) -> Evaluated<Scalar> {
+        let mut bits = bits_for(digits) + 32;
+        let mut best: Option<Scalar> = None;
+        for _ in 0..RAISES {
+            match self.scalar(term, &Environment::default(), bits) {
+                Ok(scalar) => {
+                    if !needs_more(&scalar, digits) || self.limit.is_some() {
+                        return Ok(scalar);
+                    }
+                    best = Some(scalar);
+                }
+                Err(failure) if failure.is_undecided() => {}
+                Err(failure) => return Err(failure),
+            }
+            bits += bits / 2 + 64;
+        }
+        best.ok_or_else(|| {
+            Failure::new(
+                term.place,
+                Trouble::Undecided { digits: (f64::from(bits) * std::f64::consts::LOG10_2) as u32 },
+            )
+        })
+    }
+
+    /// The change of a real value when a source moves by one standard uncertainty, to first order.
+    fn gradient(&mut self, term: &ScalarTerm, source: Place, sigma: &Rational) -> Evaluated<Float> {
+        let shift = Rational::from(sigma >> SHIFT_BITS);
+        let mut ends = Vec::with_capacity(2);
+        for delta in [shift.clone(), Rational::from(-&shift)] {
+            self.forget();
+            self.shift = Some((source, delta));
+            // The difference of the two ends is smaller than they are by the shift.
+            let value = self.certain_to(term, GRADIENT_DIGITS + SHIFT_BITS / 2 + 10);
+            self.shift = None;
+            ends.push(value?);
+        }
+        self.forget();
+        let difference = ends[0].sub(&ends[1], 256).map_err(|error| Failure::new(term.place, error))?;
+        let ball = difference.to_ball(256).map_err(|error| Failure::new(term.place, error))?;
+        if !ball.is_real() {
+            return Err(Failure::new(
+                term.place,
+                Trouble::Refused {
+                    message: "a complex value depends on a number with an uncertainty".into(),
+                    help: "take the parts one by one: `re(…)`, `im(…)`".into(),
+                },
+            ));
+        }
+        let real: &Ball = &ball.re;
+        Ok(Float::with_val(64, real.mid()) << (SHIFT_BITS - 1))
+    }
+}
+
+/// Bits for a number of decimal digits.
+pub fn bits_for(digits: u32) -> u32 {
+    (f64::from(digits) * std::f64::consts::LOG2_10).ceil() as u32
+}
+
+/// The measured numbers a term rests on, each once.
+pub fn measured_sources(term: &ScalarTerm) -> Vec<(Place, Rational)> {
+    let mut found = Vec::new();
+    crate::theory::visit::scalars(term, &mut |inner| {
+        if let ScalarNode::Measured { sigma, .. } = &*inner.node
+            && !found.iter().any(|(place, _)| *place == inner.place)
+        {
+            found.push((inner.place, sigma.clone()));
+        }
+    });
+    found
+}

@@ -1,0 +1,247 @@
+//! Terms: expressions after their names are resolved and their kinds (number, operator, ket) are known.
+//!
+//! Terms know systems only by name. Every term carries the place it was written at and the text it was written as; the text, with the values of
+//! the variables in scope, identifies the term while names keep their meaning, which they do during one evaluation.
+
+use crate::lang::tree::{DefinitionKind, Expr, Span};
+use crate::num::Surd;
+use rug::Rational;
+use std::sync::Arc;
+
+/// Where a term stands: the entry that holds it, and the span inside that entry's text.
+#[derive(Clone, Copy, PartialEq, Eq, Debug, Default, Hash)]
+pub struct Place {
+    pub entry: u64,
+    pub span: Span,
+}
+
+/// A term of one kind with its place and text.
+#[derive(Clone, Debug)]
+pub struct Term<N> {
+    pub node: Arc<N>,
+    pub place: Place,
+    pub text: Arc<str>,
+}
+
+pub type ScalarTerm = Term<ScalarNode>;
+pub type OperatorTerm = Term<OperatorNode>;
+pub type KetTerm = Term<KetNode>;
+
+impl<N> Term<N> {
+    pub fn new(node: N, place: Place, text: impl Into<Arc<str>>) -> Self {
+        Term { node: Arc::new(node), place, text: text.into() }
+    }
+}
+
+#[derive(Clone, Debug)]
+pub enum ScalarNode {
+    Exact(Surd),
+    /// A value with a standard uncertainty; the place is the source's identity: the same source counts once.
+    Measured {
+        value: Rational,
+        sigma: Rational,
+    },
+    Pi,
+    /// Bound by `zero`, `sum` or a definition's parameter list.
+    Variable(String),
+    Sum(Vec<ScalarTerm>),
+    Product(Vec<ScalarTerm>),
+    Negated(ScalarTerm),
+    Quotient(ScalarTerm, ScalarTerm),
+    Power(ScalarTerm, ScalarTerm),
+    Function(ScalarFunction, ScalarTerm),
+    Energy(StateTerm),
+    Bracket(Bracket),
+    Call(Call),
+    /// `zero(w in a .. b, f)`
+    Root {
+        variable: String,
+        from: ScalarTerm,
+        to: ScalarTerm,
+        body: ScalarTerm,
+    },
+    /// `sum(n in a .. b, f)`
+    Series {
+        variable: String,
+        from: ScalarTerm,
+        to: ScalarTerm,
+        body: ScalarTerm,
+    },
+    /// `threej(j1, j2, j3, m1, m2, m3)`
+    ThreeJ(Vec<ScalarTerm>),
+}
+
+#[derive(Clone, Copy, PartialEq, Eq, Debug, Hash)]
+pub enum ScalarFunction {
+    Sqrt,
+    Exp,
+    Ln,
+    Sin,
+    Cos,
+    Abs,
+    Conj,
+    Re,
+    Im,
+}
+
+impl ScalarFunction {
+    /// The function of that name in the session language.
+    pub fn named(name: &str) -> Option<Self> {
+        Some(match name {
+            "sqrt" => Self::Sqrt,
+            "exp" => Self::Exp,
+            "ln" => Self::Ln,
+            "sin" => Self::Sin,
+            "cos" => Self::Cos,
+            "abs" => Self::Abs,
+            "conj" => Self::Conj,
+            "re" => Self::Re,
+            "im" => Self::Im,
+            _ => return None,
+        })
+    }
+}
+
+/// A definition used with arguments; each argument is evaluated once.
+#[derive(Clone, Debug)]
+pub struct Call {
+    pub definition: Arc<Definition>,
+    pub arguments: Vec<ScalarTerm>,
+}
+
+/// What `operator`, `resolvent`, `ket` and `define` bind.
+#[derive(Debug)]
+pub struct Definition {
+    pub name: String,
+    pub kind: DefinitionKind,
+    pub parameters: Vec<String>,
+    pub body: Meaning,
+    /// The body as it was written, for `formula`.
+    pub written: Expr,
+}
+
+/// A resolved expression of any kind.
+#[derive(Clone, Debug)]
+pub enum Meaning {
+    Scalar(ScalarTerm),
+    Operator(OperatorTerm),
+    Ket(KetTerm),
+    /// A lone bra, kept as the ket it is the adjoint of, with the operators to its right still to come.
+    Bra(BraTerm),
+}
+
+/// `<bra| chain`, on its way to become a bracket.
+#[derive(Clone, Debug)]
+pub struct BraTerm {
+    pub bra: KetTerm,
+    pub chain: Vec<OperatorTerm>,
+    pub factor: Option<ScalarTerm>,
+    pub place: Place,
+    pub text: Arc<str>,
+}
+
+/// <bra| operator |ket>, the bra given as the ket it is the adjoint of.
+#[derive(Clone, Debug)]
+pub struct Bracket {
+    pub system: String,
+    pub bra: KetTerm,
+    pub operator: Option<OperatorTerm>,
+    pub ket: KetTerm,
+    /// Cartesian indices to be summed over x, y, z.
+    pub indices: Vec<String>,
+}
+
+#[derive(Clone, Debug)]
+pub enum OperatorNode {
+    /// A multiple of the identity.
+    Scalar(ScalarTerm),
+    Atom(AtomTerm),
+    Hamiltonian,
+    Sum(Vec<OperatorTerm>),
+    /// In the order written: the last acts first.
+    Product(Vec<OperatorTerm>),
+    Power(OperatorTerm, u32),
+    /// |ket><bra|
+    Dyad(KetTerm, KetTerm),
+    /// 1/(constant + slope H), the omitted states left out.
+    Resolvent(LinearInH),
+    /// f(constant + slope H), the omitted states left out.
+    Function(ScalarFunction, LinearInH),
+    Call(Call),
+}
+
+/// An operator as written, its arguments not yet numbers.
+#[derive(Clone, Debug)]
+pub struct AtomTerm {
+    pub name: String,
+    pub component: Option<String>,
+    pub arguments: Vec<ScalarTerm>,
+    pub power: i64,
+}
+
+/// constant + slope H on the space without the omitted states.
+#[derive(Clone, Debug)]
+pub struct LinearInH {
+    pub constant: ScalarTerm,
+    pub slope: ScalarTerm,
+    pub omitted: Vec<OmittedTerm>,
+}
+
+#[derive(Clone, Debug)]
+pub enum OmittedTerm {
+    /// The prime: the level of this state.
+    LevelOf(StateTerm),
+    /// `without P`
+    Manifold(ManifoldTerm),
+}
+
+#[derive(Clone, Debug)]
+pub enum KetNode {
+    State(StateTerm),
+    Applied(OperatorTerm, KetTerm),
+    Sum(Vec<KetTerm>),
+    Scaled(ScalarTerm, KetTerm),
+    Call(Call),
+}
+
+/// A state of a system by its label; computed parts of the label are terms.
+#[derive(Clone, Debug)]
+pub struct StateTerm {
+    pub system: String,
+    pub label: LabelTerm,
+    pub place: Place,
+}
+
+/// All states that carry a label.
+#[derive(Clone, Debug)]
+pub struct ManifoldTerm {
+    pub system: String,
+    pub label: LabelTerm,
+    pub place: Place,
+}
+
+#[derive(Clone, Debug)]
+pub struct LabelTerm {
+    pub parts: Vec<LabelPiece>,
+    pub options: Vec<(String, ScalarTerm)>,
+    pub text: Arc<str>,
+}
+
+#[derive(Clone, Debug)]
+pub enum LabelPiece {
+    Text(String),
+    Computed(ScalarTerm),
+}
+
+/// The system a ket lives in.
+pub fn system_of(ket: &KetTerm) -> Option<&str> {
+    match &*ket.node {
+        KetNode::State(state) => Some(&state.system),
+        KetNode::Applied(_, inner) | KetNode::Scaled(_, inner) => system_of(inner),
+        KetNode::Sum(terms) => terms.first().and_then(system_of),
+        KetNode::Call(call) => match &call.definition.body {
+            Meaning::Ket(body) => system_of(body),
+            _ => None,
+        },
+    }
+}

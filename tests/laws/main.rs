@@ -1,0 +1,8 @@
+//! Laws that hold for every input: chains against spectral sums and finite differences, and no printed digit that is wrong.
+//!
+//! Every case is a small session; a failing one is printed ready to paste. `KETWORK_CASES` scales the number of cases.
+
+mod formula;
+mod honesty;
+mod matrices;
+mod random;
