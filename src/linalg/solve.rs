@@ -243,8 +243,8 @@ impl Solver {
         let mut ladder = self.ladder.lock().unwrap_or_else(PoisonError::into_inner);
         while ladder.len() <= level {
             let (mut precision, mut pivoted) = match ladder.last() {
-                // Refinement makes up for the few bits less.
-                None => (self.bits - self.bits / 16, !self.symmetric),
+                // Two corrections double the bits that hold twice, so the factors need not have all that are wanted.
+                None => (self.bits - self.bits / 4, !self.symmetric),
                 Some(last) if !last.pivoted => (last.precision, true),
                 Some(last) => (last.precision + last.precision.div_ceil(2), true),
             };
