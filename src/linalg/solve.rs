@@ -70,8 +70,8 @@ struct Rung {
 }
 
 impl Solver {
-    /// Factors a symmetric matrix, definite or not, for solutions of `bits` bits; only its lower triangle is read for
-    /// the factors, and the whole of it for residuals.
+    /// Factors a symmetric matrix, definite or not, for solutions of `bits` bits; it is for the caller to see that it is
+    /// symmetric.
     ///
     /// *Errors*: not square, not finite, or singular to the precision of the entries.
     pub fn symmetric(matrix: DMatrix<Float>, bits: u32, effort: &Effort) -> Result<Self, LinalgError> {
@@ -230,10 +230,12 @@ impl Solver {
                 _ => i64::from(rung.precision),
             };
             let lost = (i64::from(rung.precision) - contraction).max(0);
-            if contraction >= LEAST_CONTRACTION {
-                if lost + 16 > i64::from(self.known) {
-                    return Err(LinalgError::Singular { known: self.known });
-                }
+            // Without pivots the growth of the elimination may be to blame.
+            let singular = lost + 16 > i64::from(self.known);
+            if singular && rung.pivoted {
+                return Err(LinalgError::Singular { known: self.known });
+            }
+            if contraction >= LEAST_CONTRACTION && !singular {
                 self.condition_bits = u32::try_from(lost).unwrap_or(u32::MAX);
                 self.read_entries(self.condition_bits, effort)?;
                 self.ladder.get_mut().unwrap_or_else(PoisonError::into_inner).drain(..level);
