@@ -17,7 +17,10 @@ use std::path::{Path, PathBuf};
 pub enum Next {
     Go,
     /// Let the person edit the text of this entry.
-    Edit { number: usize, text: String },
+    Edit {
+        number: usize,
+        text: String,
+    },
     Leave,
 }
 
@@ -185,12 +188,8 @@ impl Dialogue {
     fn show_entered(&mut self, entered: &Entered) -> Result<(), OutputEnd> {
         if entered.revised {
             let others = entered.evaluated.len().saturating_sub(1);
-            let depend = match others {
-                0 => "nothing depends on it".to_string(),
-                1 => "1 entry depends on it".to_string(),
-                _ => format!("{others} entries depend on it"),
-            };
-            self.note(&format!("entry {} is revised; {depend}", entered.number));
+            let again = if others == 0 { String::new() } else { format!(", and {others} more evaluated again") };
+            self.note(&format!("entry {} is revised{again}", entered.number));
             return self.show_each(&entered.evaluated);
         }
         self.show_outcome(entered.number, "  ")
@@ -232,7 +231,8 @@ impl Dialogue {
         };
         self.failed = true;
         for Report { entry_number, diagnostic } in &reports {
-            let text = self.notebook.session.entry(*entry_number).map_or_else(String::new, |view| view.text.to_string());
+            let text =
+                self.notebook.session.entry(*entry_number).map_or_else(String::new, |view| view.text.to_string());
             self.draw(&format!("entry {entry_number}"), &text, std::slice::from_ref(diagnostic));
         }
         if !self.advised && self.console.interactive {
@@ -307,8 +307,9 @@ impl Dialogue {
 
     fn tell_unfinished(&mut self) {
         let session = &self.notebook.session;
-        let stopped = (1..=session.len())
-            .find(|number| matches!(session.entry(*number).map(|view| view.outcome.cloned()), Some(None | Some(Outcome::Stopped))));
+        let stopped = (1..=session.len()).find(|number| {
+            matches!(session.entry(*number).map(|view| view.outcome.cloned()), Some(None | Some(Outcome::Stopped)))
+        });
         if let Some(number) = stopped {
             self.wrong(&format!("stopped at entry {number}; `resume` evaluates it and what follows"));
         }
@@ -323,7 +324,9 @@ impl Dialogue {
             .collect();
         if !differing.is_empty() {
             let list = differing.join(", ");
-            self.wrong(&format!("the file records something else for entry {list}; `ketwork replay` compares digit by digit"));
+            self.wrong(&format!(
+                "the file records something else for entry {list}; `ketwork replay` compares digit by digit"
+            ));
         }
     }
 
@@ -394,7 +397,9 @@ impl Dialogue {
             tell(&format!("  {}  {}", position + 1, super::leftover::described(leftover)));
         }
         let which = if self.leftovers.len() == 1 { "" } else { " (or `recover 2`, ...)" };
-        self.note(&format!("`recover`{which} takes it back, `discard` deletes it, `list` and anything else leaves it for later"));
+        self.note(&format!(
+            "`recover`{which} takes it back, `discard` deletes it, `list` and anything else leaves it for later"
+        ));
     }
 
     fn recover(&mut self, which: usize, asked: Option<Asked>) -> Result<(), OutputEnd> {
@@ -457,7 +462,7 @@ impl Dialogue {
         if unsaved == 0 || asked == Some(wanted) || !self.console.interactive {
             return false;
         }
-        let changes = if unsaved == 1 { "a change is".to_string() } else { format!("{unsaved} changes are") };
+        let changes = if unsaved == 1 { "1 change is".to_string() } else { format!("{unsaved} changes are") };
         let save = if self.notebook.file.is_some() { "`save`" } else { "`save NAME`" };
         self.note(&format!("{changes} not saved: {save} keeps them, {again}"));
         self.asked = Some(wanted.clone());

@@ -10,8 +10,8 @@ use crate::lang::extent::is_incomplete;
 use rustyline::error::ReadlineError;
 use rustyline::history::DefaultHistory;
 use rustyline::{
-    Cmd, ColorMode, CompletionType, ConditionalEventHandler, Config, Editor, Event, EventContext, EventHandler, KeyCode,
-    KeyEvent, Modifiers, RepeatCount,
+    Cmd, ColorMode, CompletionType, ConditionalEventHandler, Config, Editor, Event, EventContext, EventHandler,
+    KeyCode, KeyEvent, Modifiers, RepeatCount,
 };
 use std::path::PathBuf;
 use std::sync::Arc;
@@ -49,8 +49,11 @@ impl Terminal {
         }
         let prompt_width = Arc::new(AtomicUsize::new(0));
         let left_empty = Arc::new(AtomicBool::new(true));
-        let enter = EnterKey { prompt_width: prompt_width.clone() };
-        editor.bind_sequence(KeyEvent(KeyCode::Enter, Modifiers::NONE), EventHandler::Conditional(Box::new(enter)));
+        // What was typed during an evaluation comes with line ends of the other kind.
+        for key in [KeyEvent(KeyCode::Enter, Modifiers::NONE), KeyEvent::ctrl('J')] {
+            let enter = EnterKey { prompt_width: prompt_width.clone() };
+            editor.bind_sequence(key, EventHandler::Conditional(Box::new(enter)));
+        }
         let interrupt = InterruptKey { left_empty: left_empty.clone() };
         editor.bind_sequence(KeyEvent::ctrl('C'), EventHandler::Conditional(Box::new(interrupt)));
         Ok(Terminal { editor, history, prompt_width, left_empty })
@@ -77,7 +80,9 @@ impl Terminal {
                 },
                 Err(ReadlineError::Interrupted) => {
                     if self.left_empty.load(Ordering::Relaxed) {
-                        tell(&dialogue.console.messages.faint("`quit` or Ctrl-D leaves, `help` shows what can be typed"));
+                        tell(
+                            &dialogue.console.messages.faint("`quit` or Ctrl-D leaves, `help` shows what can be typed"),
+                        );
                     }
                     Next::Go
                 }
