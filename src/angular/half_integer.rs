@@ -3,7 +3,7 @@
 use rug::Rational;
 use std::fmt;
 
-/// Largest angular momentum the exact symbols accept; larger ones are long integers that nobody reads.
+/// Largest angular momentum that may be written in a symbol; larger ones are long integers that nobody reads.
 pub const LARGEST_J: i32 = 5000;
 
 /// A multiple of one half, kept as its double.
@@ -20,7 +20,7 @@ pub enum AngularError {
     #[error("an angular momentum is not negative; this one is {value}")]
     Negative { value: HalfInteger },
     #[error("the angular momentum {value} is larger than {LARGEST_J}, the most the exact symbols accept")]
-    TooLarge { value: HalfInteger },
+    TooLarge { value: Rational },
     #[error("j = {j} does not go with m = {m}: they differ by a whole number or not at all")]
     Projection { j: HalfInteger, m: HalfInteger },
     #[error("{a}, {b} and {c} never couple: their sum is not a whole number")]
@@ -54,22 +54,16 @@ impl HalfInteger {
         if *twice.denom() != 1 {
             return Err(AngularError::NotHalfInteger { value: value.clone() });
         }
-        let limit = 4 * LARGEST_J;
+        let limit = 2 * LARGEST_J;
         match twice.numer().to_i32() {
             Some(twice) if twice.abs() <= limit => Ok(HalfInteger { twice }),
-            _ => Err(AngularError::TooLarge { value: HalfInteger { twice: limit } }),
+            _ => Err(AngularError::TooLarge { value: value.clone() }),
         }
     }
 
     /// Checks that this can be an angular momentum.
     pub(crate) fn as_momentum(self) -> Result<i32, AngularError> {
-        if self.twice < 0 {
-            Err(AngularError::Negative { value: self })
-        } else if self.twice > 2 * LARGEST_J {
-            Err(AngularError::TooLarge { value: self })
-        } else {
-            Ok(self.twice)
-        }
+        if self.twice < 0 { Err(AngularError::Negative { value: self }) } else { Ok(self.twice) }
     }
 }
 

@@ -12,7 +12,7 @@ const LONGEST_NINEJ: u64 = 100_000;
 /// The 6j symbol {j1 j2 j3; j4 j5 j6}.
 ///
 /// Zero where a triangle (1 2 3), (1 5 6), (4 2 6) or (4 5 3) does not close.
-/// Errors: an angular momentum that is negative or too large, a triangle whose sum is not whole.
+/// Errors: a negative angular momentum, a triangle whose sum is not whole.
 /// Source: Racah (Edmonds, eq. 6.3.7).
 pub fn sixj(j: [HalfInteger; 6]) -> Result<Surd, AngularError> {
     let [j1, j2, j3, j4, j5, j6] = j;

@@ -8,7 +8,7 @@ use rug::Float;
 use super::equilibrate::Equilibration;
 use super::error::LinalgError;
 use super::factor::{Balanced, Factorisation, Failure};
-use super::kernel;
+use super::kernel::{self, Entries};
 use super::residual::residual;
 use super::vectors::{exponent, shift};
 use crate::num::Effort;
@@ -18,6 +18,12 @@ const LEAST_CONTRACTION: i64 = 10;
 
 /// Bits kept of the solution beyond those wanted.
 const GUARD: u32 = 64;
+
+/// Bits by which the rounding of residuals stays below the wanted bits of a solution.
+const RESIDUAL_GUARD: u32 = 24;
+
+/// Bits a condition number may cost before the matrix is read in again for longer residuals.
+const USUAL_CONDITION: u32 = 60;
 
 /// Steps of refinement before a factorisation is given up.
 const STEPS: usize = 40;
@@ -48,6 +54,8 @@ pub struct Solver {
     bits: u32,
     known: u32,
     condition_bits: u32,
+    /// The matrix in fixed point, long enough for residuals; not there for very long numbers.
+    entries: Option<Entries>,
     /// The factorisations made so far, of rising precision; a solve begins with the first whatever was made before, so
     /// that an answer does not depend on what was asked earlier.
     ladder: Mutex<Vec<Arc<Rung>>>,
@@ -93,8 +101,17 @@ impl Solver {
         let known = known.or_else(|| matrix.iter().map(Float::prec).max()).unwrap_or(bits);
         let scale = if symmetric { Equilibration::symmetric(&matrix) } else { Equilibration::general(&matrix) };
         let scale = scale.ok_or(LinalgError::Singular { known })?;
-        let mut solver =
-            Self { matrix, scale, symmetric, bits, known, condition_bits: 0, ladder: Mutex::new(Vec::new()) };
+        let mut solver = Self {
+            matrix,
+            scale,
+            symmetric,
+            bits,
+            known,
+            condition_bits: 0,
+            entries: None,
+            ladder: Mutex::new(Vec::new()),
+        };
+        solver.read_entries(USUAL_CONDITION, effort)?;
         solver.probe(effort)?;
         Ok(solver)
     }
@@ -162,9 +179,31 @@ impl Solver {
         self.bits.saturating_add(self.scale.column_spread()).saturating_add(GUARD)
     }
 
+    /// Reads the matrix in fixed point, with bits for residuals at a condition number of so many bits.
+    fn read_entries(&mut self, condition_bits: u32, effort: &Effort) -> Result<(), LinalgError> {
+        let needed = self.residual_bits(condition_bits);
+        self.entries = match kernel::limbs_for(needed, self.order()) {
+            Some(limbs) if self.entries.as_ref().is_none_or(|entries| entries.limbs() < limbs) => {
+                Entries::new(self.balanced(), self.symmetric, limbs, effort)?
+            }
+            Some(_) => self.entries.take(),
+            None => None,
+        };
+        Ok(())
+    }
+
     /// Returns the bits a residual needs so that its own rounding stays below the wanted bits.
-    fn residual_precision(&self, rung: &Rung) -> u32 {
-        self.solution_precision().saturating_add(rung.precision)
+    fn residual_bits(&self, condition_bits: u32) -> u32 {
+        let kept = self.bits.saturating_add(self.scale.column_spread()).saturating_add(RESIDUAL_GUARD);
+        kept.saturating_add(condition_bits)
+    }
+
+    /// Returns the residual of a balanced solution: in fixed point where the entries are long enough.
+    fn residual(&self, x: &[Float], rhs: &[Float], bits: u32, effort: &Effort) -> Result<Vec<Float>, LinalgError> {
+        match &self.entries {
+            Some(entries) if entries.accurate_bits() >= bits => Ok(entries.residual(x, rhs, effort)?),
+            _ => residual(self.balanced(), x, rhs, bits, effort),
+        }
     }
 
     /// Finds the first factorisation that makes corrections shrink, trying it on a fixed vector of irregular signs.
@@ -179,7 +218,7 @@ impl Solver {
         for level in 0.. {
             let rung = self.rung(level, effort)?;
             let x = rung.factors.solve(&signs, effort)?;
-            let r = residual(self.balanced(), &x, &signs, self.residual_precision(&rung), effort)?;
+            let r = self.residual(&x, &signs, rung.precision + GUARD, effort)?;
             let correction = rung.factors.solve(&r, effort)?;
             let contraction = match (exponent(&x), exponent(&correction)) {
                 (Some(x), Some(correction)) => x - correction,
@@ -191,6 +230,7 @@ impl Solver {
                     return Err(LinalgError::Singular { known: self.known });
                 }
                 self.condition_bits = u32::try_from(lost).unwrap_or(u32::MAX);
+                self.read_entries(self.condition_bits, effort)?;
                 self.ladder.get_mut().unwrap_or_else(PoisonError::into_inner).drain(..level);
                 return Ok(());
             }
@@ -203,7 +243,8 @@ impl Solver {
         let mut ladder = self.ladder.lock().unwrap_or_else(PoisonError::into_inner);
         while ladder.len() <= level {
             let (mut precision, mut pivoted) = match ladder.last() {
-                None => (self.bits.max(64), !self.symmetric),
+                // Refinement makes up for the few bits less.
+                None => (self.bits - self.bits / 16, !self.symmetric),
                 Some(last) if !last.pivoted => (last.precision, true),
                 Some(last) => (last.precision + last.precision.div_ceil(2), true),
             };
@@ -212,7 +253,7 @@ impl Solver {
                 if precision / 2 > self.known.max(self.bits) + 64 {
                     return Err(LinalgError::Singular { known: self.known });
                 }
-                match kernel::factorise(self.balanced(), precision, pivoted, effort) {
+                match kernel::factorise(self.balanced(), self.entries.as_ref(), precision, pivoted, effort) {
                     Ok((factors, precision)) => break Rung { factors, precision, pivoted },
                     Err(Failure::Growth) if !pivoted => pivoted = true,
                     Err(Failure::Growth | Failure::NoPivot) => precision += precision.div_ceil(2),
@@ -226,13 +267,13 @@ impl Solver {
 
     /// Corrects a balanced solution until a correction is below the wanted bits or no longer shrinks.
     fn refine(&self, rung: &Rung, rhs: &[Float], x: &mut [Float], effort: &Effort) -> Result<Refinement, LinalgError> {
-        let precision = self.residual_precision(rung);
+        let precision = self.residual_bits(self.condition_bits);
         let wanted = i64::from(self.bits) + 1;
         let mut before = i64::MIN;
         for _ in 0..STEPS {
             let r = match exponent(x.iter()) {
                 None => rhs.to_vec(),
-                Some(_) => residual(self.balanced(), x, rhs, precision, effort)?,
+                Some(_) => self.residual(x, rhs, precision, effort)?,
             };
             let correction = rung.factors.solve(&r, effort)?;
             let fresh = exponent(x.iter()).is_none();
@@ -247,7 +288,7 @@ impl Solver {
                 (Some(size), Some(moved)) => size - moved,
             };
             if shrunk >= wanted {
-                let holds = (shrunk - 1).min(i64::from(self.bits + GUARD));
+                let holds = (shrunk - 1).min(i64::from(self.bits + RESIDUAL_GUARD / 2));
                 return Ok(Refinement::Settled(holds as i32));
             }
             if shrunk < before.saturating_add(LEAST_CONTRACTION / 2) {
