@@ -89,7 +89,11 @@ impl Entries {
     fn header(header: Line) -> Vec<Item> {
         let line_end = if header.line_end.is_empty() { "\n".to_string() } else { header.line_end.clone() };
         let lines = provenance().into_iter().map(|line| {
-            Item::Provenance(Line { text: format!("{PROVENANCE}{line}"), line_end: line_end.clone(), span: Span::default() })
+            Item::Provenance(Line {
+                text: format!("{PROVENANCE}{line}"),
+                line_end: line_end.clone(),
+                span: Span::default(),
+            })
         });
         let header = Line { line_end: line_end.clone(), ..header };
         std::iter::once(Item::Header(header)).chain(lines).collect()

@@ -66,7 +66,10 @@ fn overview(paint: Paint) -> String {
         .into_iter()
         .filter(|name| GROUPS.iter().any(|(group, kind)| group == name && vocabulary().of_kind(*kind).next().is_some()))
         .collect();
-    page.push_str(&paragraph(&format!("`help` with a word explains it; with {} it lists those.", others.join(", ")), ""));
+    page.push_str(&paragraph(
+        &format!("`help` with a word explains it; with {} it lists those.", others.join(", ")),
+        "",
+    ));
     page
 }
 
@@ -160,8 +163,14 @@ mod tests {
 
     #[test]
     fn a_misspelt_word_is_offered() {
-        assert_eq!(page("resolvant", Paint::PLAIN), Err("there is no help about `resolvant`; did you mean `resolvent`?".into()));
-        assert_eq!(page("zzzzzz", Paint::PLAIN), Err("there is no help about `zzzzzz`; `help` lists what there is".into()));
+        assert_eq!(
+            page("resolvant", Paint::PLAIN),
+            Err("there is no help about `resolvant`; did you mean `resolvent`?".into())
+        );
+        assert_eq!(
+            page("zzzzzz", Paint::PLAIN),
+            Err("there is no help about `zzzzzz`; `help` lists what there is".into())
+        );
     }
 
     #[test]

@@ -69,10 +69,9 @@ pub fn entry(view: &EntryView<'_>, place: &dyn Fn(usize, usize) -> Position) -> 
         _ => &[],
     };
     let diagnostics = match view.outcome {
-        Some(Outcome::Failed(reports)) => reports
-            .iter()
-            .map(|report| diagnostic(report.entry_number, &report.diagnostic, place))
-            .collect(),
+        Some(Outcome::Failed(reports)) => {
+            reports.iter().map(|report| diagnostic(report.entry_number, &report.diagnostic, place)).collect()
+        }
         _ => Vec::new(),
     };
     let object = EntryObject {

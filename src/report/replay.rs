@@ -122,7 +122,10 @@ mod tests {
     #[test]
     fn the_summary_counts_what_there_was() {
         let report = ReplayReport { agree: 5, differ: 1, failed: 2, ..ReplayReport::default() };
-        assert_eq!(summary("a.ketwork", &report, Paint::PLAIN), "a.ketwork: 5 agree, 1 differs, 2 cannot be evaluated\n");
+        assert_eq!(
+            summary("a.ketwork", &report, Paint::PLAIN),
+            "a.ketwork: 5 agree, 1 differs, 2 cannot be evaluated\n"
+        );
         assert_eq!(summary("a", &ReplayReport::default(), Paint::PLAIN), "a: nothing is recorded\n");
     }
 

@@ -231,7 +231,12 @@ mod tests {
 
     #[test]
     fn a_journal_cut_short_gives_what_is_whole() {
-        let text = format!("{}{}{}", line(&owner()).unwrap(), line(&Event::Whole("head".into())).unwrap(), line(&entry("1")).unwrap());
+        let text = format!(
+            "{}{}{}",
+            line(&owner()).unwrap(),
+            line(&Event::Whole("head".into())).unwrap(),
+            line(&entry("1")).unwrap()
+        );
         assert_eq!(read_back(text.as_bytes()), Some((owner(), "head\n1\n".into())));
         assert_eq!(read_back(&text.as_bytes()[..text.len() - 4]), Some((owner(), "head".into())));
         for length in 0..text.len() {

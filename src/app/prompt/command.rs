@@ -4,10 +4,16 @@
 #[derive(Clone, PartialEq, Eq, Debug)]
 pub enum Command {
     /// `save`, `save NAME`, `save over`, `save over NAME`
-    Save { over: bool, name: Option<String> },
+    Save {
+        over: bool,
+        name: Option<String>,
+    },
     Open(String),
     /// `revise N`, `revise N TEXT`
-    Revise { number: usize, text: Option<String> },
+    Revise {
+        number: usize,
+        text: Option<String>,
+    },
     Drop(usize),
     /// `list`, `list N`
     List(Option<usize>),
@@ -38,7 +44,11 @@ pub fn is_command(line: &str) -> bool {
 pub fn parse(line: &str) -> Result<Command, String> {
     let (word, rest) = split(line);
     let alone = |command: Command| {
-        if rest.is_empty() { Ok(command) } else { Err(format!("`{word}` stands alone; `{}` is too much", shortened(rest))) }
+        if rest.is_empty() {
+            Ok(command)
+        } else {
+            Err(format!("`{word}` stands alone; `{}` is too much", shortened(rest)))
+        }
     };
     match word {
         "save" => Ok(save(rest)),
@@ -51,8 +61,12 @@ pub fn parse(line: &str) -> Result<Command, String> {
         "resume" => alone(Command::Resume),
         "export" => Ok(Command::Export),
         "help" => Ok(Command::Help(rest.to_string())),
-        "recover" => Ok(Command::Recover(first_unless(rest, "write `recover`, or `recover 2` for the second in the list")?)),
-        "discard" => Ok(Command::Discard(first_unless(rest, "write `discard`, or `discard 2` for the second in the list")?)),
+        "recover" => {
+            Ok(Command::Recover(first_unless(rest, "write `recover`, or `recover 2` for the second in the list")?))
+        }
+        "discard" => {
+            Ok(Command::Discard(first_unless(rest, "write `discard`, or `discard 2` for the second in the list")?))
+        }
         "quit" => alone(Command::Quit),
         other => Err(format!("`{other}` is not a command; `help prompt` lists them")),
     }
@@ -102,14 +116,19 @@ mod tests {
         assert_eq!(parse("save  my file "), Ok(Command::Save { over: false, name: Some("my file".into()) }));
         assert_eq!(parse("save over a"), Ok(Command::Save { over: true, name: Some("a".into()) }));
         assert_eq!(parse("revise 3"), Ok(Command::Revise { number: 3, text: None }));
-        assert_eq!(parse("revise 3 define a = 2"), Ok(Command::Revise { number: 3, text: Some("define a = 2".into()) }));
+        assert_eq!(
+            parse("revise 3 define a = 2"),
+            Ok(Command::Revise { number: 3, text: Some("define a = 2".into()) })
+        );
         assert_eq!(parse("discard"), Ok(Command::Discard(1)));
         assert_eq!(parse("help spin_orbit"), Ok(Command::Help("spin_orbit".into())));
     }
 
     #[test]
     fn what_is_missing_is_said() {
-        for line in ["open", "drop", "drop x", "drop 0", "drop -1", "revise", "revise x", "quit now", "recover x", "list all"] {
+        for line in
+            ["open", "drop", "drop x", "drop 0", "drop -1", "revise", "revise x", "quit now", "recover x", "list all"]
+        {
             assert!(parse(line).is_err(), "{line}");
         }
     }

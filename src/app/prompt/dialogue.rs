@@ -17,7 +17,10 @@ use std::path::{Path, PathBuf};
 pub enum Next {
     Go,
     /// Let the person edit the text of this entry.
-    Edit { number: usize, text: String },
+    Edit {
+        number: usize,
+        text: String,
+    },
     Leave,
 }
 
@@ -232,7 +235,8 @@ impl Dialogue {
         };
         self.failed = true;
         for Report { entry_number, diagnostic } in &reports {
-            let text = self.notebook.session.entry(*entry_number).map_or_else(String::new, |view| view.text.to_string());
+            let text =
+                self.notebook.session.entry(*entry_number).map_or_else(String::new, |view| view.text.to_string());
             self.draw(&format!("entry {entry_number}"), &text, std::slice::from_ref(diagnostic));
         }
         if !self.advised && self.console.interactive {
@@ -307,8 +311,9 @@ impl Dialogue {
 
     fn tell_unfinished(&mut self) {
         let session = &self.notebook.session;
-        let stopped = (1..=session.len())
-            .find(|number| matches!(session.entry(*number).map(|view| view.outcome.cloned()), Some(None | Some(Outcome::Stopped))));
+        let stopped = (1..=session.len()).find(|number| {
+            matches!(session.entry(*number).map(|view| view.outcome.cloned()), Some(None | Some(Outcome::Stopped)))
+        });
         if let Some(number) = stopped {
             self.wrong(&format!("stopped at entry {number}; `resume` evaluates it and what follows"));
         }
@@ -323,7 +328,9 @@ impl Dialogue {
             .collect();
         if !differing.is_empty() {
             let list = differing.join(", ");
-            self.wrong(&format!("the file records something else for entry {list}; `ketwork replay` compares digit by digit"));
+            self.wrong(&format!(
+                "the file records something else for entry {list}; `ketwork replay` compares digit by digit"
+            ));
         }
     }
 
@@ -394,7 +401,9 @@ impl Dialogue {
             tell(&format!("  {}  {}", position + 1, super::leftover::described(leftover)));
         }
         let which = if self.leftovers.len() == 1 { "" } else { " (or `recover 2`, ...)" };
-        self.note(&format!("`recover`{which} takes it back, `discard` deletes it, `list` and anything else leaves it for later"));
+        self.note(&format!(
+            "`recover`{which} takes it back, `discard` deletes it, `list` and anything else leaves it for later"
+        ));
     }
 
     fn recover(&mut self, which: usize, asked: Option<Asked>) -> Result<(), OutputEnd> {

@@ -93,7 +93,8 @@ mod tests {
 
     #[test]
     fn a_pasted_session_falls_into_its_pieces() {
-        let text = "ketwork session 1\n#@ recorded by x\n# prose\n\ndigits 40\ndefine a = (1 +\n  2)\na\n  = 3\nlist\n2 +";
+        let text =
+            "ketwork session 1\n#@ recorded by x\n# prose\n\ndigits 40\ndefine a = (1 +\n  2)\na\n  = 3\nlist\n2 +";
         let wanted = [
             Unit::Prose("# prose".into()),
             entry("digits 40"),

@@ -35,7 +35,10 @@ mod tests {
     #[test]
     fn left_work_is_described() {
         assert_eq!(describe(1, None, Duration::from_secs(59)), "1 entry of a new session, less than a minute ago");
-        assert_eq!(describe(12, Some(Path::new("a.ketwork")), Duration::from_secs(7300)), "12 entries of a.ketwork, 2 hours ago");
+        assert_eq!(
+            describe(12, Some(Path::new("a.ketwork")), Duration::from_secs(7300)),
+            "12 entries of a.ketwork, 2 hours ago"
+        );
         assert_eq!(ago(Duration::from_secs(86_400)), "1 day ago");
     }
 }

@@ -24,8 +24,7 @@ use std::path::Path;
 use terminal::Terminal;
 
 /// What `export` answers in this version.
-pub const EXPORT_NOT_YET: &str =
-    "not available yet: reports of a session (html, tex, md, json, csv); `ketwork run --json` gives the results machine-readable";
+pub const EXPORT_NOT_YET: &str = "not available yet: reports of a session (html, tex, md, json, csv); `ketwork run --json` gives the results machine-readable";
 
 /// Starts a conversation, with the session of a file or a new one.
 pub fn start(console: Console, file: Option<&Path>) -> Status {

@@ -25,7 +25,11 @@ pub struct KnownFile {
 pub enum OpenProblem {
     Read(ReadProblem),
     /// What is wrong with the text as a whole, with the name and the text it is about.
-    Text { name: String, text: String, diagnostics: Vec<Diagnostic> },
+    Text {
+        name: String,
+        text: String,
+        diagnostics: Vec<Diagnostic>,
+    },
 }
 
 /// Why an entry was not taken in.

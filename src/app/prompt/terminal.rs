@@ -10,8 +10,8 @@ use crate::lang::extent::is_incomplete;
 use rustyline::error::ReadlineError;
 use rustyline::history::DefaultHistory;
 use rustyline::{
-    Cmd, ColorMode, CompletionType, ConditionalEventHandler, Config, Editor, Event, EventContext, EventHandler, KeyCode,
-    KeyEvent, Modifiers, RepeatCount,
+    Cmd, ColorMode, CompletionType, ConditionalEventHandler, Config, Editor, Event, EventContext, EventHandler,
+    KeyCode, KeyEvent, Modifiers, RepeatCount,
 };
 use std::path::PathBuf;
 use std::sync::Arc;
@@ -77,7 +77,9 @@ impl Terminal {
                 },
                 Err(ReadlineError::Interrupted) => {
                     if self.left_empty.load(Ordering::Relaxed) {
-                        tell(&dialogue.console.messages.faint("`quit` or Ctrl-D leaves, `help` shows what can be typed"));
+                        tell(
+                            &dialogue.console.messages.faint("`quit` or Ctrl-D leaves, `help` shows what can be typed"),
+                        );
                     }
                     Next::Go
                 }
