@@ -188,12 +188,8 @@ impl Dialogue {
     fn show_entered(&mut self, entered: &Entered) -> Result<(), OutputEnd> {
         if entered.revised {
             let others = entered.evaluated.len().saturating_sub(1);
-            let depend = match others {
-                0 => "nothing depends on it".to_string(),
-                1 => "1 entry depends on it".to_string(),
-                _ => format!("{others} entries depend on it"),
-            };
-            self.note(&format!("entry {} is revised; {depend}", entered.number));
+            let again = if others == 0 { String::new() } else { format!(", and {others} more evaluated again") };
+            self.note(&format!("entry {} is revised{again}", entered.number));
             return self.show_each(&entered.evaluated);
         }
         self.show_outcome(entered.number, "  ")
@@ -466,7 +462,7 @@ impl Dialogue {
         if unsaved == 0 || asked == Some(wanted) || !self.console.interactive {
             return false;
         }
-        let changes = if unsaved == 1 { "a change is".to_string() } else { format!("{unsaved} changes are") };
+        let changes = if unsaved == 1 { "1 change is".to_string() } else { format!("{unsaved} changes are") };
         let save = if self.notebook.file.is_some() { "`save`" } else { "`save NAME`" };
         self.note(&format!("{changes} not saved: {save} keeps them, {again}"));
         self.asked = Some(wanted.clone());

@@ -49,8 +49,11 @@ impl Terminal {
         }
         let prompt_width = Arc::new(AtomicUsize::new(0));
         let left_empty = Arc::new(AtomicBool::new(true));
-        let enter = EnterKey { prompt_width: prompt_width.clone() };
-        editor.bind_sequence(KeyEvent(KeyCode::Enter, Modifiers::NONE), EventHandler::Conditional(Box::new(enter)));
+        // What was typed during an evaluation comes with line ends of the other kind.
+        for key in [KeyEvent(KeyCode::Enter, Modifiers::NONE), KeyEvent::ctrl('J')] {
+            let enter = EnterKey { prompt_width: prompt_width.clone() };
+            editor.bind_sequence(key, EventHandler::Conditional(Box::new(enter)));
+        }
         let interrupt = InterruptKey { left_empty: left_empty.clone() };
         editor.bind_sequence(KeyEvent::ctrl('C'), EventHandler::Conditional(Box::new(interrupt)));
         Ok(Terminal { editor, history, prompt_width, left_empty })
