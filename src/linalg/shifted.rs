@@ -7,6 +7,7 @@ use rug::{Complex, Float};
 use super::error::LinalgError;
 use super::hermitian::HermitianMatrix;
 use super::solve::{Solved, Solver};
+use super::source::Source;
 use super::vectors::{add_multiple, at_precision, inner};
 use crate::num::Effort;
 
@@ -41,6 +42,8 @@ enum Embedding {
 pub struct ShiftedSolver {
     solver: Solver,
     embedding: Embedding,
+    /// The matrix factored is H - z instead of z - H.
+    turned: bool,
     order: usize,
     without: Vec<Vec<Complex>>,
     precision: u32,
@@ -76,12 +79,18 @@ impl ShiftedSolver {
             (true, Some(_)) => Embedding::Flipped,
             (false, Some(_)) => Embedding::General,
         };
-        let (x, y) = parts(h, z.0, z_imag, without, real, precision);
-        let matrix = embed(embedding, x, y);
+        let source = if embedding == Embedding::Real && without.is_empty() {
+            let entry = |i: usize| Float::with_val(precision, &h.re()[(i, i)] - z.0);
+            Source::Shifted { matrix: h.shared_re(), diagonal: (0..order).map(entry).collect() }
+        } else {
+            let (x, y) = parts(h, z.0, z_imag, without, real, precision);
+            Source::Whole(embed(embedding, x, y))
+        };
+        let turned = matches!(source, Source::Shifted { .. });
         // Forming z - H with more bits tells no more of H than its own bits do.
         let (symmetric, known) = (embedding != Embedding::General, h.precision());
-        let solver = Solver::new(matrix, symmetric, Some(known), bits, effort)?;
-        Ok(Self { solver, embedding, order, without: without.to_vec(), precision })
+        let solver = Solver::new(source, symmetric, known, bits, effort)?;
+        Ok(Self { solver, embedding, turned, order, without: without.to_vec(), precision })
     }
 
     /// Solves for one right-hand side.
@@ -93,6 +102,9 @@ impl ShiftedSolver {
         }
         let mut b = at_precision(b, self.precision.max(b.iter().map(|c| c.prec().0).max().unwrap_or(0)));
         self.project(&mut b);
+        if self.turned {
+            b.iter_mut().for_each(NegAssign::neg_assign);
+        }
         let re = b.iter().map(|c| c.real().clone());
         let im = b.iter().map(|c| c.imag().clone());
         let (re, im, holds) = match self.embedding {

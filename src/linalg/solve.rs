@@ -10,6 +10,7 @@ use super::error::LinalgError;
 use super::factor::{Balanced, Factorisation, Failure};
 use super::kernel::{self, Entries};
 use super::residual::residual;
+use super::source::Source;
 use super::vectors::{exponent, shift};
 use crate::num::Effort;
 
@@ -48,7 +49,7 @@ pub struct Solved {
 /// relative to the largest component. *Cost*: order^3/6 multiply-adds for a symmetric matrix (order^3/3 if pivots are
 /// needed, and for a general one), a few order^2 for each right-hand side.
 pub struct Solver {
-    matrix: DMatrix<Float>,
+    source: Source,
     scale: Equilibration,
     symmetric: bool,
     bits: u32,
@@ -69,40 +70,44 @@ struct Rung {
 }
 
 impl Solver {
-    /// Factors a symmetric matrix, definite or not, for solutions of `bits` bits; only its lower triangle is read for
-    /// the factors, and the whole of it for residuals.
+    /// Factors a symmetric matrix, definite or not, for solutions of `bits` bits; it is for the caller to see that it is
+    /// symmetric.
     ///
     /// *Errors*: not square, not finite, or singular to the precision of the entries.
     pub fn symmetric(matrix: DMatrix<Float>, bits: u32, effort: &Effort) -> Result<Self, LinalgError> {
-        Self::new(matrix, true, None, bits, effort)
+        Self::whole(matrix, true, bits, effort)
     }
 
     /// Factors a general square matrix with partial pivoting for solutions of `bits` bits.
     ///
     /// *Errors*: as for [`Solver::symmetric`].
     pub fn general(matrix: DMatrix<Float>, bits: u32, effort: &Effort) -> Result<Self, LinalgError> {
-        Self::new(matrix, false, None, bits, effort)
+        Self::whole(matrix, false, bits, effort)
     }
 
-    /// Factors a matrix whose entries are worth `known` bits, or all they have.
-    pub(super) fn new(
-        matrix: DMatrix<Float>,
-        symmetric: bool,
-        known: Option<u32>,
-        bits: u32,
-        effort: &Effort,
-    ) -> Result<Self, LinalgError> {
+    fn whole(matrix: DMatrix<Float>, symmetric: bool, bits: u32, effort: &Effort) -> Result<Self, LinalgError> {
         if matrix.nrows() != matrix.ncols() {
             return Err(LinalgError::NotSquare { rows: matrix.nrows(), columns: matrix.ncols() });
         }
-        if matrix.iter().any(|x| !x.is_finite()) {
+        let known = matrix.iter().map(Float::prec).max().unwrap_or(bits);
+        Self::new(Source::Whole(matrix), symmetric, known, bits, effort)
+    }
+
+    /// Factors a matrix whose entries are worth `known` bits.
+    pub(super) fn new(
+        source: Source,
+        symmetric: bool,
+        known: u32,
+        bits: u32,
+        effort: &Effort,
+    ) -> Result<Self, LinalgError> {
+        if !source.is_finite() {
             return Err(LinalgError::NotFinite);
         }
-        let known = known.or_else(|| matrix.iter().map(Float::prec).max()).unwrap_or(bits);
-        let scale = if symmetric { Equilibration::symmetric(&matrix) } else { Equilibration::general(&matrix) };
+        let scale = if symmetric { Equilibration::symmetric(&source) } else { Equilibration::general(&source) };
         let scale = scale.ok_or(LinalgError::Singular { known })?;
         let mut solver = Self {
-            matrix,
+            source,
             scale,
             symmetric,
             bits,
@@ -118,7 +123,7 @@ impl Solver {
 
     /// Returns the order of the matrix.
     pub fn order(&self) -> usize {
-        self.matrix.nrows()
+        self.source.order()
     }
 
     /// Returns the bits that solutions are made for.
@@ -171,7 +176,7 @@ impl Solver {
     }
 
     fn balanced(&self) -> Balanced<'_> {
-        Balanced { matrix: &self.matrix, scale: &self.scale }
+        Balanced { source: &self.source, scale: &self.scale }
     }
 
     /// Returns the bits a balanced solution is kept with.
@@ -225,10 +230,12 @@ impl Solver {
                 _ => i64::from(rung.precision),
             };
             let lost = (i64::from(rung.precision) - contraction).max(0);
-            if contraction >= LEAST_CONTRACTION {
-                if lost + 16 > i64::from(self.known) {
-                    return Err(LinalgError::Singular { known: self.known });
-                }
+            // Without pivots the growth of the elimination may be to blame.
+            let singular = lost + 16 > i64::from(self.known);
+            if singular && rung.pivoted {
+                return Err(LinalgError::Singular { known: self.known });
+            }
+            if contraction >= LEAST_CONTRACTION && !singular {
                 self.condition_bits = u32::try_from(lost).unwrap_or(u32::MAX);
                 self.read_entries(self.condition_bits, effort)?;
                 self.ladder.get_mut().unwrap_or_else(PoisonError::into_inner).drain(..level);
@@ -243,8 +250,8 @@ impl Solver {
         let mut ladder = self.ladder.lock().unwrap_or_else(PoisonError::into_inner);
         while ladder.len() <= level {
             let (mut precision, mut pivoted) = match ladder.last() {
-                // Refinement makes up for the few bits less.
-                None => (self.bits - self.bits / 16, !self.symmetric),
+                // Two corrections double the bits that hold twice, so the factors need not have all that are wanted.
+                None => (self.bits - self.bits / 4, !self.symmetric),
                 Some(last) if !last.pivoted => (last.precision, true),
                 Some(last) => (last.precision + last.precision.div_ceil(2), true),
             };

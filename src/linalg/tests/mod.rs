@@ -2,6 +2,7 @@
 
 mod eigen;
 mod exact;
+mod kernel;
 mod shifted;
 mod solve;
 mod tridiagonal;

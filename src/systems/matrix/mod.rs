@@ -148,12 +148,6 @@ impl MatrixSystem {
         Ok(firsts)
     }
 
-    /// An exact level at this energy among those looked at so far.
-    fn known_level_at(&self, energy: &Surd) -> Option<LevelOfMatrix> {
-        let levels = self.levels.lock().unwrap_or_else(PoisonError::into_inner);
-        levels.iter().find(|level| level.exact.as_ref().is_some_and(|exact| exact.energy == *energy)).cloned()
-    }
-
     /// The level at an exact energy in words.
     fn level_at(&self, energy: &Surd, effort: &Effort) -> String {
         for index in 0..self.order() {

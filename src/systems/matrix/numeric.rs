@@ -3,7 +3,7 @@
 use super::MatrixSystem;
 use super::exact::WHOLE;
 use super::levels::{dot, obstacle};
-use crate::linalg::eigen::{Eigenpairs, all_eigenpairs};
+use crate::linalg::eigen::{Eigenpairs, all_eigenpairs, spectrum_preview};
 use crate::linalg::{HermitianMatrix, LinalgError, ShiftedSolver};
 use crate::num::{ComplexBall, Effort};
 use crate::systems::{
@@ -152,16 +152,43 @@ impl NumericBackend {
         Ok(solver)
     }
 
-    /// Refuses an energy that is exactly that of an exact level which is not left out.
+    /// Refuses a real energy that cannot be told from that of a level which is not left out.
+    ///
+    /// An exact energy near a level may be told from it with more bits; an approximate one (from `E(g)`, say) is taken to be the level's.
     fn refuse_singular(&self, z: &Float, resolvent: &Resolvent) -> Result<(), Obstacle> {
-        let Number::Exact(exact) = &resolvent.z else { return Ok(()) };
         let omitted = self.system.omitted_levels(&resolvent.omitted, &self.effort)?;
-        match self.system.known_level_at(exact) {
-            Some(level) if !omitted.contains(&level.first) => {
-                Err(Obstacle::Singular { level: format!("state {} (energy {})", level.first, z.to_f64()) })
+        let Some(preview) = spectrum_preview(&self.hermitian) else { return Ok(()) };
+        let size = Float::with_val(64, 1) << i32::try_from(self.hermitian.exponent().unwrap_or(0)).unwrap_or(0);
+        for index in 0..self.system.order() {
+            let Some(rough) = preview.value(index) else { continue };
+            if Float::with_val(64, &rough - z).abs() > Float::with_val(64, &size >> 30u32) {
+                continue;
             }
-            _ => Ok(()),
+            let level = self.system.level(index, &self.effort)?;
+            if omitted.contains(&level.first) {
+                continue;
+            }
+            let energy = match level.exact {
+                Some(exact) => Number::Exact(exact.energy),
+                None => {
+                    let (values, _) = self.system.numeric_states(&level, self.bits, &self.effort)?;
+                    let value = values.into_iter().nth(index - level.first).ok_or(Obstacle::Undecided)?;
+                    Number::Approx(Complex::with_val(self.bits + 32, (value, 0)))
+                }
+            };
+            let singular = || Obstacle::Singular { level: format!("state {index} (energy {:.6})", rough.to_f64()) };
+            if energy == resolvent.z {
+                return Err(singular());
+            }
+            let distance = Float::with_val(64, energy.to_complex(self.bits + 32).real() - z).abs();
+            if distance <= Float::with_val(64, &size >> (self.bits - self.bits / 8)) {
+                return Err(match &resolvent.z {
+                    Number::Exact(_) => Obstacle::Undecided,
+                    Number::Approx(_) => singular(),
+                });
+            }
         }
+        Ok(())
     }
 
     /// A system that has no solution at this precision stands at an eigenvalue or too near to one.
