@@ -231,6 +231,23 @@ fn an_interrupt_ends_the_evaluation_and_keeps_the_session() {
 }
 
 #[test]
+fn an_entry_that_fails_is_not_kept_but_an_expectation_is() {
+    let folder = folder();
+    let mut talk = Talk::starts(folder.path(), &[]);
+    talk.sees("ket 1> ");
+    talk.says("2 + foo", "`foo` is not known here", "ket 1> ");
+    talk.types(UP);
+    talk.sees("2 + foo");
+    talk.types("\x7f\x7f\x7f3\r");
+    talk.sees("  = 5\r\n");
+    talk.sees("ket 2> ");
+    talk.says("expect 2 = 3", "expected 3, and the value is 2", "ket 3> ");
+    talk.says("list", "  2  expect 2 = 3\r\n       failed\r\n", "ket 3> ");
+    talk.types("quit\rquit\r");
+    talk.ends(0);
+}
+
+#[test]
 fn an_entry_is_revised_in_place() {
     let folder = folder();
     let mut talk = Talk::starts(folder.path(), &[]);

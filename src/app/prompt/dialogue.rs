@@ -144,6 +144,7 @@ impl Dialogue {
 
     /// Replaces the text of an entry.
     pub fn revise(&mut self, number: usize, text: &str) -> Result<(), OutputEnd> {
+        let text = text.trim();
         self.worker.progress.begin(format!("entry {number}"));
         match self.notebook.revise(number, text, &self.worker) {
             Ok(entered) => self.show_entered(&entered),
@@ -189,6 +190,9 @@ impl Dialogue {
         self.failed = true;
         match problem {
             EntryProblem::Text(diagnostics) => self.draw(&format!("entry {number}"), text, &diagnostics),
+            EntryProblem::Failed(reports) => {
+                reports.iter().for_each(|report| self.draw_report(Some((number, text)), report));
+            }
             EntryProblem::Refused(refusal) => self.wrong(&refusal.to_string()),
             EntryProblem::Work(problem) => self.wrong(&problem.to_string()),
         }
@@ -198,6 +202,18 @@ impl Dialogue {
         for diagnostic in found {
             tell(&diagnostics::render(name, text, diagnostic, self.console.messages.is_on()));
         }
+    }
+
+    /// Draws a report on the text of the entry it points into; an entry that is not kept is given with its number.
+    fn draw_report(&self, not_kept: Option<(usize, &str)>, report: &Report) {
+        let number = report.entry_number;
+        let text = match not_kept {
+            Some((not_kept, text)) if not_kept == number => Some(text),
+            _ => None,
+        };
+        let kept = self.notebook.session.entry(number);
+        let text = text.or(kept.map(|view| view.text)).unwrap_or_default();
+        self.draw(&format!("entry {number}"), text, std::slice::from_ref(&report.diagnostic));
     }
 
     /// Shows the result of a new entry, or every entry that a revision has evaluated.
@@ -246,11 +262,7 @@ impl Dialogue {
             return;
         };
         self.failed = true;
-        for Report { entry_number, diagnostic } in &reports {
-            let text =
-                self.notebook.session.entry(*entry_number).map_or_else(String::new, |view| view.text.to_string());
-            self.draw(&format!("entry {entry_number}"), &text, std::slice::from_ref(diagnostic));
-        }
+        reports.iter().for_each(|report| self.draw_report(None, report));
         if !self.advised && self.console.interactive {
             self.advised = true;
             self.note(&format!("the entry is kept: `revise {number}` changes it, `drop {number}` takes it out"));

@@ -8,7 +8,8 @@ use crate::app::provenance::provenance;
 use crate::app::worker::{WorkProblem, Worker};
 use crate::lang::diagnostic::Diagnostic;
 use crate::lang::file::EntryText;
-use crate::session::{Entered, Refusal, Session};
+use crate::lang::tree::EntryKind;
+use crate::session::{Entered, Outcome, Refusal, Report, Session};
 use std::io;
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
@@ -36,6 +37,8 @@ pub enum OpenProblem {
 #[derive(Debug)]
 pub enum EntryProblem {
     Text(Vec<Diagnostic>),
+    /// It was evaluated, and failed.
+    Failed(Vec<Report>),
     Refused(Refusal),
     Work(WorkProblem),
 }
@@ -130,14 +133,25 @@ impl Notebook {
     }
 
     /// Adds an entry; it is in the journal before it is evaluated.
+    ///
+    /// A new entry that fails is not kept, so that a slip of the finger never gets into the file; an expectation is, since it says what ought to hold.
     pub fn enter(&mut self, text: &str, worker: &Worker) -> Result<Entered, EntryProblem> {
-        EntryText::new(text).parsed.map_err(EntryProblem::Text)?;
+        let tree = EntryText::new(text).parsed.map_err(EntryProblem::Text)?;
         self.note(&Event::Entry(text.to_string()));
         let effort = self.session.effort();
         let session = &mut self.session;
         let done = worker.run(&effort, || session.enter(text)).map_err(EntryProblem::Work)?;
         match done {
             Ok(entered) => {
+                if !entered.revised
+                    && !matches!(tree.kind, EntryKind::Expect { .. })
+                    && let Some(Outcome::Failed(reports)) =
+                        self.session.entry(entered.number).and_then(|view| view.outcome.cloned())
+                    && self.session.drop_entry(entered.number).is_ok()
+                {
+                    self.note(&Event::Refused);
+                    return Err(EntryProblem::Failed(reports));
+                }
                 self.unsaved += 1;
                 if entered.revised {
                     self.note_whole();
