@@ -81,7 +81,7 @@ impl Talk {
     }
 
     /// As a power loss would: no chance to say goodbye.
-    fn is_killed(self) {
+    fn killed(self) {
         let process = self.session.get_process().pid().to_string();
         let killed = Command::new("kill").args(["-KILL", &process]).status();
         assert!(killed.is_ok_and(|status| status.success()));
@@ -271,7 +271,7 @@ fn unsaved_work_survives_a_crash() {
     other.says("recover", "no work was left unsaved", "ket 1> ");
     other.types("quit\r");
     other.ends(0);
-    talk.is_killed();
+    talk.killed();
     assert_eq!(unsaved_journals(folder.path()), 1);
 
     let mut talk = Talk::starts(folder.path(), &[]);
@@ -283,7 +283,7 @@ fn unsaved_work_survives_a_crash() {
     talk.sees("  3  1 + (\r\n");
     talk.sees("taken back");
     talk.sees("ket 4> ");
-    talk.is_killed();
+    talk.killed();
 
     // Taken back and lost again: it is still there.
     let mut talk = Talk::starts(folder.path(), &[]);
@@ -307,7 +307,7 @@ fn a_crash_during_an_evaluation_keeps_its_entry() {
     talk.sees("ket 2> ");
     talk.types("sum(n in 1 .. 1000000000, a/n^2)\r");
     talk.sees("entry 2, ");
-    talk.is_killed();
+    talk.killed();
 
     let mut talk = Talk::starts(folder.path(), &["open", "own.ketwork"]);
     talk.sees("1  2 entries of ");

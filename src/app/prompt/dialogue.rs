@@ -43,11 +43,22 @@ pub struct Dialogue {
     pub failed: bool,
     /// Whether it has been said what to do with an entry that failed.
     advised: bool,
+    /// Whether it has been said that work cannot be kept safe.
+    unsafe_told: bool,
 }
 
 impl Dialogue {
     pub fn new(console: Console, worker: Worker, notebook: Notebook) -> Self {
-        Dialogue { console, worker, notebook, leftovers: Vec::new(), asked: None, failed: false, advised: false }
+        Dialogue {
+            console,
+            worker,
+            notebook,
+            leftovers: Vec::new(),
+            asked: None,
+            failed: false,
+            advised: false,
+            unsafe_told: false,
+        }
     }
 
     /// The number of the entry that is written next.
@@ -76,8 +87,13 @@ impl Dialogue {
                 }
             },
         };
-        if let Some(error) = self.notebook.journal_trouble.take() {
-            self.wrong(&format!("this entry would not survive a crash, since it cannot be kept on the disk: {error}"));
+        if let Some(error) = self.notebook.journal_trouble.take()
+            && !self.unsafe_told
+        {
+            self.unsafe_told = true;
+            self.wrong(&format!(
+                "unsaved entries would not survive a crash, since they cannot be kept on the disk: {error}"
+            ));
         }
         next
     }
@@ -333,7 +349,7 @@ impl Dialogue {
     // Files
 
     fn save(&mut self, over: bool, name: Option<String>) {
-        let path = name.map(named);
+        let path = name.as_deref().map(named);
         match self.notebook.save(path.as_deref(), over) {
             Ok(path) => {
                 let message = format!("saved in {}", path.display());
@@ -358,8 +374,8 @@ impl Dialogue {
         if self.must_ask(&again, asked.as_ref(), &format!("`open {name}` again leaves them")) {
             return Ok(());
         }
-        let path = PathBuf::from(&name);
-        let path = if path.exists() { path } else { named(name) };
+        let path = typed_path(&name);
+        let path = if path.exists() { path } else { named(&name) };
         self.open(&path)?;
         Ok(())
     }
@@ -470,8 +486,17 @@ impl Dialogue {
     }
 }
 
+/// A path as it is typed: quotes around it are dropped, and `~/` is the home folder.
+fn typed_path(name: &str) -> PathBuf {
+    let bare = name.strip_prefix('"').and_then(|rest| rest.strip_suffix('"')).unwrap_or(name);
+    match (bare.strip_prefix("~/"), std::env::home_dir()) {
+        (Some(below), Some(home)) => home.join(below),
+        _ => PathBuf::from(bare),
+    }
+}
+
 /// A session's file name as it is typed: without an ending it gets the usual one.
-fn named(name: String) -> PathBuf {
-    let path = PathBuf::from(name);
+fn named(name: &str) -> PathBuf {
+    let path = typed_path(name);
     if path.extension().is_some() { path } else { path.with_extension("ketwork") }
 }

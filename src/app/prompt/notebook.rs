@@ -1,7 +1,7 @@
 //! The session at the prompt with everything that keeps its work safe: the file it belongs to, and the journal.
 
 use crate::app::files::folder::FolderFiles;
-use crate::app::files::journal::{Event, Journal, Leftover, Owner};
+use crate::app::files::journal::{Event, Journal, Leftover, Owner, Safety};
 use crate::app::files::read::{self, ReadProblem};
 use crate::app::files::save::{self, Before, SaveProblem};
 use crate::app::provenance::provenance;
@@ -48,19 +48,19 @@ pub struct Notebook {
     journal: Journal,
     /// Changes since the session was opened or saved.
     pub unsaved: usize,
-    /// What the journal could not write; told once.
+    /// Why the journal could not be written, until that has been told.
     pub journal_trouble: Option<io::Error>,
 }
 
 impl Notebook {
     /// An empty session in the current folder.
-    pub fn new(data_folder: Option<PathBuf>) -> Self {
+    pub fn new(data_folder: Option<PathBuf>, safety: Safety) -> Self {
         let folder = std::env::current_dir().unwrap_or_else(|_| PathBuf::from("."));
         Notebook {
             session: Session::new(Arc::new(FolderFiles::below(&folder))),
             file: None,
             folder,
-            journal: Journal::new(data_folder),
+            journal: Journal::new(data_folder, safety),
             unsaved: 0,
             journal_trouble: None,
         }
