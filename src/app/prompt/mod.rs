@@ -5,6 +5,7 @@ mod completion;
 mod dialogue;
 mod gather;
 mod helper;
+mod keeping;
 mod layout;
 mod leftover;
 mod notebook;
