@@ -483,7 +483,9 @@ fn a_byte_order_mark_is_no_change_by_somebody_else() {
     fs::write(folder.path().join("marked.ketwork"), "\u{feff}ketwork session 1\n1 + 1\n").unwrap();
     let talk = ran_with(folder.path(), &["open", "marked.ketwork"], b"2 + 2\nsave\n");
     assert_eq!(talk.status, 0, "{}", talk.err);
-    assert!(fs::read_to_string(folder.path().join("marked.ketwork")).unwrap().ends_with("1 + 1\n  = 2\n2 + 2\n  = 4\n"));
+    assert!(
+        fs::read_to_string(folder.path().join("marked.ketwork")).unwrap().ends_with("1 + 1\n  = 2\n2 + 2\n  = 4\n")
+    );
 }
 
 #[test]
