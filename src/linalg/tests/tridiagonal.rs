@@ -145,6 +145,24 @@ fn shapes_are_checked() {
     assert!(Bordered::new(&t, &[rationals(&[1])], &Effort::new()).is_err());
 }
 
+#[test]
+fn noise_goes_through_a_pivot_of_order_two() {
+    // Thirds leave a pivot that should be zero at 2^-198; the pivot of order 2 that covers it hands it on to a later row.
+    let effort = Effort::new();
+    let t = Tridiagonal::new(rationals(&[1, 3, -1, -3, -1, 0, 3, 0, -1]), rationals(&[-3, -2, -1, -1, -3, 0, 3, 0]));
+    let t = t.expect("shape");
+    let border = vec![rationals(&[-1, -1, 1, 3, 2, 0, 0, -1, 0])];
+    let full = rationals(&[1, 2, -3, 1, 0, 2, 1, 1, -1, 2]);
+    let expected = exact::solve(&dense(&t, &border), &full).expect("not singular");
+    let bordered = Bordered::new(&as_floats(&t, 200), &[floats(&border[0], 200)], &effort).expect("not singular");
+    assert_eq!(bordered.moved(), 1);
+    let solution = bordered.solve(&floats(&full[..9], 200), &floats(&full[9..], 200)).expect("length");
+    for (x, e) in solution.x.iter().zip(&expected) {
+        let off = Float::with_val(200, x - Float::with_val(200, e)).get_exp().unwrap_or(i32::MIN);
+        assert!(off < -180, "off by 2^{off}");
+    }
+}
+
 proptest! {
     #![proptest_config(cases(200))]
 
