@@ -108,6 +108,7 @@ fn singular_part_in_a_border() {
     let scaled: Vec<Rational> = t.diagonal().iter().map(|x| Rational::from(x / 3u32)).collect();
     let scaled_off: Vec<Rational> = t.off().iter().map(|x| Rational::from(x / 3u32)).collect();
     let thirds = Tridiagonal::new(scaled, scaled_off).expect("shape");
+    assert_eq!(Factored::new(&as_floats(&thirds, 200), &effort).err(), Some(LinalgError::NoPivot { row: n - 1 }));
     let border_floats = vec![floats(&border[0], 200)];
     let bordered = Bordered::new(&as_floats(&thirds, 200), &border_floats, &effort).expect("not singular");
     let solution = bordered.solve(&floats(&b, 200), &floats(&[Rational::from(2)], 200)).expect("length");

@@ -4,6 +4,9 @@ use super::{Scalar, Tridiagonal};
 use crate::linalg::error::LinalgError;
 use crate::num::Effort;
 
+/// A pivot with so few bits left is noise.
+const NOISE: u32 = 8;
+
 /// How many eigenvalues are below, at and above zero.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
 pub struct Inertia {
@@ -38,9 +41,11 @@ pub struct Factored<T> {
 impl<T: Scalar> Factored<T> {
     /// Factorises a matrix.
     ///
-    /// *Errors*: [`LinalgError::NoPivot`] at a pivot that is exactly zero.
+    /// *Errors*: [`LinalgError::NoPivot`] at a pivot that is zero, or lost in rounding.
     pub fn new(matrix: &Tridiagonal<T>, effort: &Effort) -> Result<Self, LinalgError> {
-        let (factored, aside) = Self::setting_aside(matrix, None, effort)?;
+        let bits = matrix.diagonal().iter().filter_map(Scalar::bits).min();
+        let most = bits.map(|bits| bits.saturating_sub(NOISE));
+        let (factored, aside) = Self::setting_aside(matrix, most, effort)?;
         aside.first().map_or(Ok(factored), |&row| Err(LinalgError::NoPivot { row }))
     }
 
