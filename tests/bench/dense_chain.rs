@@ -1,7 +1,7 @@
 //! A chain of three resolvents, <b| 1/(z1 - H) 1/(z2 - H) 1/(z3 - H) |b>, on a dense symmetric matrix.
 //!
-//! `cargo bench --bench dense_chain -- [ORDER DIGITS REPEATS THREADS]` prints the value and the seconds of each run, one line each;
-//! tests/bench/reference_dense.py runs it beside the same job in Python.
+//! `cargo bench --bench dense_chain -- [ORDER DIGITS REPEATS THREADS]` prints the value and the seconds of each run,
+//! one line each; tests/bench/reference_dense.py runs it beside the same job in Python.
 
 use std::time::Instant;
 
