@@ -476,3 +476,43 @@ fn colours_are_for_terminals_only() {
     let forced = ketwork(folder.path(), &["help"]).env("CLICOLOR_FORCE", "1").output().expect("the program ends");
     assert!(!String::from_utf8_lossy(&forced.stdout).contains('\u{1b}'));
 }
+
+#[test]
+fn a_byte_order_mark_is_no_change_by_somebody_else() {
+    let folder = folder();
+    fs::write(folder.path().join("marked.ketwork"), "\u{feff}ketwork session 1\n1 + 1\n").unwrap();
+    let talk = ran_with(folder.path(), &["open", "marked.ketwork"], b"2 + 2\nsave\n");
+    assert_eq!(talk.status, 0, "{}", talk.err);
+    assert!(
+        fs::read_to_string(folder.path().join("marked.ketwork")).unwrap().ends_with("1 + 1\n  = 2\n2 + 2\n  = 4\n")
+    );
+}
+
+#[test]
+fn a_session_goes_on_where_work_cannot_be_kept_safe() {
+    let folder = folder();
+    fs::write(folder.path().join("data"), "a file where the folder should be").unwrap();
+    let talk = ran_with(folder.path(), &[], b"1 + 1\n2 + 2\n");
+    assert_eq!(talk.out, "  = 2\n  = 4\n");
+    assert_eq!(talk.err.matches("would not survive a crash").count(), 1, "{}", talk.err);
+}
+
+#[test]
+fn a_file_without_a_command_is_asked_about() {
+    let folder = folder();
+    fs::write(folder.path().join("a.ketwork"), "ketwork session 1\n").unwrap();
+    let asked = ran(folder.path(), &["a.ketwork"]);
+    assert_eq!(asked.status, 2);
+    assert!(asked.err.contains("`ketwork open a.ketwork`"), "{}", asked.err);
+}
+
+#[test]
+fn long_lines_and_bytes_that_are_no_text_end_a_piped_session() {
+    let folder = folder();
+    let long = ran_with(folder.path(), &[], &vec![b'1'; 3 << 20]);
+    assert_eq!((long.status, long.out.as_str()), (2, ""));
+    assert!(long.err.contains("a line of standard input has more than"), "{}", long.err);
+    let nul = ran_with(folder.path(), &[], b"1 + 1\n2 + \0\n3 + 3\n");
+    assert_eq!((nul.status, nul.out.as_str()), (2, "  = 2\n"));
+    assert!(nul.err.contains("NUL byte"), "{}", nul.err);
+}

@@ -81,7 +81,7 @@ impl Talk {
     }
 
     /// As a power loss would: no chance to say goodbye.
-    fn is_killed(self) {
+    fn killed(self) {
         let process = self.session.get_process().pid().to_string();
         let killed = Command::new("kill").args(["-KILL", &process]).status();
         assert!(killed.is_ok_and(|status| status.success()));
@@ -231,6 +231,23 @@ fn an_interrupt_ends_the_evaluation_and_keeps_the_session() {
 }
 
 #[test]
+fn an_entry_that_fails_is_not_kept_but_an_expectation_is() {
+    let folder = folder();
+    let mut talk = Talk::starts(folder.path(), &[]);
+    talk.sees("ket 1> ");
+    talk.says("2 + foo", "`foo` is not known here", "ket 1> ");
+    talk.types(UP);
+    talk.sees("2 + foo");
+    talk.types("\x7f\x7f\x7f3\r");
+    talk.sees("  = 5\r\n");
+    talk.sees("ket 2> ");
+    talk.says("expect 2 = 3", "expected 3, and the value is 2", "ket 3> ");
+    talk.says("list", "  2  expect 2 = 3\r\n       failed\r\n", "ket 3> ");
+    talk.types("quit\rquit\r");
+    talk.ends(0);
+}
+
+#[test]
 fn an_entry_is_revised_in_place() {
     let folder = folder();
     let mut talk = Talk::starts(folder.path(), &[]);
@@ -271,7 +288,7 @@ fn unsaved_work_survives_a_crash() {
     other.says("recover", "no work was left unsaved", "ket 1> ");
     other.types("quit\r");
     other.ends(0);
-    talk.is_killed();
+    talk.killed();
     assert_eq!(unsaved_journals(folder.path()), 1);
 
     let mut talk = Talk::starts(folder.path(), &[]);
@@ -283,7 +300,7 @@ fn unsaved_work_survives_a_crash() {
     talk.sees("  3  1 + (\r\n");
     talk.sees("taken back");
     talk.sees("ket 4> ");
-    talk.is_killed();
+    talk.killed();
 
     // Taken back and lost again: it is still there.
     let mut talk = Talk::starts(folder.path(), &[]);
@@ -307,7 +324,7 @@ fn a_crash_during_an_evaluation_keeps_its_entry() {
     talk.sees("ket 2> ");
     talk.types("sum(n in 1 .. 1000000000, a/n^2)\r");
     talk.sees("entry 2, ");
-    talk.is_killed();
+    talk.killed();
 
     let mut talk = Talk::starts(folder.path(), &["open", "own.ketwork"]);
     talk.sees("1  2 entries of ");

@@ -17,9 +17,11 @@ mod worker;
 use args::{Arguments, Command};
 use batch::Batch;
 use clap::Parser;
+use clap::error::{ContextKind, ContextValue};
 use console::{Console, OutputEnd, print, tell};
 use status::Status;
 use std::ffi::OsString;
+use std::path::Path;
 use std::process::ExitCode;
 
 /// Does what the command line asks for and gives the exit status.
@@ -29,7 +31,13 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
         Err(told) => {
             // Also `--help` and `--version` come this way.
             let status = if told.use_stderr() { Status::Unusable } else { Status::Fine };
-            return if told.print().is_ok() { status.into() } else { Status::OutputClosed.into() };
+            let printed = told.print().is_ok();
+            if let Some(file) = file_without_command(&told) {
+                tell(&format!(
+                    "what shall be done with it? `ketwork open {file}`, `ketwork run {file}` or `ketwork replay {file}`"
+                ));
+            }
+            return if printed { status.into() } else { Status::OutputClosed.into() };
         }
     };
     worker::announce_mistakes();
@@ -46,6 +54,14 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
         Some(Command::Help { words }) => help(console, &words),
     };
     status.into()
+}
+
+/// The word that is no command, when it is a file.
+fn file_without_command(told: &clap::Error) -> Option<String> {
+    match told.get(ContextKind::InvalidSubcommand) {
+        Some(ContextValue::String(word)) if Path::new(word).is_file() => Some(word.clone()),
+        _ => None,
+    }
 }
 
 fn help(console: Console, words: &[String]) -> Status {

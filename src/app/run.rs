@@ -28,11 +28,12 @@ pub fn run(batch: &Batch, path: &Path, as_json: bool) -> Status {
         session.evaluate(&mut |session, number| {
             batch.worker.progress.begin(format!("entry {}", number + 1));
             let Some(outcome) = session.entry(number).and_then(|view| view.outcome.cloned()) else { return };
-            if ended.is_none() && outcome != Outcome::Stopped {
-                if let Err(end) = print(&printer.entry(session, number, &outcome)) {
-                    ended = Some(end);
-                    session.effort().stop();
-                }
+            if ended.is_none()
+                && outcome != Outcome::Stopped
+                && let Err(end) = print(&printer.entry(session, number, &outcome))
+            {
+                ended = Some(end);
+                session.effort().stop();
             }
             match outcome {
                 Outcome::Failed(reports) => {

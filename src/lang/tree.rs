@@ -40,8 +40,6 @@ pub struct Entry {
     pub span: Span,
 }
 
-// One of each exists an entry; boxing would only make every use of the tree longer.
-#[allow(clippy::large_enum_variant)]
 #[derive(Clone, PartialEq, Debug, Serialize)]
 pub enum EntryKind {
     /// `digits 50`, `digits exact`
@@ -85,7 +83,6 @@ pub enum BudgetLabel {
     Measured,
 }
 
-#[allow(clippy::large_enum_variant)]
 #[derive(Clone, PartialEq, Debug, Serialize)]
 pub enum DigitsWanted {
     /// `digits exact`
@@ -207,7 +204,6 @@ pub struct Label {
     pub span: Span,
 }
 
-#[allow(clippy::large_enum_variant)]
 #[derive(Clone, PartialEq, Debug, Serialize)]
 pub enum LabelPart {
     /// Literal text without blanks, superscripts already in the ASCII form (`2^3P_1`)
@@ -216,7 +212,6 @@ pub enum LabelPart {
     Computed(Expr),
 }
 
-#[allow(clippy::large_enum_variant)]
 #[derive(Clone, PartialEq, Debug, Serialize)]
 pub enum Argument {
     Positional(Expr),

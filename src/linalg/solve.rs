@@ -20,6 +20,9 @@ const LEAST_CONTRACTION: i64 = 10;
 /// Bits kept of the solution beyond those wanted.
 const GUARD: u32 = 64;
 
+/// Bits beyond those wanted that entries are taken to have at least.
+const KNOWN_GUARD: u32 = 32;
+
 /// Bits by which the rounding of residuals stays below the wanted bits of a solution.
 const RESIDUAL_GUARD: u32 = 24;
 
@@ -43,7 +46,7 @@ pub struct Solved {
 ///
 /// The entries are taken as exact: the solution is that of the system as given. An entry that is itself rounded at
 /// precision p moves the solution by up to `2^(condition_bits - p)` relative to its norm, so give entries at the wanted bits
-/// plus [`Solver::condition_bits`] plus some guard.
+/// plus [`Solver::condition_bits`] plus some guard. A matrix whose condition number comes near 2^p is refused as singular.
 ///
 /// *Range*: any exponents of rug; strongly graded matrices are balanced by powers of two first. *Accuracy*: norm-wise,
 /// relative to the largest component. *Cost*: order^3/6 multiply-adds for a symmetric matrix (order^3/3 if pivots are
@@ -89,11 +92,11 @@ impl Solver {
         if matrix.nrows() != matrix.ncols() {
             return Err(LinalgError::NotSquare { rows: matrix.nrows(), columns: matrix.ncols() });
         }
-        let known = matrix.iter().map(Float::prec).max().unwrap_or(bits);
+        let known = matrix.iter().map(Float::prec).max().unwrap_or(0);
         Self::new(Source::Whole(matrix), symmetric, known, bits, effort)
     }
 
-    /// Factors a matrix whose entries are worth `known` bits.
+    /// Factors a matrix whose entries are worth `known` bits; fewer than wanted means that they are exact.
     pub(super) fn new(
         source: Source,
         symmetric: bool,
@@ -101,6 +104,7 @@ impl Solver {
         bits: u32,
         effort: &Effort,
     ) -> Result<Self, LinalgError> {
+        let known = known.max(bits.saturating_add(KNOWN_GUARD));
         if !source.is_finite() {
             return Err(LinalgError::NotFinite);
         }

@@ -15,6 +15,9 @@ use std::sync::Arc;
 /// Most digits that may be asked for.
 pub const LARGEST_DIGITS: u32 = 20_000;
 
+/// Exact values longer than this are written as decimals, unless `digits exact` stands above.
+const LONGEST_EXACT_TEXT: usize = 1000;
+
 /// Why an entry failed.
 #[derive(Debug)]
 pub(super) enum Wrong {
@@ -179,8 +182,15 @@ impl Evaluation<'_> {
             };
         }
         let asked = self.digits_wanted();
-        let rendered = render(&value.scalar, asked);
+        let mut rendered = render(&value.scalar, asked);
         let mut notes = Vec::new();
+        if self.scope.wanted != Wanted::Exact
+            && rendered.text.len() > LONGEST_EXACT_TEXT
+            && let Ok(ball) = value.scalar.to_ball(crate::sums::bits_for(asked) + 64)
+        {
+            notes.push(format!("the exact value has {} characters; `digits exact` writes it", rendered.text.len()));
+            rendered = render(&Scalar::Approx(ball), asked);
+        }
         let (line, kind, digits, verdict) = match rendered.kind {
             RenderedKind::Exact => {
                 let zero = matches!(&value.scalar, Scalar::Exact(x) if x.is_zero());

@@ -41,16 +41,26 @@ pub enum Event {
     Refused,
 }
 
+/// What unsaved work must survive.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub enum Safety {
+    /// The end of the program: enough for input that comes from a pipe, at full speed.
+    Crash,
+    /// The end of the machine as well.
+    PowerLoss,
+}
+
 /// Writes down unsaved work.
 pub struct Journal {
     folder: Option<PathBuf>,
+    safety: Safety,
     open: Option<(PathBuf, File)>,
 }
 
 impl Journal {
     /// A journal in this folder, which need not exist; without a folder nothing is written.
-    pub fn new(folder: Option<PathBuf>) -> Self {
-        Journal { folder, open: None }
+    pub fn new(folder: Option<PathBuf>, safety: Safety) -> Self {
+        Journal { folder, safety, open: None }
     }
 
     /// Adds an event; the journal begins with the owner and the whole text as it was before.
@@ -65,7 +75,10 @@ impl Journal {
         }
         let Some((_, file)) = &mut self.open else { return Ok(()) };
         file.write_all(line(event)?.as_bytes())?;
-        file.sync_data()
+        match self.safety {
+            Safety::PowerLoss => file.sync_data(),
+            Safety::Crash => Ok(()),
+        }
     }
 
     /// Begins again with the whole text, in one step.
@@ -81,7 +94,9 @@ impl Journal {
         new.as_file().try_lock().map_err(io::Error::from)?;
         new.write_all(line(owner)?.as_bytes())?;
         new.write_all(line(&Event::Whole(whole))?.as_bytes())?;
-        new.as_file().sync_all()?;
+        if self.safety == Safety::PowerLoss {
+            new.as_file().sync_all()?;
+        }
         let file = new.persist(&place).map_err(|error| error.error)?;
         sync_folder(folder);
         self.open = Some((place, file));
@@ -202,7 +217,7 @@ mod tests {
     fn what_is_held_is_not_left_behind_and_what_is_let_go_is() {
         let folder = tempfile::tempdir().unwrap();
         let at = Some(folder.path());
-        let mut journal = Journal::new(at.map(Path::to_path_buf));
+        let mut journal = Journal::new(at.map(Path::to_path_buf), Safety::PowerLoss);
         assert!(left_behind(at).is_empty());
         journal.note(&owner(), || "head\n".into(), &entry("2 + 3")).unwrap();
         journal.note(&owner(), || "wrong".into(), &entry("4 +\n  5")).unwrap();
@@ -222,7 +237,7 @@ mod tests {
     #[test]
     fn saved_work_leaves_nothing() {
         let folder = tempfile::tempdir().unwrap();
-        let mut journal = Journal::new(Some(folder.path().join("deep/er")));
+        let mut journal = Journal::new(Some(folder.path().join("deep/er")), Safety::Crash);
         journal.note(&owner(), String::new, &entry("1")).unwrap();
         journal.restart(&owner(), "all".into()).unwrap();
         journal.clear();

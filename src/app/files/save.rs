@@ -1,6 +1,6 @@
 //! Writes a session so that there is always either the old file or the new one, whole.
 
-use super::read::{self, LONGEST_SESSION, ReadProblem};
+use super::read::{self, ReadProblem};
 use std::fs::{self, File};
 use std::io::{self, Write};
 use std::path::{Path, PathBuf};
@@ -57,8 +57,8 @@ fn check(path: &Path, place: &Path, before: Before<'_>) -> Result<(), SaveProble
     match before {
         Before::Anything => Ok(()),
         Before::Nothing => Err(SaveProblem::Exists(path.to_path_buf())),
-        Before::Known(known) => match read::ordinary_file(place, LONGEST_SESSION) {
-            Ok(bytes) if bytes == known.as_bytes() => Ok(()),
+        Before::Known(known) => match read::session_file(place) {
+            Ok(text) if text == known => Ok(()),
             Err(ReadProblem::Missing(_)) => Ok(()),
             _ => Err(SaveProblem::Changed(path.to_path_buf())),
         },

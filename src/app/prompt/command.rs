@@ -109,6 +109,8 @@ fn shortened(text: &str) -> String {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::lang::vocabulary::{WordKind, vocabulary};
+    use std::collections::BTreeSet;
 
     #[test]
     fn commands_are_read() {
@@ -140,6 +142,8 @@ mod tests {
             let known = parse(&format!("{word} 1")).err().into_iter().chain(parse(word).err());
             assert!(known.into_iter().all(|message| !message.contains("not a command")), "{word}");
         }
+        let listed: BTreeSet<&str> = vocabulary().of_kind(WordKind::Command).map(|word| word.name.as_str()).collect();
+        assert_eq!(listed, WORDS.into_iter().collect(), "the vocabulary explains the commands there are");
         assert!(!is_command("saved") && !is_command("2 + 3") && !is_command(""));
     }
 }

@@ -15,7 +15,7 @@ pub struct Offer {
 
 /// Finds what could stand at the cursor.
 ///
-/// Words that begin like the part before the cursor go first; if there are none, words that contain it: `orbit` offers `spin_orbit`.
+/// Words that begin like the part before the cursor go first; if there are none, words that contain it: `velocity` offers `mass_velocity`.
 pub fn offer(line: &str, cursor: usize, names: &[String]) -> Offer {
     let (first, rest_at) = first_word(line);
     if matches!(first, "open" | "save") && cursor >= rest_at {
@@ -135,7 +135,7 @@ mod tests {
 
     #[test]
     fn a_word_is_found_by_its_inside() {
-        assert!(offered("1 + orbit", 9).contains(&"spin_orbit".to_string()));
+        assert!(offered("1 + velocity", 12).contains(&"mass_velocity".to_string()));
         assert_eq!(offered("RESOL", 5), ["resolvent"]);
     }
 
@@ -146,7 +146,7 @@ mod tests {
         assert_eq!(word_at("0..inf", 6), (3, 6));
         assert_eq!(word_at("ω+", 2), (0, 2));
         assert_eq!(word_at("", 0), (0, 0));
-        let offer = offer("2 pol(w)", 3, &["pol".to_string()]);
+        let offer = offer("2 pol(w)", 4, &["pol".to_string()]);
         assert_eq!((offer.start, offer.end, offer.candidates), (2, 5, vec!["pol".to_string()]));
     }
 }

@@ -2,15 +2,13 @@
 
 use super::command::{self, Command};
 use super::gather::Unit;
-use super::notebook::{EntryProblem, Notebook, OpenProblem};
+use super::notebook::{EntryProblem, Notebook};
 use crate::app::console::{Console, OutputEnd, print, tell};
 use crate::app::files::journal::Leftover;
-use crate::app::files::save::SaveProblem;
 use crate::app::worker::Worker;
 use crate::lang::diagnostic::Diagnostic;
 use crate::report::{diagnostics, entry, help};
 use crate::session::{Entered, Outcome, Report};
-use std::path::{Path, PathBuf};
 
 /// What to do after a piece of input.
 #[derive(Clone, PartialEq, Eq, Debug)]
@@ -26,7 +24,7 @@ pub enum Next {
 
 /// What was asked for although work is unsaved; asking again does it.
 #[derive(Clone, PartialEq, Eq, Debug)]
-enum Asked {
+pub(super) enum Asked {
     Quit,
     Open(String),
     Recover,
@@ -38,16 +36,27 @@ pub struct Dialogue {
     pub worker: Worker,
     pub notebook: Notebook,
     pub leftovers: Vec<Leftover>,
-    asked: Option<Asked>,
+    pub(super) asked: Option<Asked>,
     /// Whether anything went wrong; a session from a pipe ends with that.
     pub failed: bool,
     /// Whether it has been said what to do with an entry that failed.
     advised: bool,
+    /// Whether it has been said that work cannot be kept safe.
+    unsafe_told: bool,
 }
 
 impl Dialogue {
     pub fn new(console: Console, worker: Worker, notebook: Notebook) -> Self {
-        Dialogue { console, worker, notebook, leftovers: Vec::new(), asked: None, failed: false, advised: false }
+        Dialogue {
+            console,
+            worker,
+            notebook,
+            leftovers: Vec::new(),
+            asked: None,
+            failed: false,
+            advised: false,
+            unsafe_told: false,
+        }
     }
 
     /// The number of the entry that is written next.
@@ -76,8 +85,13 @@ impl Dialogue {
                 }
             },
         };
-        if let Some(error) = self.notebook.journal_trouble.take() {
-            self.wrong(&format!("this entry would not survive a crash, since it cannot be kept on the disk: {error}"));
+        if let Some(error) = self.notebook.journal_trouble.take()
+            && !self.unsafe_told
+        {
+            self.unsafe_told = true;
+            self.wrong(&format!(
+                "unsaved entries would not survive a crash, since they cannot be kept on the disk: {error}"
+            ));
         }
         next
     }
@@ -103,16 +117,14 @@ impl Dialogue {
         Ok(Next::Go)
     }
 
-    fn wrong(&mut self, message: &str) {
+    pub(super) fn wrong(&mut self, message: &str) {
         self.failed = true;
         tell(&self.console.messages.warning(message));
     }
 
-    fn note(&self, message: &str) {
+    pub(super) fn note(&self, message: &str) {
         tell(&self.console.messages.faint(message));
     }
-
-    // Entries
 
     fn enter(&mut self, text: &str) -> Result<(), OutputEnd> {
         let number = self.next_number();
@@ -128,6 +140,7 @@ impl Dialogue {
 
     /// Replaces the text of an entry.
     pub fn revise(&mut self, number: usize, text: &str) -> Result<(), OutputEnd> {
+        let text = text.trim();
         self.worker.progress.begin(format!("entry {number}"));
         match self.notebook.revise(number, text, &self.worker) {
             Ok(entered) => self.show_entered(&entered),
@@ -173,15 +186,30 @@ impl Dialogue {
         self.failed = true;
         match problem {
             EntryProblem::Text(diagnostics) => self.draw(&format!("entry {number}"), text, &diagnostics),
+            EntryProblem::Failed(reports) => {
+                reports.iter().for_each(|report| self.draw_report(Some((number, text)), report));
+            }
             EntryProblem::Refused(refusal) => self.wrong(&refusal.to_string()),
             EntryProblem::Work(problem) => self.wrong(&problem.to_string()),
         }
     }
 
-    fn draw(&self, name: &str, text: &str, found: &[Diagnostic]) {
+    pub(super) fn draw(&self, name: &str, text: &str, found: &[Diagnostic]) {
         for diagnostic in found {
             tell(&diagnostics::render(name, text, diagnostic, self.console.messages.is_on()));
         }
+    }
+
+    /// Draws a report on the text of the entry it points into; an entry that is not kept is given with its number.
+    fn draw_report(&self, not_kept: Option<(usize, &str)>, report: &Report) {
+        let number = report.entry_number;
+        let text = match not_kept {
+            Some((not_kept, text)) if not_kept == number => Some(text),
+            _ => None,
+        };
+        let kept = self.notebook.session.entry(number);
+        let text = text.or(kept.map(|view| view.text)).unwrap_or_default();
+        self.draw(&format!("entry {number}"), text, std::slice::from_ref(&report.diagnostic));
     }
 
     /// Shows the result of a new entry, or every entry that a revision has evaluated.
@@ -230,11 +258,7 @@ impl Dialogue {
             return;
         };
         self.failed = true;
-        for Report { entry_number, diagnostic } in &reports {
-            let text =
-                self.notebook.session.entry(*entry_number).map_or_else(String::new, |view| view.text.to_string());
-            self.draw(&format!("entry {entry_number}"), &text, std::slice::from_ref(diagnostic));
-        }
+        reports.iter().for_each(|report| self.draw_report(None, report));
         if !self.advised && self.console.interactive {
             self.advised = true;
             self.note(&format!("the entry is kept: `revise {number}` changes it, `drop {number}` takes it out"));
@@ -329,149 +353,4 @@ impl Dialogue {
             ));
         }
     }
-
-    // Files
-
-    fn save(&mut self, over: bool, name: Option<String>) {
-        let path = name.map(named);
-        match self.notebook.save(path.as_deref(), over) {
-            Ok(path) => {
-                let message = format!("saved in {}", path.display());
-                self.note(&message);
-            }
-            Err(None) => self.wrong("under which name? write `save stark`"),
-            Err(Some(problem)) => {
-                let way_out = match &problem {
-                    SaveProblem::Changed(_) | SaveProblem::Exists(_) => {
-                        let again = path.map_or_else(String::new, |path| format!(" {}", path.display()));
-                        format!("; `save NAME` keeps both, `save over{again}` replaces it")
-                    }
-                    _ => String::new(),
-                };
-                self.wrong(&format!("{problem}{way_out}"));
-            }
-        }
-    }
-
-    fn open_command(&mut self, name: String, asked: Option<Asked>) -> Result<(), OutputEnd> {
-        let again = Asked::Open(name.clone());
-        if self.must_ask(&again, asked.as_ref(), &format!("`open {name}` again leaves them")) {
-            return Ok(());
-        }
-        let path = PathBuf::from(&name);
-        let path = if path.exists() { path } else { named(name) };
-        self.open(&path)?;
-        Ok(())
-    }
-
-    /// Opens a session and evaluates it; tells whether it could be opened.
-    pub fn open(&mut self, path: &Path) -> Result<bool, OutputEnd> {
-        match self.notebook.open(path) {
-            Ok(()) => self.evaluate_pending(true).map(|()| true),
-            Err(problem) => {
-                self.tell_open_problem(problem);
-                Ok(false)
-            }
-        }
-    }
-
-    fn tell_open_problem(&mut self, problem: OpenProblem) {
-        match problem {
-            OpenProblem::Read(problem) => self.wrong(&problem.to_string()),
-            OpenProblem::Text { name, text, diagnostics } => {
-                self.failed = true;
-                self.draw(&name, &text, &diagnostics);
-            }
-        }
-    }
-
-    // What a crash left behind
-
-    /// Says what was left behind and how to take it back.
-    pub fn tell_leftovers(&self) {
-        if self.leftovers.is_empty() {
-            return;
-        }
-        self.note("work was left unsaved when the program ended unexpectedly:");
-        for (position, leftover) in self.leftovers.iter().enumerate() {
-            tell(&format!("  {}  {}", position + 1, super::leftover::described(leftover)));
-        }
-        let which = if self.leftovers.len() == 1 { "" } else { " (or `recover 2`, ...)" };
-        self.note(&format!(
-            "`recover`{which} takes it back, `discard` deletes it, `list` and anything else leaves it for later"
-        ));
-    }
-
-    fn recover(&mut self, which: usize, asked: Option<Asked>) -> Result<(), OutputEnd> {
-        if !self.is_left(which) || self.must_ask(&Asked::Recover, asked.as_ref(), "`recover` again leaves them") {
-            return Ok(());
-        }
-        let leftover = self.leftovers.remove(which - 1);
-        match self.notebook.recover(leftover) {
-            Ok(()) => {
-                self.evaluate_pending(false)?;
-                self.note("taken back; it is not saved yet");
-            }
-            Err(problem) => self.tell_open_problem(problem),
-        }
-        Ok(())
-    }
-
-    fn discard(&mut self, which: usize) {
-        if !self.is_left(which) {
-            return;
-        }
-        match self.leftovers.remove(which - 1).delete() {
-            Ok(()) => self.note("deleted"),
-            Err(error) => self.wrong(&format!("it cannot be deleted: {error}")),
-        }
-    }
-
-    fn is_left(&mut self, which: usize) -> bool {
-        let there = which <= self.leftovers.len();
-        if !there {
-            let count = self.leftovers.len();
-            self.wrong(&match count {
-                0 => "no work was left unsaved".to_string(),
-                _ => format!("there is no {which} in the list of unsaved work; it has {count}"),
-            });
-        }
-        there
-    }
-
-    // Leaving
-
-    /// The end of the input: asks once when work is unsaved and somebody is there to answer.
-    pub fn leave(&mut self, asked_before: bool) -> Next {
-        let asked = asked_before.then_some(Asked::Quit);
-        if self.must_ask(&Asked::Quit, asked.as_ref(), "`quit` again leaves them") {
-            return Next::Go;
-        }
-        self.notebook.settled();
-        Next::Leave
-    }
-
-    /// Ctrl-D: like `quit`.
-    pub fn end_of_input(&mut self) -> Next {
-        let asked = self.asked.take() == Some(Asked::Quit);
-        self.leave(asked)
-    }
-
-    fn must_ask(&mut self, wanted: &Asked, asked: Option<&Asked>, again: &str) -> bool {
-        let unsaved = self.notebook.unsaved;
-        if unsaved == 0 || asked == Some(wanted) || !self.console.interactive {
-            return false;
-        }
-        let changes = if unsaved == 1 { "1 change is".to_string() } else { format!("{unsaved} changes are") };
-        let save = if self.notebook.file.is_some() { "`save`" } else { "`save NAME`" };
-        self.note(&format!("{changes} not saved: {save} keeps them, {again}"));
-        self.asked = Some(wanted.clone());
-        true
-    }
-}
-
-/// A session's file name as it is typed: without an ending it gets the usual one.
-fn named(name: String) -> PathBuf {
-    let path = PathBuf::from(name);
-    if path.extension().is_some() { path } else { path.with_extension("ketwork") }
 }

@@ -55,7 +55,7 @@ impl Gather {
     /// The end of the input: what has been begun is all there is of it.
     pub fn rest(&mut self) -> Option<Unit> {
         let Gather { text, .. } = std::mem::take(self);
-        let text = text.trim_end();
+        let text = text.trim();
         (!text.is_empty()).then(|| Unit::Entry(text.to_string()))
     }
 

@@ -5,6 +5,7 @@ mod completion;
 mod dialogue;
 mod gather;
 mod helper;
+mod keeping;
 mod layout;
 mod leftover;
 mod notebook;
@@ -13,7 +14,7 @@ mod terminal;
 
 use super::console::{Console, OutputEnd, tell};
 use super::files::data::data_folder;
-use super::files::journal::left_behind;
+use super::files::journal::{Safety, left_behind};
 use super::interrupt::{Interrupts, WhenIdle};
 use super::progress::Progress;
 use super::status::Status;
@@ -45,7 +46,8 @@ fn converse(console: Console, file: Option<&Path>) -> Result<Status, OutputEnd> 
         progress: Progress::new(console.messages_at_terminal && console.interactive),
     };
     let data = data_folder();
-    let mut dialogue = Dialogue::new(console, worker, Notebook::new(data.clone()));
+    let safety = if console.interactive { Safety::PowerLoss } else { Safety::Crash };
+    let mut dialogue = Dialogue::new(console, worker, Notebook::new(data.clone(), safety));
     if console.interactive {
         let greeting = format!("ketwork {}: `help` shows what can be typed, `quit` leaves", env!("CARGO_PKG_VERSION"));
         tell(&console.messages.faint(&greeting));

@@ -1,14 +1,15 @@
 //! The session at the prompt with everything that keeps its work safe: the file it belongs to, and the journal.
 
 use crate::app::files::folder::FolderFiles;
-use crate::app::files::journal::{Event, Journal, Leftover, Owner};
+use crate::app::files::journal::{Event, Journal, Leftover, Owner, Safety};
 use crate::app::files::read::{self, ReadProblem};
 use crate::app::files::save::{self, Before, SaveProblem};
 use crate::app::provenance::provenance;
 use crate::app::worker::{WorkProblem, Worker};
 use crate::lang::diagnostic::Diagnostic;
 use crate::lang::file::EntryText;
-use crate::session::{Entered, Refusal, Session};
+use crate::lang::tree::EntryKind;
+use crate::session::{Entered, Outcome, Refusal, Report, Session};
 use std::io;
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
@@ -36,6 +37,8 @@ pub enum OpenProblem {
 #[derive(Debug)]
 pub enum EntryProblem {
     Text(Vec<Diagnostic>),
+    /// It was evaluated, and failed.
+    Failed(Vec<Report>),
     Refused(Refusal),
     Work(WorkProblem),
 }
@@ -48,19 +51,19 @@ pub struct Notebook {
     journal: Journal,
     /// Changes since the session was opened or saved.
     pub unsaved: usize,
-    /// What the journal could not write; told once.
+    /// Why the journal could not be written, until that has been told.
     pub journal_trouble: Option<io::Error>,
 }
 
 impl Notebook {
     /// An empty session in the current folder.
-    pub fn new(data_folder: Option<PathBuf>) -> Self {
+    pub fn new(data_folder: Option<PathBuf>, safety: Safety) -> Self {
         let folder = std::env::current_dir().unwrap_or_else(|_| PathBuf::from("."));
         Notebook {
             session: Session::new(Arc::new(FolderFiles::below(&folder))),
             file: None,
             folder,
-            journal: Journal::new(data_folder),
+            journal: Journal::new(data_folder, safety),
             unsaved: 0,
             journal_trouble: None,
         }
@@ -130,14 +133,25 @@ impl Notebook {
     }
 
     /// Adds an entry; it is in the journal before it is evaluated.
+    ///
+    /// A new entry that fails is not kept, so that a slip of the finger never gets into the file; an expectation is, since it says what ought to hold.
     pub fn enter(&mut self, text: &str, worker: &Worker) -> Result<Entered, EntryProblem> {
-        EntryText::new(text).parsed.map_err(EntryProblem::Text)?;
+        let tree = EntryText::new(text).parsed.map_err(EntryProblem::Text)?;
         self.note(&Event::Entry(text.to_string()));
         let effort = self.session.effort();
         let session = &mut self.session;
         let done = worker.run(&effort, || session.enter(text)).map_err(EntryProblem::Work)?;
         match done {
             Ok(entered) => {
+                if !entered.revised
+                    && !matches!(tree.kind, EntryKind::Expect { .. })
+                    && let Some(Outcome::Failed(reports)) =
+                        self.session.entry(entered.number).and_then(|view| view.outcome.cloned())
+                    && self.session.drop_entry(entered.number).is_ok()
+                {
+                    self.note(&Event::Refused);
+                    return Err(EntryProblem::Failed(reports));
+                }
                 self.unsaved += 1;
                 if entered.revised {
                     self.note_whole();

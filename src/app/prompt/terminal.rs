@@ -13,6 +13,7 @@ use rustyline::{
     Cmd, ColorMode, CompletionType, ConditionalEventHandler, Config, Editor, Event, EventContext, EventHandler,
     KeyCode, KeyEvent, Modifiers, RepeatCount,
 };
+use std::io::IsTerminal;
 use std::path::PathBuf;
 use std::sync::Arc;
 use std::sync::atomic::{AtomicBool, AtomicUsize, Ordering};
@@ -86,9 +87,10 @@ impl Terminal {
                     }
                     Next::Go
                 }
-                Err(ReadlineError::Eof) => dialogue.end_of_input(),
+                Err(ReadlineError::Eof) if std::io::stdin().is_terminal() => dialogue.end_of_input(),
+                // The terminal has gone: unsaved work stays in its journal.
+                Err(ReadlineError::Eof) => return Ok(Status::OutputClosed),
                 Err(error) => {
-                    // The terminal has gone: unsaved work stays in its journal.
                     tell(&format!("the terminal does not answer any more: {error}"));
                     return Ok(Status::OutputClosed);
                 }

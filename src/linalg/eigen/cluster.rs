@@ -16,8 +16,8 @@ use crate::num::Effort;
 /// Bits beyond those wanted.
 const GUARD: u32 = 40;
 
-/// Steps of inverse iteration at one precision.
-const STEPS: usize = 100;
+/// Bits that a step of inverse iteration gains at least, for the nearest values machine numbers still tell apart.
+const GAINED: u32 = 4;
 
 /// Times the precision is raised to tell eigenvalues of one cluster apart.
 const RAISES: usize = 4;
@@ -154,7 +154,7 @@ fn settle(
     let working = precision.saturating_add(GUARD);
     let solver = nearby_solver(h, preview, range, working, effort)?;
     let mut holds = 0;
-    for _ in 0..STEPS {
+    for _ in 0..32 + working / GAINED {
         for vector in &mut block {
             *vector = solver.solve(vector, effort)?.ket;
         }

@@ -70,10 +70,9 @@ impl<const L: usize> PivotedLu<L> {
                 }
                 Ok(())
             })?;
-            for j in start..end {
+            for (place, column) in columns[start..end].iter_mut().enumerate() {
                 effort.check()?;
-                let (open_rows, column) = (&mut open[start..], &mut columns[j]);
-                pivots.push(finish_column(open_rows, column, j - start, start)?);
+                pivots.push(finish_column(&mut open[start..], column, place, start)?);
             }
         }
         let lower = open.iter_mut().map(|row| std::mem::take(&mut row.multipliers)).collect();

@@ -2,11 +2,11 @@
 
 use rug::Float;
 
-use super::limbs::{Limbs, Overflow, Sum, difference, fraction_bits, product, read, within, write};
+use super::limbs::{LIMIT, Limbs, Overflow, Sum, difference, fraction_bits, product, read, within, write};
 use crate::linalg::vectors::{exponent, shift};
 use crate::num::{Effort, Interrupted};
 
-/// Bits by which a vector is moved down when a component outgrows its range.
+/// Bits by which a vector is moved down at a time when a component outgrows its range.
 const STEP: i64 = 20;
 
 /// Components stay below 2^ROOM, some bits less than what sums can hold.
@@ -34,6 +34,17 @@ impl<const L: usize> Reciprocal<L> {
     #[inline]
     pub fn times(&self, value: &Limbs<L>) -> Result<Limbs<L>, Overflow> {
         product(value, &self.mantissa, self.exponent)
+    }
+
+    /// Returns a number divided by the pivot and by `2^down`, with the least multiple of STEP that leaves it below 2^ROOM.
+    fn times_within(&self, value: &Limbs<L>) -> (Limbs<L>, i64) {
+        let mut down = 0;
+        loop {
+            match product(value, &self.mantissa, self.exponent - down) {
+                Ok(quotient) if within(&quotient, ROOM) => return (quotient, down),
+                _ => down += STEP,
+            }
+        }
     }
 }
 
@@ -76,13 +87,14 @@ impl<const L: usize> BlockVector<L> {
         let mut out = Self { components: Vec::with_capacity(self.components.len()), exponent: self.exponent };
         for i in 0..self.components.len() {
             effort.check()?;
-            let pivot = pivots.map(|pivots| &pivots[i]);
-            let next = loop {
-                match self.component(i, out.exponent, row(i), &out.components, pivot) {
-                    Ok(next) => break next,
-                    Err(Overflow) => out.move_down(0),
+            let rest = loop {
+                match self.rest(i, out.exponent, row(i), &out.components) {
+                    Ok(rest) => break rest,
+                    Err(Overflow) => out.move_down(0, STEP),
                 }
             };
+            let (next, down) = pivots.map_or((rest, 0), |pivots| pivots[i].times_within(&rest));
+            out.move_down(0, down);
             out.components.push(next);
         }
         Ok(out)
@@ -98,46 +110,41 @@ impl<const L: usize> BlockVector<L> {
         let mut out = Self { components: vec![[0; L]; self.components.len()], exponent: self.exponent };
         for i in (0..self.components.len()).rev() {
             effort.check()?;
-            out.components[i] = loop {
-                match self.component(i, out.exponent, row(i), &out.components[i + 1..], Some(&pivots[i])) {
-                    Ok(next) => break next,
-                    Err(Overflow) => out.move_down(i + 1),
+            let rest = loop {
+                match self.rest(i, out.exponent, row(i), &out.components[i + 1..]) {
+                    Ok(rest) => break rest,
+                    Err(Overflow) => out.move_down(i + 1, STEP),
                 }
             };
+            let (next, down) = pivots[i].times_within(&rest);
+            out.move_down(i + 1, down);
+            out.components[i] = next;
         }
         Ok(out)
     }
 
-    /// Returns component i of a solution from those known, in units of `2^exponent`.
+    /// Returns what row i leaves of its right-hand side, in units of `2^exponent`.
     #[inline]
-    fn component(
-        &self,
-        i: usize,
-        exponent: i64,
-        row: &[Limbs<L>],
-        known: &[Limbs<L>],
-        pivot: Option<&Reciprocal<L>>,
-    ) -> Result<Limbs<L>, Overflow> {
+    fn rest(&self, i: usize, exponent: i64, row: &[Limbs<L>], known: &[Limbs<L>]) -> Result<Limbs<L>, Overflow> {
         let rhs = if exponent == self.exponent {
             self.components[i]
         } else {
             product(&self.components[i], &one(), self.exponent - exponent)?
         };
         let rest = difference(&rhs, &Sum::of_products(row, known).rounded()?);
-        let next = match pivot {
-            Some(pivot) => pivot.times(&rest)?,
-            None => rest,
-        };
-        if within(&next, ROOM) { Ok(next) } else { Err(Overflow) }
+        if within(&rest, LIMIT) { Ok(rest) } else { Err(Overflow) }
     }
 
-    /// Moves the components from a place on down by STEP bits.
-    fn move_down(&mut self, from: usize) {
+    /// Moves the components from a place on down by so many bits.
+    fn move_down(&mut self, from: usize, bits: i64) {
+        if bits == 0 {
+            return;
+        }
         for component in &mut self.components[from..] {
             // Smaller than before, so in range.
-            *component = product(component, &one(), -STEP).unwrap_or(*component);
+            *component = product(component, &one(), -bits).unwrap_or(*component);
         }
-        self.exponent += STEP;
+        self.exponent += bits;
     }
 }
 

@@ -32,7 +32,7 @@ pub(super) fn power(u: &RadialFunction, s: i64, same_block: bool) -> Result<Radi
 /// Source: gradient formula (Edmonds, eq. 5.7.1) for u = r R.
 pub(super) fn gradient(u: &RadialFunction, l: u32, lp: u32) -> Result<RadialFunction, NoFunction> {
     // integration by parts against a regular function r^(lp+1) leaves nothing at the nucleus
-    if !u.contact().is_zero() || u.leading_power(-i64::from(lp) - 1) <= -i64::from(lp) - 1 {
+    if !u.contact().is_zero() || u.leading_power(-i64::from(lp) - 1) < -i64::from(lp) {
         return Err(NoFunction::Distribution);
     }
     let c = gradient_term(l, lp);

@@ -66,6 +66,12 @@ impl RadialFunction {
         &self.contact
     }
 
+    /// The function without its delta function at the nucleus.
+    #[cfg(test)]
+    pub(super) fn without_contact(&self) -> Self {
+        RadialFunction { terms: self.terms.clone(), contact: Surd::zero() }
+    }
+
     pub(super) fn add_term(&mut self, envelope: Envelope, factor: &Rational, polynomial: &Laurent) {
         let slot = self.terms.entry(envelope.clone()).or_default();
         slot.add_scaled(factor, polynomial);

@@ -9,21 +9,31 @@ mod exact;
 mod finite_solution;
 mod function;
 mod labels;
+mod laguerre;
 mod laurent;
+mod moments;
+mod numeric;
+mod numeric_ket;
 mod operators;
+mod origin;
 mod radial;
+mod series;
+mod sturmian;
 #[cfg(test)]
 mod tests;
+mod vector;
 
 use crate::num::{Effort, Surd};
 use crate::systems::{
     Atom, Backend, Coupling, Level, Manifold, Number, Obstacle, Sector, State, StateLabel, System, SystemError,
 };
 use exact::ExactBackend;
+use numeric::NumericBackend;
 use radial::Scale;
 use rug::Rational;
 use std::cmp::Ordering;
 use std::sync::Arc;
+use sturmian::Kept;
 
 /// A hydrogen-like atom.
 #[derive(Clone, Debug)]
@@ -31,6 +41,7 @@ pub struct Hydrogenic {
     charge: Rational,
     mass: Option<Rational>,
     scale: Scale,
+    kept: Arc<Kept>,
 }
 
 impl Hydrogenic {
@@ -56,7 +67,7 @@ impl Hydrogenic {
         // mu = M/(1 + M)
         let reduced_mass = mass.as_ref().map_or(Rational::from(1), |m| m / Rational::from(m + 1));
         let scale = Scale::new(&charge, &reduced_mass);
-        Ok(Hydrogenic { charge, mass, scale })
+        Ok(Hydrogenic { charge, mass, scale, kept: Arc::default() })
     }
 
     /// The charge of the nucleus.
@@ -113,8 +124,10 @@ impl System for Hydrogenic {
         Some(Arc::new(ExactBackend::new(self.scale.clone(), effort.clone())))
     }
 
-    fn numeric(&self, _: Level, _: &State, _: &Effort) -> Result<Arc<dyn Backend>, Obstacle> {
-        Err(Obstacle::NotYet("numeric".into()))
+    fn numeric(&self, level: Level, anchor: &State, effort: &Effort) -> Result<Arc<dyn Backend>, Obstacle> {
+        let (n, ..) = labels::quantum_numbers(anchor).ok_or_else(exact::foreign)?;
+        let kept = self.kept.clone();
+        Ok(Arc::new(NumericBackend::new(self.scale.clone(), level, n, kept, effort.clone())))
     }
 
     fn basis_range(&self) -> Option<(usize, usize)> {

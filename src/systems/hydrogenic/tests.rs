@@ -2,3 +2,4 @@
 
 mod chain;
 mod exact_values;
+mod numeric_values;
