@@ -43,6 +43,9 @@ impl Window {
     }
 }
 
+/// Windows around all eigenvalues of a component, in rising order.
+pub type Windows = Arc<Vec<Window>>;
+
 /// A proved energy, and vectors that span its states in one component where they are to be had.
 #[derive(Clone, Debug)]
 pub struct ExactEnergy {
@@ -128,7 +131,7 @@ impl MatrixSystem {
     }
 
     /// Windows around all eigenvalues of a component.
-    fn windows(&self, component: usize, bits: u32, effort: &Effort) -> Result<Arc<Vec<Window>>, Obstacle> {
+    fn windows(&self, component: usize, bits: u32, effort: &Effort) -> Result<Windows, Obstacle> {
         let key = (component, bits);
         if let Some(known) = self.windows.lock().unwrap_or_else(PoisonError::into_inner).get(&key) {
             return Ok(known.clone());
@@ -136,7 +139,7 @@ impl MatrixSystem {
         let h = self.hermitian(component, bits + 64)?;
         let cluster = refine_cluster(&h, 0..h.order(), bits, effort).map_err(obstacle)?;
         let error = self.error_at(component, bits);
-        let found = Arc::new(cluster.values.iter().map(|value| Window::around(value, &error)).collect());
+        let found: Windows = Arc::new(cluster.values.iter().map(|value| Window::around(value, &error)).collect());
         let mut known = self.windows.lock().unwrap_or_else(PoisonError::into_inner);
         known.insert(key, Arc::clone(&found));
         Ok(found)

@@ -34,7 +34,7 @@ use super::{
 use crate::linalg::{HermitianMatrix, LinalgError};
 use crate::num::{Effort, Surd};
 use component::Component;
-use guess::{ExactEnergy, Window};
+use guess::ExactEnergy;
 use levels::EnergyLevel;
 use rough::RoughSpectrum;
 use rug::{Complex, Float};
@@ -71,7 +71,7 @@ pub struct Inner {
     /// Proved energies of a component by their first place and the place behind the last.
     proved: Mutex<BTreeMap<(usize, usize, usize), ExactEnergy>>,
     /// All eigenvalues of a component at a precision.
-    windows: Mutex<BTreeMap<(usize, u32), Arc<Vec<Window>>>>,
+    windows: Mutex<BTreeMap<(usize, u32), guess::Windows>>,
     /// Numbers of distinct eigenvalues in sets of components.
     distinct: Mutex<BTreeMap<BTreeSet<usize>, usize>>,
     work: Mutex<Vec<Arc<numeric::Work>>>,

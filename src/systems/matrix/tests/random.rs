@@ -20,19 +20,19 @@ impl Random {
 
     /// A sparse Hermitian matrix of small Gaussian rationals.
     fn hermitian(&mut self, order: usize, complex: bool) -> ExactMatrix {
-        let mut rows = vec![vec![Surd::zero(); order]; order];
+        let mut lower: Vec<Vec<Surd>> = Vec::with_capacity(order);
         for i in 0..order {
-            for j in 0..=i {
+            let entry = |j: usize| {
                 if self.between(0, 2) == 0 {
-                    continue;
+                    return Surd::zero();
                 }
                 let re = Rational::from((self.between(-9, 9), self.between(1, 5)));
                 let im = Rational::from(if complex && i != j { self.between(-3, 3) } else { 0 });
-                rows[i][j] = Surd::gaussian(re, im);
-                rows[j][i] = rows[i][j].conj();
-            }
+                Surd::gaussian(re, im)
+            };
+            lower.push((0..=i).map(entry).collect());
         }
-        matrix(rows)
+        symmetric(order, |i, j| lower[i][j].clone())
     }
 
     /// A Hermitian matrix with known whole energies, some of them equal: one reflected by two random reflections.
