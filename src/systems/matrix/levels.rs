@@ -253,7 +253,7 @@ impl MatrixSystem {
 }
 
 fn is_gaussian(entry: &Surd) -> bool {
-    entry.terms().all(|(root, _)| *root == 1)
+    !entry.has_pi() && entry.terms().all(|(unit, _)| unit.radicand == 1)
 }
 
 /// Exact comparison of two real numbers.
@@ -301,12 +301,14 @@ fn near(entry: &Surd, value: &Float) -> bool {
 /// The image of H modulo a prime in which every square root and i have one.
 fn entries_modulo(h: &ExactMatrix, prime: &Prime) -> Option<Vec<u64>> {
     let i = prime.sqrt(prime.from_i64(-1))?;
+    let pi = prime.from_i64(0x3243_F6A8_885A_308D);
     let mut roots: BTreeMap<Integer, u64> = BTreeMap::new();
     let mut image = vec![0; h.order() * h.order()];
     for (row, entries) in h.rows().iter().enumerate() {
         for (column, entry) in entries {
             let mut sum = 0;
-            for (radicand, c) in entry.terms() {
+            for (unit, c) in entry.terms() {
+                let radicand = &unit.radicand;
                 let root = match roots.get(radicand) {
                     Some(root) => *root,
                     None => {
@@ -315,6 +317,10 @@ fn entries_modulo(h: &ExactMatrix, prime: &Prime) -> Option<Vec<u64>> {
                         root
                     }
                 };
+                // pi is transcendental: any element serves as its image, for all but a vanishing share of primes.
+                let power = prime.power(pi, u64::from(unit.pi_power.unsigned_abs()));
+                let power = if unit.pi_power < 0 { prime.inverse(power)? } else { power };
+                let root = prime.multiply(root, power);
                 let part = prime.add(fraction(&c.re, prime)?, prime.multiply(i, fraction(&c.im, prime)?));
                 sum = prime.add(sum, prime.multiply(root, part));
             }
