@@ -29,8 +29,8 @@ define dipole_2p(w) = -(<p| D_z (R2(w) + R2(-w)) D_z |p> + 2 <q| D_z (R2(w) + R2
 /// The lines that a script of tests/reference/ prints, by the Python that the README's test command sets up, or that of `KETWORK_PYTHON`.
 fn reference(script: &str, arguments: &[String]) -> Vec<String> {
     let root = Path::new(env!("CARGO_MANIFEST_DIR"));
-    let python = std::env::var_os("KETWORK_PYTHON")
-        .map_or_else(|| root.join("target/reference/bin/python"), PathBuf::from);
+    let python =
+        std::env::var_os("KETWORK_PYTHON").map_or_else(|| root.join("target/reference/bin/python"), PathBuf::from);
     let output = Command::new(python)
         .arg(root.join("tests/reference").join(script))
         .args(arguments)
