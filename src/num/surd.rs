@@ -96,6 +96,11 @@ impl Surd {
         self.terms.keys().any(|unit| unit.pi_power != 0)
     }
 
+    /// Whether it is a + b i with rational a and b: neither a square root nor pi in it.
+    pub fn is_gaussian(&self) -> bool {
+        self.terms.keys().all(|unit| unit.pi_power == 0 && unit.radicand == 1)
+    }
+
     /// The square root of a rational; i times a root when it is negative.
     ///
     /// Errors: `None` when the radicand is too large to be shown squarefree by trial division.

@@ -227,9 +227,8 @@ impl Evaluation<'_> {
     /// An exact number with roots or pi in it as a decimal, to be said beside it.
     fn in_decimals(&self, scalar: &Scalar) -> Option<String> {
         let Scalar::Exact(exact) = scalar else { return None };
-        let gaussian = exact.terms().all(|(unit, _)| unit.pi_power == 0 && unit.radicand == 1);
         let digits = self.digits_wanted();
-        let ball = (!gaussian).then(|| scalar.to_ball(crate::sums::bits_for(digits) + 64).ok())??;
+        let ball = (!exact.is_gaussian()).then(|| scalar.to_ball(crate::sums::bits_for(digits) + 64).ok())??;
         Some(format!("in decimals {}", render(&Scalar::Approx(ball), digits).text))
     }
 

@@ -3,9 +3,11 @@
 
 mod field;
 mod hessenberg;
+mod nullity;
 mod polynomial;
 
 pub use field::Prime;
+pub use nullity::nullity;
 
 use super::error::LinalgError;
 use crate::num::Effort;

@@ -109,11 +109,15 @@ impl System for Hydrogenic {
     }
 
     fn couple(&self, atom: &Atom, from: Sector) -> Vec<Coupling> {
-        operators::couple(atom, from)
+        operators::couple(atom, from, &self.charge)
     }
 
     fn adjoint(&self, atom: &Atom) -> (i32, Atom) {
         operators::adjoint(atom)
+    }
+
+    fn without_pi(&self, atom: &Atom) -> Option<(i32, Atom)> {
+        operators::without_pi(atom)
     }
 
     fn selection_rule(&self, atom: &Atom) -> String {

@@ -5,7 +5,8 @@
 
 use super::bound::level_at;
 use super::exact::{eigenstate, foreign, levels_left_out, no_integral, orbital, resolve_exactly};
-use super::function::Unintegrable;
+use super::finite_solution::project_out;
+use super::function::{RadialFunction, Unintegrable};
 use super::labels::{omitted_levels, short};
 use super::numeric_ket::{NumericKet, element, not_a_function};
 use super::radial::{Radial, Scale};
@@ -77,20 +78,23 @@ impl NumericBackend {
 
     fn resolved(&self, resolvent: &Resolvent, l: u32, ket: &NumericKet) -> Result<NumericKet, Obstacle> {
         let (z, levels) = self.energy(resolvent, l)?;
-        if let (Some(exact), Energy::Exact(z)) = (ket.as_exact(), &z) {
-            match resolve_exactly(z, &levels, l, exact, &self.effort) {
+        if let Some(exact) = ket.as_exact() {
+            let attempt = match &z {
+                Energy::Exact(z) => resolve_exactly(z, &levels, l, exact, &self.effort),
+                // a source inside the space left out: nothing, and not something small
+                _ if project_out(exact, l, &levels).is_ok_and(|rest| rest.is_zero()) => Ok(RadialFunction::default()),
+                _ => Err(Obstacle::Inexact),
+            };
+            match attempt {
                 Ok(u) => return Ok(NumericKet::from_exact(u, l, self.bits)),
                 Err(Obstacle::Inexact) => {}
                 Err(obstacle) => return Err(obstacle),
             }
         }
-        let origin = ket.origin_with_contact();
-        let power = origin.power.saturating_add(i64::from(l) + 1);
-        // a delta function counts as r^-2, yet against r its integral is finite
-        let delta = l == 0 && origin.power == -2 && ket.only_contact_is_singular();
-        if power < 0 && !delta {
-            let reason = Unintegrable::Diverges { power };
-            return Err(no_integral("the source of a resolvent", reason));
+        let origin = ket.origin();
+        if let Some(power) = origin.too_singular_for_source(l) {
+            let diverges = no_integral("the source of a resolvent", Unintegrable::Diverges { power });
+            return Err(if origin.certain { diverges } else { Obstacle::Undecided });
         }
         let block = self.block(l, &levels);
         let f = ket.moments(&block.basis(), l, block.count)?;

@@ -23,7 +23,7 @@ pub(super) struct NumericKet {
     series: Option<Series>,
     /// Weight of a delta function at the nucleus that is not exact.
     contact: Option<Complex>,
-    /// Behaviour at the nucleus of all parts but the delta functions.
+    /// Behaviour at the nucleus.
     origin: Origin,
     bits: u32,
 }
@@ -52,18 +52,8 @@ impl NumericKet {
             && self.contact.as_ref().is_none_or(Complex::is_zero)
     }
 
-    fn has_contact(&self) -> bool {
-        self.contact.is_some() || self.functions().any(|(_, u)| !u.contact().is_zero())
-    }
-
-    /// The behaviour at the nucleus, with delta functions counted.
-    pub(super) fn origin_with_contact(&self) -> Origin {
-        if self.has_contact() { self.origin.joined(Origin::contact()) } else { self.origin }
-    }
-
-    /// Tells whether nothing but a delta function is as singular as a delta function.
-    pub(super) fn only_contact_is_singular(&self) -> bool {
-        self.has_contact() && (self.origin.is_zero() || self.origin.power > Origin::contact().power)
+    pub(super) fn origin(&self) -> Origin {
+        self.origin
     }
 
     /// All exact functions; the weight is absent where it is one.
@@ -93,7 +83,7 @@ impl NumericKet {
                 let scaled = Complex::with_val(bits, contact * &weight);
                 out.contact = Some(out.contact.map_or(scaled.clone(), |sum| sum + scaled));
             }
-            if ket.series.is_some() || !ket.weighted.is_empty() {
+            if ket.as_exact().is_none() {
                 out.origin = out.origin.joined(ket.origin);
             }
         }
@@ -101,7 +91,7 @@ impl NumericKet {
         for (_, u) in &out.weighted {
             out.origin = out.origin.joined(origin_of(u, l));
         }
-        out
+        if out.is_zero() { Self::from_exact(RadialFunction::default(), l, bits) } else { out }
     }
 
     fn add_weighted(&mut self, weight: Complex, u: &RadialFunction) {
@@ -138,7 +128,7 @@ impl NumericKet {
         match operator {
             Radial::Power(s) => self.powered(s, l, lp),
             Radial::Gradient => {
-                self.differentiable(self.origin.is_zero() || self.origin.has_gradient(lp))?;
+                differentiable(self.origin.has_gradient(lp))?;
                 self.mapped(operator, l, lp, self.origin.gradient(l, lp), |s| s.gradient(gradient_term(l, lp)))
             }
             Radial::PSquared => self.p_squared(l),
@@ -156,22 +146,24 @@ impl NumericKet {
                 let value = self.value_at_nucleus(&operator.name())?;
                 let mut out = Self::from_exact(RadialFunction::default(), lp, self.bits);
                 out.contact = Some(value * contact_factor(operator, self.bits));
+                out.origin = Origin::contact();
                 Ok(out)
             }
         }
     }
 
     fn powered(&self, s: i64, l: u32, lp: u32) -> Result<Self, Obstacle> {
-        if self.has_contact() && s < 0 {
+        if self.origin.delta && s < 0 {
             return Err(Obstacle::Inexact);
         }
-        let mut out = self.mapped(Radial::Power(s), l, lp, self.origin.times_power(s), |u| u.times_power(s))?;
+        let origin = self.origin.times_power(s, l == lp);
+        let mut out = self.mapped(Radial::Power(s), l, lp, origin, |u| u.times_power(s))?;
         out.contact = if s == 0 && l == lp { self.contact.clone() } else { None };
         Ok(out)
     }
 
     fn p_squared(&self, l: u32) -> Result<Self, Obstacle> {
-        self.differentiable(self.origin.is_zero() || self.origin.has_p_squared(l))?;
+        differentiable(self.origin.has_p_squared(l))?;
         let mut out = self.mapped(Radial::PSquared, l, l, self.origin.p_squared(l), |s| s.p_squared(l))?;
         if let Some(series) = self.series.as_ref().filter(|_| l == 0) {
             // -(1/r)'' holds 4 pi delta(r)
@@ -181,10 +173,6 @@ impl NumericKet {
             }
         }
         Ok(out)
-    }
-
-    fn differentiable(&self, allowed: bool) -> Result<(), Obstacle> {
-        if allowed && !self.has_contact() { Ok(()) } else { Err(Obstacle::Inexact) }
     }
 
     /// Applies an operator to every part by itself.
@@ -207,8 +195,9 @@ impl NumericKet {
 
     /// The coefficient of r.
     fn value_at_nucleus(&self, operator: &str) -> Result<Complex, Obstacle> {
-        if self.has_contact() || !(self.origin.is_zero() || self.origin.finite_at_nucleus()) {
-            return Err(self.divergence(operator, Unintegrable::Contact));
+        if !self.origin.finite_at_nucleus() {
+            let certain = self.origin.certain;
+            return Err(if certain { no_integral(operator, Unintegrable::Contact) } else { Obstacle::Undecided });
         }
         let mut sum = Complex::new(self.bits);
         for (weight, u) in self.functions() {
@@ -221,10 +210,6 @@ impl NumericKet {
         Ok(sum)
     }
 
-    fn divergence(&self, operator: &str, reason: Unintegrable) -> Obstacle {
-        if self.origin.certain { no_integral(operator, reason) } else { Obstacle::Undecided }
-    }
-
     /// <self|other>, with the name of the operator between for a message.
     pub(super) fn inner(&self, other: &NumericKet, operator: &str) -> Result<Number, Obstacle> {
         if let (Some(bra), Some(ket)) = (self.as_exact(), other.as_exact()) {
@@ -235,16 +220,17 @@ impl NumericKet {
             };
         }
         let mut sum = Complex::new(self.bits);
-        match (self.has_contact(), other.has_contact()) {
-            (false, false) => {}
-            (true, true) => return Err(no_integral(operator, Unintegrable::Contact)),
-            (true, false) => sum += self.contact_weight().conj() * other.value_at_nucleus(operator)?,
-            (false, true) => sum += self.value_at_nucleus(operator)?.conj() * other.contact_weight(),
+        let certain = self.origin.certain && other.origin.certain;
+        let doubtful = |obstacle| if certain { obstacle } else { Obstacle::Undecided };
+        if self.origin.delta {
+            sum += self.contact_weight().conj() * other.value_at_nucleus(operator).map_err(doubtful)?;
+        }
+        if other.origin.delta {
+            sum += self.value_at_nucleus(operator).map_err(doubtful)?.conj() * other.contact_weight();
         }
         let power = self.origin.power.saturating_add(other.origin.power);
         if power < 0 {
-            let reason = Unintegrable::Diverges { power };
-            return Err(if self.origin.certain { other.divergence(operator, reason) } else { Obstacle::Undecided });
+            return Err(doubtful(no_integral(operator, Unintegrable::Diverges { power })));
         }
         sum += self.smooth_inner(other, operator)?;
         Ok(Number::Approx(sum))
@@ -302,7 +288,7 @@ impl NumericKet {
         if let Some(series) = &self.series {
             out = out.plus(&series.moments(basis, count).ok_or_else(cancelling)?);
         }
-        if l == 0 && self.has_contact() {
+        if l == 0 && self.origin.delta {
             // L_b^1(0) = b + 1
             let values = (1..=count).map(|b| Float::with_val(bits, b)).collect();
             out = out.plus(&Vector::real(values).scaled(&self.contact_weight(), bits));
@@ -353,6 +339,10 @@ pub(super) fn element(
     }
 }
 
+fn differentiable(allowed: bool) -> Result<(), Obstacle> {
+    if allowed { Ok(()) } else { Err(Obstacle::Inexact) }
+}
+
 /// 1/(4 pi), or 1/4 for pi delta(r).
 fn contact_factor(operator: Radial, bits: u32) -> Float {
     let quarter = Float::with_val(bits, 0.25);
@@ -361,7 +351,8 @@ fn contact_factor(operator: Radial, bits: u32) -> Float {
 
 fn origin_of(u: &RadialFunction, l: u32) -> Origin {
     let regular = i64::from(l) + 1;
-    if u.terms().next().is_none() { Origin::zero() } else { Origin::pure(u.leading_power(regular)) }
+    let function = if u.terms().next().is_none() { Origin::zero() } else { Origin::pure(u.leading_power(regular)) };
+    if u.contact().is_zero() { function } else { function.joined(Origin::contact()) }
 }
 
 /// Functions whose singular parts cancel: the powers allow the integral, its parts do not exist.

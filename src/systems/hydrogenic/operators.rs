@@ -11,7 +11,8 @@ use rug::Rational;
 const LARGEST: i64 = 200;
 
 /// Names for a message about an operator that does not exist.
-const NAMES: [&str; 9] = ["D_z", "P_z", "L_z", "L^2", "r", "p^2", "p^4", "delta(r)", "C(1)_0"];
+const NAMES: [&str; 11] =
+    ["D_z", "P_z", "L_z", "L^2", "r", "p^2", "p^4", "delta(r)", "C(1)_0", "mass_velocity", "darwin"];
 
 /// An operator that exists, taken apart.
 #[derive(Clone, PartialEq, Debug)]
@@ -27,9 +28,10 @@ enum Operator {
         parts: Vec<SphericalWeight>,
     },
     LSquared,
-    Scalar(Radial),
-    /// delta(r) keeps to s waves.
-    Contact(Radial),
+    /// A multiple of a radial operator.
+    Scalar(Radial, Rational),
+    /// A multiple of a delta function, which keeps to s waves.
+    Contact(Radial, Rational),
 }
 
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
@@ -41,23 +43,28 @@ enum Vector {
 
 /// Tells whether an operator exists as written; `Ok(false)` where it is a power to be multiplied out.
 pub(super) fn knows(atom: &Atom) -> Result<bool, SystemError> {
-    Ok(read(atom)?.is_some())
+    Ok(read(atom, &Rational::from(1))?.is_some())
 }
 
-/// Where an operator leads from a sector.
-pub(super) fn couple(atom: &Atom, from: Sector) -> Vec<Coupling> {
+/// delta(r) as pi^-1 times an operator with rational elements.
+pub(super) fn without_pi(atom: &Atom) -> Option<(i32, Atom)> {
+    (atom.name == "delta(r)").then(|| (-1, Atom { name: "pi delta(r)".into(), ..atom.clone() }))
+}
+
+/// Where an operator leads from a sector of the atom with a nuclear charge.
+pub(super) fn couple(atom: &Atom, from: Sector, charge: &Rational) -> Vec<Coupling> {
     let Block::Orbital { l } = from.block else {
         return Vec::new();
     };
-    let Ok(Some(operator)) = read(atom) else {
+    let Ok(Some(operator)) = read(atom, charge) else {
         return Vec::new();
     };
     let m = from.twice_m / 2;
     let stay = |factor: Surd, radial: Radial| vec![Coupling { to: from, factor, radial: radial.operator() }];
     match operator {
-        Operator::Scalar(radial) => stay(Surd::one(), radial),
-        Operator::Contact(radial) if l == 0 => stay(Surd::one(), radial),
-        Operator::Contact(_) => Vec::new(),
+        Operator::Scalar(radial, factor) => stay(Surd::from(factor), radial),
+        Operator::Contact(radial, factor) if l == 0 => stay(Surd::from(factor), radial),
+        Operator::Contact(..) => Vec::new(),
         Operator::LSquared if l == 0 => Vec::new(),
         Operator::LSquared => stay(Surd::from(i64::from(l) * (i64::from(l) + 1)), Radial::Power(0)),
         Operator::Vector { kind: Vector::Orbital, parts } => orbital(l, m, &parts),
@@ -91,7 +98,7 @@ pub(super) fn selection_rule(atom: &Atom) -> String {
         [one] => format!("changes m by {:+}", one.q),
         _ => "changes m by one".to_string(),
     };
-    match read(atom) {
+    match read(atom, &Rational::from(1)) {
         Ok(Some(Operator::Vector { kind: Vector::Orbital, parts })) => format!("{name} keeps l and {}", change(&parts)),
         Ok(Some(Operator::Vector { parts, .. })) => format!("{name} changes l by one and {}", change(&parts)),
         Ok(Some(Operator::Tensor { k, parts })) if k > 1 => {
@@ -99,7 +106,7 @@ pub(super) fn selection_rule(atom: &Atom) -> String {
             format!("{name} changes l by {} and {}", steps.join(" or "), change(&parts))
         }
         Ok(Some(Operator::Tensor { k: 1, parts })) => format!("{name} changes l by one and {}", change(&parts)),
-        Ok(Some(Operator::Contact(_))) => format!("{name} acts on s waves only: all others vanish at the nucleus"),
+        Ok(Some(Operator::Contact(..))) => format!("{name} acts on s waves only: all others vanish at the nucleus"),
         Ok(Some(Operator::LSquared)) => format!("{name} is zero in s waves"),
         _ => format!("{name} keeps l and m"),
     }
@@ -125,8 +132,9 @@ fn refused(message: String, help: impl Into<String>) -> SystemError {
     SystemError::Refused { message, help: help.into() }
 }
 
-fn read(atom: &Atom) -> Result<Option<Operator>, SystemError> {
+fn read(atom: &Atom, charge: &Rational) -> Result<Option<Operator>, SystemError> {
     let name = atom.name.as_str();
+    let one = Rational::from(1);
     if name != "C" && !atom.arguments.is_empty() {
         return Err(refused(
             format!("{} takes nothing in parentheses", atom.name),
@@ -150,13 +158,13 @@ fn read(atom: &Atom) -> Result<Option<Operator>, SystemError> {
             if atom.power.abs() > LARGEST {
                 return Err(refused(format!("{} is beyond r^{LARGEST}", written(atom)), "choose a lower power"));
             }
-            Ok(Some(Operator::Scalar(Radial::Power(atom.power))))
+            Ok(Some(Operator::Scalar(Radial::Power(atom.power), one)))
         }
         "p" => {
             no_component(atom)?;
             match atom.power {
-                2 => Ok(Some(Operator::Scalar(Radial::PSquared))),
-                4 => Ok(Some(Operator::Scalar(Radial::PFourth))),
+                2 => Ok(Some(Operator::Scalar(Radial::PSquared, one))),
+                4 => Ok(Some(Operator::Scalar(Radial::PFourth, one))),
                 1 => Err(refused(
                     "p without a component is a vector, not a number".into(),
                     "write a component, as P_z, or an even power: p^2, p^4",
@@ -174,8 +182,8 @@ fn read(atom: &Atom) -> Result<Option<Operator>, SystemError> {
         "delta(r)" | "pi delta(r)" => {
             no_component(atom)?;
             match atom.power {
-                1 if name == "delta(r)" => Ok(Some(Operator::Contact(Radial::Delta))),
-                1 => Ok(Some(Operator::Contact(Radial::DeltaTimesPi))),
+                1 if name == "delta(r)" => Ok(Some(Operator::Contact(Radial::Delta, one))),
+                1 => Ok(Some(Operator::Contact(Radial::DeltaTimesPi, one))),
                 _ => Err(refused(
                     format!("{} does not exist: a delta function has no powers", written(atom)),
                     "write delta(r) to the first power",
@@ -184,7 +192,15 @@ fn read(atom: &Atom) -> Result<Option<Operator>, SystemError> {
         }
         "H" => {
             no_component(atom)?;
-            power_of(atom, Operator::Scalar(Radial::Hamiltonian))
+            power_of(atom, Operator::Scalar(Radial::Hamiltonian, one))
+        }
+        "mass_velocity" => {
+            no_component(atom)?;
+            power_of(atom, Operator::Scalar(Radial::PFourth, Rational::from((-1, 8))))
+        }
+        "darwin" => {
+            no_component(atom)?;
+            power_of(atom, Operator::Contact(Radial::DeltaTimesPi, Rational::from(charge / 2)))
         }
         _ => Err(SystemError::UnknownOperator {
             name: atom.name.clone(),
@@ -319,6 +335,10 @@ mod tests {
         Atom { name: "C".into(), component: Some(component.into()), arguments: vec![Rational::from(k)], power: 1 }
     }
 
+    fn couple_one(operator: &Atom, l: u32, m: i32) -> Vec<Coupling> {
+        couple(operator, sector(l, m), &Rational::from(1))
+    }
+
     #[test]
     fn powers() {
         assert_eq!(knows(&atom("r", "", -3)), Ok(true));
@@ -374,9 +394,9 @@ mod tests {
             for l in 0..4_u32 {
                 let reach = i32::try_from(l).expect("small");
                 for m in -reach..=reach {
-                    for step in couple(&operator, sector(l, m)) {
+                    for step in couple_one(&operator, l, m) {
                         let mut back = Surd::zero();
-                        for coupling in couple(&other, step.to) {
+                        for coupling in couple(&other, step.to, &Rational::from(1)) {
                             if coupling.to == sector(l, m) {
                                 back += &coupling.factor;
                             }
@@ -393,8 +413,8 @@ mod tests {
     fn angular_momentum_algebra() {
         let walk = |first: &str, second: &str, l: u32, m: i32| {
             let mut out: BTreeMap<Sector, Surd> = BTreeMap::new();
-            for one in couple(&atom("L", first, 1), sector(l, m)) {
-                for two in couple(&atom("L", second, 1), one.to) {
+            for one in couple_one(&atom("L", first, 1), l, m) {
+                for two in couple(&atom("L", second, 1), one.to, &Rational::from(1)) {
                     *out.entry(two.to).or_default() += &(&one.factor * &two.factor);
                 }
             }
@@ -408,10 +428,8 @@ mod tests {
                     *commutator.entry(to).or_default() -= &factor;
                 }
                 commutator.retain(|_, factor| !factor.is_zero());
-                let expected: BTreeMap<Sector, Surd> = couple(&atom("L", "z", 1), sector(l, m))
-                    .into_iter()
-                    .map(|c| (c.to, &c.factor * &Surd::i()))
-                    .collect();
+                let expected: BTreeMap<Sector, Surd> =
+                    couple_one(&atom("L", "z", 1), l, m).into_iter().map(|c| (c.to, &c.factor * &Surd::i())).collect();
                 assert_eq!(commutator, expected);
             }
         }

@@ -90,13 +90,13 @@ impl SturmianBlock {
         match self.zeta(z) {
             (zeta, None) => {
                 let matrix = self.matrix(&zeta, Float::clone).map_err(obstacle)?;
-                Ok(Factorisation::Real(Bordered::new(&matrix, &border, effort).map_err(obstacle)?))
+                Ok(Factorisation::Real(Complement::new(&matrix, border, effort)?))
             }
             (re, Some(im)) => {
                 let complex = |x: &Float| Complex::with_val(self.bits, x);
                 let matrix = self.matrix(&Complex::with_val(self.bits, (re, im)), complex).map_err(obstacle)?;
                 let border: Vec<Vec<Complex>> = border.iter().map(|row| row.iter().map(complex).collect()).collect();
-                Ok(Factorisation::Complex(Bordered::new(&matrix, &border, effort).map_err(obstacle)?))
+                Ok(Factorisation::Complex(Complement::new(&matrix, border, effort)?))
             }
         }
     }
@@ -121,33 +121,60 @@ impl SturmianBlock {
                 new
             }
         };
-        let zero = vec![Float::new(self.bits); left_out.len()];
         let x = match &*factorisation {
-            Factorisation::Real(bordered) => {
-                let solve = |f: &[Float]| {
-                    let f: Vec<Float> = f.iter().rev().cloned().collect();
-                    let mut x = bordered.solve(&f, &zero).map_err(obstacle)?.x;
-                    x.reverse();
-                    Ok::<_, Obstacle>(x)
-                };
-                Vector { re: solve(&f.re)?, im: f.im.as_deref().map(solve).transpose()? }
+            Factorisation::Real(complement) => {
+                let solve = |f: &Vec<Float>| complement.solve(f.clone());
+                Vector { re: solve(&f.re)?, im: f.im.as_ref().map(solve).transpose()? }
             }
-            Factorisation::Complex(bordered) => {
-                let mut f = f.to_complex(self.bits);
-                f.reverse();
-                let zero: Vec<Complex> = zero.iter().map(|x| Complex::with_val(self.bits, x)).collect();
-                let mut x = bordered.solve(&f, &zero).map_err(obstacle)?.x;
-                x.reverse();
-                Vector::from_complex(x)
-            }
+            Factorisation::Complex(complement) => Vector::from_complex(complement.solve(f.to_complex(self.bits))?),
         };
         Ok(Series { basis: self.basis(), x, bits: self.bits })
     }
 }
 
 enum Factorisation {
-    Real(Bordered<Float>),
-    Complex(Bordered<Complex>),
+    Real(Complement<Float>),
+    Complex(Complement<Complex>),
+}
+
+/// z S - H on the complement of some states, functions in descending order.
+struct Complement<T> {
+    bordered: Bordered<T>,
+    /// The integrals of the states with the functions.
+    states: Vec<Vec<T>>,
+}
+
+impl<T: Scalar> Complement<T> {
+    fn new(matrix: &Tridiagonal<T>, states: Vec<Vec<T>>, effort: &Effort) -> Result<Self, Obstacle> {
+        let bordered = Bordered::new(matrix, &states, effort).map_err(obstacle)?;
+        Ok(Complement { bordered, states })
+    }
+
+    fn solve(&self, mut f: Vec<T>) -> Result<Vec<T>, Obstacle> {
+        f.reverse();
+        let Some(zero) = f.first().map(|x| x.whole(0)) else {
+            return Ok(f);
+        };
+        let mut x = self.bordered.solve(&f, &vec![zero.clone(); self.states.len()]).map_err(obstacle)?.x;
+        // Within rounding of a level left out, rounding errors come back along its state as large as the solution: take them away.
+        let along: Vec<T> = self.states.iter().map(|state| minus_dot(&zero, state, &x)).collect();
+        if along.iter().any(|overlap| !overlap.is_zero()) {
+            let correction = self.bordered.solve(&vec![zero; f.len()], &along).map_err(obstacle)?.x;
+            for (x, c) in x.iter_mut().zip(&correction) {
+                x.add(c);
+            }
+        }
+        x.reverse();
+        Ok(x)
+    }
+}
+
+fn minus_dot<T: Scalar>(zero: &T, a: &[T], b: &[T]) -> T {
+    let mut sum = zero.clone();
+    for (a, b) in a.iter().zip(b) {
+        sum.subtract_product(a, b);
+    }
+    sum
 }
 
 fn obstacle(error: LinalgError) -> Obstacle {

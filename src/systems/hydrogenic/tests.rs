@@ -2,4 +2,5 @@
 
 mod chain;
 mod exact_values;
+mod laws;
 mod numeric_values;

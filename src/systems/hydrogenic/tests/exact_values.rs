@@ -82,6 +82,22 @@ fn relativistic_change_of_the_polarizability() {
     };
     assert_eq!(change("p^4") * rational(-1, 8), rational(-121, 6));
     assert_eq!(change("pidelta(r)") * rational(1, 2), rational(31, 2));
+    assert_eq!(change("mass_velocity") + change("darwin"), rational(-14, 3));
+}
+
+#[test]
+fn operators_free_of_pi() {
+    let atom = hydrogen();
+    let delta = operator("delta(r)");
+    assert_eq!(atom.without_pi(&delta), Some((-1, operator("pidelta(r)"))));
+    assert_eq!(atom.without_pi(&operator("r")), None);
+    // <pi delta(r)> = Z^3/n^3; the Darwin term is Z/2 times that
+    assert_eq!(mean("pidelta(r)", "3s", 0), "1/27");
+    let atom = super::super::Hydrogenic::new(Rational::from(2), None).expect("an atom");
+    let backend = atom.exact(&Effort::new()).expect("exact backend");
+    let g = state(&atom, "2s", 0);
+    assert_eq!(value(&atom, &*backend, &g, &operators("darwin"), &g), Ok(exact(1, 1)));
+    assert_eq!(value(&atom, &*backend, &g, &operators("mass_velocity"), &g), Ok(exact(-13, 8)));
 }
 
 #[test]
