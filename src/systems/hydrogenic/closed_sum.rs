@@ -80,7 +80,7 @@ impl Integrals {
         for (root, c) in u.contact().terms() {
             for (part, imaginary) in [(&c.re, false), (&c.im, true)] {
                 // the coefficient of r in the basis function is b + 1
-                parts.entry((root.clone(), imaginary)).or_default().add_polynomial(&[part.clone(), part.clone()]);
+                parts.entry((root.radicand.clone(), imaginary)).or_default().add_polynomial(&[part.clone(), part.clone()]);
             }
         }
         let unit = |(root, imaginary): (Integer, bool)| {

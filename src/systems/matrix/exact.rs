@@ -1,12 +1,12 @@
 //! The exact backend: kets are sparse vectors of exact numbers.
 
-use super::MatrixSystem;
+use super::component::shifted_rows;
 use super::elimination::solve;
-use super::levels::{ExactKet, add_multiple, inner, orthogonal, projection};
+use super::entries::ExactKet;
+use super::vectors::{add_multiple, inner, orthogonal, projection};
+use super::{MatrixSystem, WHOLE};
 use crate::num::{Effort, Surd};
-use crate::systems::{
-    Backend, Block, BlockKet, FunctionOfH, Number, Obstacle, RadialOperator, Resolvent, Sector, State,
-};
+use crate::systems::{Backend, BlockKet, FunctionOfH, Number, Obstacle, RadialOperator, Resolvent, Sector, State};
 use std::sync::Arc;
 
 /// Exact kets of a matrix system.
@@ -14,9 +14,6 @@ pub struct ExactBackend {
     pub system: MatrixSystem,
     pub effort: Effort,
 }
-
-/// The only sector of a matrix.
-pub const WHOLE: Sector = Sector { block: Block::Whole, twice_m: 0 };
 
 fn open(ket: &BlockKet) -> Result<&ExactKet, Obstacle> {
     ket.downcast_ref().ok_or(Obstacle::Inexact)
@@ -29,12 +26,54 @@ fn exact(number: &Number) -> Result<&Surd, Obstacle> {
     }
 }
 
+impl ExactBackend {
+    /// Solves (z - H) x = b inside one component, for b orthogonal to `left_out` states at z; x may have any part along these.
+    fn solve_in(
+        &self,
+        component: usize,
+        z: &Surd,
+        source: &ExactKet,
+        left_out: usize,
+        solution: &mut ExactKet,
+    ) -> Result<(), Obstacle> {
+        let part = &self.system.components[component];
+        let singular = || -> Obstacle {
+            match self.system.level_at(z, &self.effort) {
+                Ok(Some(level)) => Obstacle::Singular { level: format!("{} (energy {z})", level.name()) },
+                Ok(None) => Obstacle::Inexact,
+                Err(obstacle) => obstacle,
+            }
+        };
+        if let [only] = part.members.as_slice() {
+            let difference = z - &self.system.hamiltonian().entry(*only, *only);
+            return match (difference.is_zero(), source.get(only)) {
+                (false, Some(b)) => {
+                    let inverse = difference.inverse().ok_or(Obstacle::Inexact)?;
+                    solution.insert(*only, b * &inverse);
+                    Ok(())
+                }
+                (true, Some(_)) if left_out == 0 => Err(singular()),
+                _ => Ok(()),
+            };
+        }
+        let rows =
+            shifted_rows(self.system.hamiltonian(), part, z, |row| source.get(&row).cloned().unwrap_or_default());
+        let solutions = solve(rows, &self.effort)?.ok_or(Obstacle::Inexact)?;
+        if solutions.null_space.len() > left_out {
+            return Err(singular());
+        }
+        let particular = solutions.particular.ok_or(Obstacle::Inexact)?;
+        solution.extend(part.members.iter().copied().zip(particular).filter(|(_, x)| !x.is_zero()));
+        Ok(())
+    }
+}
+
 impl Backend for ExactBackend {
     fn state(&self, state: &State) -> Result<Vec<(Sector, BlockKet)>, Obstacle> {
-        let index = self.system.index(state);
-        let level = self.system.level(index, &self.effort)?;
-        let states = level.exact.and_then(|exact| exact.states).ok_or(Obstacle::Inexact)?;
-        let ket = states.get(index - level.first).cloned().ok_or(Obstacle::Inexact)?;
+        let place = self.system.place(&state.numbers);
+        let level = self.system.level(place, &self.effort)?;
+        let states = level.states.as_ref().ok_or(Obstacle::Inexact)?;
+        let ket = states.get(place - level.first).cloned().ok_or(Obstacle::Inexact)?;
         Ok(vec![(WHOLE, Arc::new(ket))])
     }
 
@@ -45,15 +84,16 @@ impl Backend for ExactBackend {
 
     fn resolve(&self, resolvent: &Resolvent, _: Sector, ket: &BlockKet) -> Result<BlockKet, Obstacle> {
         let z = exact(&resolvent.z)?;
-        let mut omitted = Vec::new();
-        let mut omitted_at_z = Vec::new();
-        for first in self.system.omitted_levels(&resolvent.omitted, &self.effort)? {
-            let level = self.system.level(first, &self.effort)?;
-            let level = level.exact.ok_or(Obstacle::Inexact)?;
-            if level.energy == *z {
-                omitted_at_z.extend(level.span.iter().cloned());
+        let mut omitted: Vec<ExactKet> = Vec::new();
+        // Number of states at z that are left out, by component.
+        let mut omitted_at_z = vec![0; self.system.components.len()];
+        for level in self.system.omitted_levels(&resolvent.omitted, &self.effort)? {
+            for part in &level.parts {
+                omitted.extend(part.span.as_ref().ok_or(Obstacle::Inexact)?.iter().cloned());
+                if level.energy.as_ref() == Some(z) {
+                    omitted_at_z[part.component] += part.places.len();
+                }
             }
-            omitted.extend(level.span);
         }
         let basis = orthogonal(&omitted).ok_or(Obstacle::Inexact)?;
         let project = |vector: &ExactKet| {
@@ -62,20 +102,13 @@ impl Backend for ExactBackend {
             rest
         };
         let source = project(open(ket)?);
+        let mut touched: Vec<usize> = source.keys().map(|k| self.system.owner[*k]).collect();
+        touched.sort_unstable();
+        touched.dedup();
         let mut solution = ExactKet::new();
-        for component in &self.system.components {
-            let left_out = omitted_at_z.iter().filter(|v| v.keys().any(|k| component.binary_search(k).is_ok())).count();
-            let right = |row: usize| source.get(&row).cloned().unwrap_or_default();
-            if component.iter().all(|row| !source.contains_key(row)) {
-                continue;
-            }
-            let rows = self.system.shifted_rows(component, z, right).ok_or(Obstacle::Inexact)?;
-            let solutions = solve(rows, &self.effort)?.ok_or(Obstacle::Inexact)?;
-            if solutions.null_space.len() > left_out {
-                return Err(Obstacle::Singular { level: self.system.level_at(z, &self.effort) });
-            }
-            let Some(particular) = solutions.particular else { return Err(Obstacle::Inexact) };
-            solution.extend(component.iter().copied().zip(particular).filter(|(_, x)| !x.is_zero()));
+        for component in touched {
+            self.effort.check()?;
+            self.solve_in(component, z, &source, omitted_at_z[component], &mut solution)?;
         }
         Ok(Arc::new(project(&solution)))
     }
@@ -87,7 +120,10 @@ impl Backend for ExactBackend {
     fn combine(&self, _: Sector, terms: &[(Number, BlockKet)]) -> Result<BlockKet, Obstacle> {
         let mut sum = ExactKet::new();
         for (factor, ket) in terms {
-            add_multiple(&mut sum, exact(factor)?, open(ket)?);
+            let factor = exact(factor)?;
+            if !factor.is_zero() {
+                add_multiple(&mut sum, factor, open(ket)?);
+            }
         }
         Ok(Arc::new(sum))
     }

@@ -1,21 +1,22 @@
 //! The levels of a matrix: which states are degenerate, and which energies and states are exact.
 //!
-//! A level is told from its neighbours by numbers that differ, and declared degenerate only when the count of distinct eigenvalues, certified
-//! modulo primes, leaves no other reading. Its states are the orthonormalised projections of the basis vectors e_1, e_2, … on the level, in this
-//! order: for a diagonal H the basis vectors themselves.
+//! States are told apart by numbers that differ beyond their errors, and declared degenerate only where they share a proved exact energy or where
+//! the count of distinct eigenvalues, certified modulo primes, leaves no other reading.
 
 use super::MatrixSystem;
-use super::elimination::{LARGEST_RATIONAL, LARGEST_WITH_ROOTS, solve};
-use super::entries::ExactMatrix;
-use crate::linalg::distinct::{Prime, distinct_eigenvalues};
-use crate::linalg::eigen::{all_eigenpairs, refine_cluster};
-use crate::linalg::{HermitianMatrix, LinalgError};
-use crate::num::{ComplexBall, Effort, Scalar, Surd};
-use crate::systems::Obstacle;
-use nalgebra::DMatrix;
-use rug::{Complex, Float, Integer, Rational};
+use super::entries::ExactKet;
+use super::guess::{ExactEnergy, Window};
+use super::modular::distinct;
+use super::obstacle;
+use super::states::{exact_states, numeric_states};
+use crate::linalg::eigen::refine_cluster;
+use crate::num::{Effort, Scalar, Surd};
+use crate::systems::{Number, Obstacle};
+use rug::{Complex, Float};
 use std::cmp::Ordering;
-use std::collections::BTreeMap;
+use std::collections::BTreeSet;
+use std::ops::Range;
+use std::sync::{Arc, PoisonError};
 
 /// Bits at which eigenvalues are first told apart.
 const FIRST_BITS: u32 = 192;
@@ -23,441 +24,454 @@ const FIRST_BITS: u32 = 192;
 /// Bits at which the attempt to tell them apart ends.
 const LAST_BITS: u32 = 20_000;
 
-/// Longest denominator of a rational that an eigenvalue is guessed to be, in bits.
-const GUESS_BITS: u32 = 64;
-
-/// A sparse exact vector.
-pub type ExactKet = BTreeMap<usize, Surd>;
-
 /// A level: its place in the spectrum, and what is exact of it.
 #[derive(Clone, Debug)]
-pub struct LevelOfMatrix {
+pub struct EnergyLevel {
     /// The place of its first state, counted from 0.
     pub first: usize,
     /// Number of states.
     pub size: usize,
-    pub exact: Option<ExactLevel>,
-}
-
-#[derive(Clone, Debug)]
-pub struct ExactLevel {
-    pub energy: Surd,
-    /// Orthonormal states in the order of their labels; `None` where a norm is not a square root of a rational.
+    /// The energy where it is exact.
+    pub energy: Option<Surd>,
+    /// Orthonormal states in the order of their labels where they are exact.
     pub states: Option<Vec<ExactKet>>,
-    /// Vectors that span the level, each inside one connected component.
-    pub span: Vec<ExactKet>,
+    pub parts: Vec<LevelPart>,
+    /// Bits at which it stands apart from its neighbours.
+    bits: u32,
+    /// Bits that the nearness of its neighbours costs its states.
+    gap_bits: u32,
 }
 
-/// Turns a failed linear-algebra step into an obstacle: what more precision may cure is undecided.
-pub fn obstacle(error: LinalgError) -> Obstacle {
-    match error {
-        LinalgError::Interrupted(stop) => Obstacle::Interrupted(stop),
-        LinalgError::Singular { .. }
-        | LinalgError::NoPivot { .. }
-        | LinalgError::IllConditioned { .. }
-        | LinalgError::EigenvaluesUnsettled { .. } => Obstacle::Undecided,
-        other => Obstacle::Refused { message: other.to_string(), help: String::new() },
+/// The states of a level inside one component.
+#[derive(Clone, Debug)]
+pub struct LevelPart {
+    pub component: usize,
+    /// Their places among the eigenvalues of the component.
+    pub places: Range<usize>,
+    /// Vectors that span them where these are exact.
+    pub span: Option<Vec<ExactKet>>,
+}
+
+/// Eigenvalues of one component that numbers cannot tell apart.
+#[derive(Clone, Debug)]
+struct Item {
+    component: usize,
+    places: Range<usize>,
+    window: Window,
+    exact: Option<ExactEnergy>,
+}
+
+/// Items whose windows overlap: a level, or several that more bits tell apart.
+struct Group {
+    items: Vec<Item>,
+    low: Float,
+    high: Float,
+}
+
+impl Group {
+    fn size(&self) -> usize {
+        self.items.iter().map(|item| item.places.len()).sum()
+    }
+
+    /// Whether the group is one level for certain.
+    fn is_level(&self) -> bool {
+        self.size() == 1 || (self.items.iter().all(|item| item.exact.is_some()) && self.is_consistent())
+    }
+
+    /// Whether all exact energies in it are the same.
+    fn is_consistent(&self) -> bool {
+        let mut energies = self.items.iter().filter_map(|item| item.exact.as_ref()).map(|exact| &exact.energy);
+        let first = energies.next();
+        energies.all(|energy| Some(energy) == first)
+    }
+}
+
+impl EnergyLevel {
+    /// Its states as a message names them.
+    pub fn name(&self) -> String {
+        match self.size {
+            1 => format!("state {}", self.first),
+            size => format!("states {} to {}", self.first, self.first + size - 1),
+        }
+    }
+
+    pub fn places(&self) -> Range<usize> {
+        self.first..self.first + self.size
     }
 }
 
 impl MatrixSystem {
-    /// H with entries of `bits` bits.
-    pub(super) fn hermitian(&self, bits: u32) -> Result<HermitianMatrix, Obstacle> {
-        let h = self.hamiltonian();
-        let n = h.order();
-        let zero = Float::new(bits);
-        let mut re = DMatrix::from_element(n, n, zero.clone());
-        let mut im = (!h.is_real()).then(|| DMatrix::from_element(n, n, zero));
-        for (row, entries) in h.rows().iter().enumerate() {
-            for (column, entry) in entries.range(..=row) {
-                let value = ComplexBall::from_surd(entry, bits)
-                    .map_err(|error| Obstacle::Refused { message: error.to_string(), help: String::new() })?
-                    .midpoint(bits);
-                re[(row, *column)] = value.real().clone();
-                re[(*column, row)] = value.real().clone();
-                if let Some(im) = &mut im {
-                    im[(row, *column)] = value.imag().clone();
-                    im[(*column, row)] = Float::with_val(bits, -value.imag());
-                }
-            }
-        }
-        HermitianMatrix::new(re, im).map_err(obstacle)
-    }
-
     /// The level that holds the state with this place in the spectrum.
-    pub(super) fn level(&self, index: usize, effort: &Effort) -> Result<LevelOfMatrix, Obstacle> {
-        let mut known = self.levels.lock().unwrap_or_else(std::sync::PoisonError::into_inner);
-        if let Some(level) = known.iter().find(|level| (level.first..level.first + level.size).contains(&index)) {
-            return Ok(level.clone());
-        }
-        let level = if self.components.iter().all(|component| component.len() == 1) {
-            self.diagonal_level(index)?
-        } else {
-            self.numeric_level(index, effort)?
+    pub(super) fn level(&self, place: usize, effort: &Effort) -> Result<Arc<EnergyLevel>, Obstacle> {
+        let known = |system: &Self| {
+            let levels = system.levels.lock().unwrap_or_else(PoisonError::into_inner);
+            levels.range(..=place).next_back().map(|(_, level)| level.clone()).filter(|l| l.places().contains(&place))
         };
-        known.push(level.clone());
-        Ok(level)
-    }
-
-    fn diagonal_level(&self, index: usize) -> Result<LevelOfMatrix, Obstacle> {
-        let h = self.hamiltonian();
-        let mut order: Vec<(Surd, usize)> = (0..h.order()).map(|k| (h.entry(k, k), k)).collect();
-        let mut undecided = false;
-        order.sort_by(|a, b| {
-            let compared = exact_order(&a.0, &b.0);
-            undecided |= compared.is_none();
-            compared.unwrap_or(Ordering::Equal).then(a.1.cmp(&b.1))
-        });
-        if undecided {
-            return Err(Obstacle::Undecided);
+        if let Some(level) = known(self) {
+            return Ok(level);
         }
-        let energy = order[index].0.clone();
-        let members: Vec<usize> = order.iter().filter(|(e, _)| *e == energy).map(|(_, k)| *k).collect();
-        let first = order.iter().position(|(e, _)| *e == energy).unwrap_or(index);
-        let states: Vec<ExactKet> = members.iter().map(|k| BTreeMap::from([(*k, Surd::one())])).collect();
-        let exact = ExactLevel { energy, span: states.clone(), states: Some(states) };
-        Ok(LevelOfMatrix { first, size: members.len(), exact: Some(exact) })
+        self.find_level(place, effort)?;
+        known(self).ok_or(Obstacle::Undecided)
     }
 
-    fn numeric_level(&self, index: usize, effort: &Effort) -> Result<LevelOfMatrix, Obstacle> {
-        let mut bits = FIRST_BITS.max(self.entry_bits);
+    /// Finds the level of a place, and those of its cluster that show beside it.
+    fn find_level(&self, place: usize, effort: &Effort) -> Result<(), Obstacle> {
+        let rough = self.rough(effort)?;
+        let cluster = rough.cluster_of(place);
+        let all: BTreeSet<usize> = (0..self.components.len()).collect();
+        let (mut bits, mut found) = (FIRST_BITS, false);
+        for component in rough.places[cluster.clone()].iter().map(|place| place.component).collect::<BTreeSet<_>>() {
+            bits = bits.max(self.bits_for_guess(component).unwrap_or(0));
+        }
         loop {
             effort.check()?;
-            let h = self.hermitian(bits + 64)?;
-            let cluster = refine_cluster(&h, index..index + 1, bits, effort).map_err(obstacle)?;
-            let level = cluster.level_of(index).unwrap_or(index - cluster.first..index - cluster.first + 1);
-            let (first, size) = (cluster.first + level.start, level.len());
-            if let Some(exact) = self.exact_level(&cluster.values[level.start], size, effort)? {
-                return Ok(LevelOfMatrix { first, size, exact: Some(exact) });
+            let groups = self.groups(cluster.clone(), &all, bits, effort)?;
+            let mut first = cluster.start;
+            let mut asked = cluster.clone();
+            for (at, group) in groups.iter().enumerate() {
+                let places = first..first + group.size();
+                first = places.end;
+                let is_asked = places.contains(&place);
+                if is_asked {
+                    asked = places.clone();
+                }
+                let is_level = group.is_level()
+                    || (is_asked && group.is_consistent() && self.is_certified(group, bits, effort)?);
+                if is_level {
+                    let below = at.checked_sub(1).map(|k| groups[k].high.clone());
+                    let below = below.or_else(|| cluster.start.checked_sub(1).map(|k| rough.places[k].high.clone()));
+                    let above = groups.get(at + 1).map(|next| next.low.clone());
+                    let above = above.or_else(|| rough.places.get(cluster.end).map(|next| next.low.clone()));
+                    let level = self.level_of_group(group, places.start, bits, below, above);
+                    let mut levels = self.levels.lock().unwrap_or_else(PoisonError::into_inner);
+                    levels.entry(level.first).or_insert_with(|| Arc::new(level));
+                    if is_asked {
+                        found = true;
+                    }
+                }
             }
-            if size == 1 || self.is_certain(&h, bits, effort)? {
-                return Ok(LevelOfMatrix { first, size, exact: None });
+            if found {
+                return Ok(());
             }
             if bits >= LAST_BITS {
+                let (first, last) = (asked.start, asked.end - 1);
                 return Err(Obstacle::Refused {
                     message: format!(
-                        "the states {first} to {} cannot be told apart, nor shown to be degenerate, with {bits} bits",
-                        first + size - 1
+                        "with {bits} bits the states {first} to {last} can neither be told apart nor shown to be degenerate"
                     ),
-                    help: "scale the matrix, or give it with fewer digits".into(),
+                    help: "scale the matrix, or give its entries with fewer digits".into(),
                 });
             }
             bits *= 2;
         }
     }
 
-    /// Tells whether the eigenvalues that agree to `bits` bits are all equal: there are as many clusters as distinct eigenvalues.
-    fn is_certain(&self, h: &HermitianMatrix, bits: u32, effort: &Effort) -> Result<bool, Obstacle> {
-        let pairs = all_eigenpairs(h, bits, effort).map_err(obstacle)?;
-        let size = pairs.values.iter().map(|v| Float::with_val(32, v.abs_ref())).fold(Float::new(32), |a, b| a.max(&b));
-        let close = size >> (bits - bits / 8);
-        let clusters =
-            1 + pairs.values.windows(2).filter(|pair| Float::with_val(64, &pair[1] - &pair[0]) > close).count();
-        Ok(clusters == self.distinct(effort)?)
+    fn level_of_group(
+        &self,
+        group: &Group,
+        first: usize,
+        bits: u32,
+        below: Option<Float>,
+        above: Option<Float>,
+    ) -> EnergyLevel {
+        let parts: Vec<LevelPart> = group
+            .items
+            .iter()
+            .map(|item| LevelPart {
+                component: item.component,
+                places: item.places.clone(),
+                span: item.exact.as_ref().and_then(|exact| exact.span.clone()),
+            })
+            .collect();
+        let energy = group.items.iter().find_map(|item| item.exact.as_ref()).map(|exact| exact.energy.clone());
+        let gap = [below.map(|below| &group.low - below), above.map(|above| above - &group.high)];
+        let gap = gap.into_iter().flatten().map(|gap| Float::with_val(64, gap).get_exp().unwrap_or(i32::MIN / 2)).min();
+        let size = parts.iter().map(|part| self.size_exponent(part.component)).max();
+        let lost = gap.map_or(0, |gap| size.unwrap_or(0) - i64::from(gap));
+        EnergyLevel {
+            first,
+            size: group.size(),
+            energy,
+            states: self.exact_states_of(&parts),
+            parts,
+            bits,
+            gap_bits: u32::try_from(lost.clamp(0, i64::from(bits) + 64)).unwrap_or(0),
+        }
     }
 
-    /// The certified number of distinct eigenvalues.
-    fn distinct(&self, effort: &Effort) -> Result<usize, Obstacle> {
-        let mut known = self.distinct.lock().unwrap_or_else(std::sync::PoisonError::into_inner);
-        if let Some(count) = *known {
-            return Ok(count);
+    fn exact_states_of(&self, parts: &[LevelPart]) -> Option<Vec<ExactKet>> {
+        let mut states: Vec<(usize, ExactKet)> = Vec::new();
+        for part in parts {
+            states.extend(exact_states(part.span.as_ref()?, &self.components[part.component])?);
         }
-        let h = self.hamiltonian();
-        let count = distinct_eigenvalues(h.order(), &|prime| entries_modulo(h, prime), effort).map_err(obstacle)?;
-        *known = Some(count);
+        states.sort_by_key(|(from, _)| *from);
+        Some(states.into_iter().map(|(_, state)| state).collect())
+    }
+
+    /// The eigenvalues in a cluster that belong to some of the components, grouped by what `bits` bits tell apart, in rising order.
+    fn groups(
+        &self,
+        cluster: Range<usize>,
+        components: &BTreeSet<usize>,
+        bits: u32,
+        effort: &Effort,
+    ) -> Result<Vec<Group>, Obstacle> {
+        let rough = self.rough(effort)?;
+        let mut ranges: Vec<Option<Range<usize>>> = vec![None; self.components.len()];
+        for place in rough.places[cluster].iter().filter(|place| components.contains(&place.component)) {
+            let range = ranges[place.component].get_or_insert(place.local..place.local);
+            *range = range.start.min(place.local)..range.end.max(place.local + 1);
+        }
+        let mut items = Vec::new();
+        for (component, range) in ranges.into_iter().enumerate() {
+            if let Some(range) = range {
+                self.items(component, range, bits, effort, &mut items)?;
+            }
+        }
+        items.sort_by(|a, b| a.window.low.total_cmp(&b.window.low));
+        let mut groups: Vec<Group> = Vec::new();
+        for item in items {
+            match groups.last_mut() {
+                Some(group) if item.window.low <= group.high => {
+                    if group.high < item.window.high {
+                        group.high = item.window.high.clone();
+                    }
+                    group.items.push(item);
+                }
+                _ => groups.push(Group {
+                    low: item.window.low.clone(),
+                    high: item.window.high.clone(),
+                    items: vec![item],
+                }),
+            }
+        }
+        let mut split = Vec::with_capacity(groups.len());
+        for group in groups {
+            split_exact(group, &mut split)?;
+        }
+        Ok(split)
+    }
+
+    /// The eigenvalues of a component with these places at `bits` bits.
+    fn items(
+        &self,
+        component: usize,
+        range: Range<usize>,
+        bits: u32,
+        effort: &Effort,
+        items: &mut Vec<Item>,
+    ) -> Result<(), Obstacle> {
+        let precision = bits + 64;
+        if let [only] = self.components[component].members.as_slice() {
+            let energy = self.hamiltonian().entry(*only, *only);
+            let span = Some(vec![ExactKet::from([(*only, Surd::one())])]);
+            let window = exact_window(&energy, precision);
+            items.push(Item { component, places: 0..1, window, exact: Some(ExactEnergy { energy, span }) });
+            return Ok(());
+        }
+        let h = self.hermitian(component, precision)?;
+        let cluster = refine_cluster(&h, range.clone(), bits, effort).map_err(obstacle)?;
+        let error = self.error_at(component, bits);
+        for level in &cluster.levels {
+            let places = cluster.first + level.start..cluster.first + level.end;
+            if places.end <= range.start || range.end <= places.start {
+                continue;
+            }
+            let window = Window {
+                low: Float::with_val(precision, &cluster.values[level.start] - &error),
+                high: Float::with_val(precision, &cluster.values[level.end - 1] + &error),
+            };
+            let exact = self.known_exact(component, &places, &window, bits, effort)?;
+            let window = exact.as_ref().map_or(window, |exact| exact_window(&exact.energy, precision));
+            items.push(Item { component, places, window, exact });
+        }
+        Ok(())
+    }
+
+    /// The exact energy of states of a component; a proved one is kept.
+    fn known_exact(
+        &self,
+        component: usize,
+        places: &Range<usize>,
+        window: &Window,
+        bits: u32,
+        effort: &Effort,
+    ) -> Result<Option<ExactEnergy>, Obstacle> {
+        let key = (component, places.start, places.end);
+        if let Some(known) = self.proved.lock().unwrap_or_else(PoisonError::into_inner).get(&key) {
+            return Ok(Some(known.clone()));
+        }
+        let found = self.exact_energy(component, window, places.len(), bits, effort)?;
+        if let Some(found) = &found {
+            self.proved.lock().unwrap_or_else(PoisonError::into_inner).insert(key, found.clone());
+        }
+        Ok(found)
+    }
+
+    /// Tells whether what stays together at `bits` bits in the components of a group is equal: there are as many groups as distinct eigenvalues.
+    fn is_certified(&self, group: &Group, bits: u32, effort: &Effort) -> Result<bool, Obstacle> {
+        let components: BTreeSet<usize> = group.items.iter().map(|item| item.component).collect();
+        let wanted = self.distinct_in(&components, effort)?;
+        let rough = self.rough(effort)?;
+        let mut found = 0;
+        for cluster in &rough.clusters {
+            let mut inside = rough.places[cluster.clone()].iter().filter(|place| components.contains(&place.component));
+            found += match (inside.next(), inside.next()) {
+                (None, _) => 0,
+                (Some(_), None) => 1,
+                _ => self.groups(cluster.clone(), &components, bits, effort)?.len(),
+            };
+        }
+        Ok(found == wanted)
+    }
+
+    /// The certified number of distinct eigenvalues in some components.
+    fn distinct_in(&self, components: &BTreeSet<usize>, effort: &Effort) -> Result<usize, Obstacle> {
+        if let Some(count) = self.distinct.lock().unwrap_or_else(PoisonError::into_inner).get(components) {
+            return Ok(*count);
+        }
+        let parts: Vec<_> = components.iter().map(|k| &self.components[*k]).collect();
+        let count = distinct(self.hamiltonian(), &parts, effort)?;
+        self.distinct.lock().unwrap_or_else(PoisonError::into_inner).insert(components.clone(), count);
         Ok(count)
     }
 
-    /// The level at a rational energy near `value`, if there is one and it has `size` states.
-    fn exact_level(&self, value: &Float, size: usize, effort: &Effort) -> Result<Option<ExactLevel>, Obstacle> {
-        let h = self.hamiltonian();
-        let mut candidates: Vec<Surd> = guess(value).map(Surd::from).into_iter().collect();
-        for component in self.components.iter().filter(|component| component.len() == 1) {
-            let entry = h.entry(component[0], component[0]);
-            if near(&entry, value) && !candidates.contains(&entry) {
-                candidates.push(entry);
+    /// The level that holds an eigenvalue of a component.
+    pub(super) fn level_in_component(
+        &self,
+        component: usize,
+        local: usize,
+        effort: &Effort,
+    ) -> Result<Arc<EnergyLevel>, Obstacle> {
+        let rough = self.rough(effort)?;
+        let holds = |part: &LevelPart| part.component == component && part.places.contains(&local);
+        let at = rough.places.iter().position(|place| place.component == component && place.local == local);
+        let cluster = rough.cluster_of(at.unwrap_or(0));
+        let mut place = cluster.start;
+        while place < cluster.end {
+            let level = self.level(place, effort)?;
+            if level.parts.iter().any(holds) {
+                return Ok(level);
             }
+            place = level.places().end;
         }
-        for energy in candidates {
-            let Some(span) = self.span_at(&energy, effort)? else { continue };
-            if span.len() == size {
-                let states = canonical(&span, h.order());
-                return Ok(Some(ExactLevel { energy, states, span }));
+        Err(Obstacle::Undecided)
+    }
+
+    /// The level at an exact energy, if there is one.
+    pub(super) fn level_at(&self, energy: &Surd, effort: &Effort) -> Result<Option<Arc<EnergyLevel>>, Obstacle> {
+        if !energy.is_real() {
+            return Ok(None);
+        }
+        let rough = self.rough(effort)?;
+        let value = Number::Exact(energy.clone()).to_complex(64).into_real_imag().0;
+        for place in 0..rough.places.len() {
+            let window = &rough.places[place];
+            if window.low <= value && value <= window.high {
+                let level = self.level_in_component(window.component, window.local, effort)?;
+                if level.energy.as_ref() == Some(energy) {
+                    return Ok(Some(level));
+                }
             }
         }
         Ok(None)
     }
 
-    /// Vectors that span the eigenspace of an exact energy, component by component; `None` if a component is too large to tell.
-    pub(super) fn span_at(&self, energy: &Surd, effort: &Effort) -> Result<Option<Vec<ExactKet>>, Obstacle> {
-        let mut span = Vec::new();
-        for component in &self.components {
-            let Some(rows) = self.shifted_rows(component, energy, |_| Surd::zero()) else { return Ok(None) };
-            let Some(solutions) = solve(rows, effort)? else { return Ok(None) };
-            for vector in solutions.null_space {
-                span.push(
-                    component.iter().copied().zip(vector).filter(|(_, entry)| !entry.is_zero()).collect::<ExactKet>(),
-                );
-            }
-        }
-        Ok(Some(span))
-    }
-
-    /// The rows of energy - H inside a component, with a right-hand side as last column; `None` when the component is too large.
-    pub(super) fn shifted_rows(
-        &self,
-        component: &[usize],
-        energy: &Surd,
-        right: impl Fn(usize) -> Surd,
-    ) -> Option<Vec<Vec<Surd>>> {
-        let h = self.hamiltonian();
-        let with_roots = energy.as_rational().is_none()
-            || component.iter().any(|row| h.rows()[*row].values().any(|entry| !is_gaussian(entry)));
-        if component.len() > if with_roots { LARGEST_WITH_ROOTS } else { LARGEST_RATIONAL } {
-            return None;
-        }
-        Some(
-            component
-                .iter()
-                .map(|row| {
-                    let mut entries: Vec<Surd> = component
-                        .iter()
-                        .map(|column| {
-                            let entry = -&h.entry(*row, *column);
-                            if row == column { &entry + energy } else { entry }
-                        })
-                        .collect();
-                    entries.push(right(*row));
-                    entries
-                })
-                .collect(),
-        )
-    }
-
-    /// The states of a level at `bits` bits, in the order of their labels.
+    /// Energies and orthonormal states of a level inside its components at `bits` bits; the states count all basis vectors, in the order of
+    /// their labels.
     pub(super) fn numeric_states(
         &self,
-        level: &LevelOfMatrix,
+        level: &EnergyLevel,
         bits: u32,
         effort: &Effort,
-    ) -> Result<(Vec<Float>, Vec<Vec<Complex>>), Obstacle> {
-        let h = self.hermitian(bits + 64)?;
-        let range = level.first..level.first + level.size;
-        let cluster = refine_cluster(&h, range.clone(), bits + 32, effort).map_err(obstacle)?;
-        let inside = range.start - cluster.first..range.end - cluster.first;
-        let (Some(values), Some(vectors)) = (cluster.values.get(inside.clone()), cluster.vectors.get(inside)) else {
-            return Err(Obstacle::Undecided);
-        };
-        Ok((values.to_vec(), projected(vectors, bits + 32)))
+    ) -> Result<Vec<Vec<Complex>>, Obstacle> {
+        let precision = bits + 32;
+        if let Some(states) = &level.states {
+            let numeric = |state: &ExactKet| {
+                let mut ket = vec![Complex::new(precision); self.order()];
+                for (k, x) in state {
+                    ket[*k] = Number::Exact(x.clone()).to_complex(precision);
+                }
+                ket
+            };
+            return Ok(states.iter().map(numeric).collect());
+        }
+        let mut states: Vec<(usize, Vec<Complex>)> = Vec::with_capacity(level.size);
+        for part in &level.parts {
+            let wanted = (bits + 32).max(level.bits);
+            let h = self.hermitian(part.component, wanted + 64 + level.gap_bits)?;
+            let cluster = refine_cluster(&h, part.places.clone(), wanted, effort).map_err(obstacle)?;
+            let vectors = (part.places.start.checked_sub(cluster.first))
+                .and_then(|start| cluster.vectors.get(start..start + part.places.len()))
+                .ok_or(Obstacle::Undecided)?;
+            let members = &self.components[part.component].members;
+            for (from, local) in numeric_states(vectors, wanted) {
+                let mut ket = vec![Complex::new(precision); self.order()];
+                for (k, x) in members.iter().zip(local) {
+                    ket[*k] = Complex::with_val(precision, x);
+                }
+                states.push((members[from], ket));
+            }
+        }
+        states.sort_by_key(|(from, _)| *from);
+        Ok(states.into_iter().map(|(_, ket)| ket).collect())
+    }
+
+    /// The energy of a level within 2^-bits of the norm of H.
+    pub(super) fn numeric_energy(&self, level: &EnergyLevel, bits: u32, effort: &Effort) -> Result<Float, Obstacle> {
+        if let Some(energy) = &level.energy {
+            return Ok(Number::Exact(energy.clone()).to_complex(bits + 64).into_real_imag().0);
+        }
+        let part = level.parts.first().ok_or(Obstacle::Undecided)?;
+        let wanted = bits.max(level.bits);
+        let h = self.hermitian(part.component, wanted + 64)?;
+        let cluster = refine_cluster(&h, part.places.clone(), wanted, effort).map_err(obstacle)?;
+        let at = part.places.start.checked_sub(cluster.first).and_then(|at| cluster.values.get(at));
+        at.cloned().ok_or(Obstacle::Undecided)
     }
 }
 
-fn is_gaussian(entry: &Surd) -> bool {
-    entry.terms().all(|(root, _)| *root == 1)
+/// A window around an exact number, a little wider than its rounding.
+fn exact_window(energy: &Surd, bits: u32) -> Window {
+    let value = Number::Exact(energy.clone()).to_complex(bits).into_real_imag().0;
+    let error = Float::with_val(64, value.abs_ref()) >> (bits - 4);
+    Window::around(&value, &error)
+}
+
+/// Splits a group with only exact energies into one for each energy.
+fn split_exact(group: Group, split: &mut Vec<Group>) -> Result<(), Obstacle> {
+    if group.is_consistent() || group.items.iter().any(|item| item.exact.is_none()) {
+        split.push(group);
+        return Ok(());
+    }
+    let mut undecided = false;
+    let mut items = group.items;
+    let energy = |item: &Item| item.exact.as_ref().map(|exact| exact.energy.clone()).unwrap_or_default();
+    items.sort_by(|a, b| {
+        let order = compare(&energy(a), &energy(b));
+        undecided |= order.is_none();
+        order.unwrap_or(Ordering::Equal)
+    });
+    if undecided {
+        return Err(Obstacle::Undecided);
+    }
+    for item in items {
+        match split.last_mut() {
+            Some(last)
+                if last.items.first().is_some_and(|first| first.exact.is_some() && energy(first) == energy(&item)) =>
+            {
+                last.items.push(item);
+            }
+            _ => split.push(Group { low: item.window.low.clone(), high: item.window.high.clone(), items: vec![item] }),
+        }
+    }
+    Ok(())
 }
 
 /// Exact comparison of two real numbers.
-fn exact_order(a: &Surd, b: &Surd) -> Option<Ordering> {
+fn compare(a: &Surd, b: &Surd) -> Option<Ordering> {
     if a == b {
         return Some(Ordering::Equal);
     }
     Scalar::Exact(a - b).sign().ok()
-}
-
-/// A rational with a short denominator that agrees with a value far beyond chance; from its continued fraction.
-fn guess(value: &Float) -> Option<Rational> {
-    let exact = value.to_rational()?;
-    let (mut rest, mut h, mut k) =
-        (exact.clone(), (Integer::from(1), Integer::new()), (Integer::new(), Integer::from(1)));
-    loop {
-        let whole = Integer::from(rest.floor_ref());
-        let next_h = Integer::from(&whole * &h.0) + &h.1;
-        let next_k = Integer::from(&whole * &k.0) + &k.1;
-        h = (next_h, h.0);
-        k = (next_k, k.0);
-        if k.0.significant_bits() > GUESS_BITS {
-            return None;
-        }
-        let convergent = Rational::from((h.0.clone(), k.0.clone()));
-        let distance = Rational::from(&convergent - &exact).abs();
-        let bound = Rational::from((Integer::from(1), Integer::from(1) << (3 * GUESS_BITS / 2 + 32)));
-        if distance < bound {
-            return Some(convergent);
-        }
-        rest -= whole;
-        if rest == 0 {
-            return None;
-        }
-        rest.recip_mut();
-    }
-}
-
-fn near(entry: &Surd, value: &Float) -> bool {
-    let Ok(ball) = ComplexBall::from_surd(entry, 128) else { return false };
-    let distance = Float::with_val(64, ball.re.mid() - value).abs();
-    distance <= (Float::with_val(64, value.abs_ref()) + 1u32) >> 60u32
-}
-
-/// The image of H modulo a prime in which every square root and i have one.
-fn entries_modulo(h: &ExactMatrix, prime: &Prime) -> Option<Vec<u64>> {
-    let i = prime.sqrt(prime.from_i64(-1))?;
-    let mut roots: BTreeMap<Integer, u64> = BTreeMap::new();
-    let mut image = vec![0; h.order() * h.order()];
-    for (row, entries) in h.rows().iter().enumerate() {
-        for (column, entry) in entries {
-            let mut sum = 0;
-            for (radicand, c) in entry.terms() {
-                let root = match roots.get(radicand) {
-                    Some(root) => *root,
-                    None => {
-                        let root = root_modulo(radicand, prime)?;
-                        roots.insert(radicand.clone(), root);
-                        root
-                    }
-                };
-                let part = prime.add(fraction(&c.re, prime)?, prime.multiply(i, fraction(&c.im, prime)?));
-                sum = prime.add(sum, prime.multiply(root, part));
-            }
-            image[row * h.order() + column] = sum;
-        }
-    }
-    Some(image)
-}
-
-/// The square root of a squarefree integer as the product of those of its prime factors, so that products of roots fit.
-fn root_modulo(radicand: &Integer, prime: &Prime) -> Option<u64> {
-    let mut rest = radicand.clone();
-    let mut root = prime.from_i64(1);
-    let mut factor = 2u32;
-    while Integer::from(factor) * factor <= rest && factor < 1 << 16 {
-        if rest.is_divisible_u(factor) {
-            rest.div_exact_u_mut(factor);
-            root = prime.multiply(root, prime.sqrt(prime.from_i64(i64::from(factor)))?);
-        }
-        factor += 1;
-    }
-    Some(prime.multiply(root, prime.sqrt(prime.from_integer(&rest))?))
-}
-
-fn fraction(q: &Rational, prime: &Prime) -> Option<u64> {
-    let below = prime.inverse(prime.from_integer(q.denom()))?;
-    Some(prime.multiply(prime.from_integer(q.numer()), below))
-}
-
-/// <a|b> of sparse vectors.
-pub fn inner(a: &ExactKet, b: &ExactKet) -> Surd {
-    let mut sum = Surd::zero();
-    for (k, x) in a {
-        if let Some(y) = b.get(k) {
-            sum += &(&x.conj() * y);
-        }
-    }
-    sum
-}
-
-/// a + c b
-pub fn add_multiple(a: &mut ExactKet, c: &Surd, b: &ExactKet) {
-    for (k, y) in b {
-        let entry = a.entry(*k).or_default();
-        *entry += &(c * y);
-        if entry.is_zero() {
-            a.remove(k);
-        }
-    }
-}
-
-/// Orthogonal (not normalised) vectors with the same span.
-pub fn orthogonal(span: &[ExactKet]) -> Option<Vec<(ExactKet, Surd)>> {
-    let mut basis: Vec<(ExactKet, Surd)> = Vec::new();
-    for vector in span {
-        let mut rest = vector.clone();
-        for (earlier, inverse_norm) in &basis {
-            let overlap = inner(earlier, vector);
-            add_multiple(&mut rest, &-&(&overlap * inverse_norm), earlier);
-        }
-        let norm = inner(&rest, &rest);
-        if !norm.is_zero() {
-            let inverse = norm.inverse()?;
-            basis.push((rest, inverse));
-        }
-    }
-    Some(basis)
-}
-
-/// The component of a vector in the span of orthogonal vectors.
-pub fn projection(basis: &[(ExactKet, Surd)], vector: &ExactKet) -> ExactKet {
-    let mut sum = ExactKet::new();
-    for (direction, inverse_norm) in basis {
-        let overlap = inner(direction, vector);
-        if !overlap.is_zero() {
-            add_multiple(&mut sum, &(&overlap * inverse_norm), direction);
-        }
-    }
-    sum
-}
-
-/// The states of an exact level: the orthonormalised projections of e_1, e_2, …; `None` where a norm is not the root of a rational.
-fn canonical(span: &[ExactKet], order: usize) -> Option<Vec<ExactKet>> {
-    let basis = orthogonal(span)?;
-    let mut states: Vec<ExactKet> = Vec::new();
-    for k in 0..order {
-        if states.len() == span.len() {
-            break;
-        }
-        let mut vector = projection(&basis, &BTreeMap::from([(k, Surd::one())]));
-        for state in &states {
-            let overlap = inner(state, &vector);
-            add_multiple(&mut vector, &-&overlap, state);
-        }
-        let norm = inner(&vector, &vector);
-        if norm.is_zero() {
-            continue;
-        }
-        let scale = norm.sqrt()?.inverse()?;
-        states.push(vector.into_iter().map(|(k, x)| (k, &x * &scale)).collect());
-    }
-    Some(states)
-}
-
-/// The same in numbers: `vectors` are orthonormal and span the level.
-fn projected(vectors: &[Vec<Complex>], bits: u32) -> Vec<Vec<Complex>> {
-    let order = vectors.first().map_or(0, Vec::len);
-    let mut states: Vec<Vec<Complex>> = Vec::new();
-    // What is left of a basis vector must stand well above rounding; the choice is the same at every precision.
-    let small = Float::with_val(32, 1) >> 64u32;
-    for k in 0..order {
-        if states.len() == vectors.len() {
-            break;
-        }
-        let mut vector = vec![Complex::new(bits); order];
-        for direction in vectors {
-            let overlap = direction[k].clone().conj();
-            for (entry, d) in vector.iter_mut().zip(direction) {
-                *entry += Complex::with_val(bits, d * &overlap);
-            }
-        }
-        for state in &states {
-            let overlap = dot(state, &vector, bits);
-            for (entry, s) in vector.iter_mut().zip(state) {
-                *entry -= Complex::with_val(bits, s * &overlap);
-            }
-        }
-        let norm = dot(&vector, &vector, bits).into_real_imag().0.sqrt();
-        if norm > small {
-            for entry in &mut vector {
-                *entry /= &norm;
-            }
-            states.push(vector);
-        }
-    }
-    states
-}
-
-/// <a|b>
-pub fn dot(a: &[Complex], b: &[Complex], bits: u32) -> Complex {
-    let mut sum = Complex::new(bits);
-    for (x, y) in a.iter().zip(b) {
-        sum += Complex::with_val(bits, x.clone().conj() * y);
-    }
-    sum
 }

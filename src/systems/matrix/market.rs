@@ -2,11 +2,14 @@
 //!
 //! Entries are read exactly, of any length. Beyond the standard an entry may be a fraction, `3/7`.
 
-use super::MatrixFault;
-use super::entries::{ExactMatrix, LARGEST_DIMENSION};
-use crate::num::{Surd, parse_decimal};
+use super::entries::{Entry, ExactMatrix, LARGEST_DIMENSION};
+use super::fault::MatrixFault;
+use crate::num::{DecimalError, Surd, parse_decimal};
 use rug::Rational;
 use std::collections::BTreeMap;
+
+/// Most bits the entries of one file may have together; short text such as `1e99999` makes long numbers.
+const MOST_BITS: u64 = 1 << 31;
 
 /// What the first line promises.
 struct Banner {
@@ -21,6 +24,9 @@ enum Symmetry {
     Symmetric,
     Hermitian,
 }
+
+/// The entries given of a row, zeros (`None`) among them.
+type Row = BTreeMap<usize, Option<Entry>>;
 
 fn fault(line: usize, message: impl Into<String>) -> MatrixFault {
     MatrixFault::File { line, message: message.into() }
@@ -59,15 +65,16 @@ impl ExactMatrix {
         if order > LARGEST_DIMENSION {
             return Err(MatrixFault::TooLarge { order });
         }
-        let mut rows = vec![BTreeMap::new(); order];
+        let mut rows: Vec<Row> = vec![BTreeMap::new(); order];
         match count {
             Some(count) => read_coordinates(lines, &banner, order, count, &mut rows)?,
             None => read_array(lines, &banner, order, &mut rows)?,
         }
-        for row in &mut rows {
-            row.retain(|_, entry| !entry.is_zero());
-        }
-        ExactMatrix::from_sparse(rows)
+        let nonzero = rows
+            .into_iter()
+            .map(|row| row.into_iter().filter_map(|(column, entry)| Some((column, entry?))).collect())
+            .collect();
+        ExactMatrix::from_sparse(nonzero)
     }
 }
 
@@ -119,29 +126,14 @@ fn cut(word: &str) -> String {
 }
 
 fn number(word: &str, line: usize) -> Result<Rational, MatrixFault> {
-    let bad = || fault(line, format!("`{}` is not a number", cut(word)));
     let (sign, digits) = match word.strip_prefix('-') {
         Some(digits) => (-1, digits),
         None => (1, word.strip_prefix('+').unwrap_or(word)),
     };
     let value = match digits.split_once('/') {
-        None => {
-            // Trade files write 1., .5 and 1E5; the language's decimals have digits on both sides.
-            let (mantissa, exponent) = match digits.split_once(['e', 'E', 'd', 'D']) {
-                Some((mantissa, exponent)) => (mantissa, Some(exponent)),
-                None => (digits, None),
-            };
-            let mantissa = match (mantissa.starts_with('.'), mantissa.ends_with('.')) {
-                (true, false) => format!("0{mantissa}"),
-                (false, true) => format!("{mantissa}0"),
-                _ => mantissa.to_string(),
-            };
-            let text =
-                exponent.map_or(mantissa.clone(), |e| format!("{mantissa}e{}", e.strip_prefix('+').unwrap_or(e)));
-            parse_decimal(&text).map_err(|_| bad())?
-        }
+        None => unsigned(digits, word, line)?,
         Some((above, below)) => {
-            let (above, below) = (parse_decimal(above).map_err(|_| bad())?, parse_decimal(below).map_err(|_| bad())?);
+            let (above, below) = (unsigned(above, word, line)?, unsigned(below, word, line)?);
             if below == 0 {
                 return Err(fault(line, format!("`{}` divides by zero", cut(word))));
             }
@@ -151,17 +143,55 @@ fn number(word: &str, line: usize) -> Result<Rational, MatrixFault> {
     Ok(value * sign)
 }
 
-fn value(words: &[&str], banner: &Banner, line: usize) -> Result<Surd, MatrixFault> {
-    match (banner.complex, words) {
-        (false, [re]) => Ok(Surd::from(number(re, line)?)),
-        (true, [re, im]) => Ok(Surd::gaussian(number(re, line)?, number(im, line)?)),
-        (false, _) => Err(fault(line, "one number is wanted as the entry")),
-        (true, _) => Err(fault(line, "two numbers are wanted as the entry, real and imaginary part")),
+/// A number without a sign. Files of the trade write `1.`, `.5`, `1E5` and `1D5`; the language's decimals have digits on both sides of the point.
+fn unsigned(digits: &str, word: &str, line: usize) -> Result<Rational, MatrixFault> {
+    let (mantissa, exponent) = match digits.split_once(['e', 'E', 'd', 'D']) {
+        Some((mantissa, exponent)) => (mantissa, Some(exponent)),
+        None => (digits, None),
+    };
+    if mantissa.starts_with(['+', '-']) {
+        return Err(fault(line, format!("`{}` is not a number", cut(word))));
     }
+    let mut text = match (mantissa.starts_with('.'), mantissa.ends_with('.')) {
+        (true, false) => format!("0{mantissa}"),
+        (false, true) => format!("{mantissa}0"),
+        _ => mantissa.to_string(),
+    };
+    if let Some(exponent) = exponent {
+        text.push('e');
+        text.push_str(exponent.strip_prefix('+').unwrap_or(exponent));
+    }
+    parse_decimal(&text).map_err(|error| match error {
+        DecimalError::NotANumber { .. } => fault(line, format!("`{}` is not a number", cut(word))),
+        other => fault(line, other.to_string()),
+    })
 }
 
-fn mirrored(entry: &Surd, symmetry: Symmetry) -> Surd {
-    if symmetry == Symmetry::Hermitian { entry.conj() } else { entry.clone() }
+/// Reads the entries of lines and counts how long they are together.
+struct Values<'b> {
+    banner: &'b Banner,
+    bits: u64,
+}
+
+impl Values<'_> {
+    fn read(&mut self, words: &[&str], line: usize) -> Result<Surd, MatrixFault> {
+        let value = match (self.banner.complex, words) {
+            (false, [re]) => Surd::from(number(re, line)?),
+            (true, [re, im]) => Surd::gaussian(number(re, line)?, number(im, line)?),
+            (false, _) => return Err(fault(line, "one number is wanted as the entry")),
+            (true, _) => return Err(fault(line, "two numbers are wanted as the entry, real and imaginary part")),
+        };
+        self.bits += u64::from(value.bits());
+        if self.bits > MOST_BITS {
+            return Err(fault(line, "the entries up to here are longer than all entries of a file may be together"));
+        }
+        Ok(value)
+    }
+
+    /// The entry on the other side of the diagonal.
+    fn mirrored(&self, entry: &Surd) -> Option<Entry> {
+        Entry::new(if self.banner.symmetry == Symmetry::Hermitian { entry.conj() } else { entry.clone() })
+    }
 }
 
 fn read_coordinates<'t>(
@@ -169,8 +199,9 @@ fn read_coordinates<'t>(
     banner: &Banner,
     order: usize,
     count: usize,
-    rows: &mut [BTreeMap<usize, Surd>],
+    rows: &mut [Row],
 ) -> Result<(), MatrixFault> {
+    let mut values = Values { banner, bits: 0 };
     let mut found = 0;
     let mut last = 1;
     for (line, text) in lines {
@@ -188,7 +219,7 @@ fn read_coordinates<'t>(
             _ => Err(fault(line, format!("{what} `{}` is not one of 1 to {order}", cut(word)))),
         };
         let (row, column) = (index(row, "row")?, index(column, "column")?);
-        let entry = value(rest, banner, line)?;
+        let entry = values.read(rest, line)?;
         if banner.symmetry != Symmetry::General {
             if column > row {
                 return Err(fault(
@@ -201,10 +232,10 @@ fn read_coordinates<'t>(
                 ));
             }
             if row != column {
-                rows[column].insert(row, mirrored(&entry, banner.symmetry));
+                rows[column].insert(row, values.mirrored(&entry));
             }
         }
-        if rows[row].insert(column, entry).is_some() {
+        if rows[row].insert(column, Entry::new(entry)).is_some() {
             return Err(fault(line, format!("row {}, column {} is given twice", row + 1, column + 1)));
         }
     }
@@ -218,8 +249,9 @@ fn read_array<'t>(
     mut lines: impl Iterator<Item = (usize, &'t str)>,
     banner: &Banner,
     order: usize,
-    rows: &mut [BTreeMap<usize, Surd>],
+    rows: &mut [Row],
 ) -> Result<(), MatrixFault> {
+    let mut values = Values { banner, bits: 0 };
     let mut last = 1;
     for column in 0..order {
         let first = if banner.symmetry == Symmetry::General { 0 } else { column };
@@ -232,11 +264,11 @@ fn read_array<'t>(
             };
             last = line;
             let words: Vec<&str> = text.split_whitespace().collect();
-            let entry = value(&words, banner, line)?;
+            let entry = values.read(&words, line)?;
             if banner.symmetry != Symmetry::General && row != column {
-                rows[column].insert(row, mirrored(&entry, banner.symmetry));
+                rows[column].insert(row, values.mirrored(&entry));
             }
-            rows[row].insert(column, entry);
+            rows[row].insert(column, Entry::new(entry));
         }
     }
     match lines.next() {
@@ -257,6 +289,19 @@ mod tests {
         assert_eq!(matrix.entry(0, 0).to_string(), "1/10");
         assert_eq!(matrix.entry(0, 1).to_string(), "-3/7");
         assert_eq!(matrix.entry(1, 1).to_string(), "150");
+    }
+
+    #[test]
+    fn spellings_of_the_trade() {
+        let text =
+            "%%MatrixMarket  MATRIX coordinate Real general\r\n%\n\n2 2 4\r\n1 1 1.\n 2 2 +.5d-1 \n1 2 -7E0\n2 1 -7\n";
+        let matrix = ExactMatrix::from_matrix_market(text).expect("good file");
+        assert_eq!(matrix.entry(1, 1).to_string(), "1/20");
+        assert_eq!(matrix.entry(0, 1).to_string(), "-7");
+        let digits = "3".repeat(5000);
+        let text = format!("%%MatrixMarket matrix array integer symmetric\n1 1\n{digits}\n");
+        let matrix = ExactMatrix::from_matrix_market(&text).expect("good file");
+        assert_eq!(matrix.entry(0, 0).to_string(), digits);
     }
 
     #[test]
@@ -296,6 +341,41 @@ mod tests {
             (
                 "%%MatrixMarket matrix coordinate real general\n2 2 2\n1 2 5\n2 1 6\n",
                 "row 1, column 2 is not the complex conjugate of row 2, column 1",
+            ),
+            ("%%MatrixMarket matrix coordinate real symmetric\n2 2 1\n1 1 --1\n", "line 3: `--1` is not a number"),
+            ("%%MatrixMarket matrix coordinate real symmetric\n2 2 1\n1 1 1/-2\n", "line 3: `1/-2` is not a number"),
+            ("%%MatrixMarket matrix coordinate real symmetric\n2 2 1\n1 1 1/0\n", "line 3: `1/0` divides by zero"),
+            (
+                "%%MatrixMarket matrix coordinate real symmetric\n2 2 1\n1 1 1e999999999\n",
+                "line 3: the power of ten 999999999 is too large; at most 100000 is read",
+            ),
+            (
+                "%%MatrixMarket matrix coordinate real symmetric\n2 2 3\n1 1 0\n\n1 1 0\n",
+                "line 5: row 1, column 1 is given twice",
+            ),
+            (
+                "%%MatrixMarket matrix coordinate real symmetric\n2 2 1\n1 1 1\n2 2 1\n",
+                "line 4: there are more entries than the 1 announced",
+            ),
+            (
+                "%%MatrixMarket matrix coordinate complex hermitian\n1 1 1\n1 1 2 3\n",
+                "row 1, column 1 is not real: the matrix is not Hermitian",
+            ),
+            (
+                "%%MatrixMarket matrix coordinate complex symmetric\n2 2 1\n2 1 0 3\n",
+                "row 1, column 2 is not the complex conjugate of row 2, column 1",
+            ),
+            (
+                "%%MatrixMarket matrix coordinate complex hermitian\n1 1 1\n1 1 2\n",
+                "line 3: two numbers are wanted as the entry, real and imaginary part",
+            ),
+            (
+                "%%MatrixMarket matrix array real symmetric\n2 2\n1\n2\n",
+                "line 4: the file ends before the entry of row 2, column 2",
+            ),
+            (
+                "%%MatrixMarket matrix coordinate real skew-symmetric\n2 2 1\n2 1 3\n",
+                "line 1: a skew-symmetric matrix is not Hermitian; multiply it by i and give it as `hermitian`",
             ),
             (
                 "%%MatrixMarket matrix coordinate real symmetric\n999999999 999999999 1\n1 1 1\n",

@@ -1,75 +1,59 @@
 //! Plain matrices: a finite Hilbert space given by a Hermitian H and operators with exact entries.
 //!
-//! States are counted from 0 by rising eigenvalue, each as often as it is degenerate.
+//! States are counted from 0 by rising energy, each level as often as it has states; `states` tells which states a degenerate level has.
+//! H is taken apart into its connected components (`component`). Whatever can be exact is: energies and states (`guess`, `levels`), resolvents
+//! (`exact`). The rest is numbers at any precision (`numeric`).
 
+mod component;
 mod elimination;
 mod entries;
 mod exact;
+mod factored;
+mod fault;
+mod fraction_free;
+mod function;
+mod guess;
 mod levels;
 mod market;
+mod modular;
 mod numeric;
+mod rough;
+mod states;
+mod vectors;
+
+#[cfg(test)]
+mod tests;
 
 pub use entries::{ExactMatrix, LARGEST_DIMENSION};
+pub use fault::MatrixFault;
 
 use super::{
-    Atom, Backend, Coupling, Level, Manifold, Number, Obstacle, Omitted, RadialOperator, Sector, State, StateLabel,
-    System, SystemError,
+    Atom, Backend, Block, Coupling, Level, Manifold, Number, Obstacle, Omitted, RadialOperator, Sector, State,
+    StateLabel, System, SystemError,
 };
-use crate::linalg::HermitianMatrix;
-use crate::linalg::eigen::spectrum_preview;
+use crate::linalg::{HermitianMatrix, LinalgError};
 use crate::num::{Effort, Surd};
-use levels::LevelOfMatrix;
+use component::Component;
+use guess::ExactEnergy;
+use levels::EnergyLevel;
+use rough::RoughSpectrum;
 use rug::{Complex, Float};
+use std::collections::{BTreeMap, BTreeSet};
 use std::sync::{Arc, Mutex, PoisonError};
 
 /// Entries longer than this are not all seen by the first numeric attempt.
 const ENTRY_BITS_LIMIT: u32 = 4096;
 
-/// Precisions whose kets and factorisations are kept at a time.
-const KEPT_PRECISIONS: usize = 4;
+/// Precisions whose kets are kept at a time.
+const KEPT_PRECISIONS: usize = 3;
 
-/// What is wrong with a declared matrix.
-#[derive(Clone, PartialEq, Eq, Debug, thiserror::Error)]
-pub enum MatrixFault {
-    #[error("the matrix has no rows")]
-    Empty,
-    #[error("the matrix has {order} rows; the largest has {LARGEST_DIMENSION}")]
-    TooLarge { order: usize },
-    #[error("row {row} has {found} entries, where the matrix has {order} rows")]
-    RowLength { row: usize, found: usize, order: usize },
-    #[error("diagonal {diagonal} (0 is the main one) has {found} entries, too many beside a main diagonal of {order}")]
-    DiagonalLength { diagonal: usize, found: usize, order: usize },
-    #[error(
-        "row {row}, column {column} is not the complex conjugate of row {column}, column {row}: the matrix is not Hermitian"
-    )]
-    NotHermitian { row: usize, column: usize },
-    #[error("line {line}: {message}")]
-    File { line: usize, message: String },
-    #[error("the matrix of H is missing")]
-    NoHamiltonian,
-    #[error("H has {order} rows and `{name}` has {found}")]
-    DifferentOrder { name: String, found: usize, order: usize },
-}
+/// Times the precision is raised for the digits of an energy.
+const RAISES: usize = 6;
 
-impl MatrixFault {
-    /// What to write instead.
-    pub fn help(&self) -> String {
-        match self {
-            MatrixFault::Empty => "write rows, as in `[[1, 2], [2, 3]]`".into(),
-            MatrixFault::TooLarge { .. } => "keep the states that matter".into(),
-            MatrixFault::RowLength { .. } => "every row has as many entries as there are rows".into(),
-            MatrixFault::DiagonalLength { .. } => "each diagonal beside the main one is shorter by one".into(),
-            MatrixFault::NotHermitian { .. } => {
-                "operators of observables are Hermitian: mend one of the two entries".into()
-            }
-            MatrixFault::File { .. } => "mend the file at this line".into(),
-            MatrixFault::NoHamiltonian => "write `matrix(H = …)`, and the operators behind it".into(),
-            MatrixFault::DifferentOrder { .. } => "all matrices of a system act on the same states".into(),
-        }
-    }
-}
+/// The only sector of a matrix.
+const WHOLE: Sector = Sector { block: Block::Whole, twice_m: 0 };
 
-/// A finite Hilbert space.
+/// A finite Hilbert space. Clones share what was computed.
 #[derive(Clone)]
 pub struct MatrixSystem(Arc<Inner>);
 
@@ -77,11 +61,21 @@ pub struct MatrixSystem(Arc<Inner>);
 pub struct Inner {
     /// H first.
     operators: Vec<(String, ExactMatrix)>,
-    components: Vec<Vec<usize>>,
+    components: Vec<Component>,
+    /// The component of each basis state.
+    owner: Vec<usize>,
     entry_bits: u32,
-    levels: Mutex<Vec<LevelOfMatrix>>,
-    distinct: Mutex<Option<usize>>,
+    rough: Mutex<Option<Arc<RoughSpectrum>>>,
+    /// Levels by their first state.
+    levels: Mutex<BTreeMap<usize, Arc<EnergyLevel>>>,
+    /// Proved energies of a component by their first place and the place behind the last.
+    proved: Mutex<BTreeMap<(usize, usize, usize), ExactEnergy>>,
+    /// All eigenvalues of a component at a precision.
+    windows: Mutex<BTreeMap<(usize, u32), guess::Windows>>,
+    /// Numbers of distinct eigenvalues in sets of components.
+    distinct: Mutex<BTreeMap<BTreeSet<usize>, usize>>,
     work: Mutex<Vec<Arc<numeric::Work>>>,
+    solvers: factored::Solvers,
 }
 
 impl std::ops::Deref for MatrixSystem {
@@ -94,23 +88,38 @@ impl std::ops::Deref for MatrixSystem {
 impl MatrixSystem {
     /// A system from its named matrices, one of which is `H`.
     ///
-    /// Errors: no H, or matrices of different order.
+    /// Errors: no H, a name given twice, or matrices of different order.
     pub fn new(mut operators: Vec<(String, ExactMatrix)>) -> Result<Self, MatrixFault> {
+        let mut names = BTreeSet::new();
+        if let Some((name, _)) = operators.iter().find(|(name, _)| !names.insert(name.as_str())) {
+            return Err(MatrixFault::GivenTwice { name: name.clone() });
+        }
         let at = operators.iter().position(|(name, _)| name == "H").ok_or(MatrixFault::NoHamiltonian)?;
-        operators.swap(0, at);
+        operators[..=at].rotate_right(1);
         let order = operators[0].1.order();
         if let Some((name, matrix)) = operators.iter().find(|(_, matrix)| matrix.order() != order) {
             return Err(MatrixFault::DifferentOrder { name: name.clone(), found: matrix.order(), order });
         }
-        let components = operators[0].1.components();
+        let components = component::components(&operators[0].1);
+        let mut owner = vec![0; order];
+        for (k, component) in components.iter().enumerate() {
+            for member in &component.members {
+                owner[*member] = k;
+            }
+        }
         let entry_bits = operators.iter().map(|(_, matrix)| matrix.bits()).max().unwrap_or(0).min(ENTRY_BITS_LIMIT);
         Ok(MatrixSystem(Arc::new(Inner {
             operators,
             components,
+            owner,
             entry_bits,
+            rough: Mutex::default(),
             levels: Mutex::default(),
+            proved: Mutex::default(),
+            windows: Mutex::default(),
             distinct: Mutex::default(),
             work: Mutex::default(),
+            solvers: factored::Solvers::default(),
         })))
     }
 
@@ -119,7 +128,33 @@ impl MatrixSystem {
     }
 
     fn order(&self) -> usize {
-        self.hamiltonian().order()
+        self.owner.len()
+    }
+
+    /// H inside a component with entries of `bits` bits.
+    fn hermitian(&self, component: usize, bits: u32) -> Result<HermitianMatrix, Obstacle> {
+        component::hermitian(self.hamiltonian(), &self.components[component], bits)
+    }
+
+    /// An exponent e with every eigenvalue of a component below 2^e in absolute value.
+    fn size_exponent(&self, component: usize) -> i64 {
+        self.components[component].size_exponent(self.hamiltonian())
+    }
+
+    /// A bound of the error of eigenvalues of a component found to `bits` bits of the largest.
+    fn error_at(&self, component: usize, bits: u32) -> Float {
+        let exponent = self.size_exponent(component) - i64::from(bits);
+        Float::with_val(64, 1) << i32::try_from(exponent).unwrap_or(i32::MAX / 2)
+    }
+
+    fn rough(&self, effort: &Effort) -> Result<Arc<RoughSpectrum>, Obstacle> {
+        let mut known = self.rough.lock().unwrap_or_else(PoisonError::into_inner);
+        if let Some(rough) = &*known {
+            return Ok(rough.clone());
+        }
+        let rough = Arc::new(RoughSpectrum::new(self, effort)?);
+        *known = Some(rough.clone());
+        Ok(rough)
     }
 
     fn matrix(&self, operator: &RadialOperator) -> &ExactMatrix {
@@ -127,70 +162,60 @@ impl MatrixSystem {
         &self.operators[index].1
     }
 
-    fn index(&self, state: &State) -> usize {
-        state.numbers.first().and_then(|n| usize::try_from(*n).ok()).unwrap_or(0).min(self.order() - 1)
+    fn place(&self, numbers: &[i64]) -> usize {
+        numbers.first().and_then(|n| usize::try_from(*n).ok()).unwrap_or(0).min(self.order() - 1)
     }
 
-    /// First states of the levels to leave out, each once.
-    fn omitted_levels(&self, omitted: &[Omitted], effort: &Effort) -> Result<Vec<usize>, Obstacle> {
-        let mut firsts = Vec::new();
+    /// The levels to leave out, each once, in rising order.
+    fn omitted_levels(&self, omitted: &[Omitted], effort: &Effort) -> Result<Vec<Arc<EnergyLevel>>, Obstacle> {
+        let mut levels = BTreeMap::new();
         for item in omitted {
             let numbers = match item {
                 Omitted::LevelOf(state) => &state.numbers,
                 Omitted::Manifold(manifold) => &manifold.numbers,
             };
-            let index = numbers.first().and_then(|n| usize::try_from(*n).ok()).unwrap_or(0).min(self.order() - 1);
-            let first = self.level(index, effort)?.first;
-            if !firsts.contains(&first) {
-                firsts.push(first);
-            }
+            let level = self.level(self.place(numbers), effort)?;
+            levels.insert(level.first, level);
         }
-        Ok(firsts)
-    }
-
-    /// The level at an exact energy in words.
-    fn level_at(&self, energy: &Surd, effort: &Effort) -> String {
-        for index in 0..self.order() {
-            match self.level(index, effort) {
-                Ok(level) if level.exact.as_ref().is_some_and(|exact| exact.energy == *energy) => {
-                    return format!("state {index} (energy {energy})");
-                }
-                Ok(_) => {}
-                Err(_) => break,
-            }
-        }
-        format!("a state with energy {energy}")
-    }
-
-    /// The state whose energy is nearest, in words.
-    fn nearest_level(&self, h: &HermitianMatrix, z: &Float) -> String {
-        let Some(preview) = spectrum_preview(h) else { return "one of the states".into() };
-        let nearest =
-            (0..self.order()).filter_map(|index| preview.value(index).map(|value| (index, value))).min_by(|a, b| {
-                let (da, db) = (Float::with_val(64, &a.1 - z).abs(), Float::with_val(64, &b.1 - z).abs());
-                da.total_cmp(&db)
-            });
-        nearest.map_or("one of the states".into(), |(index, value)| {
-            format!("state {index} (energy {:.6})", value.to_f64())
-        })
+        Ok(levels.into_values().collect())
     }
 
     fn whole_label(&self, label: &StateLabel) -> Result<usize, SystemError> {
         let last = self.order() - 1;
         let refuse = |message: String| {
-            Err(SystemError::Refused {
-                message,
-                help: format!("write a whole number from 0 (the lowest) to {last}, as in `m[0]`"),
-            })
+            let help = match last {
+                0 => "the only state is number 0, as in `m[0]`".into(),
+                _ => format!("write a whole number from 0 (the lowest) to {last}, as in `m[0]`"),
+            };
+            Err(SystemError::Refused { message, help })
         };
         if let Some((name, _)) = label.options.first() {
             return refuse(format!("a state of a matrix has no quantum number `{name}`"));
         }
-        match label.text.parse::<usize>() {
-            Ok(index) if index <= last => Ok(index),
-            Ok(index) => refuse(format!("there is no state {index}: the matrix has {} states", last + 1)),
-            Err(_) => refuse(format!("`{}` is not the number of a state", label.text)),
+        let text = label.text.trim();
+        if text.is_empty() || !text.bytes().all(|b| b.is_ascii_digit()) {
+            return refuse(format!("`{text}` is not the number of a state"));
         }
+        match text.parse::<usize>() {
+            Ok(index) if index <= last => Ok(index),
+            _ => refuse(format!("there is no state {text}: the matrix has {} states", last + 1)),
+        }
+    }
+}
+
+/// Turns a failed linear-algebra step into an obstacle: what more precision may cure is undecided.
+fn obstacle(error: LinalgError) -> Obstacle {
+    match error {
+        LinalgError::Interrupted(stop) => Obstacle::Interrupted(stop),
+        LinalgError::Singular { .. }
+        | LinalgError::NoPivot { .. }
+        | LinalgError::IllConditioned { .. }
+        | LinalgError::EigenvaluesUnsettled { .. } => Obstacle::Undecided,
+        LinalgError::TooFewPrimes { .. } => Obstacle::Refused {
+            message: "whether two energies of H are equal is not decided: too many different square roots stand in its entries".into(),
+            help: "scale the basis vectors so that fewer square roots are left".into(),
+        },
+        other => Obstacle::Refused { message: other.to_string(), help: String::new() },
     }
 }
 
@@ -221,20 +246,18 @@ impl System for MatrixSystem {
     }
 
     fn energy(&self, state: &State, bits: u32, effort: &Effort) -> Result<Number, Obstacle> {
-        let index = self.index(state);
-        let level = self.level(index, effort)?;
-        if let Some(exact) = &level.exact {
-            return Ok(Number::Exact(exact.energy.clone()));
+        let level = self.level(self.place(&state.numbers), effort)?;
+        if let Some(energy) = &level.energy {
+            return Ok(Number::Exact(energy.clone()));
         }
         // Digits are relative to the energy, eigenvalues come relative to the norm of H.
+        let size = level.parts.iter().map(|part| self.size_exponent(part.component)).max().unwrap_or(0);
         let mut work = bits.max(self.entry_bits) + 64;
-        for _ in 0..6 {
-            let (values, _) = self.numeric_states(&level, work, effort)?;
-            let value = values.into_iter().nth(index - level.first).ok_or(Obstacle::Undecided)?;
-            let norm =
-                self.hermitian(64)?.exponent().unwrap_or(0) + i64::from(usize::BITS - self.order().leading_zeros());
-            let lost = norm - value.get_exp().map_or(-i64::from(work), i64::from);
-            if i64::from(work) - lost >= i64::from(bits) {
+        for _ in 0..RAISES {
+            let value = self.numeric_energy(&level, work, effort)?;
+            if let Some(exponent) = value.get_exp()
+                && i64::from(work) - (size - i64::from(exponent)) >= i64::from(bits)
+            {
                 return Ok(Number::Approx(Complex::with_val(work, (value, 0))));
             }
             work = work.saturating_mul(2);
@@ -244,16 +267,16 @@ impl System for MatrixSystem {
 
     fn degenerate(&self, a: &State, b: &State) -> bool {
         let effort = Effort::new();
-        match (self.level(self.index(a), &effort), self.level(self.index(b), &effort)) {
-            (Ok(a), Ok(b)) => a.first == b.first,
-            _ => false,
+        match self.level(self.place(&a.numbers), &effort) {
+            Ok(level) => level.places().contains(&self.place(&b.numbers)),
+            Err(_) => false,
         }
     }
 
     fn knows(&self, atom: &Atom) -> Result<bool, SystemError> {
-        let known = || self.operators.iter().map(|(name, _)| name.clone()).collect();
         if !self.operators.iter().any(|(name, _)| *name == atom.name) {
-            return Err(SystemError::UnknownOperator { name: atom.name.clone(), known: known() });
+            let known = self.operators.iter().map(|(name, _)| name.clone()).collect();
+            return Err(SystemError::UnknownOperator { name: atom.name.clone(), known });
         }
         if atom.component.is_some() || !atom.arguments.is_empty() {
             return Err(SystemError::Refused {
@@ -287,17 +310,14 @@ impl System for MatrixSystem {
 
     fn numeric(&self, level: Level, _: &State, effort: &Effort) -> Result<Arc<dyn Backend>, Obstacle> {
         let mut kept = self.work.lock().unwrap_or_else(PoisonError::into_inner);
-        let work = match kept.iter().find(|work| work.bits == level.bits) {
-            Some(known) => known.clone(),
-            None => {
-                let work = Arc::new(numeric::Work::new(self, level.bits)?);
-                if kept.len() >= KEPT_PRECISIONS {
-                    kept.remove(0);
-                }
-                kept.push(work.clone());
-                work
-            }
+        let work = match kept.iter().position(|work| work.bits == level.bits) {
+            Some(at) => kept.remove(at),
+            None => Arc::new(numeric::Work::new(level.bits)),
         };
+        if kept.len() >= KEPT_PRECISIONS {
+            kept.remove(0);
+        }
+        kept.push(work.clone());
         Ok(Arc::new(numeric::NumericBackend { system: self.clone(), work, effort: effort.clone() }))
     }
 

@@ -206,7 +206,7 @@ fn what_has_no_finite_form_is_left_to_numbers() {
     let inexact = Obstacle::Inexact.to_string();
     assert_eq!(mean("r^-3 Q r^-3", "2p", 0), inexact);
     assert_eq!(mean("r^-2 Q r^-2", "2p", 0), inexact);
-    assert_eq!(mean("delta(r)", "1s", 0), inexact);
+    assert_eq!(mean("delta(r)", "1s", 0), "pi^-1");
     assert_eq!(mean("p^4 Q p^4", "1s", 0), inexact);
 }
 
