@@ -7,7 +7,7 @@
 use super::bound::bound_state;
 use super::function::{RadialFunction, Unintegrable};
 use super::laurent::{Laurent, to_power};
-use crate::num::{Effort, Interrupted, Surd};
+use crate::num::{Effort, Interrupted, Surd, Unit};
 use rug::{Integer, Rational, ops::Pow};
 use std::cmp::Ordering;
 use std::collections::BTreeMap;
@@ -62,7 +62,7 @@ struct Integrals {
 }
 
 impl Integrals {
-    /// Of the parts of a function, each with its unit sqrt(root) or i sqrt(root), the state of the level taken out.
+    /// Of the parts of a function, each with its unit, the state of the level taken out.
     fn of(u: &RadialFunction, n: u32, l: u32) -> Result<Vec<(Surd, Integrals)>, NoSum> {
         let mut u = u.clone();
         if l < n {
@@ -70,22 +70,22 @@ impl Integrals {
             u.add_scaled(&-&state.inner(&u)?, &state);
         }
         let kappa = Rational::from((1, n));
-        let mut parts: BTreeMap<(Integer, bool), Integrals> = BTreeMap::new();
+        let mut parts: BTreeMap<(Unit, bool), Integrals> = BTreeMap::new();
         for (envelope, polynomial) in u.terms() {
             if envelope.kappa != kappa {
                 return Err(NoSum::NotRational);
             }
-            parts.entry((envelope.root.clone(), envelope.imaginary)).or_default().add_powers(polynomial, &kappa, l)?;
+            parts.entry((envelope.unit.clone(), envelope.imaginary)).or_default().add_powers(polynomial, &kappa, l)?;
         }
-        for (root, c) in u.contact().terms() {
+        for (unit, c) in u.contact().terms() {
             for (part, imaginary) in [(&c.re, false), (&c.im, true)] {
                 // the coefficient of r in the basis function is b + 1
-                parts.entry((root.radicand.clone(), imaginary)).or_default().add_polynomial(&[part.clone(), part.clone()]);
+                parts.entry((unit.clone(), imaginary)).or_default().add_polynomial(&[part.clone(), part.clone()]);
             }
         }
-        let unit = |(root, imaginary): (Integer, bool)| {
-            let root = Surd::sqrt_of(&Rational::from(root)).unwrap_or_default();
-            if imaginary { &root * &Surd::i() } else { root }
+        let unit = |(unit, imaginary): (Unit, bool)| {
+            let (re, im) = (Rational::from(!imaginary), Rational::from(imaginary));
+            Surd::of_unit(unit, re, im)
         };
         Ok(parts.into_iter().map(|(key, integrals)| (unit(key), integrals)).collect())
     }

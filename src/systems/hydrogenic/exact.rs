@@ -69,11 +69,6 @@ pub(super) fn apply_exactly(operator: Radial, l: u32, lp: u32, u: &RadialFunctio
         Radial::PSquared => action::p_squared(u, l),
         Radial::PFourth => action::p_squared(u, l).and_then(|once| action::p_squared(&once, l)),
         Radial::DeltaTimesPi => action::delta_times_pi(u),
-        Radial::Delta => match action::delta_times_pi(u) {
-            Ok(v) if v.is_zero() => Ok(v),
-            Ok(_) => return Err(Obstacle::Inexact),
-            Err(reason) => Err(reason),
-        },
         Radial::Hamiltonian => action::hamiltonian(u, l),
     };
     result.map_err(|reason| match reason {
@@ -96,11 +91,10 @@ pub(super) fn element_exactly(
             let ket = apply_exactly(Radial::PSquared, l, l, ket)?;
             bra.inner(&ket).map_err(named)
         }
-        Radial::Delta | Radial::DeltaTimesPi => {
+        Radial::DeltaTimesPi => {
             let bra = bra.value_at_nucleus().map_err(named)?;
             let ket = ket.value_at_nucleus().map_err(named)?;
-            let value = (&bra.conj() * &ket).scaled(&Rational::from((1, 4)));
-            Ok(if operator == Radial::Delta { &value * &Surd::pi_to(-1) } else { value })
+            Ok((&bra.conj() * &ket).scaled(&Rational::from((1, 4))))
         }
         _ => bra.inner(&apply_exactly(operator, l, lp, ket)?).map_err(named),
     }
@@ -227,10 +221,6 @@ impl Backend for ExactBackend {
             let Number::Exact(weight) = weight else {
                 return Err(Obstacle::Inexact);
             };
-            if weight.has_pi() {
-                // Radial functions carry square roots; pi comes with matrix elements only.
-                return Err(Obstacle::Inexact);
-            }
             sum.add_scaled(weight, open(ket)?);
         }
         Ok(Arc::new(sum))

@@ -117,10 +117,6 @@ impl System for Hydrogenic {
         operators::adjoint(atom)
     }
 
-    fn without_pi(&self, atom: &Atom) -> Option<(i32, Atom)> {
-        operators::without_pi(atom)
-    }
-
     fn selection_rule(&self, atom: &Atom) -> String {
         operators::selection_rule(atom)
     }

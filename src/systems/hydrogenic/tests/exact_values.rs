@@ -81,18 +81,17 @@ fn relativistic_change_of_the_polarizability() {
         (outer + middle) * -2
     };
     assert_eq!(change("p^4") * rational(-1, 8), rational(-121, 6));
-    assert_eq!(change("pidelta(r)") * rational(1, 2), rational(31, 2));
+    assert_eq!(change("darwin"), rational(31, 2));
     assert_eq!(change("mass_velocity") + change("darwin"), rational(-14, 3));
 }
 
 #[test]
-fn operators_free_of_pi() {
-    let atom = hydrogen();
-    let delta = operator("delta(r)");
-    assert_eq!(atom.without_pi(&delta), Some((-1, operator("pidelta(r)"))));
-    assert_eq!(atom.without_pi(&operator("r")), None);
-    // <pi delta(r)> = Z^3/n^3; the Darwin term is Z/2 times that
-    assert_eq!(mean("pidelta(r)", "3s", 0), "1/27");
+fn density_at_the_nucleus() {
+    // <delta(r)> = Z^3/(pi n^3); the Darwin term is (pi/2) Z times that
+    assert_eq!(mean("delta(r)", "3s", 0), "1/27 pi^-1");
+    // |psi(0)|^2 = <dV/dr>/(2 pi) in any potential; with V = -1/r + lambda r: 2 <delta Q r> = (2 <r^-2 Q r> + 1)/(2 pi)
+    assert_eq!(mean("r^-2 Q r", "1s", 0), "5/2");
+    assert_eq!(mean("delta(r) Q r", "1s", 0), "3/2 pi^-1");
     let atom = super::super::Hydrogenic::new(Rational::from(2), None).expect("an atom");
     let backend = atom.exact(&Effort::new()).expect("exact backend");
     let g = state(&atom, "2s", 0);
@@ -196,7 +195,7 @@ fn closed_sums_of_singular_operators() {
     };
     assert_eq!(total(rational(-1, 1)), rational(-103, 1536));
     assert_eq!(total(rational(1, 2)), rational(-5, 768));
-    for (left, right) in [("p^4", "p^4"), ("pidelta(r)", "pidelta(r)"), ("p^4", "pidelta(r)")] {
+    for (left, right) in [("p^4", "p^4"), ("delta(r)", "delta(r)"), ("p^4", "delta(r)")] {
         assert!(through(left, right, "1s").contains("do not fade out"), "{left} {right}");
     }
 }

@@ -32,31 +32,8 @@ fn any_state(largest: u32) -> impl Strategy<Value = State> {
 
 fn any_operator() -> impl Strategy<Value = &'static str> {
     prop::sample::select(vec![
-        "D_z",
-        "D_x",
-        "D_y",
-        "D_+1",
-        "D_-1",
-        "P_z",
-        "P_x",
-        "P_-1",
-        "r",
-        "r^2",
-        "r^3",
-        "r^-1",
-        "r^-2",
-        "r^-3",
-        "p^2",
-        "p^4",
-        "H",
-        "L_z",
-        "L_+1",
-        "L^2",
-        "C(1)_0",
-        "C(2)_0",
-        "C(2)_-1",
-        "pidelta(r)",
-        "r^0",
+        "D_z", "D_x", "D_y", "D_+1", "D_-1", "P_z", "P_x", "P_-1", "r", "r^2", "r^3", "r^-1", "r^-2", "r^-3", "p^2",
+        "p^4", "H", "L_z", "L_+1", "L^2", "C(1)_0", "C(2)_0", "C(2)_-1", "delta(r)", "r^0",
     ])
 }
 
