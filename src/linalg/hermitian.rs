@@ -77,7 +77,8 @@ impl HermitianMatrix {
         parts.flat_map(|part| part.iter()).map(Float::prec).max().unwrap_or(rug::float::prec_min())
     }
 
-    /// Returns e with every real and imaginary part of an entry below 2^e, close to the largest; `None` for the zero matrix.
+    /// Returns e with every real and imaginary part of an entry below 2^e, close to the largest; `None` for the zero
+    /// matrix.
     pub fn exponent(&self) -> Option<i64> {
         exponent(std::iter::once(self.re()).chain(&self.im).flat_map(|part| part.iter()))
     }

@@ -36,9 +36,9 @@ enum Embedding {
 /// With vectors P to leave out it solves `Q (z - H) Q x = Q b` with x in the range of Q = 1 - P P^+, the reduced
 /// resolvent where P spans the whole eigenspace of z.
 ///
-/// *Shapes*: vectors of the order of H. *Accuracy*: the bits asked for, norm-wise, of the system as given; P enters with its own
-/// errors, to first order in the range of Q and to second order in the compressed operator. *Cost*: that of a real solver of the
-/// order n of H if everything is real, else of order 2n.
+/// *Shapes*: vectors of the order of H. *Accuracy*: the bits asked for, norm-wise, of the system as given; P enters
+/// with its own errors, to first order in the range of Q and to second order in the compressed operator. *Cost*: that
+/// of a real solver of the order n of H if everything is real, else of order 2n.
 pub struct ShiftedSolver {
     solver: Solver,
     embedding: Embedding,
@@ -52,8 +52,8 @@ pub struct ShiftedSolver {
 impl ShiftedSolver {
     /// Factors `z - H`, in the complement of the orthonormal vectors `without`, for solutions of `bits` bits.
     ///
-    /// *Shapes*: `z` is the real part and, for a complex energy, the imaginary part. *Errors*: [`LinalgError::Singular`] when z
-    /// is an eigenvalue (of the compressed operator) to the precision of the entries.
+    /// *Shapes*: `z` is the real part and, for a complex energy, the imaginary part. *Errors*:
+    /// [`LinalgError::Singular`] when z is an eigenvalue (of the compressed operator) to the precision of the entries.
     pub fn new(
         h: &HermitianMatrix,
         z: (&Float, Option<&Float>),
@@ -134,7 +134,8 @@ impl ShiftedSolver {
         Ok(SolvedKet { ket, holds })
     }
 
-    /// Returns an estimate of the binary logarithm of the condition number: the bits that rounding in H, z or b can cost.
+    /// Returns an estimate of the binary logarithm of the condition number: the bits that rounding in H, z or b can
+    /// cost.
     pub fn condition_bits(&self) -> u32 {
         self.solver.condition_bits()
     }
@@ -150,7 +151,8 @@ impl ShiftedSolver {
 }
 
 /// Returns the real and imaginary part of `z - H + s P P^+`, s of the size of `z - H` and of the sign most of its
-/// eigenvalues have, so that the matrix of a lowest level stays definite; vectors that are real to `real` have no imaginary part.
+/// eigenvalues have, so that the matrix of a lowest level stays definite; vectors that are real to `real` have no
+/// imaginary part.
 fn parts(
     h: &HermitianMatrix,
     x: &Float,

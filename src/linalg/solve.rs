@@ -45,8 +45,9 @@ pub struct Solved {
 /// A dense real matrix, factored and ready for any number of right-hand sides.
 ///
 /// The entries are taken as exact: the solution is that of the system as given. An entry that is itself rounded at
-/// precision p moves the solution by up to `2^(condition_bits - p)` relative to its norm, so give entries at the wanted bits
-/// plus [`Solver::condition_bits`] plus some guard. A matrix whose condition number comes near 2^p is refused as singular.
+/// precision p moves the solution by up to `2^(condition_bits - p)` relative to its norm, so give entries at the
+/// wanted bits plus [`Solver::condition_bits`] plus some guard. A matrix whose condition number comes near 2^p is
+/// refused as singular.
 ///
 /// *Range*: any exponents of rug; strongly graded matrices are balanced by powers of two first. *Accuracy*: norm-wise,
 /// relative to the largest component. *Cost*: order^3/6 multiply-adds for a symmetric matrix (order^3/3 if pivots are
@@ -73,8 +74,8 @@ struct Rung {
 }
 
 impl Solver {
-    /// Factors a symmetric matrix, definite or not, for solutions of `bits` bits; it is for the caller to see that it is
-    /// symmetric.
+    /// Factors a symmetric matrix, definite or not, for solutions of `bits` bits; it is for the caller to see that it
+    /// is symmetric.
     ///
     /// *Errors*: not square, not finite, or singular to the precision of the entries.
     pub fn symmetric(matrix: DMatrix<Float>, bits: u32, effort: &Effort) -> Result<Self, LinalgError> {

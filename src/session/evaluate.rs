@@ -194,6 +194,7 @@ impl Evaluation<'_> {
         let (line, kind, digits, verdict) = match rendered.kind {
             RenderedKind::Exact => {
                 let zero = matches!(&value.scalar, Scalar::Exact(x) if x.is_zero());
+                notes.extend(self.in_decimals(&value.scalar));
                 if zero && !value.rules.is_empty() {
                     (format!("= 0 exactly: {}", value.rules.join("; ")), AnswerKind::Zero, None, "zero, proved")
                 } else {
@@ -221,6 +222,15 @@ impl Evaluation<'_> {
             verdict: verdict.into(),
             notes,
         }
+    }
+
+    /// An exact number with roots or pi in it as a decimal, to be said beside it.
+    fn in_decimals(&self, scalar: &Scalar) -> Option<String> {
+        let Scalar::Exact(exact) = scalar else { return None };
+        let gaussian = exact.terms().all(|(unit, _)| unit.pi_power == 0 && unit.radicand == 1);
+        let digits = self.digits_wanted();
+        let ball = (!gaussian).then(|| scalar.to_ball(crate::sums::bits_for(digits) + 64).ok())??;
+        Some(format!("in decimals {}", render(&Scalar::Approx(ball), digits).text))
     }
 
     /// The value of one side of a comparison, and of the difference of both with what they share cancelled.

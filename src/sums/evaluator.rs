@@ -139,7 +139,7 @@ impl<'s> Evaluator<'s> {
                 };
                 Ok(Scalar::Exact(Surd::from(moved)))
             }
-            ScalarNode::Pi => Scalar::pi(bits).map_err(at),
+            ScalarNode::Pi => Ok(Scalar::Exact(Surd::pi_to(1))),
             ScalarNode::Variable(name) => environment.variable(name).cloned().ok_or_else(|| {
                 let message = format!("`{name}` has no value here");
                 Failure::new(place, Trouble::Refused { message, help: String::new() })

@@ -68,7 +68,8 @@ impl Entries {
 
     /// Returns `b - A x`.
     ///
-    /// *Accuracy*: each component within 2^-[`Entries::accurate_bits`] of the largest |x_j|, besides the precision of b.
+    /// *Accuracy*: each component within 2^-[`Entries::accurate_bits`] of the largest |x_j|, besides the precision of
+    /// b.
     pub fn residual(&self, x: &[Float], b: &[Float], effort: &Effort) -> Result<Vec<Float>, Interrupted> {
         with_limbs!(self.limbs, L => self.residual_of::<L>(x, b, effort), else Ok(b.to_vec()))
     }

@@ -48,9 +48,9 @@ impl<const L: usize> Sum<L> {
 
     /// Returns `sum a_k b_k` without its lowest L - 1 columns.
     ///
-    /// *Shapes*: the shorter of the two counts. *Accuracy*: what is left out is below 2^22 (L - 1) units in the last place for each
-    /// term, see [`accurate_bits`]; otherwise exact, so that the order of terms does not matter. *Cost*: L (L + 1)/2 products
-    /// of words a term, where an exact sum would take L^2.
+    /// *Shapes*: the shorter of the two counts. *Accuracy*: what is left out is below 2^22 (L - 1) units in the last
+    /// place for each term, see [`accurate_bits`]; otherwise exact, so that the order of terms does not matter.
+    /// *Cost*: L (L + 1)/2 products of words a term, where an exact sum would take L^2.
     #[inline]
     pub fn of_products(a: &[Limbs<L>], b: &[Limbs<L>]) -> Self {
         let mut sum = Self([0; L]);
@@ -129,7 +129,8 @@ impl<const L: usize> Sum<L> {
         i64::from(RADIX) * (L as i64 - 1) - 2 * i64::from(fraction_bits(L))
     }
 
-    /// Returns the sum rounded down to a unit: the quick form of [`Sum::scaled`] for exponent 0, with the wider range of sums.
+    /// Returns the sum rounded down to a unit: the quick form of [`Sum::scaled`] for exponent 0, with the wider range
+    /// of sums.
     #[inline]
     pub fn rounded(mut self) -> Result<Limbs<L>, Overflow> {
         const DOWN: u32 = RADIX - HEAD;

@@ -35,7 +35,8 @@ impl<const L: usize> PivotedLu<L> {
     /// Factorises, left-looking, by blocks of columns.
     ///
     /// *Accuracy*: norm-wise backward error of about order units of the last place times the growth of U. *Errors*:
-    /// [`Failure::NoPivot`] for a column of zeros, [`Failure::Growth`] if U outgrows its range. *Cost*: order^3/3 multiply-adds.
+    /// [`Failure::NoPivot`] for a column of zeros, [`Failure::Growth`] if U outgrows its range. *Cost*: order^3/3
+    /// multiply-adds.
     pub fn new(entries: &Entries, threads: usize, effort: &Effort) -> Result<Self, Failure> {
         let order = entries.order();
         let mut open: Vec<OpenRow<L>> = (0..order)
@@ -81,8 +82,8 @@ impl<const L: usize> PivotedLu<L> {
     }
 }
 
-/// Finishes column number `place` of a block that begins at row `start`: eliminates within the block, then exchanges rows for the
-/// largest pivot and stores the multipliers.
+/// Finishes column number `place` of a block that begins at row `start`: eliminates within the block, then exchanges
+/// rows for the largest pivot and stores the multipliers.
 fn finish_column<const L: usize>(
     rows: &mut [OpenRow<L>],
     column: &mut Vec<Limbs<L>>,

@@ -1,8 +1,8 @@
 //! The kernels of the dense factorisations, chosen by precision.
 //!
-//! Up to 16 limbs the numbers are fixed-point without allocation ([`limbs`]); longer ones, and matrices whose elimination leaves the
-//! range of fixed point, go through `crate::linalg::plain`. Whatever the number of threads, sums are exact before
-//! they are rounded, and the results are the same bits.
+//! Up to 16 limbs the numbers are fixed-point without allocation ([`limbs`]); longer ones, and matrices whose
+//! elimination leaves the range of fixed point, go through `crate::linalg::plain`. Whatever the number of threads,
+//! sums are exact before they are rounded, and the results are the same bits.
 
 mod cholesky;
 mod entries;
@@ -38,7 +38,8 @@ macro_rules! with_limbs {
 }
 use with_limbs;
 
-/// Returns the count of limbs whose sums of so many products have so many bits right, `None` if there is no kernel so long.
+/// Returns the count of limbs whose sums of so many products have so many bits right, `None` if there is no kernel so
+/// long.
 pub(super) fn limbs_for(bits: u32, terms: usize) -> Option<usize> {
     COUNTS.into_iter().find(|&limbs| limbs::accurate_bits(limbs, terms) >= bits)
 }

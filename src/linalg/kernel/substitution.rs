@@ -36,7 +36,8 @@ impl<const L: usize> Reciprocal<L> {
         product(value, &self.mantissa, self.exponent)
     }
 
-    /// Returns a number divided by the pivot and by `2^down`, with the least multiple of STEP that leaves it below 2^ROOM.
+    /// Returns a number divided by the pivot and by `2^down`, with the least multiple of STEP that leaves it below
+    /// 2^ROOM.
     fn times_within(&self, value: &Limbs<L>) -> (Limbs<L>, i64) {
         let mut down = 0;
         loop {
@@ -75,7 +76,8 @@ impl<const L: usize> BlockVector<L> {
         self.components.iter().map(|c| read(c, self.exponent, fraction_bits(L))).collect()
     }
 
-    /// Solves a triangular system whose row i has the coefficients `row(i)` before the diagonal, from the first row down.
+    /// Solves a triangular system whose row i has the coefficients `row(i)` before the diagonal, from the first row
+    /// down.
     ///
     /// *Accuracy*: norm-wise backward stable: a unit in the last place of the largest component.
     pub fn solve_down<'a>(

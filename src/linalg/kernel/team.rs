@@ -2,7 +2,8 @@
 
 use crate::linalg::factor::Failure;
 
-/// Cuts so many items into parts for at most so many threads, each of at least `least` items; returns the items of a part.
+/// Cuts so many items into parts for at most so many threads, each of at least `least` items; returns the items of a
+/// part.
 pub(super) fn part_size(items: usize, threads: usize, least: usize) -> usize {
     items.div_ceil(threads.min(items / least).max(1)).max(1)
 }

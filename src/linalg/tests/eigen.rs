@@ -140,7 +140,8 @@ fn values_that_machine_numbers_confuse() {
         check_orthonormal(&cluster.vectors, 213);
         let gap = cluster.gap.as_ref().expect("others outside").to_f64();
         assert!((gap - 2.0).abs() < 1e-10);
-        // Vectors of the nearest levels are still good to the wanted bits: the residual is below their distance by as much.
+        // Vectors of the nearest levels are still good to the wanted bits: the residual is below their distance by as
+        // much.
         for (k, v) in cluster.vectors.iter().enumerate() {
             let left = residual(&h, &values[7 + k], v);
             assert!(left <= -200 - 213 + 10, "vector {k}: residual 2^{left}");

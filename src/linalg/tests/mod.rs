@@ -1,4 +1,5 @@
-//! Tests across the files: against exact rational elimination, against residuals at twice the precision, on hard matrices.
+//! Tests across the files: against exact rational elimination, against residuals at twice the precision, on hard
+//! matrices.
 
 mod eigen;
 mod exact;

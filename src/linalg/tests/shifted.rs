@@ -137,9 +137,12 @@ impl Identity for DMatrix<Float> {
 proptest! {
     #![proptest_config(cases(60))]
 
-    /// Small whole numbers, where leading blocks are often singular: the residual is small or the energy is an eigenvalue.
+    /// Small whole numbers, where leading blocks are often singular: the residual is small or the energy is an
+    /// eigenvalue.
     #[test]
-    fn whole_numbers_by_residual(seed in any::<u64>(), order in 1usize..9, complex: bool, re in -3i32..4, im in -2i32..3) {
+    fn whole_numbers_by_residual(
+        seed in any::<u64>(), order in 1usize..9, complex: bool, re in -3i32..4, im in -2i32..3
+    ) {
         let effort = Effort::new();
         let mut random = Irregular(seed);
         let mut part = |sign: i32| {
@@ -161,7 +164,8 @@ proptest! {
             Ok(solver) => {
                 let solved = solver.solve(&b, &effort).expect("solved");
                 let size = exponent_complex(&solved.ket).expect("not zero").max(0);
-                let left = residual(&h, &Complex::with_val(PRECISION, (&z.0, &z.1)), &solved.ket, &b).unwrap_or(i64::MIN);
+                let energy = Complex::with_val(PRECISION, (&z.0, &z.1));
+                let left = residual(&h, &energy, &solved.ket, &b).unwrap_or(i64::MIN);
                 prop_assert!(left <= size + 8 - i64::from(BITS), "residual 2^{}", left);
             }
             Err(error) => {

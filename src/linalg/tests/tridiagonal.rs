@@ -148,7 +148,8 @@ fn shapes_are_checked() {
 
 #[test]
 fn noise_goes_through_a_pivot_of_order_two() {
-    // Thirds leave a pivot that should be zero at 2^-198; the pivot of order 2 that covers it hands it on to a later row.
+    // Thirds leave a pivot that should be zero at 2^-198; the pivot of order 2 that covers it hands it on to a later
+    // row.
     let effort = Effort::new();
     let t = Tridiagonal::new(rationals(&[1, 3, -1, -3, -1, 0, 3, 0, -1]), rationals(&[-3, -2, -1, -1, -3, 0, 3, 0]));
     let t = t.expect("shape");

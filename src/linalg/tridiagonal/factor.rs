@@ -28,9 +28,10 @@ enum Pivot<T> {
 
 /// A factorised symmetric tridiagonal matrix.
 ///
-/// Pivots of order 2 are taken where one of order 1 would let entries grow, so the factorisation is stable norm-wise without
-/// exchanging rows. *Cost*: about 3 operations a row to factor, 5 a row to solve. *Source*: the pivots of J. R. Bunch
-/// (SIAM J. Numer. Anal. 11 (1974) 521), compared with the neighbouring entries instead of the largest of all.
+/// Pivots of order 2 are taken where one of order 1 would let entries grow, so the factorisation is stable norm-wise
+/// without exchanging rows. *Cost*: about 3 operations a row to factor, 5 a row to solve. *Source*: the pivots of J.
+/// R. Bunch (SIAM J. Numer. Anal. 11 (1974) 521), compared with the neighbouring entries instead of the largest of
+/// all.
 #[derive(Clone, Debug)]
 pub struct Factored<T> {
     pivots: Vec<Pivot<T>>,
@@ -49,8 +50,8 @@ impl<T: Scalar> Factored<T> {
         aside.first().map_or(Ok(factored), |&row| Err(LinalgError::NoPivot { row }))
     }
 
-    /// Factorises a matrix less the rows and columns whose pivots cancel more than `bits` bits, which are returned; without
-    /// `bits`, only those whose pivots are exactly zero.
+    /// Factorises a matrix less the rows and columns whose pivots cancel more than `bits` bits, which are returned;
+    /// without `bits`, only those whose pivots are exactly zero.
     pub(super) fn setting_aside(
         matrix: &Tridiagonal<T>,
         bits: Option<u32>,
@@ -194,8 +195,8 @@ impl<T: Scalar> Factored<T> {
 impl<T: Scalar> Tridiagonal<T> {
     /// Counts the eigenvalues of a real matrix below, at and above zero.
     ///
-    /// *Accuracy*: exact for rationals; for floats the count of a matrix whose entries differ by a few units in the last
-    /// place, and a zero is only counted where a pivot vanishes exactly. *Source*: Sylvester's law of inertia.
+    /// *Accuracy*: exact for rationals; for floats the count of a matrix whose entries differ by a few units in the
+    /// last place, and a zero is only counted where a pivot vanishes exactly. *Source*: Sylvester's law of inertia.
     pub fn inertia(&self, effort: &Effort) -> Result<Inertia, LinalgError> {
         let (factored, aside) = Factored::setting_aside(self, None, effort)?;
         // A zero pivot is met only where the entry beside it is zero as well, or in the last row.

@@ -99,7 +99,7 @@ pub(super) fn element_exactly(
             let bra = bra.value_at_nucleus().map_err(named)?;
             let ket = ket.value_at_nucleus().map_err(named)?;
             let value = (&bra.conj() * &ket).scaled(&Rational::from((1, 4)));
-            if operator == Radial::Delta && !value.is_zero() { Err(Obstacle::Inexact) } else { Ok(value) }
+            Ok(if operator == Radial::Delta { &value * &Surd::pi_to(-1) } else { value })
         }
         _ => bra.inner(&apply_exactly(operator, l, lp, ket)?).map_err(named),
     }
@@ -182,6 +182,10 @@ impl Backend for ExactBackend {
             let Number::Exact(weight) = weight else {
                 return Err(Obstacle::Inexact);
             };
+            if weight.has_pi() {
+                // Radial functions carry square roots; pi comes with matrix elements only.
+                return Err(Obstacle::Inexact);
+            }
             sum.add_scaled(weight, open(ket)?);
         }
         Ok(Arc::new(sum))

@@ -40,9 +40,9 @@ impl RadialFunction {
     /// sqrt-weighted polynomial times e^(-kappa r).
     pub(super) fn new(kappa: &Rational, weight: &Surd, polynomial: &Laurent) -> Self {
         let mut out = Self::default();
-        for (root, c) in weight.terms() {
+        for (unit, c) in weight.terms() {
             for (part, imaginary) in [(&c.re, false), (&c.im, true)] {
-                let envelope = Envelope { kappa: kappa.clone(), root: root.clone(), imaginary };
+                let envelope = Envelope { kappa: kappa.clone(), root: unit.radicand.clone(), imaginary };
                 out.add_term(envelope, part, polynomial);
             }
         }
@@ -86,7 +86,8 @@ impl RadialFunction {
 
     /// Adds weight times another function.
     pub(super) fn add_scaled(&mut self, weight: &Surd, other: &RadialFunction) {
-        for (root, c) in weight.terms() {
+        for (unit, c) in weight.terms() {
+            let root = &unit.radicand;
             for (envelope, polynomial) in &other.terms {
                 let common = Integer::from(root.gcd_ref(&envelope.root));
                 let free = Integer::from(root / &common) * Integer::from(&envelope.root / &common);

@@ -191,8 +191,8 @@ pub(super) fn approximate(number: &Number, bits: u32) -> rug::Complex {
         Number::Approx(z) => rug::Complex::with_val(bits, z),
         Number::Exact(surd) => {
             let mut sum = rug::Complex::new(bits);
-            for (root, c) in surd.terms() {
-                let root = rug::Float::with_val(bits, root).sqrt();
+            for (unit, c) in surd.terms() {
+                let root = rug::Float::with_val(bits, &unit.radicand).sqrt();
                 sum += rug::Complex::with_val(bits, (&c.re, &c.im)) * root;
             }
             sum
