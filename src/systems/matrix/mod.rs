@@ -304,7 +304,7 @@ impl System for MatrixSystem {
     }
 
     fn selection_rule(&self, atom: &Atom) -> String {
-        format!("{} has no element here", atom.name)
+        format!("{} has only zero elements between the states reached", atom.name)
     }
 
     fn exact(&self, effort: &Effort) -> Option<Arc<dyn Backend>> {
