@@ -1,6 +1,6 @@
 //! One electron without spin in the field of a nucleus: H = p^2/(2 mu) - Z/r in the relative coordinate.
 //!
-//! Everything inside is done for charge and reduced mass one, in lengths rho = mu Z r; [`radial`] holds the factors. The exact backend
+//! Everything inside is done for charge and reduced mass one, in lengths rho = mu Z r; `radial` holds the factors. The exact backend
 //! represents functions as polynomials times exponentials, the numeric one expands them in Coulomb Sturmian functions.
 
 mod action;
