@@ -218,15 +218,39 @@ impl Walker<'_, '_> {
                 };
                 Ok(Some(a.times(&b, self.bits.unwrap_or(64))))
             }
-            _ => match self.act(factor, ket) {
+            node => match self.act(factor, ket) {
                 Ok(ket) => self.overlap(bra, &ket, place),
-                Err(failure) if failure.is_inexact() => {
-                    let bra = self.act_adjoint(factor, bra)?;
-                    self.overlap(&bra, ket, place)
-                }
+                Err(failure) if failure.is_inexact() => match (self.act_adjoint(factor, bra), node) {
+                    (Ok(bra), _) => self.overlap(&bra, ket, place),
+                    (Err(failure), OperatorNode::Resolvent(linear)) if failure.is_inexact() => {
+                        self.through(bra, factor, linear, ket)
+                    }
+                    (Err(failure), _) => Err(failure),
+                },
                 Err(failure) => Err(failure),
             },
         }
+    }
+
+    /// <bra| (a + b H)^-1 |ket> where the resolvent can act on neither side alone.
+    fn through(
+        &mut self,
+        bra: &SectorKet,
+        factor: &Factor,
+        linear: &LinearInH,
+        ket: &SectorKet,
+    ) -> Walked<Option<Number>> {
+        let place = factor.operator.place;
+        let (scale, resolvent) = self.resolvent(linear, factor)?;
+        let mut total = None;
+        for (sector, part) in ket.parts.iter() {
+            if let Some(left) = bra.parts.get(sector) {
+                let value = self.backend.through(&resolvent, *sector, left, part);
+                let value = value.map_err(|obstacle| Failure::new(place, obstacle))?;
+                total = Some(self.plus(total, value.times(&scale, self.bits.unwrap_or(64))));
+            }
+        }
+        Ok(total)
     }
 
     fn atom_element(&mut self, bra: &SectorKet, atom: &Atom, ket: &SectorKet, place: Place) -> Walked<Option<Number>> {

@@ -237,6 +237,11 @@ pub trait Backend: Send + Sync {
     /// Q (z - H)^-1 Q on a ket.
     fn resolve(&self, resolvent: &Resolvent, sector: Sector, ket: &BlockKet) -> Result<BlockKet, Obstacle>;
 
+    /// <bra| Q (z - H)^-1 Q |ket> inside a sector, where the resolvent on neither of them has a form the backend can hold.
+    fn through(&self, _: &Resolvent, _: Sector, _bra: &BlockKet, _ket: &BlockKet) -> Result<Number, Obstacle> {
+        Err(Obstacle::Inexact)
+    }
+
     /// A function of H on a ket.
     fn function(&self, function: &FunctionOfH, sector: Sector, ket: &BlockKet) -> Result<BlockKet, Obstacle>;
 

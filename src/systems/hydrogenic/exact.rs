@@ -1,7 +1,8 @@
 //! The exact backend: functions that are finite sums of powers times exponentials.
 
 use super::action::{self, NoFunction};
-use super::bound::{bound_state, level_at};
+use super::bound::{bound_state, energy, level_at};
+use super::closed_sum::{NoSum, reduced_sum};
 use super::finite_solution::{finite_solution, project_out};
 use super::function::{RadialFunction, Unintegrable};
 use super::labels::{omitted_levels, quantum_numbers, short};
@@ -133,6 +134,19 @@ pub(super) fn resolve_exactly(
     project_out(&solution, l, levels).map_err(named)
 }
 
+fn no_sum(reason: NoSum) -> Obstacle {
+    let operator = "the sum over intermediate states";
+    match reason {
+        NoSum::Unintegrable(reason) => no_integral(operator, reason),
+        NoSum::Diverges => Obstacle::Diverges {
+            operator: operator.into(),
+            why: "the operators on both of its sides are so singular at the nucleus that highly excited states do not fade out".into(),
+        },
+        NoSum::NotRational => Obstacle::Inexact,
+        NoSum::Interrupted(stop) => Obstacle::Interrupted(stop),
+    }
+}
+
 fn open(ket: &BlockKet) -> Result<&RadialFunction, Obstacle> {
     ket.downcast_ref().ok_or_else(foreign)
 }
@@ -170,6 +184,37 @@ impl Backend for ExactBackend {
         let levels = levels_left_out(resolvent, &z, l)?;
         let u = resolve_exactly(&z, &levels, l, open(ket)?, &self.effort)?;
         Ok(Arc::new(u.scaled(&Rational::from(self.scale.energy.recip_ref()))))
+    }
+
+    fn through(
+        &self,
+        resolvent: &Resolvent,
+        sector: Sector,
+        bra: &BlockKet,
+        ket: &BlockKet,
+    ) -> Result<Number, Obstacle> {
+        let l = orbital(sector)?;
+        let (bra, ket) = (open(bra)?, open(ket)?);
+        let z = match &resolvent.z {
+            Number::Exact(z) => z.as_rational().map(|z| Rational::from(z.as_ref() / &self.scale.energy)),
+            Number::Approx(_) => None,
+        };
+        let Some(z) = z else {
+            return Err(Obstacle::Inexact);
+        };
+        let levels = levels_left_out(resolvent, &z, l)?;
+        let Some(n) = level_at(&z) else {
+            return Err(Obstacle::Inexact);
+        };
+        let mut value = reduced_sum(n, l, bra, ket, &self.effort).map_err(no_sum)?;
+        // the other levels left out, term by term
+        let named = |reason| no_integral("the sum over intermediate states", reason);
+        for other in levels.into_iter().filter(|&other| other != n) {
+            let state = bound_state(other, l);
+            let product = &bra.inner(&state).map_err(named)? * &state.inner(ket).map_err(named)?;
+            value -= &product.scaled(&Rational::from(energy(n) - energy(other)).recip());
+        }
+        Ok(Number::Exact(value.scaled(&Rational::from(self.scale.energy.recip_ref()))))
     }
 
     fn function(&self, _: &FunctionOfH, _: Sector, _: &BlockKet) -> Result<BlockKet, Obstacle> {

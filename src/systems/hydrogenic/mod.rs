@@ -5,6 +5,7 @@
 
 mod action;
 mod bound;
+mod closed_sum;
 mod exact;
 mod finite_solution;
 mod function;
