@@ -101,7 +101,9 @@ impl Evaluation<'_> {
             EntryKind::Evaluate { expression, unit: None } => {
                 let term = self.resolver().scalar(expression)?;
                 let value = self.scope.evaluator(self.effort).value(&term, self.scope.wanted)?;
-                Ok(Done::Answered(self.answer(&value)))
+                let mut answer = self.answer(&value);
+                answer.notes.extend(value.couplings);
+                Ok(Done::Answered(answer))
             }
             EntryKind::Inspect { verb: InspectVerb::Formula, expression } => {
                 let text = formula::expanded(&mut self.resolver(), expression)?;

@@ -109,6 +109,39 @@ impl Walker<'_, '_> {
         Ok(())
     }
 
+    /// Notes where a ket has a part in other states of the level that a prime leaves out: an operator couples the level in first order, and
+    /// perturbation theory for one state of it holds only if its states diagonalise the operator.
+    fn note_coupling(&mut self, resolvent: &Resolvent, ket: &SectorKet, place: Place) -> Walked<()> {
+        let at = |obstacle| Failure::new(place, obstacle);
+        for omitted in &resolvent.omitted {
+            let Omitted::LevelOf(left_out) = omitted else { continue };
+            for (sector, part) in ket.parts.iter() {
+                let states = self.system.level_in(left_out, *sector, &self.evaluator.effort).map_err(at)?;
+                for state in states.iter().filter(|state| *state != left_out) {
+                    let other = match self.eigenstate(state, place) {
+                        Ok(ket) => ket.parts.get(sector).cloned(),
+                        Err(failure) if failure.is_inexact() => None,
+                        Err(failure) => return Err(failure),
+                    };
+                    let Some(other) = other else { continue };
+                    let overlap = self.backend.overlap(*sector, &other, part).map_err(at)?;
+                    let coupled = match (&overlap, self.bits) {
+                        (Number::Exact(value), _) => !value.is_zero(),
+                        (Number::Approx(value), Some(bits)) => {
+                            let size = rug::Complex::with_val(32, value).abs().into_real_imag().0;
+                            size > rug::Float::with_val(32, 1) >> (bits / 2)
+                        }
+                        (Number::Approx(_), None) => false,
+                    };
+                    if coupled {
+                        self.evaluator.note_coupling(&left_out.label, &state.label);
+                    }
+                }
+            }
+        }
+        Ok(())
+    }
+
     /// Tells whether a chain is its own adjoint because it reads the same from both ends.
     fn is_self_adjoint(&mut self, factors: &[Factor]) -> Walked<bool> {
         let keys: Vec<String> = factors.iter().map(Factor::key).collect();
@@ -331,6 +364,7 @@ impl Walker<'_, '_> {
             }
             OperatorNode::Resolvent(linear) => {
                 let (scale, resolvent) = self.resolvent(linear, factor)?;
+                self.note_coupling(&resolvent, ket, place)?;
                 self.each_sector(ket, &scale, place, |backend, sector, part| backend.resolve(&resolvent, sector, part))
             }
             OperatorNode::Function(function, linear) => {
