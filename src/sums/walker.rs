@@ -26,6 +26,9 @@ pub struct SectorKet {
 /// Kets that were computed already, by their text; one table for each backend.
 pub type Kept = HashMap<String, SectorKet>;
 
+/// Most kets kept for one backend; a ket of the largest matrix has some hundred kilobytes.
+const MOST_KEPT: usize = 400;
+
 /// A factor of a chain with the values of its variables.
 #[derive(Clone)]
 struct Factor {
@@ -330,7 +333,7 @@ impl Walker<'_, '_> {
         }
         let parts = self.act_anew(factor, ket)?;
         let result = SectorKet { key: key.as_str().into(), parts: Arc::new(parts) };
-        self.kept.insert(key, result.clone());
+        self.keep(key, &result);
         Ok(result)
     }
 
@@ -389,6 +392,14 @@ impl Walker<'_, '_> {
                 self.scaled(&image, &coefficient, place)
             }
         }
+    }
+
+    /// Keeps a ket for the rest of the evaluation; a long sum or search does not pile them up.
+    fn keep(&mut self, key: String, ket: &SectorKet) {
+        if self.kept.len() >= MOST_KEPT {
+            self.kept.clear();
+        }
+        self.kept.insert(key, ket.clone());
     }
 
     /// The adjoint of a factor on a ket, for bras.
@@ -470,7 +481,7 @@ impl Walker<'_, '_> {
             }
         };
         let result = SectorKet { key: key.as_str().into(), parts: Arc::new(parts) };
-        self.kept.insert(key, result.clone());
+        self.keep(key, &result);
         Ok(result)
     }
 
@@ -582,7 +593,7 @@ impl Walker<'_, '_> {
         }
         let parts = self.backend.state(state).map_err(|obstacle| Failure::new(place, obstacle))?;
         let result = SectorKet { key: key.as_str().into(), parts: Arc::new(parts.into_iter().collect()) };
-        self.kept.insert(key, result.clone());
+        self.keep(key, &result);
         Ok(result)
     }
 
