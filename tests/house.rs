@@ -2,6 +2,7 @@
 
 use std::fs;
 use std::path::{Path, PathBuf};
+use std::process::Command;
 
 /// The rooms of src/ and, for each, those that it may use: the ones on the floors below. Theory and systems do not see each other;
 /// session and report share a floor, and a report shows what a session holds.
@@ -188,6 +189,19 @@ fn no_text_names_a_machine() {
         }
     }
     assert!(read > 100, "the files were not found");
+}
+
+/// The session that the README shows is a real one: it replays to the records it shows.
+#[test]
+fn the_tour_of_the_readme_replays() {
+    let readme = fs::read_to_string(root().join("README.md")).expect("text");
+    let tour = readme.split("<!-- tour -->").nth(1).and_then(|rest| rest.split("```").nth(1)).expect("a tour");
+    let folder = tempfile::tempdir().expect("a folder");
+    let file = folder.path().join("tour.ketwork");
+    fs::write(&file, tour.strip_prefix("text\n").expect("a block of text")).expect("written");
+    let run = Command::new(env!("CARGO_BIN_EXE_ketwork")).arg("replay").arg(&file).output().expect("ketwork runs");
+    let told = String::from_utf8_lossy(&run.stdout);
+    assert!(run.status.success() && told.contains(": 6 agree"), "{told}{}", String::from_utf8_lossy(&run.stderr));
 }
 
 #[test]

@@ -26,14 +26,15 @@ mod vector;
 
 use crate::num::{Effort, Surd};
 use crate::systems::{
-    Atom, Backend, Coupling, Level, Manifold, Number, Obstacle, Sector, State, StateLabel, System, SystemError,
+    Atom, Backend, Block, Coupling, Level, Manifold, Number, Obstacle, Sector, State, StateLabel, System, SystemError,
 };
 use exact::ExactBackend;
 use numeric::NumericBackend;
 use radial::Scale;
 use rug::Rational;
 use std::cmp::Ordering;
-use std::sync::Arc;
+use std::collections::HashMap;
+use std::sync::{Arc, Mutex, PoisonError};
 use sturmian::Kept;
 
 /// A hydrogen-like atom.
@@ -43,7 +44,14 @@ pub struct Hydrogenic {
     mass: Option<Rational>,
     scale: Scale,
     kept: Arc<Kept>,
+    couplings: Arc<Couplings>,
 }
+
+/// Where operators lead from sectors, as far as it was asked: the same few are asked for at every level of accuracy.
+type Couplings = Mutex<HashMap<(Atom, Sector), Vec<Coupling>>>;
+
+/// Most answers kept.
+const KEPT_COUPLINGS: usize = 10_000;
 
 impl Hydrogenic {
     /// An atom with nuclear charge Z and nuclear mass in electron masses; `None` for an infinite mass.
@@ -68,7 +76,7 @@ impl Hydrogenic {
         // mu = M/(1 + M)
         let reduced_mass = mass.as_ref().map_or(Rational::from(1), |m| m / Rational::from(m + 1));
         let scale = Scale::new(&charge, &reduced_mass);
-        Ok(Hydrogenic { charge, mass, scale, kept: Arc::default() })
+        Ok(Hydrogenic { charge, mass, scale, kept: Arc::default(), couplings: Arc::default() })
     }
 
     /// The charge of the nucleus.
@@ -105,12 +113,26 @@ impl System for Hydrogenic {
         a.numbers.first() == b.numbers.first()
     }
 
+    fn level_in(&self, state: &State, sector: Sector, _: &Effort) -> Result<Vec<State>, Obstacle> {
+        let (n, ..) = labels::quantum_numbers(state).ok_or_else(exact::foreign)?;
+        let Block::Orbital { l } = sector.block else { return Ok(Vec::new()) };
+        Ok((l < n).then(|| labels::named_state(n, l, sector.twice_m / 2)).into_iter().collect())
+    }
+
     fn knows(&self, atom: &Atom) -> Result<bool, SystemError> {
         operators::knows(atom)
     }
 
     fn couple(&self, atom: &Atom, from: Sector) -> Vec<Coupling> {
-        operators::couple(atom, from, &self.charge)
+        let mut couplings = self.couplings.lock().unwrap_or_else(PoisonError::into_inner);
+        if let Some(known) = couplings.get(&(atom.clone(), from)) {
+            return known.clone();
+        }
+        let found = operators::couple(atom, from, &self.charge);
+        if couplings.len() < KEPT_COUPLINGS {
+            couplings.insert((atom.clone(), from), found.clone());
+        }
+        found
     }
 
     fn adjoint(&self, atom: &Atom) -> (i32, Atom) {
