@@ -39,7 +39,7 @@ pub struct Evaluator<'s> {
     /// Selection rules met, for the reason of an exact zero.
     rules: BTreeSet<String>,
     /// Pairs of states of one level that an operator couples in first order.
-    couplings: BTreeSet<String>,
+    couplings: BTreeMap<String, BTreeSet<String>>,
     /// Why a value cannot be had to more digits.
     pub(super) limit: Option<String>,
     pub(super) kept: HashMap<(String, String, Option<Level>), Kept>,
@@ -68,7 +68,7 @@ impl<'s> Evaluator<'s> {
             nudged_numbers: 0,
             imprecise_numbers: false,
             rules: BTreeSet::new(),
-            couplings: BTreeSet::new(),
+            couplings: BTreeMap::new(),
             limit: None,
             kept: HashMap::new(),
             never_exact: BTreeSet::new(),
@@ -89,17 +89,22 @@ impl<'s> Evaluator<'s> {
     }
 
     pub(super) fn note_coupling(&mut self, left_out: &str, other: &str) {
-        if self.couplings.len() < 4 {
-            self.couplings.insert(format!(
-                "an operator leads from the level of {left_out} to {other}, which has the same energy and is left out: a first-order \
-                 coupling inside the level, which perturbation theory of {left_out} alone does not allow for"
-            ));
-        }
+        self.couplings.entry(left_out.to_string()).or_default().insert(other.to_string());
     }
 
-    /// The first-order couplings met so far, and forgets them.
+    /// The first-order couplings met so far in words, and forgets them.
     pub(super) fn take_couplings(&mut self) -> Vec<String> {
-        std::mem::take(&mut self.couplings).into_iter().collect()
+        let couplings = std::mem::take(&mut self.couplings);
+        let told = couplings.into_iter().map(|(left_out, others)| {
+            let more = if others.len() > 4 { ", …" } else { "" };
+            let others: Vec<String> = others.into_iter().take(4).collect();
+            format!(
+                "the level of {left_out} is coupled in first order: an operator leads to {}{more} of the same energy, which the prime leaves \
+                 out; perturbation theory of one state of a level needs states that diagonalise the perturbation",
+                others.join("; ")
+            )
+        });
+        told.collect()
     }
 
     /// Why more digits are not to be had, if that came up.
