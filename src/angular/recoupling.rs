@@ -64,7 +64,7 @@ fn alternating_sum(lower: &[i32; 4], upper: &[i32; 3]) -> Rational {
         }
         // 1 - (up/down) (numer/denom)
         denom *= down;
-        numer = Integer::from(&denom - up * numer);
+        numer = &denom - up * numer;
     }
     leading * Rational::from((numer, denom))
 }
@@ -75,15 +75,14 @@ fn alternating_sum(lower: &[i32; 4], upper: &[i32; 3]) -> Rational {
 /// Errors: as for [`sixj`]; `TooLong` for angular momenta beyond some two hundred.
 /// Source: Edmonds, eq. 6.4.3.
 pub fn ninej(j: [[HalfInteger; 3]; 3]) -> Result<Surd, AngularError> {
+    let [[a, b, c], [d, e, f], [g, h, i]] = j;
     let mut closes = true;
-    for i in 0..3 {
-        closes &= triangle(j[i][0], j[i][1], j[i][2])?;
-        closes &= triangle(j[0][i], j[1][i], j[2][i])?;
+    for [x, y, z] in [[a, b, c], [d, e, f], [g, h, i], [a, d, g], [b, e, h], [c, f, i]] {
+        closes &= triangle(x, y, z)?;
     }
     if !closes {
         return Ok(Surd::zero());
     }
-    let [[a, b, c], [d, e, f], [g, h, i]] = j;
     let bounds = |x: HalfInteger, y: HalfInteger| ((x.twice() - y.twice()).abs(), x.twice() + y.twice());
     let pairs = [bounds(a, i), bounds(d, h), bounds(b, f)];
     let first = pairs.iter().map(|p| p.0).max().unwrap_or(0);

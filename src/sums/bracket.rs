@@ -131,7 +131,9 @@ impl Evaluator<'_> {
     ) -> Evaluated<Scalar> {
         let range = system.basis_range();
         let (first, largest) = range.unwrap_or((0, 0));
-        let mut level = Level { bits: bits.max(system.data_bits()) + STEP_BITS, basis: first };
+        // A function more is worth about six bits well below threshold; a first level of this size is seldom wasted.
+        let basis = first.max(usize::try_from(bits / 6).unwrap_or(first)).min(largest);
+        let mut level = Level { bits: bits.max(system.data_bits()) + STEP_BITS, basis };
         let mut previous: Option<Complex> = None;
         let mut previous_step: Option<Float> = None;
         let mut steps = 0;

@@ -47,8 +47,11 @@ fn expansions_keep_the_value() {
             written(&v),
             written(&w)
         );
-        let Outcome::Result(answer) = last_outcome(&format!("{base}formula {expression}\n")) else {
-            panic!("seed {seed}: no formula of {expression} in\n{base}")
+        let answer = match last_outcome(&format!("{base}formula {expression}\n")) {
+            Outcome::Result(answer) => answer,
+            // Too long to be written out is an answer too; evaluation does not multiply out.
+            Outcome::Failed(reports) if reports[0].diagnostic.message.contains("more than 10000 terms") => continue,
+            other => panic!("seed {seed}: {other:?} of {expression} in\n{base}"),
         };
         let formula = answer.value.unwrap_or_default();
         let record = last_record(&format!("{base}compare {expression} with {formula}\n"));

@@ -127,6 +127,9 @@ pub fn last_outcome(text: &str) -> Outcome {
 /// The number of a record line, exact or approximate; `None` for what is not one real rational or decimal.
 pub fn number(record: &str) -> Option<Rational> {
     let text = record.trim_start_matches(['=', '~', ' ']);
+    if record.starts_with("= 0 exactly") {
+        return Some(Rational::new());
+    }
     if let Ok(value) = parse_decimal(text.trim_start_matches('-')) {
         return Some(if text.starts_with('-') { -value } else { value });
     }

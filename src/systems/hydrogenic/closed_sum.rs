@@ -77,10 +77,16 @@ impl Integrals {
             }
             parts.entry((envelope.root.clone(), envelope.imaginary)).or_default().add_powers(polynomial, &kappa, l)?;
         }
+        if u.contact().has_pi() {
+            return Err(NoSum::NotRational);
+        }
         for (root, c) in u.contact().terms() {
             for (part, imaginary) in [(&c.re, false), (&c.im, true)] {
                 // the coefficient of r in the basis function is b + 1
-                parts.entry((root.radicand.clone(), imaginary)).or_default().add_polynomial(&[part.clone(), part.clone()]);
+                parts
+                    .entry((root.radicand.clone(), imaginary))
+                    .or_default()
+                    .add_polynomial(&[part.clone(), part.clone()]);
             }
         }
         let unit = |(root, imaginary): (Integer, bool)| {

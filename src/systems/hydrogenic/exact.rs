@@ -212,7 +212,7 @@ impl Backend for ExactBackend {
         for other in levels.into_iter().filter(|&other| other != n) {
             let state = bound_state(other, l);
             let product = &bra.inner(&state).map_err(named)? * &state.inner(ket).map_err(named)?;
-            value -= &product.scaled(&Rational::from(energy(n) - energy(other)).recip());
+            value -= &product.scaled(&(energy(n) - energy(other)).recip());
         }
         Ok(Number::Exact(value.scaled(&Rational::from(self.scale.energy.recip_ref()))))
     }

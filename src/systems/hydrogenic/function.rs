@@ -1,7 +1,7 @@
 //! Radial functions that are known exactly: sums of powers of r times decaying exponentials.
 //!
 //! A function u stands for the wave function u(r)/r Y_lm, so that <v|u> is the integral of conj(v) u over r. Lengths are those of the atom
-//! with charge and reduced mass one; `scale.rs` says how the real atom's differ.
+//! with charge and reduced mass one; `radial` says how the real atom's differ.
 
 use super::laurent::Laurent;
 use crate::num::Surd;

@@ -33,7 +33,8 @@ use numeric::NumericBackend;
 use radial::Scale;
 use rug::Rational;
 use std::cmp::Ordering;
-use std::sync::Arc;
+use std::collections::HashMap;
+use std::sync::{Arc, Mutex, PoisonError};
 use sturmian::Kept;
 
 /// A hydrogen-like atom.
@@ -43,7 +44,14 @@ pub struct Hydrogenic {
     mass: Option<Rational>,
     scale: Scale,
     kept: Arc<Kept>,
+    couplings: Arc<Couplings>,
 }
+
+/// Where operators lead from sectors, as far as it was asked: the same few are asked for at every level of accuracy.
+type Couplings = Mutex<HashMap<(Atom, Sector), Vec<Coupling>>>;
+
+/// Most answers kept.
+const KEPT_COUPLINGS: usize = 10_000;
 
 impl Hydrogenic {
     /// An atom with nuclear charge Z and nuclear mass in electron masses; `None` for an infinite mass.
@@ -68,7 +76,7 @@ impl Hydrogenic {
         // mu = M/(1 + M)
         let reduced_mass = mass.as_ref().map_or(Rational::from(1), |m| m / Rational::from(m + 1));
         let scale = Scale::new(&charge, &reduced_mass);
-        Ok(Hydrogenic { charge, mass, scale, kept: Arc::default() })
+        Ok(Hydrogenic { charge, mass, scale, kept: Arc::default(), couplings: Arc::default() })
     }
 
     /// The charge of the nucleus.
@@ -110,7 +118,15 @@ impl System for Hydrogenic {
     }
 
     fn couple(&self, atom: &Atom, from: Sector) -> Vec<Coupling> {
-        operators::couple(atom, from, &self.charge)
+        let mut couplings = self.couplings.lock().unwrap_or_else(PoisonError::into_inner);
+        if let Some(known) = couplings.get(&(atom.clone(), from)) {
+            return known.clone();
+        }
+        let found = operators::couple(atom, from, &self.charge);
+        if couplings.len() < KEPT_COUPLINGS {
+            couplings.insert((atom.clone(), from), found.clone());
+        }
+        found
     }
 
     fn adjoint(&self, atom: &Atom) -> (i32, Atom) {

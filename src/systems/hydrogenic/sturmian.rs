@@ -49,18 +49,19 @@ impl SturmianBlock {
         let unit = Float::with_val(self.bits, Rational::from(&self.k * 2)).pow(2 * self.l + 2).recip();
         let inverse_r = square_norms(2 * self.l + 1, self.count, self.bits);
         let (mut diagonal, mut off) = (Vec::with_capacity(self.count), Vec::with_capacity(self.count));
+        let one = zeta.whole(1);
+        let mut slope = zeta.times(&zeta.whole(2));
+        slope.add(&number(&Float::with_val(self.bits, -self.k.clone())));
         for (b, norm) in inverse_r.iter().enumerate().rev() {
             let norm = number(&Float::with_val(self.bits, norm * &unit));
-            let b = super::laurent::to_power(b);
-            let n = b + i64::from(self.l) + 1;
-            // (2 zeta n - k n + 1)/r
-            let rest = Float::with_val(self.bits, 1 - Rational::from(&self.k * n));
-            let mut entry = zeta.times(&number(&Float::with_val(self.bits, 2 * n)));
-            entry.add(&number(&rest));
+            let index = i32::try_from(b).unwrap_or(i32::MAX);
+            let twice_l = 2 * i32::try_from(self.l).unwrap_or(i32::MAX / 4);
+            // ((2 zeta - k) n + 1)/r with n = b + l + 1
+            let mut entry = slope.times(&zeta.whole(index + twice_l / 2 + 1));
+            entry.add(&one);
             diagonal.push(entry.times(&norm));
-            if b + 1 < super::laurent::to_power(self.count) {
-                let beside = number(&Float::with_val(self.bits, -(b + 2 * i64::from(self.l) + 2)));
-                off.push(zeta.times(&beside).times(&norm));
+            if b + 1 < self.count {
+                off.push(zeta.times(&zeta.whole(-(index + twice_l + 2))).times(&norm));
             }
         }
         Tridiagonal::new(diagonal, off)

@@ -17,6 +17,7 @@ mod levels;
 mod market;
 mod modular;
 mod numeric;
+mod refined;
 mod rough;
 mod states;
 mod vectors;
@@ -75,6 +76,7 @@ pub struct Inner {
     /// Numbers of distinct eigenvalues in sets of components.
     distinct: Mutex<BTreeMap<BTreeSet<usize>, usize>>,
     work: Mutex<Vec<Arc<numeric::Work>>>,
+    clusters: refined::Clusters,
     solvers: factored::Solvers,
 }
 
@@ -119,6 +121,7 @@ impl MatrixSystem {
             windows: Mutex::default(),
             distinct: Mutex::default(),
             work: Mutex::default(),
+            clusters: refined::Clusters::default(),
             solvers: factored::Solvers::default(),
         })))
     }
@@ -301,7 +304,7 @@ impl System for MatrixSystem {
     }
 
     fn selection_rule(&self, atom: &Atom) -> String {
-        format!("{} has no element here", atom.name)
+        format!("{} has only zero elements between the states reached", atom.name)
     }
 
     fn exact(&self, effort: &Effort) -> Option<Arc<dyn Backend>> {

@@ -40,7 +40,7 @@ fn multipole_polarizabilities_of_1s() {
         let numer = Integer::from(Integer::factorial(2 * k + 2)) * (k + 2);
         let alpha = Rational::from((numer, Integer::from(k * (k + 1)) << (2 * k + 1)));
         let chain = format!("C({k})_0 r^{k} Q r^{k} C({k})_0");
-        assert_eq!(mean(&chain, "1s", 0), Rational::from(alpha / -2).to_string(), "{k}");
+        assert_eq!(mean(&chain, "1s", 0), (alpha / Rational::from(-2)).to_string(), "{k}");
     }
 }
 
