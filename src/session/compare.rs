@@ -16,6 +16,7 @@ pub(super) fn comparison(a: &Value, b: &Value, digits: u32) -> Answer {
         value: None,
         digits: None,
         unit: None,
+        decimal: None,
         verdict: "different".into(),
         notes: Vec::new(),
     };
@@ -87,6 +88,7 @@ pub(super) fn expectation(a: &Value, b: &Value, written: &Expr, digits: u32) -> 
         value: None,
         digits,
         unit: None,
+        decimal: None,
         verdict: "holds".into(),
         notes: Vec::new(),
     };

@@ -16,6 +16,9 @@ const STEP_BITS: u32 = 64;
 /// Levels tried on a system of fixed size before the value is handed back with the digits it has.
 const FIXED_SIZE_LEVELS: u32 = 4;
 
+/// Most values of brackets kept during one evaluation.
+const MOST_KNOWN: usize = 10_000;
+
 /// Two successive differences with a ratio above this mean slow, algebraic convergence with the basis size.
 const SLOW_RATIO: f64 = 1.0 / 64.0;
 
@@ -52,6 +55,10 @@ impl Evaluator<'_> {
             return Ok(known.clone());
         }
         let value = self.fresh_bracket(&identity, bracket, environment, bits, term.place)?;
+        if self.known.len() >= MOST_KNOWN {
+            self.known.clear();
+            self.never_exact.clear();
+        }
         self.known.insert((identity, bits), value.clone());
         Ok(value)
     }

@@ -38,6 +38,8 @@ pub struct Evaluator<'s> {
     pub(super) imprecise_numbers: bool,
     /// Selection rules met, for the reason of an exact zero.
     rules: BTreeSet<String>,
+    /// Pairs of states of one level that an operator couples in first order.
+    couplings: BTreeSet<String>,
     /// Why a value cannot be had to more digits.
     pub(super) limit: Option<String>,
     pub(super) kept: HashMap<(String, String, Option<Level>), Kept>,
@@ -66,6 +68,7 @@ impl<'s> Evaluator<'s> {
             nudged_numbers: 0,
             imprecise_numbers: false,
             rules: BTreeSet::new(),
+            couplings: BTreeSet::new(),
             limit: None,
             kept: HashMap::new(),
             never_exact: BTreeSet::new(),
@@ -83,6 +86,20 @@ impl<'s> Evaluator<'s> {
     /// The selection rules met so far, and forgets them.
     pub fn take_rules(&mut self) -> Vec<String> {
         std::mem::take(&mut self.rules).into_iter().collect()
+    }
+
+    pub(super) fn note_coupling(&mut self, left_out: &str, other: &str) {
+        if self.couplings.len() < 4 {
+            self.couplings.insert(format!(
+                "an operator leads from the level of {left_out} to {other}, which has the same energy and is left out: a first-order \
+                 coupling inside the level, which perturbation theory of {left_out} alone does not allow for"
+            ));
+        }
+    }
+
+    /// The first-order couplings met so far, and forgets them.
+    pub(super) fn take_couplings(&mut self) -> Vec<String> {
+        std::mem::take(&mut self.couplings).into_iter().collect()
     }
 
     /// Why more digits are not to be had, if that came up.

@@ -32,6 +32,8 @@ pub struct Value {
     pub sources: Vec<(Place, Float)>,
     /// Selection rules behind an exact zero.
     pub rules: Vec<String>,
+    /// First-order couplings inside a degenerate level that were left out.
+    pub couplings: Vec<String>,
     /// Why there are fewer digits than asked, if so.
     pub limit: Option<String>,
 }
@@ -59,8 +61,10 @@ impl Evaluator<'_> {
         }
         self.limit = None;
         self.take_rules();
+        self.take_couplings();
         let scalar = self.certain_to(term, digits)?;
         let rules = self.take_rules();
+        let couplings = self.take_couplings();
         let limit = self.limit.clone();
         let mut sources = Vec::new();
         for (place, sigma) in measured_sources(term) {
@@ -74,7 +78,7 @@ impl Evaluator<'_> {
         if wanted == Wanted::Exact && (!sources.is_empty() || matches!(scalar, Scalar::Approx(_))) {
             return Err(Failure::new(term.place, Trouble::NotExact));
         }
-        Ok(Value { scalar, sources, rules, limit })
+        Ok(Value { scalar, sources, rules, couplings, limit })
     }
 
     /// Raises the working precision until `digits` digits are certain.

@@ -26,6 +26,9 @@ pub struct SectorKet {
 /// Kets that were computed already, by their text; one table for each backend.
 pub type Kept = HashMap<String, SectorKet>;
 
+/// Most kets kept for one backend; a ket of the largest matrix has some hundred kilobytes.
+const MOST_KEPT: usize = 400;
+
 /// A factor of a chain with the values of its variables.
 #[derive(Clone)]
 struct Factor {
@@ -104,6 +107,39 @@ impl Walker<'_, '_> {
                 let atom = self.atom(atom, factor)?;
                 let rule = self.system.selection_rule(&atom);
                 self.evaluator.note_rule(rule);
+            }
+        }
+        Ok(())
+    }
+
+    /// Notes where a ket has a part in other states of the level that a prime leaves out: an operator couples the level in first order, and
+    /// perturbation theory for one state of it holds only if its states diagonalise the operator.
+    fn note_coupling(&mut self, resolvent: &Resolvent, ket: &SectorKet, place: Place) -> Walked<()> {
+        let at = |obstacle| Failure::new(place, obstacle);
+        for omitted in &resolvent.omitted {
+            let Omitted::LevelOf(left_out) = omitted else { continue };
+            for (sector, part) in ket.parts.iter() {
+                let states = self.system.level_in(left_out, *sector, &self.evaluator.effort).map_err(at)?;
+                for state in states.iter().filter(|state| *state != left_out) {
+                    let other = match self.eigenstate(state, place) {
+                        Ok(ket) => ket.parts.get(sector).cloned(),
+                        Err(failure) if failure.is_inexact() => None,
+                        Err(failure) => return Err(failure),
+                    };
+                    let Some(other) = other else { continue };
+                    let overlap = self.backend.overlap(*sector, &other, part).map_err(at)?;
+                    let coupled = match (&overlap, self.bits) {
+                        (Number::Exact(value), _) => !value.is_zero(),
+                        (Number::Approx(value), Some(bits)) => {
+                            let size = rug::Complex::with_val(32, value).abs().into_real_imag().0;
+                            size > rug::Float::with_val(32, 1) >> (bits / 2)
+                        }
+                        (Number::Approx(_), None) => false,
+                    };
+                    if coupled {
+                        self.evaluator.note_coupling(&left_out.label, &state.label);
+                    }
+                }
             }
         }
         Ok(())
@@ -297,7 +333,7 @@ impl Walker<'_, '_> {
         }
         let parts = self.act_anew(factor, ket)?;
         let result = SectorKet { key: key.as_str().into(), parts: Arc::new(parts) };
-        self.kept.insert(key, result.clone());
+        self.keep(key, &result);
         Ok(result)
     }
 
@@ -331,6 +367,7 @@ impl Walker<'_, '_> {
             }
             OperatorNode::Resolvent(linear) => {
                 let (scale, resolvent) = self.resolvent(linear, factor)?;
+                self.note_coupling(&resolvent, ket, place)?;
                 self.each_sector(ket, &scale, place, |backend, sector, part| backend.resolve(&resolvent, sector, part))
             }
             OperatorNode::Function(function, linear) => {
@@ -355,6 +392,14 @@ impl Walker<'_, '_> {
                 self.scaled(&image, &coefficient, place)
             }
         }
+    }
+
+    /// Keeps a ket for the rest of the evaluation; a long sum or search does not pile them up.
+    fn keep(&mut self, key: String, ket: &SectorKet) {
+        if self.kept.len() >= MOST_KEPT {
+            self.kept.clear();
+        }
+        self.kept.insert(key, ket.clone());
     }
 
     /// The adjoint of a factor on a ket, for bras.
@@ -436,7 +481,7 @@ impl Walker<'_, '_> {
             }
         };
         let result = SectorKet { key: key.as_str().into(), parts: Arc::new(parts) };
-        self.kept.insert(key, result.clone());
+        self.keep(key, &result);
         Ok(result)
     }
 
@@ -548,7 +593,7 @@ impl Walker<'_, '_> {
         }
         let parts = self.backend.state(state).map_err(|obstacle| Failure::new(place, obstacle))?;
         let result = SectorKet { key: key.as_str().into(), parts: Arc::new(parts.into_iter().collect()) };
-        self.kept.insert(key, result.clone());
+        self.keep(key, &result);
         Ok(result)
     }
 

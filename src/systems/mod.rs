@@ -192,6 +192,9 @@ pub trait System: Send + Sync {
     /// Tells whether two states belong to the same level (their energies are equal, not only close).
     fn degenerate(&self, a: &State, b: &State) -> bool;
 
+    /// The states of a state's level that have a part in a sector, the state itself included.
+    fn level_in(&self, state: &State, sector: Sector, effort: &Effort) -> Result<Vec<State>, Obstacle>;
+
     /// Tells whether the system has this operator with this component, arguments and power.
     ///
     /// Errors: `UnknownOperator`, or `Refused` with the reason. A power other than 1 that the system does not know as an operator of its

@@ -57,11 +57,8 @@ fn chains_equal_spectral_sums() {
 
 /// E(lambda) of the lowest level by diagonalising, to `digits` digits.
 fn energy(h: &Rows, v: &Rows, lambda: &Rational, digits: u32) -> Rational {
-    let sum: Rows = h
-        .iter()
-        .zip(v)
-        .map(|(a, b)| a.iter().zip(b).map(|(x, y)| Rational::from(x + Rational::from(y * lambda))).collect())
-        .collect();
+    let sum: Rows =
+        h.iter().zip(v).map(|(a, b)| a.iter().zip(b).map(|(x, y)| x + Rational::from(y * lambda)).collect()).collect();
     let mut text = session(&sum, v, digits);
     text.push_str("E(g)\n");
     let record = last_record(&text);

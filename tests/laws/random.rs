@@ -69,7 +69,7 @@ pub fn with_spectrum(random: &mut Random, levels: &[Rational]) -> Rows {
             let t = Rational::from((random.between(-3, 3), random.between(1, 3)));
             let square = Rational::from(t.square_ref());
             let norm = Rational::from(&square + 1u32);
-            let c = Rational::from(1 - square) / &norm;
+            let c = (1 - square) / &norm;
             let s = Rational::from(&t * 2u32) / &norm;
             rotate(&mut rows, p, q, &c, &s);
         }

@@ -26,7 +26,7 @@ mod vector;
 
 use crate::num::{Effort, Surd};
 use crate::systems::{
-    Atom, Backend, Coupling, Level, Manifold, Number, Obstacle, Sector, State, StateLabel, System, SystemError,
+    Atom, Backend, Block, Coupling, Level, Manifold, Number, Obstacle, Sector, State, StateLabel, System, SystemError,
 };
 use exact::ExactBackend;
 use numeric::NumericBackend;
@@ -111,6 +111,12 @@ impl System for Hydrogenic {
 
     fn degenerate(&self, a: &State, b: &State) -> bool {
         a.numbers.first() == b.numbers.first()
+    }
+
+    fn level_in(&self, state: &State, sector: Sector, _: &Effort) -> Result<Vec<State>, Obstacle> {
+        let (n, ..) = labels::quantum_numbers(state).ok_or_else(exact::foreign)?;
+        let Block::Orbital { l } = sector.block else { return Ok(Vec::new()) };
+        Ok((l < n).then(|| labels::named_state(n, l, sector.twice_m / 2)).into_iter().collect())
     }
 
     fn knows(&self, atom: &Atom) -> Result<bool, SystemError> {

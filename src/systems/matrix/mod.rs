@@ -276,6 +276,12 @@ impl System for MatrixSystem {
         }
     }
 
+    fn level_in(&self, state: &State, _: Sector, effort: &Effort) -> Result<Vec<State>, Obstacle> {
+        let places = self.level(self.place(&state.numbers), effort)?.places();
+        let named = |place: usize| State { label: place.to_string(), numbers: vec![i64::try_from(place).unwrap_or(0)] };
+        Ok(places.map(named).collect())
+    }
+
     fn knows(&self, atom: &Atom) -> Result<bool, SystemError> {
         if !self.operators.iter().any(|(name, _)| *name == atom.name) {
             let known = self.operators.iter().map(|(name, _)| name.clone()).collect();
