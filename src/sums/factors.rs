@@ -170,6 +170,7 @@ impl Walker<'_, '_> {
             constant: self.number(&constant, place)?,
             slope: self.number(&slope, place)?,
             omitted: self.omitted(&linear.omitted, &factor.environment)?,
+            adjoint: false,
         })
     }
 

@@ -431,8 +431,7 @@ impl Walker<'_, '_> {
             }
             OperatorNode::Function(function, linear) => {
                 let mut function = self.function_of_h(*function, linear, factor)?;
-                function.constant = function.constant.conj();
-                function.slope = function.slope.conj();
+                function.adjoint = true;
                 let one = Number::Exact(crate::num::Surd::one());
                 self.each_sector(ket, &one, place, |backend, sector, part| backend.function(&function, sector, part))?
             }

@@ -116,6 +116,8 @@ pub struct FunctionOfH {
     pub constant: Number,
     pub slope: Number,
     pub omitted: Vec<Omitted>,
+    /// Whether the values are to be conjugated. On the cut of a logarithm or a root this is not the function of the conjugated argument.
+    pub adjoint: bool,
 }
 
 #[derive(Clone, Copy, PartialEq, Eq, Hash, Debug)]
