@@ -78,7 +78,7 @@ impl<'s> Evaluator<'s> {
     }
 
     pub(super) fn note_rule(&mut self, rule: String) {
-        if self.rules.len() < 8 {
+        if !rule.is_empty() && self.rules.len() < 8 {
             self.rules.insert(rule);
         }
     }

@@ -209,7 +209,8 @@ pub trait System: Send + Sync {
     /// The adjoint of an operator: a factor and the operator it is a multiple of.
     fn adjoint(&self, atom: &Atom) -> (i32, Atom);
 
-    /// Why an operator leads nowhere from a sector, in the words of the trade (`D changes l by one`), for an exact zero.
+    /// Why an operator leads nowhere from a sector, in the words of the trade (`D changes l by one`), for an exact zero;
+    /// empty where there is no rule.
     fn selection_rule(&self, atom: &Atom) -> String;
 
     /// The backend whose numbers are exact, if there is one.

@@ -127,6 +127,7 @@ pub fn last_outcome(text: &str) -> Outcome {
 /// The number of a record line, exact or approximate; `None` for what is not one real rational or decimal.
 pub fn number(record: &str) -> Option<Rational> {
     let text = record.trim_start_matches(['=', '~', ' ']);
+    let text = text.split(" exactly:").next().unwrap_or(text);
     if record.starts_with("= 0 exactly") {
         return Some(Rational::new());
     }
