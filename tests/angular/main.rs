@@ -1,0 +1,7 @@
+//! The angular engine against published tables, explicit sums in the uncoupled basis, laws of the symbols, and an independent reference.
+
+mod brute;
+mod brute_force;
+mod random;
+mod tables;
+mod words;
