@@ -8,12 +8,14 @@ pub mod factorials;
 pub mod half_integer;
 pub mod label;
 pub mod paths;
+pub mod polarizability;
 pub mod polarization;
 pub mod recoupling;
 pub mod selection;
 pub mod spherical;
 pub mod tensor;
 pub mod term;
+pub mod verdict;
 pub mod wigner;
 
 pub use half_integer::{AngularError, HalfInteger};

@@ -2,6 +2,8 @@
 
 mod brute;
 mod brute_force;
+mod parts;
 mod random;
 mod tables;
+mod verdicts;
 mod words;

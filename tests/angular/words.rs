@@ -76,3 +76,9 @@ pub fn as_written(sum: &ChainSum, rules: BlockRules) -> Decomposition {
     let setting = Setting { rules, orientation: Orientation::AsWritten };
     decompose(sum, &setting, &Effort::new()).expect("a valid sum")
 }
+
+/// Two electrons, with the S and P terms of natural parity only.
+pub fn s_and_p() -> Setting {
+    let terms = [0, 1].into_iter().flat_map(|l| [0, 2].map(|s| Term::natural(l, half(s)))).collect();
+    Setting::new(BlockRules { terms: Some(terms), ..BlockRules::of(Electrons::TWO) })
+}

@@ -16,6 +16,7 @@ mod walk;
 
 pub use blocked::{Broken, blocked};
 pub use columns::Columns;
+pub(crate) use decompose::sort_brackets;
 pub use decompose::{Contribution, Decomposition, Setting, decompose};
 pub use key::{Block, ChainKey, Endpoint, Orientation, RadialChain};
 

@@ -1,0 +1,79 @@
+//! Radial chains that are equal to their own reverse, merged into one.
+
+use crate::angular::half_integer::HalfInteger;
+use crate::angular::paths::{ChainKey, Decomposition, sort_brackets};
+use crate::angular::tensor::Sign;
+use crate::angular::term::{Level, Term};
+use crate::num::Surd;
+use std::collections::{BTreeMap, BTreeSet};
+
+/// One path of a radial chain.
+#[derive(Clone, PartialEq, Eq, Debug)]
+pub struct ChainPath {
+    /// Which product of the sum it comes from.
+    pub product: usize,
+    /// Whether a bracket was turned round to make the chain the same as the others.
+    pub reversed: bool,
+    /// By bracket, from left to right.
+    pub levels: Vec<Vec<Level>>,
+    /// By column, for the chain as it is written in the key.
+    pub factors: Vec<Surd>,
+}
+
+impl ChainPath {
+    pub(super) fn is_live(&self) -> bool {
+        self.factors.iter().any(|factor| !factor.is_zero())
+    }
+}
+
+/// All paths of one radial chain.
+pub(super) struct Class {
+    pub(super) paths: Vec<ChainPath>,
+    /// Whether reversal turns the chain into minus itself, so that it is zero.
+    pub(super) odd: bool,
+}
+
+/// Groups contributions by radial chain; a chain and its reverse are one where tau of every operator is known.
+pub(super) fn classes(decomposition: &Decomposition) -> BTreeMap<ChainKey, Class> {
+    let mut classes: BTreeMap<ChainKey, Class> = BTreeMap::new();
+    for contribution in &decomposition.contributions {
+        let mut key = contribution.key.clone();
+        let mut levels = contribution.levels.clone();
+        let (mut sign, mut reversed, mut odd) = (Sign::Plus, false, false);
+        for (chain, own) in key.brackets.iter_mut().zip(&mut levels) {
+            let Some((turned, turned_sign)) = chain.reversed(decomposition.orientation) else { continue };
+            if turned < *chain {
+                *chain = turned;
+                own.reverse();
+                sign = sign.times(turned_sign);
+                reversed = true;
+            } else if turned == *chain && turned_sign == Sign::Minus {
+                odd = true;
+            }
+        }
+        sort_brackets(&mut key, &mut levels);
+        let negative = sign == Sign::Minus;
+        let factors = contribution.factors.iter().map(|f| if negative { -f } else { f.clone() }).collect();
+        let class = classes.entry(key).or_insert_with(|| Class { paths: Vec::new(), odd });
+        class.paths.push(ChainPath { product: contribution.product, reversed, levels, factors });
+    }
+    classes
+}
+
+/// The levels that have one energy in every resolvent where the factors of a chain are added: terms with several J, and their J.
+pub(super) fn assumed_equal(key: &ChainKey, paths: &[ChainPath]) -> BTreeMap<Term, BTreeSet<HalfInteger>> {
+    let mut out: BTreeMap<Term, BTreeSet<HalfInteger>> = BTreeMap::new();
+    for (place, chain) in key.brackets.iter().enumerate() {
+        for (gap, block) in chain.blocks.iter().enumerate() {
+            if block.j.is_some() || chain.gaps[gap].is_empty() {
+                continue;
+            }
+            let momenta: BTreeSet<HalfInteger> =
+                paths.iter().filter(|path| path.is_live()).map(|path| path.levels[place][gap].j).collect();
+            if momenta.len() > 1 {
+                out.entry(block.term).or_default().extend(momenta);
+            }
+        }
+    }
+    out
+}
