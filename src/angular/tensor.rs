@@ -204,7 +204,7 @@ impl Tensor {
     /// (-1)^k sqrt(2k+1), which makes A^k.B^k of [A B]^0.
     pub fn dot_weight(k: u32) -> Surd {
         let root = root_of(i64::from(k) * 2 + 1);
-        if k % 2 == 0 { root } else { -&root }
+        if k.is_multiple_of(2) { root } else { -&root }
     }
 
     /// -i sqrt 2, which makes the vector product A x B of [A B]^1 of two vectors.

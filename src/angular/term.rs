@@ -16,7 +16,7 @@ pub enum Parity {
 impl Parity {
     /// The natural parity (-1)^L.
     pub const fn natural(l: u32) -> Self {
-        if l % 2 == 0 { Parity::Even } else { Parity::Odd }
+        if l.is_multiple_of(2) { Parity::Even } else { Parity::Odd }
     }
 
     pub const fn flipped(self) -> Self {

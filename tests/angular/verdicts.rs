@@ -191,22 +191,29 @@ fn doublet_cancels_in_linear_light() {
 /// With the J told apart a chain and its reverse are different unless tau is known; then they cancel for every splitting.
 #[test]
 fn odd_rank_between_different_levels_vanishes_by_hermiticity() {
-    let build = |tau: Option<Sign>| {
+    let build = |tau: Option<Sign>, depends_on_j: bool| {
         let mut tensor = Tensor::new("AB", 1, 1, 1).expect("ranks").with_exchange(SpinExchange::Symmetric);
         tensor.element.adjoint = tau;
         let operators = vec![dipole(&light(0)), Operator::new(tensor, Component::Spherical(0)), dipole(&light(0))];
-        let resolvent = Resolvent { depends_on_j: true, ..Resolvent::new("G") };
+        let resolvent = Resolvent { depends_on_j, ..Resolvent::new("G") };
         ChainSum::from(Bracket::with_resolvent(triplet_s(), operators, &resolvent, triplet_s()))
     };
-    let unknown = analysed(&build(None), Electrons::TWO);
+    let unknown = analysed(&build(None, true), Electrons::TWO);
     assert_eq!(unknown.whole(), Whole::ZeroOnAverage);
-    let known = analysed(&build(Some(Sign::Plus)), Electrons::TWO);
+    let known = analysed(&build(Some(Sign::Plus), true), Electrons::TWO);
     assert_eq!(known.whole(), Whole::Zero);
     assert!(
         known.chains.iter().any(|chain| matches!(chain.verdict, Verdict::VanishesByHermiticity { itself: false, .. }))
     );
+    // the same when the levels are not told apart: no energies have to be equal, and nothing is left when they are split
+    let together = analysed(&build(Some(Sign::Plus), false), Electrons::TWO);
+    let triplet_p =
+        together.chains.iter().find(|chain| chain.key.brackets[0].blocks[0].term == Term::natural(1, half(2)));
+    let triplet_p = triplet_p.expect("a chain over the P levels");
+    assert!(matches!(triplet_p.verdict, Verdict::VanishesByHermiticity { itself: false, .. }));
+    assert!(triplet_p.residuals.is_empty() && triplet_p.equal_levels.is_empty());
     // an operator of the other kind is zero between equal levels, whatever its factor
-    let odd = analysed(&build(Some(Sign::Minus)), Electrons::TWO);
+    let odd = analysed(&build(Some(Sign::Minus), true), Electrons::TWO);
     assert!(odd.chains.iter().all(|chain| {
         let blocks = &chain.key.brackets[0].blocks;
         blocks[0] != blocks[1] || !matches!(chain.verdict, Verdict::Survives { .. })

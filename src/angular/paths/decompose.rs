@@ -56,11 +56,14 @@ pub struct Decomposition {
 /// Sum of factors by what they belong to.
 type Sums = BTreeMap<(ChainKey, Vec<Vec<Level>>), Vec<Surd>>;
 
+/// Some brackets of a product: their radial chains, levels, and the product of factors by column.
+type Joined = (ChainKey, Vec<Vec<Level>>, Vec<Surd>);
+
 /// Decomposes a sum of chains over its intermediate blocks.
 ///
 /// A path whose triangles and parities close is kept even where its factor is zero.
 /// Errors: states or components that do not exist; more paths than anyone reads.
-/// Source: physics conventions of `super::super::tensor`; the product of reduced elements and 3j symbols is the Wigner-Eckart theorem applied link by link.
+/// Source: the Wigner-Eckart theorem link by link, in the conventions of [`crate::angular::tensor`].
 pub fn decompose(sum: &ChainSum, setting: &Setting, effort: &Effort) -> Result<Decomposition, PathError> {
     for state in sum.states() {
         check_state(state)?;
@@ -164,12 +167,7 @@ impl Work<'_> {
     }
 
     /// Multiplies partial products with every path of one more bracket.
-    fn join(
-        &mut self,
-        partial: Vec<(ChainKey, Vec<Vec<Level>>, Vec<Surd>)>,
-        bracket: &Bracket,
-        steps: &[Step],
-    ) -> Result<Vec<(ChainKey, Vec<Vec<Level>>, Vec<Surd>)>, PathError> {
+    fn join(&mut self, partial: Vec<Joined>, bracket: &Bracket, steps: &[Step]) -> Result<Vec<Joined>, PathError> {
         let mut walk = Walk {
             rules: &self.setting.rules,
             columns: self.columns,

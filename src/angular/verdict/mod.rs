@@ -141,12 +141,12 @@ fn analyse_paths(sum: &ChainSum, decomposition: &Decomposition, split: Option<&B
     for (key, class) in classes(decomposition) {
         let sums = column_sums(class.paths.iter(), columns.len());
         let ranks = rank_parts(&columns, &sums);
-        let verdict = verdict(sum, &columns, &class, &sums, &ranks);
-        let equal_levels = assumed_equal(&key, &class.paths);
+        let verdict = verdict(sum, &columns, &key, &class, &sums, &ranks);
+        let equal_levels = assumed_equal(&key, &class);
         let mut residuals = Vec::new();
         if class.paths.iter().any(ChainPath::is_live) && !class.odd {
             for (place, factors) in zeros(&columns, &class, &sums) {
-                residuals.extend(residual(&key, &class.paths, &factors, split).map(|r| (place, r)));
+                residuals.extend(residual(&key, &class, &factors, split).map(|r| (place, r)));
             }
         }
         let average = columns.average(&sums);
@@ -182,7 +182,14 @@ fn zeros(columns: &Columns, class: &Class, sums: &[Surd]) -> Vec<(Where, Vec<Sur
     out
 }
 
-fn verdict(sum: &ChainSum, columns: &Columns, class: &Class, sums: &[Surd], ranks: &[RankPart]) -> Verdict {
+fn verdict(
+    sum: &ChainSum,
+    columns: &Columns,
+    key: &ChainKey,
+    class: &Class,
+    sums: &[Surd],
+    ranks: &[RankPart],
+) -> Verdict {
     let all_zero = |sums: &[Surd]| sums.iter().all(Surd::is_zero);
     let live: BTreeSet<usize> = class.paths.iter().filter(|path| path.is_live()).map(|path| path.product).collect();
     if live.is_empty() {
@@ -198,6 +205,9 @@ fn verdict(sum: &ChainSum, columns: &Columns, class: &Class, sums: &[Surd], rank
         all_zero(&column_sums(chosen, columns.len()))
     };
     if all_zero(sums) {
+        if class.cancels_level_by_level(key, true) && !class.cancels_level_by_level(key, false) {
+            return Verdict::VanishesByHermiticity { itself: false, products: live.into_iter().collect() };
+        }
         let orientations = [false, true];
         if live.iter().all(|p| orientations.iter().all(|r| part(Some(*p), Some(*r)))) {
             return Verdict::CancelsExactly;

@@ -1,6 +1,6 @@
 //! What is left of a cancellation when the levels of a term are moved apart.
 
-use super::classes::ChainPath;
+use super::classes::{ChainPath, Class};
 use crate::angular::paths::ChainKey;
 use crate::angular::tensor::Sign;
 use crate::angular::term::{Level, Term};
@@ -56,7 +56,7 @@ impl Residual {
 /// The lowest order in the splittings at which a sum of paths with the given factors does not vanish.
 pub(super) fn residual(
     key: &ChainKey,
-    paths: &[ChainPath],
+    class: &Class,
     factors: &[Surd],
     split: Option<&BTreeSet<Term>>,
 ) -> Option<Residual> {
@@ -69,13 +69,19 @@ pub(super) fn residual(
         }
     }
     (1..=HIGHEST_ORDER).find_map(|order| {
-        let mut forms = Vec::new();
-        for raised in multisets(&places, order) {
-            let form = form(key, paths, factors, &raised);
-            if !form.is_zero() {
-                forms.push(Raised { raised, form });
-            }
+        let all: Vec<Raised> = multisets(&places, order)
+            .into_iter()
+            .map(|raised| Raised { form: form(key, &class.paths, factors, &raised), raised })
+            .collect();
+        // a symmetric chain is the same whether a resolvent is raised or its mirror image
+        let mut merged: BTreeMap<Vec<Place>, Form> = BTreeMap::new();
+        for Raised { raised, form } in &all {
+            merged.entry(standard(key, class, raised)).or_default().add(form);
         }
+        let stays = |raised: &Raised| {
+            !raised.form.is_zero() && !merged.get(&standard(key, class, &raised.raised)).is_none_or(Form::is_zero)
+        };
+        let forms: Vec<Raised> = all.iter().filter(|raised| stays(raised)).cloned().collect();
         (!forms.is_empty()).then_some(Residual { order, forms })
     })
 }
@@ -99,6 +105,19 @@ fn form(key: &ChainKey, paths: &[ChainPath], factors: &[Surd], raised: &[Place])
     form
 }
 
+/// Places of resolvents with those in symmetric brackets turned to the smaller of their two readings.
+fn standard(key: &ChainKey, class: &Class, raised: &[Place]) -> Vec<Place> {
+    let mut out = Vec::with_capacity(raised.len());
+    for (bracket, symmetric) in class.symmetric.iter().enumerate() {
+        let own: Vec<Place> = raised.iter().copied().filter(|place| place.bracket == bracket).collect();
+        let gaps = key.brackets[bracket].gaps.len();
+        let mut turned: Vec<Place> = own.iter().map(|place| Place { gap: gaps - 1 - place.gap, ..*place }).collect();
+        turned.sort();
+        out.extend(if *symmetric { own.min(turned) } else { own });
+    }
+    out
+}
+
 /// All ways to choose so many places, repetition allowed.
 fn multisets(places: &[Place], size: usize) -> Vec<Vec<Place>> {
     let mut out = vec![Vec::new()];
@@ -120,6 +139,13 @@ fn multisets(places: &[Place], size: usize) -> Vec<Vec<Place>> {
 impl Form {
     pub fn is_zero(&self) -> bool {
         self.monomials.is_empty()
+    }
+
+    fn add(&mut self, other: &Form) {
+        for (levels, coefficient) in &other.monomials {
+            *self.monomials.entry(levels.clone()).or_default() += coefficient;
+        }
+        self.monomials.retain(|_, coefficient| !coefficient.is_zero());
     }
 
     /// The value for given shifts; `Err` names a level whose shift is missing.
@@ -156,7 +182,7 @@ impl Form {
             numerator.gcd_mut(&Rational::from(rational * &denominator).numer().clone());
         }
         let common = Rational::from((numerator, denominator));
-        let whole = rationals.into_iter().map(|(levels, r)| (levels, Rational::from(r / &common).numer().clone()));
+        let whole = rationals.into_iter().map(|(levels, r)| (levels, (r / &common).numer().clone()));
         let whole = whole.collect();
         let factor = Surd::sqrt_of(&Rational::from(root?))?.scaled(&common);
         Some((factor, whole))
