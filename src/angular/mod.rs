@@ -3,8 +3,9 @@
 //! Phases are those of Condon and Shortley; a reduced element is defined by
 //! `<J M|T^K_Q|J' M'> = (-1)^(J-M) (J K J'; -M Q M') <J||T^K||J'>`, with no further factor. States are |(L S) J M>, L first.
 
+mod binomials;
 pub mod chain;
-pub mod factorials;
+mod factorials;
 pub mod half_integer;
 pub mod label;
 pub mod paths;
