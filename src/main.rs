@@ -1,1 +1,7 @@
-fn main() {}
+//! Arguments in, exit status out.
+
+use std::process::ExitCode;
+
+fn main() -> ExitCode {
+    ketwork::app::run(std::env::args_os())
+}

@@ -20,7 +20,7 @@ pub enum AngularError {
     #[error("an angular momentum is not negative; this one is {value}")]
     Negative { value: HalfInteger },
     #[error("the angular momentum {value} is larger than {LARGEST_J}, the most the exact symbols accept")]
-    TooLarge { value: HalfInteger },
+    TooLarge { value: Rational },
     #[error("j = {j} does not go with m = {m}: they differ by a whole number or not at all")]
     Projection { j: HalfInteger, m: HalfInteger },
     #[error("{a}, {b} and {c} never couple: their sum is not a whole number")]
@@ -54,10 +54,10 @@ impl HalfInteger {
         if *twice.denom() != 1 {
             return Err(AngularError::NotHalfInteger { value: value.clone() });
         }
-        let limit = 4 * LARGEST_J;
+        let limit = 2 * LARGEST_J;
         match twice.numer().to_i32() {
             Some(twice) if twice.abs() <= limit => Ok(HalfInteger { twice }),
-            _ => Err(AngularError::TooLarge { value: HalfInteger { twice: limit } }),
+            _ => Err(AngularError::TooLarge { value: value.clone() }),
         }
     }
 
@@ -66,7 +66,7 @@ impl HalfInteger {
         if self.twice < 0 {
             Err(AngularError::Negative { value: self })
         } else if self.twice > 2 * LARGEST_J {
-            Err(AngularError::TooLarge { value: self })
+            Err(AngularError::TooLarge { value: Rational::from((self.twice, 2)) })
         } else {
             Ok(self.twice)
         }

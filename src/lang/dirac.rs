@@ -16,7 +16,7 @@ impl<'a> Reading<'a> {
         let (rest, (bra, bra_height)) = self.deeper(after, |rest| self.state(rest, false))?;
         let bar = blanks(rest);
         let Some(inside) = bar.strip_prefix('|') else {
-            let bra = self.between(after, rest).trim().to_owned();
+            let bra = self.between(blanks(after), rest).to_owned();
             return fault(bar, after_token(bar), Fault::BraWithoutBar { bra, found: found(bar) });
         };
         let chain_start = blanks(inside);
@@ -190,8 +190,9 @@ impl<'a> Reading<'a> {
             [b'|', ..] => Fault::StrayBar,
             [b'.', next, ..] if next.is_ascii_digit() => Fault::DecimalPoint,
             [b'[', ..] => {
-                let before = self.before(place);
-                let name_before = before.trim_end().ends_with(|c: char| c.is_ascii_alphanumeric() || c == '_');
+                let before = self.before(place).trim_end();
+                let word = before.trim_end_matches(|c: char| c.is_ascii_alphanumeric() || c == '_').len();
+                let name_before = before[word..].starts_with(|c: char| c.is_ascii_alphabetic());
                 if name_before { Fault::LabelApart } else { Fault::SquareBrackets }
             }
             [b'{', ..] => Fault::CurlyBrackets,

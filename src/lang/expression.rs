@@ -95,7 +95,7 @@ impl<'a> Reading<'a> {
                 _ => return Ok((rest, product)),
             };
             let (after, right) = if operation == Operation::Juxtapose {
-                if start.starts_with(|c: char| c.is_ascii_digit()) && ends_in_number(self.before(rest)) {
+                if start.starts_with(|c: char| c.is_ascii_digit()) && ends_in_number(&product.tree) {
                     return fault(start, after_token(start), Fault::NumbersSideBySide);
                 }
                 self.power(start, setting)?
@@ -289,9 +289,12 @@ pub(super) fn begins_factor(start: &str, setting: Setting) -> bool {
     }
 }
 
-/// Says whether the text before a place ends in a number rather than in a name that ends in a digit.
-fn ends_in_number(before: &str) -> bool {
-    let word_start = before.trim_end_matches(|c: char| c.is_ascii_alphanumeric() || c == '_');
-    let word = &before[word_start.len()..];
-    word.starts_with(|c: char| c.is_ascii_digit()) && !word_start.ends_with("_+") && !word_start.ends_with("_-")
+/// Says whether the last factor of a product is a number as it stands: an exponent is none, `r^-3 1/2` is a product.
+fn ends_in_number(product: &Expr) -> bool {
+    match &product.kind {
+        ExprKind::Number(_) | ExprKind::Measured { .. } => true,
+        ExprKind::Binary { operation: Operation::Power, .. } => false,
+        ExprKind::Binary { right, .. } => ends_in_number(right),
+        _ => false,
+    }
 }

@@ -17,7 +17,7 @@ enum Open {
 
 /// Follows an entry line by line.
 #[derive(Default)]
-pub(super) struct Extent {
+pub struct Extent {
     open: Vec<Open>,
     last: Option<char>,
     ends_in_joining_word: bool,
@@ -85,12 +85,12 @@ impl Extent {
 }
 
 /// Says whether a line can never be the continuation of an entry: a record, or the first line of another declaration.
-pub(super) fn begins_anew(line: &str) -> bool {
+pub fn begins_anew(line: &str) -> bool {
     is_record(line) || word_text(line).is_ok_and(|(_, word)| vocabulary::is_entry_word(word))
 }
 
 /// Says whether a line is an indented record: `  = 9/2`, `  ~ 0.5`, `  : …`.
-pub(super) fn is_record(line: &str) -> bool {
+pub fn is_record(line: &str) -> bool {
     let inner = line.trim_start_matches([' ', '\t']);
     inner.len() < line.len() && inner.starts_with(['=', '~', ':'])
 }

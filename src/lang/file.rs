@@ -3,7 +3,7 @@
 use serde::Serialize;
 
 use super::diagnostic::Diagnostic;
-use super::extent::{Extent, begins_anew, is_record, lines, split_comment};
+use super::extent::{Extent, begins_anew, is_record, split_comment};
 use super::fault::Fault;
 use super::parser::parse_entry;
 use super::spelling::is_refused;
@@ -11,6 +11,8 @@ use super::tree::{Entry, Span};
 
 /// The first line of every session file of this version.
 pub const HEADER: &str = "ketwork session 1";
+/// The longest session file that should be read, in bytes; callers refuse longer ones before they read them.
+pub const LONGEST_FILE: usize = 64 << 20;
 /// What every header begins with, whatever the version.
 const HEADER_STEM: &str = "ketwork session";
 /// What a line of provenance begins with.
@@ -48,6 +50,13 @@ pub struct Line {
     pub line_end: String,
     /// Where the text stands in the file.
     pub span: Span,
+}
+
+impl Line {
+    /// Makes a line that is not yet in a file.
+    pub fn new(text: impl Into<String>) -> Self {
+        Line { text: text.into(), line_end: "\n".to_owned(), span: Span::default() }
+    }
 }
 
 /// An entry as it is written, with what is recorded below it.
@@ -176,54 +185,54 @@ impl Default for SessionText {
 /// *Cost*: proportional to the length of the text.
 pub fn parse_session(text: &str) -> SessionText {
     let mut reader = Reader { session: SessionText { items: Vec::new(), problems: Vec::new() }, in_head: true };
-    let all: Vec<(usize, &str)> = lines(text).collect();
-    let end_of = |index: usize| all.get(index + 1).map_or(text.len(), |(at, _)| *at);
-    let mut index = 0;
-    if let Some(&(at, line)) = all.first() {
-        index = reader.header(at, line, &text[at + line.len()..end_of(0)]);
+    let mut at = 0;
+    if let Some((line, line_end)) = line_at(text, 0) {
+        at = reader.header(line, line_end);
     } else {
         reader.session.problems.push(Fault::MissingHeader.diagnostic(Span::new(0, 0)));
     }
-    while let Some(&(at, line)) = all.get(index) {
-        let line_end = &text[at + line.len()..end_of(index)];
+    while let Some((line, line_end)) = line_at(text, at) {
         let inner = line.trim_start();
         if is_record(line) {
             reader.record(at, line, line_end);
+            at += line.len() + line_end.len();
         } else if inner.is_empty() || inner.starts_with('#') {
             reader.kept_line(at, line, line_end);
+            at += line.len() + line_end.len();
         } else {
-            let last = last_line_of_entry(&all, index);
-            let (last_at, last_line) = all[last];
-            let entry = &text[at..last_at + last_line.len()];
+            let (entry, line_end) = entry_at(text, at);
             reader.in_head = false;
-            reader.entry(at, entry, &text[at + entry.len()..end_of(last)]);
-            index = last;
+            reader.entry(at, entry, line_end);
+            at += entry.len() + line_end.len();
         }
-        index += 1;
     }
     reader.session
 }
 
-/// Finds the last line of the entry that begins at line `first`.
-fn last_line_of_entry(all: &[(usize, &str)], first: usize) -> usize {
+/// The line that begins at a place, and its line end; nothing at the end of the text.
+fn line_at(text: &str, at: usize) -> Option<(&str, &str)> {
+    let rest = text.get(at..).filter(|rest| !rest.is_empty())?;
+    let whole = &rest[..rest.find('\n').map_or(rest.len(), |end| end + 1)];
+    let line = whole.trim_end_matches(['\n', '\r']);
+    Some((line, &whole[line.len()..]))
+}
+
+/// The lines of the entry that begins at a place, and the line end behind them.
+fn entry_at(text: &str, first: usize) -> (&str, &str) {
     let mut extent = Extent::default();
-    extent.take(all[first].1);
-    let mut last = first;
-    let mut next = first + 1;
-    while extent.goes_on() {
-        match all.get(next) {
-            Some((_, line)) if !begins_anew(line) => {
-                extent.take(line);
-                // Blank lines and comments belong to the entry only when more of it follows.
-                if !split_comment(line).0.trim().is_empty() {
-                    last = next;
-                }
-                next += 1;
-            }
-            _ => break,
+    let (mut at, mut entry, mut behind) = (first, "", "");
+    while let Some((line, line_end)) = line_at(text, at) {
+        if at > first && (!extent.goes_on() || begins_anew(line)) {
+            break;
         }
+        extent.take(line);
+        // Blank lines and comments belong to the entry only when more of it follows.
+        if at == first || !split_comment(line).0.trim().is_empty() {
+            (entry, behind) = (&text[first..at + line.len()], line_end);
+        }
+        at += line.len() + line_end.len();
     }
-    last
+    (entry, behind)
 }
 
 struct Reader {
@@ -233,16 +242,16 @@ struct Reader {
 }
 
 impl Reader {
-    /// Reads the first line; gives the index of the line to go on with.
-    fn header(&mut self, at: usize, line: &str, line_end: &str) -> usize {
+    /// Reads the first line; gives the place to go on from.
+    fn header(&mut self, line: &str, line_end: &str) -> usize {
         let stated = line.trim_start_matches('\u{feff}').trim_end();
-        let span = Span::new(at, at + line.trim_end().len());
+        let span = Span::new(0, line.trim_end().len());
         if let Some(version) = stated.strip_prefix(HEADER_STEM) {
             if stated != HEADER {
                 self.problem(span, Fault::WrongVersion(version.trim().to_owned()));
             }
-            self.session.items.push(Item::Header(kept(at, line, line_end)));
-            return 1;
+            self.session.items.push(Item::Header(kept(0, line, line_end)));
+            return line.len() + line_end.len();
         }
         self.problem(span, Fault::MissingHeader);
         0

@@ -15,7 +15,7 @@ use super::trouble::{Parsed, Trouble, Wanted, WantedSet, fault};
 use super::vocabulary;
 
 /// The longest entry that is read, in bytes.
-pub const LONGEST_ENTRY: usize = 1 << 20;
+pub const LONGEST_ENTRY: usize = 256 << 10;
 /// The most digits of one number.
 pub const LONGEST_NUMBER: usize = 100_000;
 /// The largest power of ten in a number's `e` part.

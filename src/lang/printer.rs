@@ -137,7 +137,7 @@ fn write_binary(
     };
     write!(out, "{}{sign}", piece(left, left_binding, setting))?;
     // Two numbers side by side would be refused: `2 (3)`.
-    if operation == Operation::Juxtapose && begins_with_number(right) {
+    if operation == Operation::Juxtapose && begins_with_number(right) && ends_with_number(left) {
         return write!(out, "({})", whole(right));
     }
     write!(out, "{}", piece(right, right_binding, setting))
@@ -172,6 +172,15 @@ fn begins_with_number(expr: &Expr) -> bool {
         ExprKind::Binary { operation: Operation::Power, left: inner, .. } | ExprKind::Primed(inner) => {
             begins_with_number(inner)
         }
+        _ => false,
+    }
+}
+
+/// Says whether the last thing written of an expression may be a number.
+fn ends_with_number(expr: &Expr) -> bool {
+    match &expr.kind {
+        ExprKind::Number(_) | ExprKind::Measured { .. } => true,
+        ExprKind::Binary { right: last, .. } | ExprKind::Negate(last) => ends_with_number(last),
         _ => false,
     }
 }

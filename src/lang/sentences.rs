@@ -47,11 +47,12 @@ fn either(wanted: WantedSet) -> String {
     }
 }
 
-/// Cuts a quoted piece of the user's text to what fits into a sentence.
+/// Cuts a quoted piece of the user's text to what fits into a sentence, on one line.
 fn brief(text: &str) -> String {
     const LONGEST: usize = 32;
+    let text = text.split_whitespace().collect::<Vec<_>>().join(" ");
     if text.chars().count() <= LONGEST {
-        return text.to_owned();
+        return text;
     }
     text.chars().take(LONGEST).chain("...".chars()).collect()
 }
@@ -170,10 +171,13 @@ impl Fault {
                 .help("to assert an equality write `expect A = B`; to see two values side by side, `compare A with B`"),
             Fault::StrayEquals => prose("`=` stands where nothing is being defined", "here")
                 .help("bind a name with `define x = …`, or assert an equality with `expect A = B`"),
-            Fault::Wanted { wanted, found } => prose(
-                format!("{} where {} is wanted", found.phrase(), either(*wanted)),
-                format!("{} here", either(*wanted)),
-            ),
+            Fault::Wanted { wanted, found } => {
+                let answer = prose(
+                    format!("{} where {} is wanted", found.phrase(), either(*wanted)),
+                    format!("{} here", either(*wanted)),
+                );
+                if wanted.contains(Wanted::Dots) { answer.help("a range is written `w in a .. b`") } else { answer }
+            }
             _ => prose("this cannot be read", "here"),
         }
     }

@@ -1,7 +1,6 @@
 //! Scaling of a matrix by powers of two, so that the largest entry of every row and column is about 1.
 
-use nalgebra::DMatrix;
-use rug::Float;
+use super::source::Source;
 
 /// Rounds of scaling; each halves the exponents that are left.
 const ROUNDS: usize = 24;
@@ -17,8 +16,8 @@ impl Equilibration {
     /// Balances a symmetric matrix, rows and columns alike; `None` if a row is zero.
     ///
     /// *Source*: the simultaneous row and column scaling of D. Ruiz (2001) in the maximum norm, on exponents only.
-    pub fn symmetric(a: &DMatrix<Float>) -> Option<Self> {
-        let order = a.nrows();
+    pub fn symmetric(a: &Source) -> Option<Self> {
+        let order = a.order();
         let exponents = exponents(a);
         let mut scale = vec![0i64; order];
         for _ in 0..ROUNDS {
@@ -41,8 +40,8 @@ impl Equilibration {
     }
 
     /// Balances a general matrix: columns, then rows, a few times over; `None` if a row or column is zero.
-    pub fn general(a: &DMatrix<Float>) -> Option<Self> {
-        let order = a.nrows();
+    pub fn general(a: &Source) -> Option<Self> {
+        let order = a.order();
         let exponents = exponents(a);
         let (mut rows, mut columns) = (vec![0i64; order], vec![0i64; order]);
         for _ in 0..3 {
@@ -72,18 +71,22 @@ impl Equilibration {
 }
 
 /// Returns the exponents of the entries by columns, `None` for zeros.
-fn exponents(a: &DMatrix<Float>) -> Vec<Option<i64>> {
-    a.iter().map(|x| x.get_exp().map(i64::from)).collect()
+fn exponents(a: &Source) -> Vec<Option<i64>> {
+    let order = a.order();
+    (0..order * order).map(|k| a.entry(k % order, k / order).get_exp().map(i64::from)).collect()
 }
 
 #[cfg(test)]
 mod tests {
+    use nalgebra::DMatrix;
+    use rug::Float;
+
     use super::*;
 
     #[test]
     fn graded_matrix_becomes_flat() {
         let a = DMatrix::from_fn(12, 12, |i, j| Float::with_val(64, 1) >> (40 * (i + j)) as u32);
-        let scaled = Equilibration::symmetric(&a).expect("no zero row");
+        let scaled = Equilibration::symmetric(&Source::Whole(a.clone())).expect("no zero row");
         for i in 0..12 {
             let largest = (0..12).map(|j| i64::from(a[(i, j)].get_exp().unwrap()) + scaled.rows[i] + scaled.columns[j]);
             assert!((-2..=1).contains(&largest.max().unwrap()));
@@ -97,6 +100,7 @@ mod tests {
             a[(1, k)] = Float::new(64);
             a[(k, 1)] = Float::new(64);
         }
+        let a = Source::Whole(a);
         assert!(Equilibration::symmetric(&a).is_none());
         assert!(Equilibration::general(&a).is_none());
     }

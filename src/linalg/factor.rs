@@ -1,28 +1,28 @@
 //! What a factorisation of a balanced matrix must offer, and the matrix it is made from.
 
-use nalgebra::DMatrix;
 use rug::Float;
 
 use super::equilibrate::Equilibration;
 use super::error::LinalgError;
+use super::source::Source;
 use super::vectors::shift;
 use crate::num::Effort;
 
 /// A matrix with its powers of two for rows and columns; the balanced entries are formed on the fly.
 #[derive(Clone, Copy)]
 pub(super) struct Balanced<'a> {
-    pub matrix: &'a DMatrix<Float>,
+    pub source: &'a Source,
     pub scale: &'a Equilibration,
 }
 
 impl Balanced<'_> {
     pub fn order(&self) -> usize {
-        self.matrix.nrows()
+        self.source.order()
     }
 
     /// Returns an entry as it stands and the exponent of the power of two that balances it.
     pub fn entry(&self, row: usize, column: usize) -> (&Float, i64) {
-        (&self.matrix[(row, column)], self.scale.rows[row] + self.scale.columns[column])
+        (self.source.entry(row, column), self.scale.rows[row] + self.scale.columns[column])
     }
 
     /// Returns a balanced entry rounded to a precision.

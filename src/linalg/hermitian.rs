@@ -1,5 +1,7 @@
 //! Hermitian matrices of multi-precision numbers.
 
+use std::sync::Arc;
+
 use nalgebra::DMatrix;
 use rug::{Complex, Float};
 
@@ -9,7 +11,7 @@ use super::vectors::exponent;
 /// A Hermitian matrix, real symmetric when it has no imaginary part.
 #[derive(Clone, Debug)]
 pub struct HermitianMatrix {
-    re: DMatrix<Float>,
+    re: Arc<DMatrix<Float>>,
     im: Option<DMatrix<Float>>,
 }
 
@@ -41,7 +43,7 @@ impl HermitianMatrix {
             }
         }
         let im = im.filter(|im| im.iter().any(|x| !x.is_zero()));
-        Ok(Self { re, im })
+        Ok(Self { re: Arc::new(re), im })
     }
 
     /// Returns the number of rows.
@@ -59,6 +61,11 @@ impl HermitianMatrix {
         &self.re
     }
 
+    /// Returns the real part to be shared.
+    pub(super) fn shared_re(&self) -> Arc<DMatrix<Float>> {
+        Arc::clone(&self.re)
+    }
+
     /// Returns the imaginary part, `None` if it is zero.
     pub fn im(&self) -> Option<&DMatrix<Float>> {
         self.im.as_ref()
@@ -66,13 +73,14 @@ impl HermitianMatrix {
 
     /// Returns the largest precision among the entries, in bits.
     pub fn precision(&self) -> u32 {
-        let parts = std::iter::once(&self.re).chain(&self.im);
+        let parts = std::iter::once(self.re()).chain(&self.im);
         parts.flat_map(|part| part.iter()).map(Float::prec).max().unwrap_or(rug::float::prec_min())
     }
 
-    /// Returns e with every real and imaginary part of an entry below 2^e, close to the largest; `None` for the zero matrix.
+    /// Returns e with every real and imaginary part of an entry below 2^e, close to the largest; `None` for the zero
+    /// matrix.
     pub fn exponent(&self) -> Option<i64> {
-        exponent(std::iter::once(&self.re).chain(&self.im).flat_map(|part| part.iter()))
+        exponent(std::iter::once(self.re()).chain(&self.im).flat_map(|part| part.iter()))
     }
 
     /// Returns `H x` at the given precision.

@@ -20,6 +20,7 @@ mod plain;
 mod residual;
 pub mod shifted;
 pub mod solve;
+mod source;
 pub mod threads;
 pub mod tridiagonal;
 mod vectors;

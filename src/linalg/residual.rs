@@ -28,7 +28,7 @@ pub(super) fn residual(
             effort.check()?;
             let mut sum = Float::new(precision);
             for (j, x) in unscaled.iter().enumerate() {
-                sum -= &a.matrix[(i, j)] * x;
+                sum -= a.source.entry(i, j) * x;
             }
             shift(&mut sum, a.scale.rows[i]);
             sum += float_at(&b[i], precision.max(b[i].prec()));

@@ -7,6 +7,7 @@ use rug::{Complex, Float};
 use super::error::LinalgError;
 use super::hermitian::HermitianMatrix;
 use super::solve::{Solved, Solver};
+use super::source::Source;
 use super::vectors::{add_multiple, at_precision, inner};
 use crate::num::Effort;
 
@@ -35,12 +36,14 @@ enum Embedding {
 /// With vectors P to leave out it solves `Q (z - H) Q x = Q b` with x in the range of Q = 1 - P P^+, the reduced
 /// resolvent where P spans the whole eigenspace of z.
 ///
-/// *Shapes*: vectors of the order of H. *Accuracy*: the bits asked for, norm-wise, of the system as given; P enters with its own
-/// errors, to first order in the range of Q and to second order in the compressed operator. *Cost*: that of a real solver of the
-/// order n of H if everything is real, else of order 2n.
+/// *Shapes*: vectors of the order of H. *Accuracy*: the bits asked for, norm-wise, of the system as given; P enters
+/// with its own errors, to first order in the range of Q and to second order in the compressed operator. *Cost*: that
+/// of a real solver of the order n of H if everything is real, else of order 2n.
 pub struct ShiftedSolver {
     solver: Solver,
     embedding: Embedding,
+    /// The matrix factored is H - z instead of z - H.
+    turned: bool,
     order: usize,
     without: Vec<Vec<Complex>>,
     precision: u32,
@@ -49,8 +52,8 @@ pub struct ShiftedSolver {
 impl ShiftedSolver {
     /// Factors `z - H`, in the complement of the orthonormal vectors `without`, for solutions of `bits` bits.
     ///
-    /// *Shapes*: `z` is the real part and, for a complex energy, the imaginary part. *Errors*: [`LinalgError::Singular`] when z
-    /// is an eigenvalue (of the compressed operator) to the precision of the entries.
+    /// *Shapes*: `z` is the real part and, for a complex energy, the imaginary part. *Errors*:
+    /// [`LinalgError::Singular`] when z is an eigenvalue (of the compressed operator) to the precision of the entries.
     pub fn new(
         h: &HermitianMatrix,
         z: (&Float, Option<&Float>),
@@ -76,12 +79,18 @@ impl ShiftedSolver {
             (true, Some(_)) => Embedding::Flipped,
             (false, Some(_)) => Embedding::General,
         };
-        let (x, y) = parts(h, z.0, z_imag, without, real, precision);
-        let matrix = embed(embedding, x, y);
+        let source = if embedding == Embedding::Real && without.is_empty() {
+            let entry = |i: usize| Float::with_val(precision, &h.re()[(i, i)] - z.0);
+            Source::Shifted { matrix: h.shared_re(), diagonal: (0..order).map(entry).collect() }
+        } else {
+            let (x, y) = parts(h, z.0, z_imag, without, real, precision);
+            Source::Whole(embed(embedding, x, y))
+        };
+        let turned = matches!(source, Source::Shifted { .. });
         // Forming z - H with more bits tells no more of H than its own bits do.
         let (symmetric, known) = (embedding != Embedding::General, h.precision());
-        let solver = Solver::new(matrix, symmetric, Some(known), bits, effort)?;
-        Ok(Self { solver, embedding, order, without: without.to_vec(), precision })
+        let solver = Solver::new(source, symmetric, known, bits, effort)?;
+        Ok(Self { solver, embedding, turned, order, without: without.to_vec(), precision })
     }
 
     /// Solves for one right-hand side.
@@ -93,6 +102,9 @@ impl ShiftedSolver {
         }
         let mut b = at_precision(b, self.precision.max(b.iter().map(|c| c.prec().0).max().unwrap_or(0)));
         self.project(&mut b);
+        if self.turned {
+            b.iter_mut().for_each(NegAssign::neg_assign);
+        }
         let re = b.iter().map(|c| c.real().clone());
         let im = b.iter().map(|c| c.imag().clone());
         let (re, im, holds) = match self.embedding {
@@ -122,7 +134,8 @@ impl ShiftedSolver {
         Ok(SolvedKet { ket, holds })
     }
 
-    /// Returns an estimate of the binary logarithm of the condition number: the bits that rounding in H, z or b can cost.
+    /// Returns an estimate of the binary logarithm of the condition number: the bits that rounding in H, z or b can
+    /// cost.
     pub fn condition_bits(&self) -> u32 {
         self.solver.condition_bits()
     }
@@ -138,7 +151,8 @@ impl ShiftedSolver {
 }
 
 /// Returns the real and imaginary part of `z - H + s P P^+`, s of the size of `z - H` and of the sign most of its
-/// eigenvalues have, so that the matrix of a lowest level stays definite; vectors that are real to `real` have no imaginary part.
+/// eigenvalues have, so that the matrix of a lowest level stays definite; vectors that are real to `real` have no
+/// imaginary part.
 fn parts(
     h: &HermitianMatrix,
     x: &Float,

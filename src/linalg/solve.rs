@@ -8,8 +8,9 @@ use rug::Float;
 use super::equilibrate::Equilibration;
 use super::error::LinalgError;
 use super::factor::{Balanced, Factorisation, Failure};
-use super::kernel;
+use super::kernel::{self, Entries};
 use super::residual::residual;
+use super::source::Source;
 use super::vectors::{exponent, shift};
 use crate::num::Effort;
 
@@ -18,6 +19,15 @@ const LEAST_CONTRACTION: i64 = 10;
 
 /// Bits kept of the solution beyond those wanted.
 const GUARD: u32 = 64;
+
+/// Bits beyond those wanted that entries are taken to have at least.
+const KNOWN_GUARD: u32 = 32;
+
+/// Bits by which the rounding of residuals stays below the wanted bits of a solution.
+const RESIDUAL_GUARD: u32 = 24;
+
+/// Bits a condition number may cost before the matrix is read in again for longer residuals.
+const USUAL_CONDITION: u32 = 60;
 
 /// Steps of refinement before a factorisation is given up.
 const STEPS: usize = 40;
@@ -35,19 +45,22 @@ pub struct Solved {
 /// A dense real matrix, factored and ready for any number of right-hand sides.
 ///
 /// The entries are taken as exact: the solution is that of the system as given. An entry that is itself rounded at
-/// precision p moves the solution by up to `2^(condition_bits - p)` relative to its norm, so give entries at the wanted bits
-/// plus [`Solver::condition_bits`] plus some guard.
+/// precision p moves the solution by up to `2^(condition_bits - p)` relative to its norm, so give entries at the
+/// wanted bits plus [`Solver::condition_bits`] plus some guard. A matrix whose condition number comes near 2^p is
+/// refused as singular.
 ///
 /// *Range*: any exponents of rug; strongly graded matrices are balanced by powers of two first. *Accuracy*: norm-wise,
 /// relative to the largest component. *Cost*: order^3/6 multiply-adds for a symmetric matrix (order^3/3 if pivots are
 /// needed, and for a general one), a few order^2 for each right-hand side.
 pub struct Solver {
-    matrix: DMatrix<Float>,
+    source: Source,
     scale: Equilibration,
     symmetric: bool,
     bits: u32,
     known: u32,
     condition_bits: u32,
+    /// The matrix in fixed point, long enough for residuals; not there for very long numbers.
+    entries: Option<Entries>,
     /// The factorisations made so far, of rising precision; a solve begins with the first whatever was made before, so
     /// that an answer does not depend on what was asked earlier.
     ladder: Mutex<Vec<Arc<Rung>>>,
@@ -61,47 +74,61 @@ struct Rung {
 }
 
 impl Solver {
-    /// Factors a symmetric matrix, definite or not, for solutions of `bits` bits; only its lower triangle is read for
-    /// the factors, and the whole of it for residuals.
+    /// Factors a symmetric matrix, definite or not, for solutions of `bits` bits; it is for the caller to see that it
+    /// is symmetric.
     ///
     /// *Errors*: not square, not finite, or singular to the precision of the entries.
     pub fn symmetric(matrix: DMatrix<Float>, bits: u32, effort: &Effort) -> Result<Self, LinalgError> {
-        Self::new(matrix, true, None, bits, effort)
+        Self::whole(matrix, true, bits, effort)
     }
 
     /// Factors a general square matrix with partial pivoting for solutions of `bits` bits.
     ///
     /// *Errors*: as for [`Solver::symmetric`].
     pub fn general(matrix: DMatrix<Float>, bits: u32, effort: &Effort) -> Result<Self, LinalgError> {
-        Self::new(matrix, false, None, bits, effort)
+        Self::whole(matrix, false, bits, effort)
     }
 
-    /// Factors a matrix whose entries are worth `known` bits, or all they have.
-    pub(super) fn new(
-        matrix: DMatrix<Float>,
-        symmetric: bool,
-        known: Option<u32>,
-        bits: u32,
-        effort: &Effort,
-    ) -> Result<Self, LinalgError> {
+    fn whole(matrix: DMatrix<Float>, symmetric: bool, bits: u32, effort: &Effort) -> Result<Self, LinalgError> {
         if matrix.nrows() != matrix.ncols() {
             return Err(LinalgError::NotSquare { rows: matrix.nrows(), columns: matrix.ncols() });
         }
-        if matrix.iter().any(|x| !x.is_finite()) {
+        let known = matrix.iter().map(Float::prec).max().unwrap_or(0);
+        Self::new(Source::Whole(matrix), symmetric, known, bits, effort)
+    }
+
+    /// Factors a matrix whose entries are worth `known` bits; fewer than wanted means that they are exact.
+    pub(super) fn new(
+        source: Source,
+        symmetric: bool,
+        known: u32,
+        bits: u32,
+        effort: &Effort,
+    ) -> Result<Self, LinalgError> {
+        let known = known.max(bits.saturating_add(KNOWN_GUARD));
+        if !source.is_finite() {
             return Err(LinalgError::NotFinite);
         }
-        let known = known.or_else(|| matrix.iter().map(Float::prec).max()).unwrap_or(bits);
-        let scale = if symmetric { Equilibration::symmetric(&matrix) } else { Equilibration::general(&matrix) };
+        let scale = if symmetric { Equilibration::symmetric(&source) } else { Equilibration::general(&source) };
         let scale = scale.ok_or(LinalgError::Singular { known })?;
-        let mut solver =
-            Self { matrix, scale, symmetric, bits, known, condition_bits: 0, ladder: Mutex::new(Vec::new()) };
+        let mut solver = Self {
+            source,
+            scale,
+            symmetric,
+            bits,
+            known,
+            condition_bits: 0,
+            entries: None,
+            ladder: Mutex::new(Vec::new()),
+        };
+        solver.read_entries(USUAL_CONDITION, effort)?;
         solver.probe(effort)?;
         Ok(solver)
     }
 
     /// Returns the order of the matrix.
     pub fn order(&self) -> usize {
-        self.matrix.nrows()
+        self.source.order()
     }
 
     /// Returns the bits that solutions are made for.
@@ -154,7 +181,7 @@ impl Solver {
     }
 
     fn balanced(&self) -> Balanced<'_> {
-        Balanced { matrix: &self.matrix, scale: &self.scale }
+        Balanced { source: &self.source, scale: &self.scale }
     }
 
     /// Returns the bits a balanced solution is kept with.
@@ -162,9 +189,31 @@ impl Solver {
         self.bits.saturating_add(self.scale.column_spread()).saturating_add(GUARD)
     }
 
+    /// Reads the matrix in fixed point, with bits for residuals at a condition number of so many bits.
+    fn read_entries(&mut self, condition_bits: u32, effort: &Effort) -> Result<(), LinalgError> {
+        let needed = self.residual_bits(condition_bits);
+        self.entries = match kernel::limbs_for(needed, self.order()) {
+            Some(limbs) if self.entries.as_ref().is_none_or(|entries| entries.limbs() < limbs) => {
+                Entries::new(self.balanced(), self.symmetric, limbs, effort)?
+            }
+            Some(_) => self.entries.take(),
+            None => None,
+        };
+        Ok(())
+    }
+
     /// Returns the bits a residual needs so that its own rounding stays below the wanted bits.
-    fn residual_precision(&self, rung: &Rung) -> u32 {
-        self.solution_precision().saturating_add(rung.precision)
+    fn residual_bits(&self, condition_bits: u32) -> u32 {
+        let kept = self.bits.saturating_add(self.scale.column_spread()).saturating_add(RESIDUAL_GUARD);
+        kept.saturating_add(condition_bits)
+    }
+
+    /// Returns the residual of a balanced solution: in fixed point where the entries are long enough.
+    fn residual(&self, x: &[Float], rhs: &[Float], bits: u32, effort: &Effort) -> Result<Vec<Float>, LinalgError> {
+        match &self.entries {
+            Some(entries) if entries.accurate_bits() >= bits => Ok(entries.residual(x, rhs, effort)?),
+            _ => residual(self.balanced(), x, rhs, bits, effort),
+        }
     }
 
     /// Finds the first factorisation that makes corrections shrink, trying it on a fixed vector of irregular signs.
@@ -179,18 +228,21 @@ impl Solver {
         for level in 0.. {
             let rung = self.rung(level, effort)?;
             let x = rung.factors.solve(&signs, effort)?;
-            let r = residual(self.balanced(), &x, &signs, self.residual_precision(&rung), effort)?;
+            let r = self.residual(&x, &signs, rung.precision + GUARD, effort)?;
             let correction = rung.factors.solve(&r, effort)?;
             let contraction = match (exponent(&x), exponent(&correction)) {
                 (Some(x), Some(correction)) => x - correction,
                 _ => i64::from(rung.precision),
             };
             let lost = (i64::from(rung.precision) - contraction).max(0);
-            if contraction >= LEAST_CONTRACTION {
-                if lost + 16 > i64::from(self.known) {
-                    return Err(LinalgError::Singular { known: self.known });
-                }
+            // Without pivots the growth of the elimination may be to blame.
+            let singular = lost + 16 > i64::from(self.known);
+            if singular && rung.pivoted {
+                return Err(LinalgError::Singular { known: self.known });
+            }
+            if contraction >= LEAST_CONTRACTION && !singular {
                 self.condition_bits = u32::try_from(lost).unwrap_or(u32::MAX);
+                self.read_entries(self.condition_bits, effort)?;
                 self.ladder.get_mut().unwrap_or_else(PoisonError::into_inner).drain(..level);
                 return Ok(());
             }
@@ -203,7 +255,8 @@ impl Solver {
         let mut ladder = self.ladder.lock().unwrap_or_else(PoisonError::into_inner);
         while ladder.len() <= level {
             let (mut precision, mut pivoted) = match ladder.last() {
-                None => (self.bits.max(64), !self.symmetric),
+                // Two corrections double the bits that hold twice, so the factors need not have all that are wanted.
+                None => (self.bits - self.bits / 4, !self.symmetric),
                 Some(last) if !last.pivoted => (last.precision, true),
                 Some(last) => (last.precision + last.precision.div_ceil(2), true),
             };
@@ -212,7 +265,7 @@ impl Solver {
                 if precision / 2 > self.known.max(self.bits) + 64 {
                     return Err(LinalgError::Singular { known: self.known });
                 }
-                match kernel::factorise(self.balanced(), precision, pivoted, effort) {
+                match kernel::factorise(self.balanced(), self.entries.as_ref(), precision, pivoted, effort) {
                     Ok((factors, precision)) => break Rung { factors, precision, pivoted },
                     Err(Failure::Growth) if !pivoted => pivoted = true,
                     Err(Failure::Growth | Failure::NoPivot) => precision += precision.div_ceil(2),
@@ -226,13 +279,13 @@ impl Solver {
 
     /// Corrects a balanced solution until a correction is below the wanted bits or no longer shrinks.
     fn refine(&self, rung: &Rung, rhs: &[Float], x: &mut [Float], effort: &Effort) -> Result<Refinement, LinalgError> {
-        let precision = self.residual_precision(rung);
+        let precision = self.residual_bits(self.condition_bits);
         let wanted = i64::from(self.bits) + 1;
         let mut before = i64::MIN;
         for _ in 0..STEPS {
             let r = match exponent(x.iter()) {
                 None => rhs.to_vec(),
-                Some(_) => residual(self.balanced(), x, rhs, precision, effort)?,
+                Some(_) => self.residual(x, rhs, precision, effort)?,
             };
             let correction = rung.factors.solve(&r, effort)?;
             let fresh = exponent(x.iter()).is_none();
@@ -247,7 +300,7 @@ impl Solver {
                 (Some(size), Some(moved)) => size - moved,
             };
             if shrunk >= wanted {
-                let holds = (shrunk - 1).min(i64::from(self.bits + GUARD));
+                let holds = (shrunk - 1).min(i64::from(self.bits + RESIDUAL_GUARD / 2));
                 return Ok(Refinement::Settled(holds as i32));
             }
             if shrunk < before.saturating_add(LEAST_CONTRACTION / 2) {

@@ -2,7 +2,8 @@
 
 use rug::{Assign, Complex, Float};
 
-/// Returns an exponent e with every component below 2^e in absolute value, close to the largest; `None` if all are zero.
+/// Returns an exponent e with every component below 2^e in absolute value, close to the largest; `None` if all are
+/// zero.
 pub(super) fn exponent<'a>(components: impl IntoIterator<Item = &'a Float>) -> Option<i64> {
     components.into_iter().filter_map(Float::get_exp).map(i64::from).max()
 }

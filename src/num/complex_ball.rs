@@ -2,8 +2,8 @@
 
 use super::ball::{Ball, RADIUS_BITS, down, up};
 use super::error::{NumberError, Question};
-use super::surd::Surd;
-use rug::{Complex, Float, Integer, Rational};
+use super::surd::{Surd, Unit};
+use rug::{Complex, Float, Rational};
 use std::cmp::Ordering;
 
 /// Working precision at which the evaluation of an exact number is given up.
@@ -53,9 +53,9 @@ impl ComplexBall {
     /// Errors: `TooLarge` beyond the range of exponents; `Undecided` when its terms cancel beyond 2^24 bits.
     pub fn from_surd(value: &Surd, bits: u32) -> Result<Self, NumberError> {
         let part = |take_imaginary: bool| -> Result<Ball, NumberError> {
-            let terms: Vec<(&Integer, &Rational)> = value
+            let terms: Vec<(&Unit, &Rational)> = value
                 .terms()
-                .map(|(root, c)| (root, if take_imaginary { &c.im } else { &c.re }))
+                .map(|(unit, c)| (unit, if take_imaginary { &c.im } else { &c.re }))
                 .filter(|(_, q)| q.cmp0() != Ordering::Equal)
                 .collect();
             relative_sum(&terms, bits)
@@ -296,17 +296,20 @@ impl ComplexBall {
 /// The sum of q sqrt(n) over terms that do not add up to zero, to about `bits` relative bits.
 ///
 /// The precision is raised until what is left after cancellation is known well enough; it ends because the sum is not zero.
-fn relative_sum(terms: &[(&Integer, &Rational)], bits: u32) -> Result<Ball, NumberError> {
+fn relative_sum(terms: &[(&Unit, &Rational)], bits: u32) -> Result<Ball, NumberError> {
     if terms.is_empty() {
         return Ok(Ball::zero(bits));
     }
     let mut working = bits.saturating_add(RADIUS_BITS);
     loop {
         let mut sum = Ball::zero(working);
-        for (root, q) in terms {
+        for (unit, q) in terms {
             let mut term = Ball::from_rational(q, working)?;
-            if **root != 1 {
-                term = term.mul(&Ball::from_integer(root, working)?.sqrt()?)?;
+            if unit.radicand != 1 {
+                term = term.mul(&Ball::from_integer(&unit.radicand, working)?.sqrt()?)?;
+            }
+            if unit.pi_power != 0 {
+                term = term.mul(&Ball::pi(working)?.powi(i64::from(unit.pi_power))?)?;
             }
             sum = sum.add(&term)?;
         }

@@ -51,10 +51,11 @@ pub(crate) fn square_root(value: &Surd) -> Result<Option<Surd>, NumberError> {
 }
 
 fn nested_square_root(value: &Surd) -> Option<Surd> {
-    if value.term_count() > 2 {
+    if value.term_count() > 2 || value.has_pi() {
         return None;
     }
-    let rational_part = value.terms().find(|(root, _)| **root == 1).map(|(_, c)| c.re.clone()).unwrap_or_default();
+    let rational_part =
+        value.terms().find(|(unit, _)| unit.radicand == 1).map(|(_, c)| c.re.clone()).unwrap_or_default();
     let rest = value - &Surd::from(rational_part.clone());
     let rest_square = (&rest * &rest).as_rational()?.into_owned();
     let difference = Surd::sqrt_of(&(Rational::from(rational_part.square_ref()) - rest_square))?;
@@ -170,11 +171,11 @@ fn growth_in_bits(base: &Surd) -> f64 {
     }
     let mut denominator = Integer::from(1);
     let mut size = Float::new(SIGN_BITS);
-    for (root, c) in base.terms() {
+    for (unit, c) in base.terms() {
         denominator.lcm_mut(c.re.denom());
         denominator.lcm_mut(c.im.denom());
         let (re, im) = (Float::with_val(SIGN_BITS, &c.re), Float::with_val(SIGN_BITS, &c.im));
-        size += re.hypot(&im) * Float::with_val(SIGN_BITS, root).sqrt();
+        size += re.hypot(&im) * Float::with_val(SIGN_BITS, &unit.radicand).sqrt();
     }
     let denominator_bits = Float::with_val(SIGN_BITS, &denominator).log2().to_f64();
     let numerator_bits = size.log2().to_f64() + denominator_bits;

@@ -1,6 +1,8 @@
-//! Exact numbers: finite sums of Gaussian rationals times square roots of squarefree integers.
+//! Exact numbers: finite sums of Gaussian rationals times square roots of squarefree integers times whole powers of pi.
 //!
-//! The square roots of distinct squarefree integers n >= 1 are independent over Q(i), so a number is zero exactly when its map of terms is empty.
+//! The square roots of distinct squarefree integers n >= 1 are independent over Q(i), and the powers of pi over the algebraic numbers (pi is
+//! transcendental, Lindemann 1882), so a number is zero exactly when its map of terms is empty. Powers of pi come with the delta function at the
+//! nucleus: <1s|delta(r)|1s> is 1/pi.
 
 use rug::{Integer, Rational, ops::NegAssign};
 use std::cmp::Ordering;
@@ -17,10 +19,23 @@ const TRIAL_BOUND: u32 = 1 << 16;
 /// Bits that are read in trial divisions of one number before it is given up: up to the bound for radicands of about 10,000 digits.
 const TRIAL_BITS: u64 = 1 << 30;
 
-/// A finite sum of (a + b i) sqrt(n) with rational a, b and squarefree n.
+/// A finite sum of (a + b i) sqrt(n) pi^k with rational a, b, squarefree n and whole k.
 #[derive(Clone, PartialEq, Eq, Debug, Default, Hash)]
 pub struct Surd {
-    terms: BTreeMap<Integer, GaussianRational>,
+    terms: BTreeMap<Unit, GaussianRational>,
+}
+
+/// pi^power sqrt(radicand), the radicand squarefree.
+#[derive(Clone, PartialEq, Eq, PartialOrd, Ord, Debug, Hash)]
+pub struct Unit {
+    pub pi_power: i32,
+    pub radicand: Integer,
+}
+
+impl Unit {
+    fn root(radicand: Integer) -> Self {
+        Unit { pi_power: 0, radicand }
+    }
 }
 
 /// a + b i with rational a and b.
@@ -65,9 +80,25 @@ impl Surd {
         let mut terms = BTreeMap::new();
         let value = GaussianRational { re, im };
         if !value.is_zero() {
-            terms.insert(Integer::from(1), value);
+            terms.insert(Unit::root(Integer::from(1)), value);
         }
         Surd { terms }
+    }
+
+    /// A whole power of pi.
+    pub fn pi_to(pi_power: i32) -> Self {
+        let one = GaussianRational { re: Rational::from(1), im: Rational::new() };
+        Surd { terms: BTreeMap::from([(Unit { pi_power, radicand: Integer::from(1) }, one)]) }
+    }
+
+    /// Whether a power of pi stands in a term.
+    pub fn has_pi(&self) -> bool {
+        self.terms.keys().any(|unit| unit.pi_power != 0)
+    }
+
+    /// Whether it is a + b i with rational a and b: neither a square root nor pi in it.
+    pub fn is_gaussian(&self) -> bool {
+        self.terms.keys().all(|unit| unit.pi_power == 0 && unit.radicand == 1)
     }
 
     /// The square root of a rational; i times a root when it is negative.
@@ -87,14 +118,14 @@ impl Surd {
         } else {
             GaussianRational { re: factor, im: Rational::new() }
         };
-        Some(Surd { terms: BTreeMap::from([(free, value)]) })
+        Some(Surd { terms: BTreeMap::from([(Unit::root(free), value)]) })
     }
 
     /// A rational times the square root of an integer that is known to be squarefree and positive.
     pub(crate) fn with_squarefree_root(root: Integer, factor: Rational) -> Self {
         let mut terms = BTreeMap::new();
         if factor.cmp0() != Ordering::Equal {
-            terms.insert(root, GaussianRational { re: factor, im: Rational::new() });
+            terms.insert(Unit::root(root), GaussianRational { re: factor, im: Rational::new() });
         }
         Surd { terms }
     }
@@ -122,15 +153,16 @@ impl Surd {
         match self.terms.len() {
             0 => Some(Cow::Owned(Rational::new())),
             1 => {
-                let (root, c) = self.terms.first_key_value()?;
-                (*root == 1 && c.im.cmp0() == Ordering::Equal).then_some(Cow::Borrowed(&c.re))
+                let (unit, c) = self.terms.first_key_value()?;
+                (unit.pi_power == 0 && unit.radicand == 1 && c.im.cmp0() == Ordering::Equal)
+                    .then_some(Cow::Borrowed(&c.re))
             }
             _ => None,
         }
     }
 
-    /// The terms in ascending order of the integer under the root.
-    pub fn terms(&self) -> impl Iterator<Item = (&Integer, &GaussianRational)> {
+    /// The terms in ascending order of the power of pi, then of the integer under the root.
+    pub fn terms(&self) -> impl Iterator<Item = (&Unit, &GaussianRational)> {
         self.terms.iter()
     }
 
@@ -143,7 +175,7 @@ impl Surd {
         let rational_bits = |q: &Rational| q.numer().significant_bits().max(q.denom().significant_bits());
         self.terms
             .iter()
-            .map(|(n, c)| n.significant_bits().max(rational_bits(&c.re)).max(rational_bits(&c.im)))
+            .map(|(unit, c)| unit.radicand.significant_bits().max(rational_bits(&c.re)).max(rational_bits(&c.im)))
             .max()
             .unwrap_or(0)
     }
@@ -166,8 +198,8 @@ impl Surd {
 
     fn part(&self, take: impl Fn(&GaussianRational) -> Rational) -> Self {
         let mut out = Self::zero();
-        for (root, c) in &self.terms {
-            out.add_term(root.clone(), GaussianRational { re: take(c), im: Rational::new() });
+        for (unit, c) in &self.terms {
+            out.add_term(unit.clone(), GaussianRational { re: take(c), im: Rational::new() });
         }
         out
     }
@@ -186,23 +218,31 @@ impl Surd {
 
     /// One over this number.
     ///
-    /// Errors: `None` for zero, and for numbers of more than 16 terms.
+    /// Errors: `None` for zero, for numbers of more than 16 terms, and for sums with different powers of pi.
     /// Source: derived here: multiply by conjugates sqrt(p) -> -sqrt(p), one p after the other.
     pub fn inverse(&self) -> Option<Self> {
         if self.is_zero() || self.terms.len() > INVERSE_TERMS {
             return None;
         }
+        let pi_power = self.terms.first_key_value()?.0.pi_power;
+        if self.terms.keys().any(|unit| unit.pi_power != pi_power) {
+            return None;
+        }
+        if pi_power != 0 {
+            let inverse_power = Self::pi_to(pi_power.checked_neg()?);
+            return Some(&(self * &inverse_power).inverse()? * &inverse_power);
+        }
         let Some(split) = self.splitting_radicand() else {
-            let c = &self.terms[&Integer::from(1)];
+            let c = self.terms.first_key_value()?.1;
             let norm = Rational::from(c.re.square_ref()) + Rational::from(c.im.square_ref());
             return Some(Self::gaussian(Rational::from(&c.re / &norm), -Rational::from(&c.im / &norm)));
         };
         let (mut with, mut without) = (Self::zero(), Self::zero());
-        for (root, c) in &self.terms {
-            if root.is_divisible(&split) {
-                with.add_term(root.clone(), c.clone());
+        for (unit, c) in &self.terms {
+            if unit.radicand.is_divisible(&split) {
+                with.add_term(unit.clone(), c.clone());
             } else {
-                without.add_term(root.clone(), c.clone());
+                without.add_term(unit.clone(), c.clone());
             }
         }
         let conjugate = &without - &with;
@@ -212,8 +252,8 @@ impl Surd {
 
     /// An integer p > 1 such that every radicand is a multiple of p or coprime to it; `None` when there is no radicand above 1.
     fn splitting_radicand(&self) -> Option<Integer> {
-        let mut split = self.terms.keys().find(|n| **n != 1)?.clone();
-        for n in self.terms.keys() {
+        let mut split = self.terms.keys().map(|unit| &unit.radicand).find(|n| **n != 1)?.clone();
+        for n in self.terms.keys().map(|unit| &unit.radicand) {
             let common = Integer::from(n.gcd_ref(&split));
             if common != 1 {
                 split = common;
@@ -240,12 +280,12 @@ impl Surd {
         Some(result)
     }
 
-    fn add_term(&mut self, root: Integer, c: GaussianRational) {
+    fn add_term(&mut self, unit: Unit, c: GaussianRational) {
         use std::collections::btree_map::Entry;
         if c.is_zero() {
             return;
         }
-        match self.terms.entry(root) {
+        match self.terms.entry(unit) {
             Entry::Vacant(slot) => {
                 slot.insert(c);
             }
@@ -308,8 +348,8 @@ impl From<i64> for Surd {
 
 impl AddAssign<&Surd> for Surd {
     fn add_assign(&mut self, other: &Surd) {
-        for (root, c) in &other.terms {
-            self.add_term(root.clone(), c.clone());
+        for (unit, c) in &other.terms {
+            self.add_term(unit.clone(), c.clone());
         }
     }
 }
@@ -357,14 +397,15 @@ impl Mul for &Surd {
         for (n, a) in &self.terms {
             for (m, b) in &other.terms {
                 // sqrt(n) sqrt(m) = g sqrt(n m / g^2) with g = gcd(n, m)
-                let g = Integer::from(n.gcd_ref(m));
-                let root = Integer::from(n / &g) * Integer::from(m / &g);
+                let g = Integer::from(n.radicand.gcd_ref(&m.radicand));
+                let radicand = Integer::from(&n.radicand / &g) * Integer::from(&m.radicand / &g);
+                let unit = Unit { pi_power: n.pi_power.saturating_add(m.pi_power), radicand };
                 let mut c = a.times(b);
                 if g != 1 {
                     c.re *= &g;
                     c.im *= &g;
                 }
-                out.add_term(root, c);
+                out.add_term(unit, c);
             }
         }
         out
@@ -378,8 +419,8 @@ impl fmt::Display for Surd {
             return write!(f, "0");
         }
         let mut first = true;
-        for (root, c) in &self.terms {
-            for (q, unit) in [(&c.re, ""), (&c.im, "i")] {
+        for (Unit { pi_power, radicand }, c) in &self.terms {
+            for (q, imaginary) in [(&c.re, false), (&c.im, true)] {
                 if q.cmp0() == Ordering::Equal {
                     continue;
                 }
@@ -388,14 +429,19 @@ impl fmt::Display for Surd {
                 first = false;
                 let size = Rational::from(q.abs_ref());
                 let mut factors: Vec<String> = Vec::new();
-                if size != 1 || (*root == 1 && unit.is_empty()) {
+                if size != 1 || (*radicand == 1 && *pi_power == 0 && !imaginary) {
                     factors.push(size.to_string());
                 }
-                if *root != 1 {
-                    factors.push(format!("sqrt({root})"));
+                if *radicand != 1 {
+                    factors.push(format!("sqrt({radicand})"));
                 }
-                if !unit.is_empty() {
-                    factors.push(unit.to_string());
+                match pi_power {
+                    0 => {}
+                    1 => factors.push("pi".into()),
+                    power => factors.push(format!("pi^{power}")),
+                }
+                if imaginary {
+                    factors.push("i".into());
                 }
                 write!(f, "{}", factors.join(" "))?;
             }

@@ -88,8 +88,7 @@ impl Declaration<'_> {
                 }
             }
         }
-        Hydrogenic::new(charge, mass)
-            .or_else(|error| self.refuse(kind.span, error.to_string(), "choose a smaller number"))
+        Hydrogenic::new(charge, mass).or_else(|error| self.refuse(kind.span, error.to_string(), error.help()))
     }
 
     fn positive(&self, name: &Name, value: &Expr) -> Result<Rational, Wrong> {

@@ -15,6 +15,9 @@ use std::sync::Arc;
 /// Most digits that may be asked for.
 pub const LARGEST_DIGITS: u32 = 20_000;
 
+/// Exact values longer than this are written as decimals, unless `digits exact` stands above.
+const LONGEST_EXACT_TEXT: usize = 1000;
+
 /// Why an entry failed.
 #[derive(Debug)]
 pub(super) enum Wrong {
@@ -179,11 +182,19 @@ impl Evaluation<'_> {
             };
         }
         let asked = self.digits_wanted();
-        let rendered = render(&value.scalar, asked);
+        let mut rendered = render(&value.scalar, asked);
         let mut notes = Vec::new();
+        if self.scope.wanted != Wanted::Exact
+            && rendered.text.len() > LONGEST_EXACT_TEXT
+            && let Ok(ball) = value.scalar.to_ball(crate::sums::bits_for(asked) + 64)
+        {
+            notes.push(format!("the exact value has {} characters; `digits exact` writes it", rendered.text.len()));
+            rendered = render(&Scalar::Approx(ball), asked);
+        }
         let (line, kind, digits, verdict) = match rendered.kind {
             RenderedKind::Exact => {
                 let zero = matches!(&value.scalar, Scalar::Exact(x) if x.is_zero());
+                notes.extend(self.in_decimals(&value.scalar));
                 if zero && !value.rules.is_empty() {
                     (format!("= 0 exactly: {}", value.rules.join("; ")), AnswerKind::Zero, None, "zero, proved")
                 } else {
@@ -211,6 +222,14 @@ impl Evaluation<'_> {
             verdict: verdict.into(),
             notes,
         }
+    }
+
+    /// An exact number with roots or pi in it as a decimal, to be said beside it.
+    fn in_decimals(&self, scalar: &Scalar) -> Option<String> {
+        let Scalar::Exact(exact) = scalar else { return None };
+        let digits = self.digits_wanted();
+        let ball = (!exact.is_gaussian()).then(|| scalar.to_ball(crate::sums::bits_for(digits) + 64).ok())??;
+        Some(format!("in decimals {}", render(&Scalar::Approx(ball), digits).text))
     }
 
     /// The value of one side of a comparison, and of the difference of both with what they share cancelled.

@@ -463,9 +463,8 @@ impl Session {
                 seen != number
             }
         });
-        if settings {
-            self.forget_dependents(number - 1, BTreeSet::new(), true);
-        }
+        // Messages of failed entries speak of entries by number, and the numbers have moved.
+        self.forget_dependents(number - 1, BTreeSet::new(), settings);
         let evaluated = if number <= self.len() { self.evaluate_from(number) } else { Vec::new() };
         Ok(Entered { number, revised: false, evaluated })
     }

@@ -16,6 +16,9 @@ pub(super) type Evaluated<T> = Result<T, Failure>;
 /// Nested definitions and sums deeper than this are refused rather than risking the stack.
 const CALL_DEPTH: usize = 200;
 
+/// Longest numerator or denominator of a partial sum that is kept exact, in bits: beyond, every further term would cost more than all before.
+const LONGEST_EXACT_SUM: u32 = 20_000;
+
 /// The systems of a session by name.
 pub type Systems = BTreeMap<String, Arc<dyn System>>;
 
@@ -25,6 +28,8 @@ pub struct Evaluator<'s> {
     pub(super) effort: Effort,
     /// Precision at which numbers inside exact chains are tried.
     pub(super) exact_bits: u32,
+    /// Exact partial sums longer than this go on as balls; `digits exact` lifts it.
+    pub(super) longest_sum: u32,
     /// One measured source is moved by this much; used for gradients.
     pub(super) shift: Option<(Place, Rational)>,
     /// Inexact numbers inside chains are moved to the edge of their radius, all up or alternating; used to see what they do to the value.
@@ -55,6 +60,7 @@ impl<'s> Evaluator<'s> {
             systems,
             effort,
             exact_bits: 128,
+            longest_sum: LONGEST_EXACT_SUM,
             shift: None,
             nudge: None,
             nudged_numbers: 0,
@@ -133,7 +139,7 @@ impl<'s> Evaluator<'s> {
                 };
                 Ok(Scalar::Exact(Surd::from(moved)))
             }
-            ScalarNode::Pi => Scalar::pi(bits).map_err(at),
+            ScalarNode::Pi => Ok(Scalar::Exact(Surd::pi_to(1))),
             ScalarNode::Variable(name) => environment.variable(name).cloned().ok_or_else(|| {
                 let message = format!("`{name}` has no value here");
                 Failure::new(place, Trouble::Refused { message, help: String::new() })
@@ -200,6 +206,9 @@ impl<'s> Evaluator<'s> {
                     let inside = environment.with(variable, Scalar::Exact(Surd::from(Rational::from(n.clone()))));
                     let value = self.scalar(body, &inside, bits)?;
                     sum = sum.add(&value, bits).map_err(at)?;
+                    if matches!(&sum, Scalar::Exact(exact) if exact.bits() > self.longest_sum) {
+                        sum = Scalar::Approx(sum.to_ball(bits).map_err(at)?);
+                    }
                     n += 1;
                 }
                 Ok(sum)

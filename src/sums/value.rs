@@ -54,6 +54,9 @@ impl Evaluator<'_> {
             Wanted::Exact => 30,
             Wanted::Digits(digits) => digits,
         };
+        if wanted == Wanted::Exact {
+            self.longest_sum = u32::MAX;
+        }
         self.limit = None;
         self.take_rules();
         let scalar = self.certain_to(term, digits)?;

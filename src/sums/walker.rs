@@ -82,7 +82,10 @@ impl Walker<'_, '_> {
         if matches!(&flat.coefficient, Scalar::Exact(c) if c.is_zero()) {
             return Ok(Some(Number::zero()));
         }
-        let Some(mut value) = self.sandwich(bra, &flat.factors, ket, place)? else { return Ok(None) };
+        let Some(mut value) = self.sandwich(bra, &flat.factors, ket, place)? else {
+            self.note_rules(&flat.factors)?;
+            return Ok(None);
+        };
         if let Number::Approx(complex) = &mut value
             && bra.key == ket.key
             && self.is_self_adjoint(&flat.factors)?
@@ -92,6 +95,18 @@ impl Walker<'_, '_> {
         }
         let coefficient = self.number(&flat.coefficient, place)?;
         Ok(Some(coefficient.times(&value, self.bits.unwrap_or(64))))
+    }
+
+    /// Notes the selection rules of the operators of a chain that has no path from its ket to its bra.
+    fn note_rules(&mut self, factors: &[Factor]) -> Walked<()> {
+        for factor in factors {
+            if let OperatorNode::Atom(atom) = &*factor.operator.node {
+                let atom = self.atom(atom, factor)?;
+                let rule = self.system.selection_rule(&atom);
+                self.evaluator.note_rule(rule);
+            }
+        }
+        Ok(())
     }
 
     /// Tells whether a chain is its own adjoint because it reads the same from both ends.
@@ -114,9 +129,21 @@ impl Walker<'_, '_> {
                         Number::Approx(z) => z.imag().is_zero(),
                     }
                 }
+                OperatorNode::Sum(terms) => self.is_self_adjoint_sum(terms, &factor.environment)?,
                 _ => false,
             };
             if !hermitian {
+                return Ok(false);
+            }
+        }
+        Ok(true)
+    }
+
+    /// Tells whether each term of a sum is a real multiple of a chain that is its own adjoint.
+    fn is_self_adjoint_sum(&mut self, terms: &[OperatorTerm], environment: &Environment) -> Walked<bool> {
+        for term in terms {
+            let flat = self.flatten(term, environment)?;
+            if !flat.coefficient.is_real() || !self.is_self_adjoint(&flat.factors)? {
                 return Ok(false);
             }
         }
@@ -204,10 +231,8 @@ impl Walker<'_, '_> {
 
     fn atom_element(&mut self, bra: &SectorKet, atom: &Atom, ket: &SectorKet, place: Place) -> Walked<Option<Number>> {
         let mut total = None;
-        let mut reached = false;
         for (from, part) in ket.parts.iter() {
             for coupling in self.system.couple(atom, *from) {
-                reached = true;
                 let Some(left) = bra.parts.get(&coupling.to) else { continue };
                 let value = self
                     .backend
@@ -216,13 +241,6 @@ impl Walker<'_, '_> {
                 let value = Number::Exact(coupling.factor).times(&value, self.bits.unwrap_or(64));
                 total = Some(self.plus(total, value));
             }
-        }
-        if total.is_none() && !ket.parts.is_empty() && !bra.parts.is_empty() {
-            self.evaluator.note_rule(if reached {
-                format!("{}: it does not lead to the bra", self.system.selection_rule(atom))
-            } else {
-                self.system.selection_rule(atom)
-            });
         }
         Ok(total)
     }
@@ -235,9 +253,6 @@ impl Walker<'_, '_> {
                     self.backend.overlap(*sector, left, part).map_err(|obstacle| Failure::new(place, obstacle))?;
                 total = Some(self.plus(total, value));
             }
-        }
-        if total.is_none() && !ket.parts.is_empty() && !bra.parts.is_empty() {
-            self.evaluator.note_rule("bra and ket have no angular momentum quantum numbers in common".into());
         }
         Ok(total)
     }
@@ -418,9 +433,6 @@ impl Walker<'_, '_> {
                 let factor = scale.times(&Number::Exact(coupling.factor), self.bits.unwrap_or(64));
                 sum.entry(coupling.to).or_default().push((factor, image));
             }
-        }
-        if sum.is_empty() && !ket.parts.is_empty() {
-            self.evaluator.note_rule(self.system.selection_rule(atom));
         }
         self.collect(sum, place)
     }

@@ -204,6 +204,12 @@ pub trait System: Send + Sync {
     /// The adjoint of an operator: a factor and the operator it is a multiple of.
     fn adjoint(&self, atom: &Atom) -> (i32, Atom);
 
+    /// The operator as a power of pi times another, where that makes elements exact which are not otherwise: delta(r) = pi^-1 (pi delta(r)).
+    /// The caller may take either; `knows`, `couple` and `adjoint` have both.
+    fn without_pi(&self, _: &Atom) -> Option<(i32, Atom)> {
+        None
+    }
+
     /// Why an operator leads nowhere from a sector, in the words of the trade (`D changes l by one`), for an exact zero.
     fn selection_rule(&self, atom: &Atom) -> String;
 

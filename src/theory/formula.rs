@@ -230,6 +230,11 @@ impl Expansion<'_, '_> {
             }
             ExprKind::Binary { operation: Operation::Divide, left, right } => {
                 let numerator = self.multiply_out(left)?;
+                let fraction = binary(Operation::Divide, number(1), (**right).clone());
+                if self.is_operator(&fraction) {
+                    let inverse = self.single(fraction);
+                    return self.product(&numerator, &[inverse]);
+                }
                 let denominator = self.multiply_out(right).unwrap_or_default();
                 let inverse = match denominator.as_slice() {
                     [only] if only.number != 0 && only.operators.is_empty() => {
@@ -240,10 +245,7 @@ impl Expansion<'_, '_> {
                             operators: Vec::new(),
                         }
                     }
-                    _ => {
-                        let fraction = binary(Operation::Divide, number(1), (**right).clone());
-                        self.single(fraction)
-                    }
+                    _ => self.single(fraction),
                 };
                 self.product(&numerator, &[inverse])
             }

@@ -63,7 +63,7 @@ pub enum Fault {
     MisplacedWithout { name: String },
     #[error("the bra belongs to {bra} and the ket to {ket}")]
     TwoSystems { bra: String, ket: String },
-    #[error("the index `{index}` occurs {count} time(s) in this bracket; a summed index occurs twice")]
+    #[error("the index `{index}` occurs {} in this bracket; a summed index occurs twice", times(*.count))]
     IndexCount { index: String, count: usize },
     #[error("an operator is raised to a power that is not a positive whole number")]
     OperatorPower,
@@ -75,6 +75,13 @@ pub enum Fault {
     Reserved { name: String },
     #[error("{message}")]
     Other { message: String, help: String },
+}
+
+fn times(count: usize) -> String {
+    match count {
+        1 => "once".into(),
+        n => format!("{n} times"),
+    }
 }
 
 impl Fault {

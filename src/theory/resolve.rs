@@ -237,6 +237,8 @@ impl<'a> Resolver<'a> {
         }
         match self.names.bound.get(name) {
             Some(Binding::Definition(definition)) => return self.call_definition(definition.clone(), &[], span),
+            // States stand in bras and kets; between them `p` is the momentum even where a state has that name.
+            Some(_) if self.operator_word(name) => {}
             Some(other) => {
                 let wanted = match other {
                     Binding::State(_) => format!("a ket `|{name}>`, a bra `<{name}|` or the energy `E({name})`"),
@@ -259,7 +261,7 @@ impl<'a> Resolver<'a> {
             Some((base, component)) => (base, Some(component)),
             None => (name, None),
         };
-        if self.names.operators.contains(base) && !self.names.later.contains_key(name) {
+        if self.operator_word(name) {
             return Ok(self.atom(base, component, Vec::new(), span));
         }
         if ScalarFunction::named(name).is_some() {
@@ -273,6 +275,13 @@ impl<'a> Resolver<'a> {
             );
         }
         self.unknown(name, span)
+    }
+
+    /// Tells whether a name, with its component, is an operator of the vocabulary or of a matrix.
+    fn operator_word(&self, name: &str) -> bool {
+        let base = name.split_once('_').map_or(name, |(base, _)| base);
+        self.names.matrix_operators.contains(name)
+            || self.names.operators.contains(base) && !self.names.later.contains_key(name)
     }
 
     pub(super) fn atom(&self, name: &str, component: Option<&str>, arguments: Vec<ScalarTerm>, span: Span) -> Meaning {

@@ -35,7 +35,8 @@ fn scalar(random: &mut Random, depth: u32) -> String {
 fn expansions_keep_the_value() {
     for seed in 0..cases(60) {
         let random = &mut Random::new(300_000 + u64::from(seed));
-        let levels: Vec<rug::Rational> = [-20, random.between(-3, 3), random.between(-3, 3)].map(rug::Rational::from).to_vec();
+        let levels: Vec<rug::Rational> =
+            [-20, random.between(-3, 3), random.between(-3, 3)].map(rug::Rational::from).to_vec();
         let (h, v) = (with_spectrum(random, &levels), symmetric(random, 3));
         let w = symmetric(random, 3);
         let expression = scalar(random, 3);

@@ -5,4 +5,5 @@
 mod formula;
 mod honesty;
 mod matrices;
+mod notebook;
 mod random;

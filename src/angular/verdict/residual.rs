@@ -161,31 +161,24 @@ impl Form {
         Ok(sum)
     }
 
-    /// The common factor and the coprime whole numbers it leaves, where all coefficients are rational multiples of one root.
+    /// The common factor and the coprime whole numbers it leaves, that of the highest levels positive; `None` where ratios are not rational.
     fn common_factor(&self) -> Option<(Surd, BTreeMap<&[Level], Integer>)> {
-        let mut root: Option<&Integer> = None;
-        let mut rationals = BTreeMap::new();
+        let top = self.monomials.values().next_back()?;
+        let inverse = top.inverse()?;
+        let mut ratios = BTreeMap::new();
         for (levels, coefficient) in &self.monomials {
-            let mut terms = coefficient.terms();
-            let (own, value) = terms.next()?;
-            if terms.next().is_some() || !coefficient.is_real() || root.is_some_and(|root| root != own) {
-                return None;
-            }
-            root = Some(own);
-            rationals.insert(levels.as_slice(), value.re.clone());
+            ratios.insert(levels.as_slice(), (coefficient * &inverse).as_rational()?.into_owned());
         }
         let (mut denominator, mut numerator) = (Integer::from(1), Integer::new());
-        for rational in rationals.values() {
-            denominator.lcm_mut(rational.denom());
+        for ratio in ratios.values() {
+            denominator.lcm_mut(ratio.denom());
         }
-        for rational in rationals.values() {
-            numerator.gcd_mut(&Rational::from(rational * &denominator).numer().clone());
+        for ratio in ratios.values() {
+            numerator.gcd_mut(&Rational::from(ratio * &denominator).numer().clone());
         }
         let common = Rational::from((numerator, denominator));
-        let whole = rationals.into_iter().map(|(levels, r)| (levels, (r / &common).numer().clone()));
-        let whole = whole.collect();
-        let factor = Surd::sqrt_of(&Rational::from(root?))?.scaled(&common);
-        Some((factor, whole))
+        let whole = ratios.into_iter().map(|(levels, ratio)| (levels, (ratio / &common).numer().clone())).collect();
+        Some((top.scaled(&common), whole))
     }
 }
 

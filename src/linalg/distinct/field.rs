@@ -95,7 +95,8 @@ impl Prime {
 
     /// Returns the smaller square root of a; `None` where there is none.
     ///
-    /// *Source*: the algorithm of Tonelli and Shanks, as in H. Cohen, A Course in Computational Algebraic Number Theory, 1.5.1.
+    /// *Source*: the algorithm of Tonelli and Shanks, as in H. Cohen, A Course in Computational Algebraic Number
+    /// Theory, 1.5.1.
     pub fn sqrt(&self, a: u64) -> Option<u64> {
         let a = a % self.p;
         if a == 0 {

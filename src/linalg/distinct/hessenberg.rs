@@ -42,7 +42,8 @@ pub(super) fn reduce(matrix: &mut [u64], order: usize, prime: &Prime, effort: &E
     Ok(())
 }
 
-/// Returns the coefficients of the monic characteristic polynomial of a Hessenberg matrix, from the constant up, in the entered form.
+/// Returns the coefficients of the monic characteristic polynomial of a Hessenberg matrix, from the constant up, in
+/// the entered form.
 pub(super) fn characteristic(h: &[u64], order: usize, prime: &Prime, effort: &Effort) -> Result<Vec<u64>, Interrupted> {
     // p_0 = 1, p_{k+1} = (x - h_kk) p_k - sum_{i<k} h_ik (h_{i+1,i} ... h_{k,k-1}) p_i
     let mut polynomials = vec![vec![prime.enter(1)]];

@@ -1,10 +1,13 @@
-//! The number of distinct eigenvalues of an exact Hermitian matrix, certified through its characteristic polynomial modulo primes.
+//! The number of distinct eigenvalues of an exact Hermitian matrix, certified through its characteristic polynomial
+//! modulo primes.
 
 mod field;
 mod hessenberg;
+mod nullity;
 mod polynomial;
 
 pub use field::Prime;
+pub use nullity::nullity;
 
 use super::error::LinalgError;
 use crate::num::Effort;
@@ -17,17 +20,19 @@ const TRIED: usize = 20_000;
 
 /// Counts the distinct eigenvalues of a Hermitian matrix of exact entries.
 ///
-/// `entries_mod_p` gives the entries by rows in the field of p elements, `None` if a denominator is divisible by p
-/// or a square root is missing there ([`Prime::sqrt`]); square roots of products must be the products of the same roots, so that
-/// the entries are images under one homomorphism. -1 is a square modulo every prime offered, so that i has an image.
+/// `entries_mod_p` gives the entries by rows in the field of p elements, `None` if a denominator is divisible by p or
+/// a square root is missing there ([`Prime::sqrt`]); square roots of products must be the products of the same roots,
+/// so that the entries are images under one homomorphism. -1 is a square modulo every prime offered, so that i has an
+/// image.
 ///
-/// *Accuracy*: eigenvalues that differ stay different modulo p for all but the finitely many primes that divide the differences;
-/// equal ones are never told apart. The count of a prime is therefore never above the truth, and the largest of three primes of 62 bits
-/// is below it with a probability of about order^2 2^-180 for a matrix that does not know the primes. The count is certain when it equals
-/// an upper bound known otherwise, such as the number of clusters an enclosure of the spectrum shows.
-/// *Errors*: too few primes suit the entries, or a list of entries of a wrong length. *Cost*: about order^3 word operations each prime.
-/// *Source*: derived here; the characteristic polynomial from a Hessenberg form is in H. Cohen, A Course in Computational
-/// Algebraic Number Theory, algorithm 2.2.9.
+/// *Accuracy*: eigenvalues that differ stay different modulo p for all but the finitely many primes that divide the
+/// differences; equal ones are never told apart. The count of a prime is therefore never above the truth. For entries
+/// of b bits at most about order^2 b/62 of some 2^56 primes give less, and only if all three primes tried do is the
+/// largest of their counts too small. The count is certain when it equals an upper bound known otherwise, such as the
+/// number of clusters an enclosure of the spectrum shows. *Errors*: too few primes suit the entries, or a list of
+/// entries of a wrong length. *Cost*: about 3 order^3 word products each prime. *Source*: derived here; the
+/// characteristic polynomial from a Hessenberg form is in H. Cohen, A Course in Computational Algebraic Number Theory,
+/// algorithm 2.2.9.
 pub fn distinct_eigenvalues(
     order: usize,
     entries_mod_p: &dyn Fn(&Prime) -> Option<Vec<u64>>,
@@ -73,7 +78,8 @@ mod tests {
 
     #[test]
     fn square_roots_and_i_have_images() {
-        // [[0, sqrt 2 - i], [sqrt 2 + i, 0]] has the eigenvalues +-sqrt 3; beside sqrt 3 on the diagonal two are distinct.
+        // [[0, sqrt 2 - i], [sqrt 2 + i, 0]] has the eigenvalues +-sqrt 3; beside sqrt 3 on the diagonal two are
+        // distinct.
         let entry = |p: &Prime, i: usize, j: usize| {
             let (two, three, imaginary) = (p.sqrt(2)?, p.sqrt(3)?, p.sqrt(p.from_i64(-1))?);
             Some(match (i, j) {

@@ -16,8 +16,8 @@ use crate::num::Effort;
 /// Bits beyond those wanted.
 const GUARD: u32 = 40;
 
-/// Steps of inverse iteration at one precision.
-const STEPS: usize = 100;
+/// Bits that a step of inverse iteration gains at least, for the nearest values machine numbers still tell apart.
+const GAINED: u32 = 4;
 
 /// Times the precision is raised to tell eigenvalues of one cluster apart.
 const RAISES: usize = 4;
@@ -31,14 +31,16 @@ pub struct EigenCluster {
     pub values: Vec<Float>,
     /// The eigenvectors, real (zero imaginary parts) for a real matrix.
     pub vectors: Vec<Vec<Complex>>,
-    /// The values that belong to one level each: nearer to each other than 2^-bits of the largest eigenvalue. Indices into `values`.
+    /// The values that belong to one level each: nearer to each other than 2^-bits of the largest eigenvalue. Indices
+    /// into `values`.
     pub levels: Vec<Range<usize>>,
     /// The distance to the nearest eigenvalue outside, to the accuracy of machine numbers; `None` if there is none.
     pub gap: Option<Float>,
 }
 
 impl EigenCluster {
-    /// Returns the values of the level that holds an eigenvalue, given by its place in the whole spectrum, as indices into `values`.
+    /// Returns the values of the level that holds an eigenvalue, given by its place in the whole spectrum, as indices
+    /// into `values`.
     pub fn level_of(&self, index: usize) -> Option<Range<usize>> {
         let place = index.checked_sub(self.first)?;
         self.levels.iter().find(|level| level.contains(&place)).cloned()
@@ -49,10 +51,11 @@ impl EigenCluster {
 /// machine numbers cannot tell from them.
 ///
 /// *Accuracy*: values within 2^-bits of the largest eigenvalue; vectors of different levels within 2^-bits, even where
-/// values agree in machine numbers; a level is what stays together at 2^-bits of the largest eigenvalue. Residuals are checked. *Errors*: an index
-/// beyond the order, or an iteration that does not settle. *Cost*: one factorisation of H less a number, then for each vector
-/// about one solve for every 50 bits; where the cluster is more than half of the spectrum, all eigenpairs.
-/// *Source*: inverse iteration on a subspace with the Rayleigh-Ritz projection, as in Parlett, The Symmetric Eigenvalue Problem, chapter 14.
+/// values agree in machine numbers; a level is what stays together at 2^-bits of the largest eigenvalue. Residuals are
+/// checked. *Errors*: an index beyond the order, or an iteration that does not settle. *Cost*: one factorisation of H
+/// less a number, then for each vector about one solve for every 50 bits; where the cluster is more than half of the
+/// spectrum, all eigenpairs. *Source*: inverse iteration on a subspace with the Rayleigh-Ritz projection, as in
+/// Parlett, The Symmetric Eigenvalue Problem, chapter 14.
 pub fn refine_cluster(
     h: &HermitianMatrix,
     wanted: Range<usize>,
@@ -154,7 +157,7 @@ fn settle(
     let working = precision.saturating_add(GUARD);
     let solver = nearby_solver(h, preview, range, working, effort)?;
     let mut holds = 0;
-    for _ in 0..STEPS {
+    for _ in 0..32 + working / GAINED {
         for vector in &mut block {
             *vector = solver.solve(vector, effort)?.ket;
         }
@@ -191,7 +194,8 @@ fn nearby_solver(
     let values = &preview.values;
     let largest = values.iter().fold(f64::MIN_POSITIVE, |m, v| m.max(v.abs()));
     let centre = (values[range.start] + values[range.end - 1]) / 2.0;
-    // The square root of 1/2 of a step that machine numbers just resolve: no eigenvalue of a matrix of rationals is there.
+    // The square root of 1/2 of a step that machine numbers just resolve: no eigenvalue of a matrix of rationals is
+    // there.
     let mut error = LinalgError::NotFinite;
     for step in [1.0, -1.0, 3.0, -3.0] {
         let aside = std::f64::consts::FRAC_1_SQRT_2 * step * largest * (-46.0_f64).exp2();

@@ -17,9 +17,10 @@ pub struct Eigenpairs {
 
 /// Finds all eigenvalues and eigenvectors, to `bits` bits of the norm of H.
 ///
-/// *Accuracy*: eigenvalues within about 2^-bits of the largest; an eigenvector within 2^-bits of the largest eigenvalue
-/// over the distance to the next one; the vectors of a degenerate level are orthonormal and span it. *Errors*: the iteration did not settle.
-/// *Cost*: about 5 order^3 multiply-adds if real, 40 order^3 if complex, by a real matrix of twice the order.
+/// *Accuracy*: eigenvalues within about 2^-bits of the largest; an eigenvector within 2^-bits of the largest
+/// eigenvalue over the distance to the next one; the vectors of a degenerate level are orthonormal and span it.
+/// *Errors*: the iteration did not settle. *Cost*: about 5 order^3 multiply-adds if real, 40 order^3 if complex, by a
+/// real matrix of twice the order.
 pub fn all_eigenpairs(h: &HermitianMatrix, bits: u32, effort: &Effort) -> Result<Eigenpairs, LinalgError> {
     let order = h.order();
     let precision = bits + 2 * usize::BITS.saturating_sub(order.leading_zeros()) + 16;
@@ -51,8 +52,9 @@ pub fn all_eigenpairs(h: &HermitianMatrix, bits: u32, effort: &Effort) -> Result
 
 /// Picks an orthonormal half of the complex vectors u + i v that the doubled real matrix has.
 ///
-/// Each level of H appears with twice its multiplicity, and its real vectors (u, v) give complex ones that span it twice over. Taking each vector
-/// that is not yet spanned gives a basis; nearby levels do no harm since the vectors of different levels are orthogonal already.
+/// Each level of H appears with twice its multiplicity, and its real vectors (u, v) give complex ones that span it
+/// twice over. Taking each vector that is not yet spanned gives a basis; nearby levels do no harm since the vectors of
+/// different levels are orthogonal already.
 fn from_doubled(pairs: Vec<(Float, Vec<Float>)>, order: usize, precision: u32) -> Result<Eigenpairs, LinalgError> {
     let mut values: Vec<Float> = Vec::with_capacity(order);
     let mut vectors: Vec<Vec<Complex>> = Vec::with_capacity(order);
@@ -66,7 +68,8 @@ fn from_doubled(pairs: Vec<(Float, Vec<Float>)>, order: usize, precision: u32) -
             }
         }
         let length = norm(&w, precision);
-        // Of 2m vectors spanning m dimensions twice over the parts not spanned yet have squares that sum to what is left.
+        // Of 2m vectors spanning m dimensions twice over the parts not spanned yet have squares that sum to what is
+        // left.
         if length > 0.25 / (order as f64).sqrt() && vectors.len() < order {
             divide(&mut w, &length);
             values.push(value);

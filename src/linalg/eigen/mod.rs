@@ -1,4 +1,5 @@
-//! Eigenvalues and eigenvectors of Hermitian matrices: a look in machine numbers, some to any precision, or all of them.
+//! Eigenvalues and eigenvectors of Hermitian matrices: a look in machine numbers, some to any precision, or all of
+//! them.
 
 mod cluster;
 mod full;

@@ -23,8 +23,9 @@ pub struct Preview {
 /// Finds the spectrum approximately in machine numbers, each eigenvalue as often as its multiplicity; `None` if the
 /// machine numbers did not settle.
 ///
-/// *Range*: any exponents: the matrix is scaled by a power of two. *Accuracy*: about order * 2^-52 of the largest eigenvalue:
-/// small eigenvalues of a matrix with a wide spread are lost. *Cost*: about order^3 (8 order^3 if complex) machine operations.
+/// *Range*: any exponents: the matrix is scaled by a power of two. *Accuracy*: about order * 2^-52 of the largest
+/// eigenvalue: small eigenvalues of a matrix with a wide spread are lost. *Cost*: about order^3 (8 order^3 if complex)
+/// machine operations.
 pub fn spectrum_preview(h: &HermitianMatrix) -> Option<Preview> {
     let order = h.order();
     let exponent = i32::try_from(h.exponent().unwrap_or(0)).ok()?;

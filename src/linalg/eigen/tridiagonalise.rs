@@ -32,8 +32,8 @@ pub(super) struct Reduced {
 impl Reduced {
     /// Reduces the symmetric matrix given by the rows of its lower triangle.
     ///
-    /// *Cost*: about 2 order^3 multiply-adds with the orthogonal matrix. *Source*: Householder reflections, as in G. H. Golub and
-    /// C. F. Van Loan, Matrix Computations, 8.3.1.
+    /// *Cost*: about 2 order^3 multiply-adds with the orthogonal matrix. *Source*: Householder reflections, as in G.
+    /// H. Golub and C. F. Van Loan, Matrix Computations, 8.3.1.
     pub fn new(mut lower: Vec<Vec<Float>>, precision: u32, effort: &Effort) -> Result<Self, LinalgError> {
         let order = lower.len();
         let zero = || Float::new(precision);
@@ -117,9 +117,9 @@ impl Reduced {
 
     /// Turns the tridiagonal matrix into a diagonal one, and the vectors along with it.
     ///
-    /// *Accuracy*: norm-wise, a few units in the last place of the largest eigenvalue. *Errors*: more steps than ever needed.
-    /// *Cost*: about 3 order^3 multiply-adds with the vectors. *Source*: the implicit QL iteration with Wilkinson's shift, as in
-    /// B. N. Parlett, The Symmetric Eigenvalue Problem, chapter 8.
+    /// *Accuracy*: norm-wise, a few units in the last place of the largest eigenvalue. *Errors*: more steps than ever
+    /// needed. *Cost*: about 3 order^3 multiply-adds with the vectors. *Source*: the implicit QL iteration with
+    /// Wilkinson's shift, as in B. N. Parlett, The Symmetric Eigenvalue Problem, chapter 8.
     pub fn diagonalise(&mut self, effort: &Effort) -> Result<(), LinalgError> {
         let order = self.diagonal.len();
         let precision = self.precision;

@@ -1,9 +1,10 @@
 //! Eigenvalues and eigenvectors.
 
 use nalgebra::DMatrix;
+use proptest::prelude::*;
 use rug::{Complex, Float};
 
-use super::Irregular;
+use super::{Irregular, cases};
 use crate::linalg::HermitianMatrix;
 use crate::linalg::eigen::{all_eigenpairs, refine_cluster, spectrum_preview};
 use crate::linalg::vectors::{exponent_complex, inner};
@@ -139,7 +140,8 @@ fn values_that_machine_numbers_confuse() {
         check_orthonormal(&cluster.vectors, 213);
         let gap = cluster.gap.as_ref().expect("others outside").to_f64();
         assert!((gap - 2.0).abs() < 1e-10);
-        // Vectors of the nearest levels are still good to the wanted bits: the residual is below their distance by as much.
+        // Vectors of the nearest levels are still good to the wanted bits: the residual is below their distance by as
+        // much.
         for (k, v) in cluster.vectors.iter().enumerate() {
             let left = residual(&h, &values[7 + k], v);
             assert!(left <= -200 - 213 + 10, "vector {k}: residual 2^{left}");
@@ -187,5 +189,39 @@ fn integers_on_the_diagonal() {
     for k in 0..8 {
         let cluster = refine_cluster(&h, k..k + 1, 213, &effort).expect("settled");
         assert!(Float::with_val(64, &cluster.values[0] - (k as i32 - 3)).get_exp().is_none_or(|e| e < -213));
+    }
+}
+
+proptest! {
+    #![proptest_config(cases(12))]
+
+    /// Spectra with levels of any multiplicity and distances down to 2^-190, complex or real.
+    #[test]
+    fn random_spectra(seed in any::<u64>(), order in 2usize..10, complex: bool) {
+        let effort = Effort::new();
+        let mut random = Irregular(seed);
+        let mut values: Vec<Float> = Vec::new();
+        while values.len() < order {
+            let step = match (values.is_empty(), random.next() % 4) {
+                (true, _) | (_, 0) => Float::with_val(PRECISION, 1 + random.small(1)),
+                (_, 1) => Float::new(PRECISION),
+                _ => Float::with_val(PRECISION, 1) >> (random.next() % 190) as u32,
+            };
+            let last = values.last().cloned().unwrap_or_else(|| Float::with_val(PRECISION, random.small(3)));
+            values.push(last + step);
+        }
+        let h = with_spectrum(&values, seed, complex);
+        for k in 0..order {
+            let cluster = refine_cluster(&h, k..k + 1, 213, &effort).expect("settled");
+            check_orthonormal(&cluster.vectors, 213);
+            for (i, (value, v)) in cluster.values.iter().zip(&cluster.vectors).enumerate() {
+                let off = Float::with_val(PRECISION, value - &values[cluster.first + i]).get_exp().unwrap_or(i32::MIN);
+                prop_assert!(off <= 6 - 213, "value {} off by 2^{}", i, off);
+                prop_assert!(residual(&h, value, v) <= 6 - 213);
+            }
+            let level = cluster.level_of(k).expect("in the cluster");
+            let equal = values.iter().filter(|v| **v == values[k]).count();
+            prop_assert_eq!(level.len(), equal);
+        }
     }
 }

@@ -1,7 +1,9 @@
-//! Tests across the files: against exact rational elimination, against residuals at twice the precision, on hard matrices.
+//! Tests across the files: against exact rational elimination, against residuals at twice the precision, on hard
+//! matrices.
 
 mod eigen;
 mod exact;
+mod kernel;
 mod shifted;
 mod solve;
 mod tridiagonal;

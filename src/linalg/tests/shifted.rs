@@ -1,9 +1,10 @@
 //! Resolvents applied to vectors, real and complex, whole and reduced.
 
 use nalgebra::DMatrix;
+use proptest::prelude::*;
 use rug::{Complex, Float};
 
-use super::Irregular;
+use super::{Irregular, cases};
 use crate::linalg::eigen::all_eigenpairs;
 use crate::linalg::vectors::{exponent_complex, inner};
 use crate::linalg::{HermitianMatrix, LinalgError, ShiftedSolver};
@@ -130,5 +131,50 @@ trait Identity {
 impl Identity for DMatrix<Float> {
     fn identity_of(order: usize) -> Self {
         DMatrix::from_fn(order, order, |i, j| Float::with_val(64, u32::from(i == j)))
+    }
+}
+
+proptest! {
+    #![proptest_config(cases(60))]
+
+    /// Small whole numbers, where leading blocks are often singular: the residual is small or the energy is an
+    /// eigenvalue.
+    #[test]
+    fn whole_numbers_by_residual(
+        seed in any::<u64>(), order in 1usize..9, complex: bool, re in -3i32..4, im in -2i32..3
+    ) {
+        let effort = Effort::new();
+        let mut random = Irregular(seed);
+        let mut part = |sign: i32| {
+            let mut part = DMatrix::from_element(order, order, Float::new(PRECISION));
+            for i in 0..order {
+                for j in 0..=i {
+                    let value = random.small(2) as i32;
+                    part[(i, j)] = Float::with_val(PRECISION, if i == j && sign < 0 { 0 } else { value });
+                    part[(j, i)] = Float::with_val(PRECISION, sign * part[(i, j)].clone());
+                }
+            }
+            part
+        };
+        let (h_re, h_im) = (part(1), complex.then(|| part(-1)));
+        let h = HermitianMatrix::new(h_re, h_im).expect("Hermitian");
+        let z = (Float::with_val(PRECISION, re), Float::with_val(PRECISION, im));
+        let b = random.ket(order, PRECISION);
+        match ShiftedSolver::new(&h, (&z.0, Some(&z.1)), &[], BITS, &effort) {
+            Ok(solver) => {
+                let solved = solver.solve(&b, &effort).expect("solved");
+                let size = exponent_complex(&solved.ket).expect("not zero").max(0);
+                let energy = Complex::with_val(PRECISION, (&z.0, &z.1));
+                let left = residual(&h, &energy, &solved.ket, &b).unwrap_or(i64::MIN);
+                prop_assert!(left <= size + 8 - i64::from(BITS), "residual 2^{}", left);
+            }
+            Err(error) => {
+                prop_assert!(matches!(error, LinalgError::Singular { .. }), "{}", error);
+                prop_assert_eq!(im, 0, "a complex energy is no eigenvalue");
+                let values = all_eigenpairs(&h, BITS, &effort).expect("settled").values;
+                let nearest = values.iter().filter_map(|v| Float::with_val(64, v - re).get_exp()).min();
+                prop_assert!(values.iter().any(|v| *v == re) || nearest.is_some_and(|e| e < 10 - BITS as i32));
+            }
+        }
     }
 }

@@ -113,7 +113,8 @@ fn singular_leading_blocks() {
 
 #[test]
 fn hilbert_matrix() {
-    // Entries over the least common multiple of the denominators are whole: the matrix is exact. Its condition number is about 2^100 at order 20.
+    // Entries over the least common multiple of the denominators are whole: the matrix is exact. Its condition number
+    // is about 2^100 at order 20.
     let order = 20u32;
     let multiple = (1..2 * order).fold(rug::Integer::from(1), |m, k| m.lcm(&rug::Integer::from(k)));
     let a = DMatrix::from_fn(order as usize, order as usize, |i, j| {

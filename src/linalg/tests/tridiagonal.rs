@@ -108,6 +108,7 @@ fn singular_part_in_a_border() {
     let scaled: Vec<Rational> = t.diagonal().iter().map(|x| Rational::from(x / 3u32)).collect();
     let scaled_off: Vec<Rational> = t.off().iter().map(|x| Rational::from(x / 3u32)).collect();
     let thirds = Tridiagonal::new(scaled, scaled_off).expect("shape");
+    assert_eq!(Factored::new(&as_floats(&thirds, 200), &effort).err(), Some(LinalgError::NoPivot { row: n - 1 }));
     let border_floats = vec![floats(&border[0], 200)];
     let bordered = Bordered::new(&as_floats(&thirds, 200), &border_floats, &effort).expect("not singular");
     let solution = bordered.solve(&floats(&b, 200), &floats(&[Rational::from(2)], 200)).expect("length");
@@ -143,6 +144,25 @@ fn shapes_are_checked() {
     let factored = Factored::new(&t, &Effort::new()).expect("not singular");
     assert_eq!(factored.solve(&rationals(&[1])).err(), Some(LinalgError::WrongLength { found: 1, expected: 2 }));
     assert!(Bordered::new(&t, &[rationals(&[1])], &Effort::new()).is_err());
+}
+
+#[test]
+fn noise_goes_through_a_pivot_of_order_two() {
+    // Thirds leave a pivot that should be zero at 2^-198; the pivot of order 2 that covers it hands it on to a later
+    // row.
+    let effort = Effort::new();
+    let t = Tridiagonal::new(rationals(&[1, 3, -1, -3, -1, 0, 3, 0, -1]), rationals(&[-3, -2, -1, -1, -3, 0, 3, 0]));
+    let t = t.expect("shape");
+    let border = vec![rationals(&[-1, -1, 1, 3, 2, 0, 0, -1, 0])];
+    let full = rationals(&[1, 2, -3, 1, 0, 2, 1, 1, -1, 2]);
+    let expected = exact::solve(&dense(&t, &border), &full).expect("not singular");
+    let bordered = Bordered::new(&as_floats(&t, 200), &[floats(&border[0], 200)], &effort).expect("not singular");
+    assert_eq!(bordered.moved(), 1);
+    let solution = bordered.solve(&floats(&full[..9], 200), &floats(&full[9..], 200)).expect("length");
+    for (x, e) in solution.x.iter().zip(&expected) {
+        let off = Float::with_val(200, x - Float::with_val(200, e)).get_exp().unwrap_or(i32::MIN);
+        assert!(off < -180, "off by 2^{off}");
+    }
 }
 
 proptest! {

@@ -15,13 +15,14 @@ pub struct BorderedSolution<T> {
     pub multipliers: Vec<T>,
 }
 
-/// A symmetric tridiagonal matrix bordered by dense rows, `[[T, B], [B^T, 0]]`, factored for any number of right-hand sides.
+/// A symmetric tridiagonal matrix bordered by dense rows, `[[T, B], [B^T, 0]]`, factored for any number of right-hand
+/// sides.
 ///
-/// With B = S g for the eigenvectors g of an eigenvalue of (H, S), `T = E S - H` is singular but the bordered matrix is not: its
-/// solution is the reduced resolvent. Rows of T whose pivots cancel join the border, so T may be singular or nearly so.
-/// *Shapes*: k rows of the order n of T. *Cost*: n (k + m)^2 operations once, n (k + m) for each right-hand side, m the
-/// number of rows that joined, which is at least the number of eigenvalues of T near zero and seldom more.
-/// *Source*: block elimination; the rows set aside are derived here.
+/// With B = S g for the eigenvectors g of an eigenvalue of (H, S), `T = E S - H` is singular but the bordered matrix
+/// is not: its solution is the reduced resolvent. Rows of T whose pivots cancel join the border, so T may be singular
+/// or nearly so. *Shapes*: k rows of the order n of T. *Cost*: n (k + m)^2 operations once, n (k + m) for each
+/// right-hand side, m the number of rows that joined, which is at least the number of eigenvalues of T near zero and
+/// seldom more. *Source*: block elimination; the rows set aside are derived here.
 #[derive(Clone, Debug)]
 pub struct Bordered<T> {
     tridiagonal: Factored<T>,
@@ -38,7 +39,8 @@ pub struct Bordered<T> {
 impl<T: Scalar> Bordered<T> {
     /// Factorises a bordered matrix.
     ///
-    /// *Errors*: a row of another length than T, or [`LinalgError::NoPivot`] where the bordered matrix itself is singular.
+    /// *Errors*: a row of another length than T, or [`LinalgError::NoPivot`] where the bordered matrix itself is
+    /// singular.
     pub fn new(matrix: &Tridiagonal<T>, border: &[Vec<T>], effort: &Effort) -> Result<Self, LinalgError> {
         let order = matrix.order();
         if let Some(row) = border.iter().find(|row| row.len() != order) {

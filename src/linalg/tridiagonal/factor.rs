@@ -4,6 +4,9 @@ use super::{Scalar, Tridiagonal};
 use crate::linalg::error::LinalgError;
 use crate::num::Effort;
 
+/// A pivot with so few bits left is noise.
+const NOISE: u32 = 8;
+
 /// How many eigenvalues are below, at and above zero.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
 pub struct Inertia {
@@ -25,9 +28,10 @@ enum Pivot<T> {
 
 /// A factorised symmetric tridiagonal matrix.
 ///
-/// Pivots of order 2 are taken where one of order 1 would let entries grow, so the factorisation is stable norm-wise without
-/// exchanging rows. *Cost*: about 3 operations a row to factor, 5 a row to solve. *Source*: the pivots of J. R. Bunch
-/// (SIAM J. Numer. Anal. 11 (1974) 521), compared with the neighbouring entries instead of the largest of all.
+/// Pivots of order 2 are taken where one of order 1 would let entries grow, so the factorisation is stable norm-wise
+/// without exchanging rows. *Cost*: about 3 operations a row to factor, 5 a row to solve. *Source*: the pivots of J.
+/// R. Bunch (SIAM J. Numer. Anal. 11 (1974) 521), compared with the neighbouring entries instead of the largest of
+/// all.
 #[derive(Clone, Debug)]
 pub struct Factored<T> {
     pivots: Vec<Pivot<T>>,
@@ -38,14 +42,16 @@ pub struct Factored<T> {
 impl<T: Scalar> Factored<T> {
     /// Factorises a matrix.
     ///
-    /// *Errors*: [`LinalgError::NoPivot`] at a pivot that is exactly zero.
+    /// *Errors*: [`LinalgError::NoPivot`] at a pivot that is zero, or lost in rounding.
     pub fn new(matrix: &Tridiagonal<T>, effort: &Effort) -> Result<Self, LinalgError> {
-        let (factored, aside) = Self::setting_aside(matrix, None, effort)?;
+        let bits = matrix.diagonal().iter().filter_map(Scalar::bits).min();
+        let most = bits.map(|bits| bits.saturating_sub(NOISE));
+        let (factored, aside) = Self::setting_aside(matrix, most, effort)?;
         aside.first().map_or(Ok(factored), |&row| Err(LinalgError::NoPivot { row }))
     }
 
-    /// Factorises a matrix less the rows and columns whose pivots cancel more than `bits` bits, which are returned; without
-    /// `bits`, only those whose pivots are exactly zero.
+    /// Factorises a matrix less the rows and columns whose pivots cancel more than `bits` bits, which are returned;
+    /// without `bits`, only those whose pivots are exactly zero.
     pub(super) fn setting_aside(
         matrix: &Tridiagonal<T>,
         bits: Option<u32>,
@@ -57,30 +63,29 @@ impl<T: Scalar> Factored<T> {
         let mut aside = Vec::new();
         let mut cancelled_bits = 0;
         let mut i = 0;
-        // What the rows before took away from the next entry of the diagonal.
-        let mut taken: Option<T> = None;
+        let mut taken: Option<Taken<T>> = None;
         while i < order {
             if i % 4096 == 0 {
                 effort.check()?;
             }
             let mut pivot = diagonal[i].clone();
+            let mut scale = diagonal[i].size();
             if let Some(taken) = &taken {
-                let one = taken.whole(1);
-                pivot.subtract_product(taken, &one);
+                pivot.subtract_product(&taken.value, &taken.value.whole(1));
+                scale = scale.max(taken.scale);
             }
             let next = off.get(i).filter(|off| !off.is_zero());
             if let Some(off_i) = next
                 && wants_two(&pivot, off_i, &diagonal[i + 1], off.get(i + 1))
             {
-                let (block, taken_next) = two_rows(&pivot, off_i, &diagonal[i + 1], off.get(i + 1));
+                let (block, taken_next) = two_rows(&pivot, scale, off_i, &diagonal[i + 1], off.get(i + 1));
                 pivots.push(block);
                 taken = taken_next;
                 i += 2;
                 continue;
             }
-            let before = diagonal[i].size().max(taken.as_ref().and_then(Scalar::size));
-            let lost = match (before, pivot.size()) {
-                (Some(before), Some(after)) => u32::try_from(before - after).unwrap_or(0),
+            let lost = match (scale, pivot.size()) {
+                (Some(scale), Some(after)) => u32::try_from(scale - after).unwrap_or(0),
                 (_, None) => u32::MAX,
                 (None, Some(_)) => 0,
             };
@@ -94,7 +99,11 @@ impl<T: Scalar> Factored<T> {
                     cancelled_bits = lost.max(cancelled_bits);
                 }
                 let below = next.map(|off| off.over(&pivot));
-                taken = below.as_ref().zip(next).map(|(below, off)| below.times(off));
+                taken = below.as_ref().zip(next).map(|(below, off)| {
+                    let value = below.times(off);
+                    let scale = value.size().map(|size| size + i64::from(lost));
+                    Taken { value, scale }
+                });
                 pivots.push(Pivot::One { pivot, below });
             }
             i += 1;
@@ -186,8 +195,8 @@ impl<T: Scalar> Factored<T> {
 impl<T: Scalar> Tridiagonal<T> {
     /// Counts the eigenvalues of a real matrix below, at and above zero.
     ///
-    /// *Accuracy*: exact for rationals; for floats the count of a matrix whose entries differ by a few units in the last
-    /// place, and a zero is only counted where a pivot vanishes exactly. *Source*: Sylvester's law of inertia.
+    /// *Accuracy*: exact for rationals; for floats the count of a matrix whose entries differ by a few units in the
+    /// last place, and a zero is only counted where a pivot vanishes exactly. *Source*: Sylvester's law of inertia.
     pub fn inertia(&self, effort: &Effort) -> Result<Inertia, LinalgError> {
         let (factored, aside) = Factored::setting_aside(self, None, effort)?;
         // A zero pivot is met only where the entry beside it is zero as well, or in the last row.
@@ -219,15 +228,37 @@ fn wants_two<T: Scalar>(pivot: &T, off: &T, next: &T, off_next: Option<&T>) -> b
     }
 }
 
-/// Forms a pivot of order 2 and what it takes from the diagonal after it.
-fn two_rows<T: Scalar>(pivot: &T, off: &T, next: &T, off_next: Option<&T>) -> (Pivot<T>, Option<T>) {
+/// What the rows before take away from the next entry of the diagonal.
+struct Taken<T> {
+    value: T,
+    /// Rounding has made it uncertain as if it were a number of this size, through what cancelled before.
+    scale: Option<i64>,
+}
+
+/// Forms a pivot of order 2 and what it takes from the diagonal after it; `scale` is the size that the uncertainty of
+/// the first entry belongs to.
+fn two_rows<T: Scalar>(
+    pivot: &T,
+    scale: Option<i64>,
+    off: &T,
+    next: &T,
+    off_next: Option<&T>,
+) -> (Pivot<T>, Option<Taken<T>>) {
     let mut determinant = pivot.times(next);
     determinant.subtract_product(off, off);
     let minus_off = off.times(&off.whole(-1));
     let inverse = [next.over(&determinant), minus_off.over(&determinant), pivot.over(&determinant)];
     let coupling = off_next.filter(|off| !off.is_zero());
     let below = coupling.map(|off| [off.times(&inverse[1]), off.times(&inverse[2])]);
-    let taken = below.as_ref().zip(coupling).map(|(below, off)| below[1].times(off));
+    let taken = below.as_ref().zip(coupling).map(|(below, off)| {
+        let value = below[1].times(off);
+        // value = off^2 pivot / determinant, of which only the pivot is uncertain.
+        let uncertain = match (scale, off.size(), determinant.size()) {
+            (Some(scale), Some(off), Some(determinant)) => Some(scale + 2 * off - determinant),
+            _ => None,
+        };
+        Taken { scale: value.size().max(uncertain), value }
+    });
     (Pivot::Two { inverse, below }, taken)
 }
 

@@ -1,7 +1,8 @@
-//! Symmetric tridiagonal systems, alone or bordered by a few dense rows, over floats, complex floats and exact rationals.
+//! Symmetric tridiagonal systems, alone or bordered by a few dense rows, over floats, complex floats and exact
+//! rationals.
 //!
-//! A factorisation costs O(n) operations and is kept for any number of right-hand sides. Complex matrices are symmetric,
-//! not Hermitian: they come as `z S - H` with real S and H.
+//! A factorisation costs O(n) operations and is kept for any number of right-hand sides. Complex matrices are
+//! symmetric, not Hermitian: they come as `z S - H` with real S and H.
 
 mod bordered;
 mod factor;

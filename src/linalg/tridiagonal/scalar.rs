@@ -12,6 +12,9 @@ pub trait Scalar: Clone + PartialEq + Debug {
     /// Returns a whole number at the precision of `self`.
     fn whole(&self, value: i32) -> Self;
 
+    /// Returns the bits of the number, `None` for an exact one.
+    fn bits(&self) -> Option<u32>;
+
     /// Tells whether the number is zero.
     fn is_zero(&self) -> bool;
 
@@ -36,6 +39,10 @@ pub trait Scalar: Clone + PartialEq + Debug {
 
 impl Scalar for Rational {
     const EXACT: bool = true;
+
+    fn bits(&self) -> Option<u32> {
+        None
+    }
 
     fn whole(&self, value: i32) -> Self {
         Self::from(value)
@@ -73,6 +80,10 @@ impl Scalar for Rational {
 impl Scalar for Float {
     const EXACT: bool = false;
 
+    fn bits(&self) -> Option<u32> {
+        Some(self.prec())
+    }
+
     fn whole(&self, value: i32) -> Self {
         Self::with_val(self.prec(), value)
     }
@@ -108,6 +119,11 @@ impl Scalar for Float {
 
 impl Scalar for Complex {
     const EXACT: bool = false;
+
+    fn bits(&self) -> Option<u32> {
+        let (re, im) = self.prec();
+        Some(re.min(im))
+    }
 
     fn whole(&self, value: i32) -> Self {
         Self::with_val(self.prec(), value)

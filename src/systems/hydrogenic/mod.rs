@@ -1,53 +1,144 @@
-//! One electron in a Coulomb field. Not there yet: no value of the type exists.
+//! One electron without spin in the field of a nucleus: H = p^2/(2 mu) - Z/r in the relative coordinate.
+//!
+//! Everything inside is done for charge and reduced mass one, in lengths rho = mu Z r; [`radial`] holds the factors. The exact backend
+//! represents functions as polynomials times exponentials, the numeric one expands them in Coulomb Sturmian functions.
 
-use super::*;
+mod action;
+mod bound;
+mod exact;
+mod finite_solution;
+mod function;
+mod labels;
+mod laguerre;
+mod laurent;
+mod moments;
+mod numeric;
+mod numeric_ket;
+mod operators;
+mod origin;
+mod radial;
+mod series;
+mod sturmian;
+#[cfg(test)]
+mod tests;
+mod vector;
 
-pub enum Hydrogenic {}
+use crate::num::{Effort, Surd};
+use crate::systems::{
+    Atom, Backend, Coupling, Level, Manifold, Number, Obstacle, Sector, State, StateLabel, System, SystemError,
+};
+use exact::ExactBackend;
+use numeric::NumericBackend;
+use radial::Scale;
+use rug::Rational;
+use std::cmp::Ordering;
+use std::sync::Arc;
+use sturmian::Kept;
+
+/// A hydrogen-like atom.
+#[derive(Clone, Debug)]
+pub struct Hydrogenic {
+    charge: Rational,
+    mass: Option<Rational>,
+    scale: Scale,
+    kept: Arc<Kept>,
+}
 
 impl Hydrogenic {
-    pub fn new(_: Rational, _: Option<Rational>) -> Result<Self, SystemError> {
-        Err(SystemError::NotYet("hydrogenic".into()))
+    /// An atom with nuclear charge Z and nuclear mass in electron masses; `None` for an infinite mass.
+    ///
+    /// Units: atomic units of the electron mass.
+    /// Range: Z > 0 and mass > 0, both rational.
+    /// Errors: `Refused` outside of it.
+    pub fn new(charge: Rational, mass: Option<Rational>) -> Result<Self, SystemError> {
+        let refused = |message: String, help: &str| Err(SystemError::Refused { message, help: help.into() });
+        if charge.cmp0() != Ordering::Greater {
+            return refused(
+                format!("Z={charge} binds no electron: the charge of the nucleus is positive"),
+                "write hydrogenic(Z=1), or another positive charge",
+            );
+        }
+        if let Some(mass) = mass.as_ref().filter(|m| m.cmp0() != Ordering::Greater) {
+            return refused(
+                format!("mass={mass} is not the mass of a nucleus"),
+                "give the mass in electron masses, as mass=1836.15267343, or leave it out for an infinite one",
+            );
+        }
+        // mu = M/(1 + M)
+        let reduced_mass = mass.as_ref().map_or(Rational::from(1), |m| m / Rational::from(m + 1));
+        let scale = Scale::new(&charge, &reduced_mass);
+        Ok(Hydrogenic { charge, mass, scale, kept: Arc::default() })
+    }
+
+    /// The charge of the nucleus.
+    pub fn charge(&self) -> &Rational {
+        &self.charge
+    }
+
+    /// The mass of the nucleus in electron masses; `None` when it is infinite.
+    pub fn mass(&self) -> Option<&Rational> {
+        self.mass.as_ref()
     }
 }
 
 impl System for Hydrogenic {
     fn kind(&self) -> &'static str {
-        match *self {}
+        "hydrogenic"
     }
-    fn state(&self, _: &StateLabel, _: &Effort) -> Result<State, SystemError> {
-        match *self {}
+
+    fn state(&self, label: &StateLabel, _: &Effort) -> Result<State, SystemError> {
+        labels::state(label)
     }
-    fn manifold(&self, _: &StateLabel, _: &Effort) -> Result<Manifold, SystemError> {
-        match *self {}
+
+    fn manifold(&self, label: &StateLabel, _: &Effort) -> Result<Manifold, SystemError> {
+        labels::manifold(label)
     }
-    fn energy(&self, _: &State, _: u32, _: &Effort) -> Result<Number, Obstacle> {
-        match *self {}
+
+    /// -mu Z^2/(2 n^2).
+    fn energy(&self, state: &State, _: u32, _: &Effort) -> Result<Number, Obstacle> {
+        let (n, ..) = labels::quantum_numbers(state).ok_or_else(exact::foreign)?;
+        Ok(Number::Exact(Surd::from(bound::energy(n) * &self.scale.energy)))
     }
-    fn degenerate(&self, _: &State, _: &State) -> bool {
-        match *self {}
+
+    fn degenerate(&self, a: &State, b: &State) -> bool {
+        a.numbers.first() == b.numbers.first()
     }
-    fn knows(&self, _: &Atom) -> Result<bool, SystemError> {
-        match *self {}
+
+    fn knows(&self, atom: &Atom) -> Result<bool, SystemError> {
+        operators::knows(atom)
     }
-    fn couple(&self, _: &Atom, _: Sector) -> Vec<Coupling> {
-        match *self {}
+
+    fn couple(&self, atom: &Atom, from: Sector) -> Vec<Coupling> {
+        operators::couple(atom, from, &self.charge)
     }
-    fn adjoint(&self, _: &Atom) -> (i32, Atom) {
-        match *self {}
+
+    fn adjoint(&self, atom: &Atom) -> (i32, Atom) {
+        operators::adjoint(atom)
     }
-    fn selection_rule(&self, _: &Atom) -> String {
-        match *self {}
+
+    fn without_pi(&self, atom: &Atom) -> Option<(i32, Atom)> {
+        operators::without_pi(atom)
     }
-    fn exact(&self, _: &Effort) -> Option<Arc<dyn Backend>> {
-        match *self {}
+
+    fn selection_rule(&self, atom: &Atom) -> String {
+        operators::selection_rule(atom)
     }
-    fn numeric(&self, _: Level, _: &State, _: &Effort) -> Result<Arc<dyn Backend>, Obstacle> {
-        match *self {}
+
+    fn exact(&self, effort: &Effort) -> Option<Arc<dyn Backend>> {
+        Some(Arc::new(ExactBackend::new(self.scale.clone(), effort.clone())))
     }
+
+    fn numeric(&self, level: Level, anchor: &State, effort: &Effort) -> Result<Arc<dyn Backend>, Obstacle> {
+        let (n, ..) = labels::quantum_numbers(anchor).ok_or_else(exact::foreign)?;
+        let kept = self.kept.clone();
+        Ok(Arc::new(NumericBackend::new(self.scale.clone(), level, n, kept, effort.clone())))
+    }
+
     fn basis_range(&self) -> Option<(usize, usize)> {
-        match *self {}
+        Some((16, 8192))
     }
+
     fn data_bits(&self) -> u32 {
-        match *self {}
+        0
     }
 }

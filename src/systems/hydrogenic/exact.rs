@@ -1,0 +1,217 @@
+//! The exact backend: functions that are finite sums of powers times exponentials.
+
+use super::action::{self, NoFunction};
+use super::bound::{bound_state, level_at};
+use super::finite_solution::{finite_solution, project_out};
+use super::function::{RadialFunction, Unintegrable};
+use super::labels::{omitted_levels, quantum_numbers, short};
+use super::radial::{Radial, Scale};
+use crate::num::{Effort, Surd};
+use crate::systems::{
+    Backend, Block, BlockKet, FunctionOfH, Number, Obstacle, RadialOperator, Resolvent, Sector, State,
+};
+use rug::Rational;
+use std::cmp::Ordering;
+use std::sync::Arc;
+
+/// Exact kets, operators and resolvents of a hydrogen-like atom.
+pub(super) struct ExactBackend {
+    scale: Scale,
+    effort: Effort,
+}
+
+impl ExactBackend {
+    pub(super) fn new(scale: Scale, effort: Effort) -> Self {
+        ExactBackend { scale, effort }
+    }
+}
+
+/// The orbital angular momentum of a sector.
+pub(super) fn orbital(sector: Sector) -> Result<u32, Obstacle> {
+    match sector.block {
+        Block::Orbital { l } => Ok(l),
+        Block::Whole => Err(Obstacle::Refused {
+            message: "a hydrogen-like atom has blocks with an orbital angular momentum only".into(),
+            help: "take states of this atom".into(),
+        }),
+    }
+}
+
+/// The sector and the exact function of an eigenstate.
+pub(super) fn eigenstate(state: &State) -> Result<(Sector, RadialFunction), Obstacle> {
+    let Some((n, l, m)) = quantum_numbers(state) else {
+        return Err(Obstacle::Refused {
+            message: format!("{} is not a state of a hydrogen-like atom", state.label),
+            help: "take states of this atom".into(),
+        });
+    };
+    Ok((Sector { block: Block::Orbital { l }, twice_m: 2 * m }, bound_state(n, l)))
+}
+
+/// Why a matrix element has no value, in words.
+pub(super) fn no_integral(operator: &str, reason: Unintegrable) -> Obstacle {
+    let why = match reason {
+        Unintegrable::Diverges { power } => {
+            format!("at the nucleus its integrand goes as r^{power}, and only powers above r^-1 can be integrated")
+        }
+        Unintegrable::Contact => "a delta function at the nucleus meets a function that is not finite there".into(),
+        Unintegrable::Logarithms => return Obstacle::Inexact,
+    };
+    Obstacle::Diverges { operator: operator.into(), why }
+}
+
+/// Applies an operator to an exact function, in the units of the atom with charge and reduced mass one.
+pub(super) fn apply_exactly(operator: Radial, l: u32, lp: u32, u: &RadialFunction) -> Result<RadialFunction, Obstacle> {
+    let result = match operator {
+        Radial::Power(s) => action::power(u, s, l == lp),
+        Radial::Gradient => action::gradient(u, l, lp),
+        Radial::PSquared => action::p_squared(u, l),
+        Radial::PFourth => action::p_squared(u, l).and_then(|once| action::p_squared(&once, l)),
+        Radial::DeltaTimesPi => action::delta_times_pi(u),
+        Radial::Delta => match action::delta_times_pi(u) {
+            Ok(v) if v.is_zero() => Ok(v),
+            Ok(_) => return Err(Obstacle::Inexact),
+            Err(reason) => Err(reason),
+        },
+        Radial::Hamiltonian => action::hamiltonian(u, l),
+    };
+    result.map_err(|reason| match reason {
+        NoFunction::Distribution => Obstacle::Inexact,
+        NoFunction::NotFinite => no_integral(&operator.name(), Unintegrable::Contact),
+    })
+}
+
+/// <bra|operator|ket> of exact functions, in the units of the atom with charge and reduced mass one.
+pub(super) fn element_exactly(
+    operator: Radial,
+    (l, lp): (u32, u32),
+    bra: &RadialFunction,
+    ket: &RadialFunction,
+) -> Result<Surd, Obstacle> {
+    let named = |reason| no_integral(&operator.name(), reason);
+    match operator {
+        Radial::PFourth => {
+            let bra = apply_exactly(Radial::PSquared, lp, lp, bra)?;
+            let ket = apply_exactly(Radial::PSquared, l, l, ket)?;
+            bra.inner(&ket).map_err(named)
+        }
+        Radial::Delta | Radial::DeltaTimesPi => {
+            let bra = bra.value_at_nucleus().map_err(named)?;
+            let ket = ket.value_at_nucleus().map_err(named)?;
+            let value = (&bra.conj() * &ket).scaled(&Rational::from((1, 4)));
+            Ok(if operator == Radial::Delta { &value * &Surd::pi_to(-1) } else { value })
+        }
+        _ => bra.inner(&apply_exactly(operator, l, lp, ket)?).map_err(named),
+    }
+}
+
+/// The levels left out of a block, after checking that the energy is not another level's.
+///
+/// z is in units of the atom with charge and reduced mass one.
+pub(super) fn levels_left_out(resolvent: &Resolvent, z: &Rational, l: u32) -> Result<Vec<u32>, Obstacle> {
+    if z.cmp0() != Ordering::Less {
+        return Err(Obstacle::OnCut);
+    }
+    let levels = omitted_levels(&resolvent.omitted, l);
+    match level_at(z) {
+        Some(n) if n > l && !levels.contains(&n) => Err(Obstacle::Singular { level: short(n, l) }),
+        _ => Ok(levels),
+    }
+}
+
+/// Q (z - H)^-1 Q on an exact function, in the units of the atom with charge and reduced mass one.
+pub(super) fn resolve_exactly(
+    z: &Rational,
+    levels: &[u32],
+    l: u32,
+    source: &RadialFunction,
+    effort: &Effort,
+) -> Result<RadialFunction, Obstacle> {
+    let named = |reason| no_integral("the sum over intermediate states", reason);
+    let source = project_out(source, l, levels).map_err(named)?;
+    let solution = finite_solution(z, l, &source, effort)?.ok_or(Obstacle::Inexact)?;
+    project_out(&solution, l, levels).map_err(named)
+}
+
+fn open(ket: &BlockKet) -> Result<&RadialFunction, Obstacle> {
+    ket.downcast_ref().ok_or_else(foreign)
+}
+
+/// A ket that another backend has made.
+pub(super) fn foreign() -> Obstacle {
+    Obstacle::Refused {
+        message: "a bra and a ket of two systems do not meet".into(),
+        help: "take all states of an expression from one system".into(),
+    }
+}
+
+impl Backend for ExactBackend {
+    fn state(&self, state: &State) -> Result<Vec<(Sector, BlockKet)>, Obstacle> {
+        let (sector, u) = eigenstate(state)?;
+        Ok(vec![(sector, Arc::new(u))])
+    }
+
+    fn apply(&self, operator: &RadialOperator, from: Sector, to: Sector, ket: &BlockKet) -> Result<BlockKet, Obstacle> {
+        self.effort.check()?;
+        let radial = Radial::of(operator)?;
+        let u = apply_exactly(radial, orbital(from)?, orbital(to)?, open(ket)?)?;
+        Ok(Arc::new(u.scaled(&self.scale.of(radial))))
+    }
+
+    fn resolve(&self, resolvent: &Resolvent, sector: Sector, ket: &BlockKet) -> Result<BlockKet, Obstacle> {
+        let l = orbital(sector)?;
+        let Number::Exact(z) = &resolvent.z else {
+            return Err(Obstacle::Inexact);
+        };
+        let Some(z) = z.as_rational() else {
+            return Err(Obstacle::Inexact);
+        };
+        let z = Rational::from(z.as_ref() / &self.scale.energy);
+        let levels = levels_left_out(resolvent, &z, l)?;
+        let u = resolve_exactly(&z, &levels, l, open(ket)?, &self.effort)?;
+        Ok(Arc::new(u.scaled(&Rational::from(self.scale.energy.recip_ref()))))
+    }
+
+    fn function(&self, _: &FunctionOfH, _: Sector, _: &BlockKet) -> Result<BlockKet, Obstacle> {
+        Err(Obstacle::Inexact)
+    }
+
+    fn combine(&self, _: Sector, terms: &[(Number, BlockKet)]) -> Result<BlockKet, Obstacle> {
+        let mut sum = RadialFunction::default();
+        for (weight, ket) in terms {
+            let Number::Exact(weight) = weight else {
+                return Err(Obstacle::Inexact);
+            };
+            if weight.has_pi() {
+                // Radial functions carry square roots; pi comes with matrix elements only.
+                return Err(Obstacle::Inexact);
+            }
+            sum.add_scaled(weight, open(ket)?);
+        }
+        Ok(Arc::new(sum))
+    }
+
+    fn overlap(&self, _: Sector, bra: &BlockKet, ket: &BlockKet) -> Result<Number, Obstacle> {
+        self.effort.check()?;
+        let value = open(bra)?.inner(open(ket)?);
+        value.map(Number::Exact).map_err(|reason| no_integral(&Radial::Power(0).name(), reason))
+    }
+
+    fn element(
+        &self,
+        operator: &RadialOperator,
+        from: Sector,
+        to: Sector,
+        bra: &BlockKet,
+        ket: &BlockKet,
+    ) -> Result<Number, Obstacle> {
+        self.effort.check()?;
+        let radial = Radial::of(operator)?;
+        let value = element_exactly(radial, (orbital(from)?, orbital(to)?), open(bra)?, open(ket)?)?;
+        Ok(Number::Exact(value.scaled(&self.scale.of(radial))))
+    }
+
+    fn vanishes(&self, ket: &BlockKet) -> bool {
+        open(ket).is_ok_and(RadialFunction::is_zero)
+    }
+}
