@@ -29,6 +29,11 @@ pub(super) fn comparison(a: &Value, b: &Value, digits: u32) -> Answer {
         answer.verdict = "equal".into();
         return answer;
     }
+    if let Agreement::BothBelow { power } = digits_in_common(&a.scalar, &b.scalar) {
+        answer.lines.push(format!("~ both 0 below 1e-{power}, not proved"));
+        answer.verdict = "zero, not proved".into();
+        return answer;
+    }
     let common = common_digits(&a.scalar, &b.scalar, digits);
     if common >= digits {
         let rendered = render(&a.scalar, digits);

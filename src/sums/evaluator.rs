@@ -3,7 +3,7 @@
 use super::environment::Environment;
 use super::problem::{Failure, Trouble};
 use super::walker::Kept;
-use crate::angular::{HalfInteger, threej};
+use crate::angular::{HalfInteger, ninej, sixj, threej};
 use crate::num::{Ball, ComplexBall, Effort, Function, NumberError, Scalar, Surd};
 use crate::systems::{Level, Manifold, State, StateLabel, System};
 use crate::theory::terms::*;
@@ -235,29 +235,36 @@ impl<'s> Evaluator<'s> {
                 }
                 Ok(sum)
             }
-            ScalarNode::ThreeJ(arguments) => {
-                let refused = |place, message: String| {
-                    Failure::new(place, Trouble::Refused { message, help: "write 0, 1/2, 1, 3/2, …".into() })
-                };
-                let mut values = Vec::with_capacity(arguments.len());
-                for argument in arguments {
-                    let value = self.exact_scalar(argument, environment)?;
-                    let Some(rational) = value.as_rational() else {
-                        return Err(refused(argument.place, format!("{value} is not a half-integer")));
-                    };
-                    values.push(
-                        HalfInteger::from_rational(&rational)
-                            .map_err(|error| refused(argument.place, error.to_string()))?,
-                    );
-                }
-                let [j1, j2, j3, m1, m2, m3] = values.as_slice() else {
-                    return Err(refused(place, "a 3j symbol has six arguments".into()));
-                };
-                threej(*j1, *j2, *j3, *m1, *m2, *m3)
-                    .map(Scalar::Exact)
-                    .map_err(|error| refused(place, error.to_string()))
-            }
+            ScalarNode::Wigner(symbol, arguments) => self.wigner(*symbol, arguments, environment, place),
         }
+    }
+
+    /// A 3j, 6j or 9j symbol; exact.
+    fn wigner(
+        &mut self,
+        symbol: WignerSymbol,
+        arguments: &[ScalarTerm],
+        environment: &Environment,
+        place: Place,
+    ) -> Evaluated<Scalar> {
+        let refused = |place, message: String| {
+            Failure::new(place, Trouble::Refused { message, help: "write 0, 1/2, 1, 3/2, …".into() })
+        };
+        let mut j = Vec::with_capacity(arguments.len());
+        for argument in arguments {
+            let value = self.exact_scalar(argument, environment)?;
+            let Some(rational) = value.as_rational() else {
+                return Err(refused(argument.place, format!("{value} is not a half-integer")));
+            };
+            j.push(HalfInteger::from_rational(&rational).map_err(|error| refused(argument.place, error.to_string()))?);
+        }
+        let value = match (symbol, j.as_slice()) {
+            (WignerSymbol::ThreeJ, &[j1, j2, j3, m1, m2, m3]) => threej(j1, j2, j3, m1, m2, m3),
+            (WignerSymbol::SixJ, &[j1, j2, j3, l1, l2, l3]) => sixj([j1, j2, j3, l1, l2, l3]),
+            (WignerSymbol::NineJ, &[a, b, c, d, e, f, g, h, i]) => ninej([[a, b, c], [d, e, f], [g, h, i]]),
+            _ => return Err(refused(place, format!("the symbol takes {}", symbol.arguments().1))),
+        };
+        value.map(Scalar::Exact).map_err(|error| refused(place, error.to_string()))
     }
 
     /// The value of a term that has to be exact (arguments of operators, limits of sums).

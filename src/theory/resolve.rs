@@ -345,20 +345,22 @@ impl<'a> Resolver<'a> {
         match name.text.as_str() {
             "E" => self.energy(arguments, span),
             "zero" | "sum" => self.bound_variable(name, arguments, span),
-            "threej" => {
-                let plain = self.positional(&name.text, arguments, span)?;
-                if plain.len() != 6 {
+            symbol if WignerSymbol::named(symbol).is_some_and(|_| !self.names.later.contains_key(symbol)) => {
+                let plain = self.positional(symbol, arguments, span)?;
+                let Some(symbol) = WignerSymbol::named(symbol) else { return self.unknown(symbol, name.span) };
+                let (count, wanted) = symbol.arguments();
+                if plain.len() != count {
                     return self.fault(
                         span,
                         Fault::ArgumentCount {
                             name: name.text.clone(),
-                            wanted: "six arguments (j1, j2, j3, m1, m2, m3)".into(),
+                            wanted: wanted.into(),
                             got: format!("{} are", plain.len()),
                         },
                     );
                 }
                 let terms = plain.iter().map(|a| self.scalar(a)).collect::<Resolved<Vec<_>>>()?;
-                Ok(Meaning::Scalar(self.term(ScalarNode::ThreeJ(terms), span)))
+                Ok(Meaning::Scalar(self.term(ScalarNode::Wigner(symbol, terms), span)))
             }
             "delta" if self.names.operators.contains("delta") => {
                 let plain = self.positional(&name.text, arguments, span)?;

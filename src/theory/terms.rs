@@ -67,8 +67,8 @@ pub enum ScalarNode {
         to: ScalarTerm,
         body: ScalarTerm,
     },
-    /// `threej(j1, j2, j3, m1, m2, m3)`
-    ThreeJ(Vec<ScalarTerm>),
+    /// `threej(j1, j2, j3, m1, m2, m3)` and its like
+    Wigner(WignerSymbol, Vec<ScalarTerm>),
 }
 
 #[derive(Clone, Copy, PartialEq, Eq, Debug, Hash)]
@@ -99,6 +99,35 @@ impl ScalarFunction {
             "im" => Self::Im,
             _ => return None,
         })
+    }
+}
+
+/// The symbols of angular momentum theory that expressions may ask for.
+#[derive(Clone, Copy, PartialEq, Eq, Debug, Hash)]
+pub enum WignerSymbol {
+    ThreeJ,
+    SixJ,
+    NineJ,
+}
+
+impl WignerSymbol {
+    /// The symbol of that name in the session language.
+    pub fn named(name: &str) -> Option<Self> {
+        match name {
+            "threej" => Some(Self::ThreeJ),
+            "sixj" => Some(Self::SixJ),
+            "ninej" => Some(Self::NineJ),
+            _ => None,
+        }
+    }
+
+    /// How many arguments it takes, and which.
+    pub fn arguments(self) -> (usize, &'static str) {
+        match self {
+            Self::ThreeJ => (6, "six arguments (j1, j2, j3, m1, m2, m3)"),
+            Self::SixJ => (6, "six arguments (the upper row, then the lower)"),
+            Self::NineJ => (9, "nine arguments, row by row"),
+        }
     }
 }
 

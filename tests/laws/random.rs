@@ -137,6 +137,11 @@ pub fn number(record: &str) -> Option<Rational> {
     text.parse().ok()
 }
 
+/// Whether the record of a `compare` says that both sides agree; two zeros that are not proved agree.
+pub fn agrees(record: &str) -> bool {
+    record.contains("equal") || record.contains("both 0 below")
+}
+
 /// A session that starts with the system `m` (H and V), its ground state g, and a number of digits.
 pub fn session(h: &Rows, v: &Rows, digits: u32) -> String {
     let mut text = String::from("ketwork session 1\n");
