@@ -4,7 +4,7 @@
 //! depend on what was asked before.
 
 use super::{MatrixSystem, obstacle};
-use crate::linalg::eigen::{EigenCluster, refine_cluster};
+use crate::linalg::eigen::{EigenCluster, refine_cluster_near};
 use crate::num::Effort;
 use crate::systems::Obstacle;
 use std::ops::Range;
@@ -77,7 +77,9 @@ impl MatrixSystem {
             return Ok(known);
         }
         let h = self.hermitian(component, key.entry_bits)?;
-        let cluster = Arc::new(refine_cluster(&h, places, bits, effort).map_err(obstacle)?);
+        let rough = self.rough(effort)?;
+        let preview = rough.previews.get(&component);
+        let cluster = Arc::new(refine_cluster_near(&h, preview, places, bits, effort).map_err(obstacle)?);
         let numbers = 2 * (cluster.vectors.len() * h.order()) as u64;
         self.clusters.keep(key, cluster.clone(), numbers * (u64::from(bits) / 8 + 64));
         Ok(cluster)
