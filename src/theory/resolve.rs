@@ -264,7 +264,7 @@ impl<'a> Resolver<'a> {
         if self.operator_word(name) {
             return Ok(self.atom(base, component, Vec::new(), span));
         }
-        if ScalarFunction::named(name).is_some() {
+        if function_named(name).is_some() {
             return self.fault(
                 span,
                 Fault::ArgumentCount {
@@ -325,7 +325,7 @@ impl<'a> Resolver<'a> {
             let plain = self.positional(&name.text, arguments, span)?;
             return self.call_definition(definition, &plain, span);
         }
-        if let Some(function) = ScalarFunction::named(&name.text) {
+        if let Some(function) = function_named(&name.text) {
             let [argument] = self.positional(&name.text, arguments, span)?.try_into().or_else(|list: Vec<Expr>| {
                 self.fault(
                     span,
