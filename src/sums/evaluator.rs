@@ -99,7 +99,7 @@ impl<'s> Evaluator<'s> {
             let more = if others.len() > 4 { ", …" } else { "" };
             let others: Vec<String> = others.into_iter().take(4).collect();
             format!(
-                "the level of {left_out} is coupled in first order: an operator leads to {}{more} of the same energy, which the prime leaves \
+                "the level of the state {left_out} is coupled in first order: an operator leads to {}{more} of the same energy, which the prime leaves \
                  out; perturbation theory of one state of a level needs states that diagonalise the perturbation",
                 others.join("; ")
             )
