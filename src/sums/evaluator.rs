@@ -4,7 +4,7 @@ use super::environment::Environment;
 use super::problem::{Failure, Trouble};
 use super::walker::Kept;
 use crate::angular::{HalfInteger, ninej, sixj, threej};
-use crate::num::{Ball, ComplexBall, Effort, Function, NumberError, Scalar, Surd};
+use crate::num::{Ball, ComplexBall, Effort, NumberError, Scalar, Surd};
 use crate::systems::{Level, Manifold, State, StateLabel, System};
 use crate::theory::terms::*;
 use rug::{Complex, Float, Integer, Rational};
@@ -99,7 +99,7 @@ impl<'s> Evaluator<'s> {
             let more = if others.len() > 4 { ", …" } else { "" };
             let others: Vec<String> = others.into_iter().take(4).collect();
             format!(
-                "the level of {left_out} is coupled in first order: an operator leads to {}{more} of the same energy, which the prime leaves \
+                "the level of the state {left_out} is coupled in first order: an operator leads to {}{more} of the same energy, which the prime leaves \
                  out; perturbation theory of one state of a level needs states that diagonalise the perturbation",
                 others.join("; ")
             )
@@ -195,7 +195,7 @@ impl<'s> Evaluator<'s> {
             }
             ScalarNode::Function(function, inner) => {
                 let value = self.scalar(inner, environment, bits)?;
-                value.apply(numeric_function(*function), bits).map_err(at)
+                value.apply(*function, bits).map_err(at)
             }
             ScalarNode::Energy(state) => {
                 let system = self.system(&state.system, state.place)?;
@@ -377,19 +377,5 @@ pub(super) fn ball(value: Complex, radius: Float) -> Result<ComplexBall, NumberE
         Ok(ComplexBall::real(Ball::with_radius(value.into_real_imag().0, radius)?))
     } else {
         ComplexBall::from_complex(value, radius)
-    }
-}
-
-fn numeric_function(function: ScalarFunction) -> Function {
-    match function {
-        ScalarFunction::Sqrt => Function::Sqrt,
-        ScalarFunction::Exp => Function::Exp,
-        ScalarFunction::Ln => Function::Ln,
-        ScalarFunction::Sin => Function::Sin,
-        ScalarFunction::Cos => Function::Cos,
-        ScalarFunction::Abs => Function::Abs,
-        ScalarFunction::Conj => Function::Conj,
-        ScalarFunction::Re => Function::Re,
-        ScalarFunction::Im => Function::Im,
     }
 }

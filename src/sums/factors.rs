@@ -71,6 +71,9 @@ impl Walker<'_, '_> {
                     flat.factors.push(factor);
                     return Ok(());
                 }
+                if atom.power == 0 {
+                    return Ok(());
+                }
                 if !(1..=1000).contains(&atom.power) {
                     return Err(Failure::new(
                         operator.place,
@@ -178,6 +181,20 @@ impl Walker<'_, '_> {
         terms
             .iter()
             .map(|term| match term {
+                OmittedTerm::LevelOf(StateTerm { system, place, .. })
+                | OmittedTerm::Manifold(ManifoldTerm { system, place, .. })
+                    if !std::sync::Arc::ptr_eq(&self.evaluator.system(system, *place)?, &self.system) =>
+                {
+                    Err(Failure::new(
+                        *place,
+                        Trouble::Refused {
+                            message: format!(
+                                "the states left out belong to `{system}`, and the bracket to another system"
+                            ),
+                            help: "leave out states of the system whose H stands in the resolvent".into(),
+                        },
+                    ))
+                }
                 OmittedTerm::LevelOf(state) => Ok(Omitted::LevelOf(self.evaluator.state(state, environment)?)),
                 OmittedTerm::Manifold(manifold) => {
                     Ok(Omitted::Manifold(self.evaluator.manifold(manifold, environment)?))

@@ -36,6 +36,8 @@ pub struct Walker<'w, 's> {
     /// Working precision of numbers that are not exact; `None` on the exact backend.
     pub bits: Option<u32>,
     pub kept: Kept,
+    /// The eigenstate a bracket ends in, for the note on degenerate levels.
+    pub outer: Option<State>,
 }
 
 impl Walker<'_, '_> {
@@ -47,6 +49,10 @@ impl Walker<'_, '_> {
         };
         let bra = self.ket(&bracket.bra, environment)?;
         let ket = self.ket(&bracket.ket, environment)?;
+        self.outer = match &*bracket.ket.node {
+            KetNode::State(state) => Some(self.evaluator.state(state, environment)?),
+            _ => None,
+        };
         let place = bracket.operator.as_ref().map_or(bracket.ket.place, |operator| operator.place);
         self.scaled_sandwich(&bra, &flat, &ket, place)
     }
@@ -92,11 +98,15 @@ impl Walker<'_, '_> {
     /// perturbation theory for one state of it holds only if its states diagonalise the operator.
     fn note_coupling(&mut self, resolvent: &Resolvent, ket: &SectorKet, place: Place) -> Walked<()> {
         let at = |obstacle| Failure::new(place, obstacle);
+        let Some(outer) = self.outer.clone() else { return Ok(()) };
         for omitted in &resolvent.omitted {
             let Omitted::LevelOf(left_out) = omitted else { continue };
+            if !self.system.degenerate(&outer, left_out) {
+                continue;
+            }
             for (sector, part) in ket.parts.iter() {
                 let states = self.system.level_in(left_out, *sector, &self.evaluator.effort).map_err(at)?;
-                for state in states.iter().filter(|state| *state != left_out) {
+                for state in states.iter().filter(|state| **state != outer) {
                     let other = match self.eigenstate(state, place) {
                         Ok(ket) => ket.parts.get(sector).cloned(),
                         Err(failure) if failure.is_inexact() => None,
@@ -113,7 +123,7 @@ impl Walker<'_, '_> {
                         (Number::Approx(_), None) => false,
                     };
                     if coupled {
-                        self.evaluator.note_coupling(&left_out.label, &state.label);
+                        self.evaluator.note_coupling(&outer.label, &state.label);
                     }
                 }
             }

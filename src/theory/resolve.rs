@@ -249,6 +249,15 @@ impl<'a> Resolver<'a> {
             None => {}
         }
         match name {
+            "inf" => {
+                return self.fault(
+                    span,
+                    Fault::Other {
+                        message: "`inf` is no number to compute with".into(),
+                        help: "ranges of `zero` and `sum` are finite; `inf` stands for an infinite nuclear mass: `mass=inf`".into(),
+                    },
+                );
+            }
             "pi" => return Ok(Meaning::Scalar(self.term(ScalarNode::Pi, span))),
             "i" => return Ok(Meaning::Scalar(self.term(ScalarNode::Exact(Surd::i()), span))),
             "H" => return Ok(Meaning::Operator(self.term(OperatorNode::Hamiltonian, span))),
@@ -264,7 +273,7 @@ impl<'a> Resolver<'a> {
         if self.operator_word(name) {
             return Ok(self.atom(base, component, Vec::new(), span));
         }
-        if ScalarFunction::named(name).is_some() {
+        if function_named(name).is_some() {
             return self.fault(
                 span,
                 Fault::ArgumentCount {
@@ -325,7 +334,7 @@ impl<'a> Resolver<'a> {
             let plain = self.positional(&name.text, arguments, span)?;
             return self.call_definition(definition, &plain, span);
         }
-        if let Some(function) = ScalarFunction::named(&name.text) {
+        if let Some(function) = function_named(&name.text) {
             let [argument] = self.positional(&name.text, arguments, span)?.try_into().or_else(|list: Vec<Expr>| {
                 self.fault(
                     span,
@@ -420,7 +429,7 @@ impl<'a> Resolver<'a> {
                             Fault::WrongBinding {
                                 name: name.clone(),
                                 got: other.describe(),
-                                wanted: "a state: E(g) is the energy of an eigenstate".into(),
+                                wanted: "an eigenstate (`state g = h[1s]`)".into(),
                             },
                         );
                     }

@@ -4,6 +4,7 @@
 //! the variables in scope, identifies the term while names keep their meaning, which they do during one evaluation.
 
 use crate::lang::tree::{DefinitionKind, Expr, Span};
+pub use crate::num::Function as ScalarFunction;
 use crate::num::Surd;
 use rug::Rational;
 use std::sync::Arc;
@@ -71,35 +72,20 @@ pub enum ScalarNode {
     Wigner(WignerSymbol, Vec<ScalarTerm>),
 }
 
-#[derive(Clone, Copy, PartialEq, Eq, Debug, Hash)]
-pub enum ScalarFunction {
-    Sqrt,
-    Exp,
-    Ln,
-    Sin,
-    Cos,
-    Abs,
-    Conj,
-    Re,
-    Im,
-}
-
-impl ScalarFunction {
-    /// The function of that name in the session language.
-    pub fn named(name: &str) -> Option<Self> {
-        Some(match name {
-            "sqrt" => Self::Sqrt,
-            "exp" => Self::Exp,
-            "ln" => Self::Ln,
-            "sin" => Self::Sin,
-            "cos" => Self::Cos,
-            "abs" => Self::Abs,
-            "conj" => Self::Conj,
-            "re" => Self::Re,
-            "im" => Self::Im,
-            _ => return None,
-        })
-    }
+/// The function of numbers with that name in the session language.
+pub fn function_named(name: &str) -> Option<ScalarFunction> {
+    Some(match name {
+        "sqrt" => ScalarFunction::Sqrt,
+        "exp" => ScalarFunction::Exp,
+        "ln" => ScalarFunction::Ln,
+        "sin" => ScalarFunction::Sin,
+        "cos" => ScalarFunction::Cos,
+        "abs" => ScalarFunction::Abs,
+        "conj" => ScalarFunction::Conj,
+        "re" => ScalarFunction::Re,
+        "im" => ScalarFunction::Im,
+        _ => return None,
+    })
 }
 
 /// The symbols of angular momentum theory that expressions may ask for.

@@ -188,17 +188,7 @@ fn overlap(backend: &dyn Backend, left: &Ket, right: &Ket) -> Result<Number, Obs
 }
 
 pub(super) fn approximate(number: &Number, bits: u32) -> rug::Complex {
-    match number {
-        Number::Approx(z) => rug::Complex::with_val(bits, z),
-        Number::Exact(surd) => {
-            let mut sum = rug::Complex::new(bits);
-            for (unit, c) in surd.terms() {
-                let root = rug::Float::with_val(bits, &unit.radicand).sqrt();
-                sum += rug::Complex::with_val(bits, (&c.re, &c.im)) * root;
-            }
-            sum
-        }
-    }
+    number.to_complex(bits)
 }
 
 const BITS: u32 = 1024;
