@@ -18,7 +18,7 @@ impl NumericBackend {
         ket: &[Complex],
     ) -> Result<Vec<Complex>, Obstacle> {
         let precision = self.precision();
-        let pairs = self.eigenpairs(component)?;
+        let pairs = self.system.refined(component, 0..ket.len(), self.bits + 32, 0, &self.effort)?;
         let out = |place: usize| {
             omitted
                 .iter()

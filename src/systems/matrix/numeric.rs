@@ -3,8 +3,7 @@
 use super::entries::ExactMatrix;
 use super::levels::EnergyLevel;
 use super::vectors::{add_numeric_multiple, dot};
-use super::{MatrixSystem, WHOLE, obstacle};
-use crate::linalg::eigen::{Eigenpairs, all_eigenpairs};
+use super::{MatrixSystem, WHOLE};
 use crate::num::Effort;
 use crate::systems::{Backend, BlockKet, FunctionOfH, Number, Obstacle, RadialOperator, Resolvent, Sector, State};
 use rug::{Complex, Float};
@@ -27,8 +26,6 @@ pub struct Work {
     matrices: Mutex<BTreeMap<i64, Arc<RoundedMatrix>>>,
     /// The states of levels by their first state.
     states: Mutex<BTreeMap<usize, Arc<Vec<NumericKet>>>>,
-    /// By component.
-    eigenpairs: Mutex<BTreeMap<usize, Arc<Eigenpairs>>>,
 }
 
 /// The nonzero entries of a matrix by rows.
@@ -97,7 +94,7 @@ fn open(ket: &BlockKet) -> Result<&NumericKet, Obstacle> {
 
 impl Work {
     pub fn new(bits: u32) -> Self {
-        Work { bits, matrices: Mutex::default(), states: Mutex::default(), eigenpairs: Mutex::default() }
+        Work { bits, matrices: Mutex::default(), states: Mutex::default() }
     }
 }
 
@@ -132,17 +129,6 @@ impl NumericBackend {
         let states = Arc::new(self.system.numeric_states(level, self.bits, &self.effort)?);
         self.states.lock().unwrap_or_else(PoisonError::into_inner).insert(level.first, states.clone());
         Ok(states)
-    }
-
-    /// All eigenvalues and eigenvectors of a component.
-    pub(super) fn eigenpairs(&self, component: usize) -> Result<Arc<Eigenpairs>, Obstacle> {
-        if let Some(pairs) = self.eigenpairs.lock().unwrap_or_else(PoisonError::into_inner).get(&component) {
-            return Ok(pairs.clone());
-        }
-        let h = self.system.hermitian(component, self.bits + 64)?;
-        let pairs = Arc::new(all_eigenpairs(&h, self.bits + 32, &self.effort).map_err(obstacle)?);
-        self.eigenpairs.lock().unwrap_or_else(PoisonError::into_inner).insert(component, pairs.clone());
-        Ok(pairs)
     }
 
     /// Lets something act on the part of a ket in each component it reaches.
