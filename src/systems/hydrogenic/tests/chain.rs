@@ -187,32 +187,13 @@ fn overlap(backend: &dyn Backend, left: &Ket, right: &Ket) -> Result<Number, Obs
     Ok(sum)
 }
 
-pub(super) fn approximate(number: &Number, bits: u32) -> rug::Complex {
-    match number {
-        Number::Approx(z) => rug::Complex::with_val(bits, z),
-        Number::Exact(surd) => {
-            let mut sum = rug::Complex::new(bits);
-            for (unit, c) in surd.terms() {
-                let root = rug::Float::with_val(bits, &unit.radicand).sqrt();
-                sum += rug::Complex::with_val(bits, (&c.re, &c.im)) * root;
-            }
-            sum
-        }
-    }
-}
-
+/// Precision of sums of approximate numbers.
 const BITS: u32 = 1024;
 
 fn add(a: Number, b: Number) -> Number {
-    match (a, b) {
-        (Number::Exact(a), Number::Exact(b)) => Number::Exact(&a + &b),
-        (a, b) => Number::Approx(approximate(&a, BITS) + approximate(&b, BITS)),
-    }
+    a.plus(&b, BITS)
 }
 
 fn multiply(a: &Surd, b: Number) -> Number {
-    match b {
-        Number::Exact(b) => Number::Exact(a * &b),
-        b => Number::Approx(approximate(&Number::Exact(a.clone()), BITS) * approximate(&b, BITS)),
-    }
+    Number::Exact(a.clone()).times(&b, BITS)
 }
