@@ -38,7 +38,7 @@ const OUTSIDE: [&str; 14] = [
 ];
 
 /// Lines a file of src/ may have, its unit tests not counted: one file is one idea.
-const LONGEST_FILE: usize = 750;
+const LONGEST_FILE: usize = 700;
 
 /// A file below src/: its room, its path from there, its text.
 struct Source {

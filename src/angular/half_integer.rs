@@ -3,7 +3,7 @@
 use rug::Rational;
 use std::fmt;
 
-/// Largest angular momentum that may be written in a symbol; larger ones are long integers that nobody reads.
+/// Largest angular momentum the exact symbols accept; larger ones are long integers that nobody reads.
 pub const LARGEST_J: i32 = 5000;
 
 /// A multiple of one half, kept as its double.
@@ -63,7 +63,13 @@ impl HalfInteger {
 
     /// Checks that this can be an angular momentum.
     pub(crate) fn as_momentum(self) -> Result<i32, AngularError> {
-        if self.twice < 0 { Err(AngularError::Negative { value: self }) } else { Ok(self.twice) }
+        if self.twice < 0 {
+            Err(AngularError::Negative { value: self })
+        } else if self.twice > 2 * LARGEST_J {
+            Err(AngularError::TooLarge { value: Rational::from((self.twice, 2)) })
+        } else {
+            Ok(self.twice)
+        }
     }
 }
 

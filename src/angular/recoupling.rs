@@ -1,19 +1,21 @@
 //! 6j and 9j symbols, exactly.
 
-use super::factorials::FactorialProduct;
+use super::binomials::four_product_sum;
+use super::factorials::PrimePowers;
 use super::half_integer::{AngularError, HalfInteger};
 use super::wigner::triangle;
 use crate::num::Surd;
-use rug::{Integer, Rational};
+use rug::Integer;
 
 /// Longest 9j sum done exactly, in terms of the three sums inside.
-const LONGEST_NINEJ: u64 = 100_000;
+const LONGEST_NINEJ: u64 = 2_000_000;
 
 /// The 6j symbol {j1 j2 j3; j4 j5 j6}.
 ///
 /// Zero where a triangle (1 2 3), (1 5 6), (4 2 6) or (4 5 3) does not close.
-/// Errors: a negative angular momentum, a triangle whose sum is not whole.
-/// Source: Racah (Edmonds, eq. 6.3.7).
+/// Errors: an angular momentum that is negative or too large, a triangle whose sum is not whole.
+/// Cost: a sum of at most 2 j + 1 products of four binomials.
+/// Source: Racah (Edmonds, eq. 6.3.7), rewritten here in binomials.
 pub fn sixj(j: [HalfInteger; 6]) -> Result<Surd, AngularError> {
     let [j1, j2, j3, j4, j5, j6] = j;
     let triads = [[j1, j2, j3], [j1, j5, j6], [j4, j2, j6], [j4, j5, j3]];
@@ -24,87 +26,120 @@ pub fn sixj(j: [HalfInteger; 6]) -> Result<Surd, AngularError> {
     if !closes {
         return Ok(Surd::zero());
     }
-    let half_sum = |parts: &[HalfInteger]| parts.iter().map(|p| p.twice()).sum::<i32>() / 2;
-    let lower = triads.map(|t| half_sum(&t));
-    let upper = [half_sum(&[j1, j2, j4, j5]), half_sum(&[j2, j3, j5, j6]), half_sum(&[j3, j1, j6, j4])];
-    let sum = alternating_sum(&lower, &upper);
-    let mut square = FactorialProduct::new();
-    for [a, b, c] in triads.map(|t| t.map(HalfInteger::twice)) {
-        for k in [(a + b - c) / 2, (a - b + c) / 2, (-a + b + c) / 2] {
-            square.times(k, 1);
-        }
-        square.times((a + b + c) / 2 + 1, -1);
+    let racah = RacahSum::of(j.map(HalfInteger::twice));
+    if racah.sum == 0 {
+        return Ok(Surd::zero());
     }
-    Ok(square.square_root().scaled(&sum))
+    let mut square = PrimePowers::up_to(racah.largest + 1);
+    for triad in triads {
+        times_triangle(&mut square, triad.map(HalfInteger::twice), 1);
+    }
+    racah.times_prefactor(&mut square, 2);
+    Ok(square.square_root_times(racah.sum))
 }
 
-/// sum over t of (-1)^t (t+1)! / (prod (t - lower)! prod (upper - t)!).
-fn alternating_sum(lower: &[i32; 4], upper: &[i32; 3]) -> Rational {
-    let first = lower.iter().copied().max().unwrap_or(0);
-    let last = upper.iter().copied().min().unwrap_or(-1);
-    let factorial = |k: i32| Integer::from(Integer::factorial(u32::try_from(k).unwrap_or(0)));
-    // Relative to the first term every term is a rational; a common denominator grows with the sum instead.
-    let mut leading = Rational::from(factorial(first + 1));
-    for k in lower.iter().map(|l| first - l).chain(upper.iter().map(|u| u - first)) {
-        leading /= factorial(k);
+/// The sum in a 6j symbol with its triangles closed, up to the triangle coefficients.
+struct RacahSum {
+    sum: Integer,
+    /// (largest + 1)! / prod (bounds)! multiplies the sum.
+    largest: i32,
+    bounds: [i32; 3],
+}
+
+impl RacahSum {
+    /// From the doubled angular momenta.
+    fn of([j1, j2, j3, j4, j5, j6]: [i32; 6]) -> Self {
+        let mut lower = [(j1 + j2 + j3) / 2, (j1 + j5 + j6) / 2, (j4 + j2 + j6) / 2, (j4 + j5 + j3) / 2];
+        let upper = [(j1 + j2 + j4 + j5) / 2, (j2 + j3 + j5 + j6) / 2, (j3 + j1 + j6 + j4) / 2];
+        lower.sort_unstable_by(|a, b| b.cmp(a));
+        let bounds = [upper[0] - lower[1], upper[1] - lower[2], upper[2] - lower[3]];
+        RacahSum { sum: four_product_sum(&lower, &upper), largest: lower[0], bounds }
     }
-    if first % 2 != 0 {
-        leading = -leading;
-    }
-    // Horner from the last term: 1 - ratio(first) (1 - ratio(first + 1) (1 - ...))
-    let (mut numer, mut denom) = (Integer::from(1), Integer::from(1));
-    for t in (first..last).rev() {
-        let mut up = Integer::from(t + 2);
-        for u in upper {
-            up *= u - t;
+
+    fn times_prefactor(&self, powers: &mut PrimePowers, power: i32) {
+        powers.times_factorial(self.largest + 1, power);
+        for bound in self.bounds {
+            powers.times_factorial(bound, -power);
         }
-        let mut down = Integer::from(1);
-        for l in lower {
-            down *= t + 1 - l;
-        }
-        // 1 - (up/down) (numer/denom)
-        denom *= down;
-        numer = &denom - up * numer;
     }
-    leading * Rational::from((numer, denom))
+}
+
+/// Multiplies by a power of Delta^2 = (a+b-c)! (a-b+c)! (-a+b+c)! / (a+b+c+1)! of doubled angular momenta.
+fn times_triangle(powers: &mut PrimePowers, [a, b, c]: [i32; 3], power: i32) {
+    for k in [(a + b - c) / 2, (a - b + c) / 2, (-a + b + c) / 2] {
+        powers.times_factorial(k, power);
+    }
+    powers.times_factorial((a + b + c) / 2 + 1, -power);
 }
 
 /// The 9j symbol, rows one after the other.
 ///
 /// Zero where a row or a column does not close a triangle.
-/// Errors: as for [`sixj`]; `TooLong` for angular momenta beyond some two hundred.
+/// Errors: as for [`sixj`]; `TooLong` for angular momenta beyond some seven hundred.
+/// Cost: a sum of at most 2 j + 1 products of three 6j sums; roots are taken once.
 /// Source: Edmonds, eq. 6.4.3.
 pub fn ninej(j: [[HalfInteger; 3]; 3]) -> Result<Surd, AngularError> {
-    let [[a, b, c], [d, e, f], [g, h, i]] = j;
     let mut closes = true;
-    for [x, y, z] in [[a, b, c], [d, e, f], [g, h, i], [a, d, g], [b, e, h], [c, f, i]] {
-        closes &= triangle(x, y, z)?;
+    let columns: [[HalfInteger; 3]; 3] = std::array::from_fn(|i| j.map(|row| row[i]));
+    for [a, b, c] in j.into_iter().chain(columns) {
+        closes &= triangle(a, b, c)?;
     }
     if !closes {
         return Ok(Surd::zero());
     }
-    let bounds = |x: HalfInteger, y: HalfInteger| ((x.twice() - y.twice()).abs(), x.twice() + y.twice());
-    let pairs = [bounds(a, i), bounds(d, h), bounds(b, f)];
-    let first = pairs.iter().map(|p| p.0).max().unwrap_or(0);
-    let last = pairs.iter().map(|p| p.1).min().unwrap_or(-1);
+    let [[a, b, c], [d, e, f], [g, h, i]] = j.map(|row| row.map(HalfInteger::twice));
+    let pairs = [(a, i), (d, h), (b, f)];
+    let first = pairs.iter().map(|(x, y)| (x - y).abs()).max().unwrap_or(0);
+    let last = pairs.iter().map(|(x, y)| x + y).min().unwrap_or(-1);
     let longest = j.iter().flatten().map(|x| x.twice()).max().unwrap_or(0);
     let terms = u64::try_from((last - first) / 2 + 1).unwrap_or(0) * u64::try_from(longest + 1).unwrap_or(0);
     if terms > LONGEST_NINEJ {
         return Err(AngularError::TooLong { terms, limit: LONGEST_NINEJ });
     }
-    let mut sum = Surd::zero();
-    for twice in (first..=last).step_by(2) {
-        let x = HalfInteger::from_twice(twice);
-        let product = &(&sixj([a, b, c, f, i, x])? * &sixj([d, e, f, b, x, h])?) * &sixj([g, h, i, x, a, d])?;
-        let weight = if twice % 2 == 0 { twice + 1 } else { -(twice + 1) };
-        sum += &product.scaled(&Rational::from(weight));
+    // x is at most the sum of two of the nine
+    let largest = 2 * longest + 1;
+    // every triangle with x occurs in two of the three 6j symbols, so only the other six are under the root
+    let mut summands: Vec<(PrimePowers, Integer)> = Vec::new();
+    for x in (first..=last).step_by(2) {
+        let symbols = [[a, b, c, f, i, x], [d, e, f, b, x, h], [g, h, i, x, a, d]].map(RacahSum::of);
+        let mut product = Integer::from(if x % 2 == 0 { x + 1 } else { -(x + 1) });
+        let mut powers = PrimePowers::up_to(largest);
+        for symbol in &symbols {
+            product *= &symbol.sum;
+            symbol.times_prefactor(&mut powers, 1);
+        }
+        if product == 0 {
+            continue;
+        }
+        for (y, z) in pairs {
+            times_triangle(&mut powers, [y, z, x], 1);
+        }
+        summands.push((powers, product));
     }
-    Ok(sum)
+    let Some((first_powers, _)) = summands.first() else { return Ok(Surd::zero()) };
+    let mut common = first_powers.clone();
+    for (powers, _) in &summands {
+        common.lower_to(powers);
+    }
+    let mut sum = Integer::new();
+    for (powers, product) in &summands {
+        sum += powers.whole_quotient(&common) * product;
+    }
+    if sum == 0 {
+        return Ok(Surd::zero());
+    }
+    let mut square = PrimePowers::up_to(largest);
+    for triad in [[a, b, c], [d, e, f], [g, h, i], [a, d, g], [b, e, h], [c, f, i]] {
+        times_triangle(&mut square, triad, 1);
+    }
+    square.times(&common, 2);
+    Ok(square.square_root_times(sum))
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
+    use rug::Rational;
 
     fn six(twice: [i32; 6]) -> Surd {
         sixj(twice.map(HalfInteger::from_twice)).expect("valid arguments")

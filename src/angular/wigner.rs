@@ -1,9 +1,10 @@
 //! Wigner 3j symbols and Clebsch-Gordan coefficients, exactly.
 
-use super::factorials::FactorialProduct;
+use super::binomials::three_product_sum;
+use super::factorials::PrimePowers;
 use super::half_integer::{AngularError, HalfInteger};
 use crate::num::Surd;
-use rug::{Integer, Rational};
+use rug::Rational;
 
 /// Whether three doubled angular momenta close a triangle; `Err` when their sum is not whole.
 pub(crate) fn triangle(a: HalfInteger, b: HalfInteger, c: HalfInteger) -> Result<bool, AngularError> {
@@ -25,7 +26,7 @@ fn projection(j: HalfInteger, m: HalfInteger) -> Result<bool, AngularError> {
 /// The 3j symbol (j1 j2 j3; m1 m2 m3).
 ///
 /// Zero where a selection rule forbids it: no triangle, |m| > j, or m1 + m2 + m3 not zero.
-/// Errors: a negative angular momentum, j and m that differ by a half, a sum of the three that is not whole.
+/// Errors: an angular momentum that is negative or too large, j and m that differ by a half, a sum of the three that is not whole.
 /// Cost: a sum of at most 2 j + 1 products of three binomials.
 /// Source: Racah's single sum (Edmonds, Angular Momentum in Quantum Mechanics, eq. 3.6.11), rewritten here in binomials.
 pub fn threej(
@@ -45,50 +46,21 @@ pub fn threej(
     let (a, b, c) = ((t1 + t2 - t3) / 2, (t1 - t2 + t3) / 2, (-t1 + t2 + t3) / 2);
     let minus = |j: HalfInteger, m: HalfInteger| (j.twice() - m.twice()) / 2;
     let plus = |j: HalfInteger, m: HalfInteger| (j.twice() + m.twice()) / 2;
-    let sum = binomial_sum(a, b, c, minus(j1, m1), plus(j2, m2));
+    let sum = three_product_sum(a, b, c, minus(j1, m1), plus(j2, m2));
     if sum == 0 {
         return Ok(Surd::zero());
     }
-    let mut square = FactorialProduct::new();
+    let largest = (t1 + t2 + t3) / 2 + 1;
+    let mut square = PrimePowers::up_to(largest);
     for (j, m) in [(j1, m1), (j2, m2), (j3, m3)] {
-        square.times(minus(j, m), 1);
-        square.times(plus(j, m), 1);
+        square.times_factorial(minus(j, m), 1);
+        square.times_factorial(plus(j, m), 1);
     }
-    for k in [(t1 + t2 + t3) / 2 + 1, a, b, c] {
-        square.times(k, -1);
+    for k in [largest, a, b, c] {
+        square.times_factorial(k, -1);
     }
     let odd = (t1 - t2 - m3.twice()) / 2 % 2 != 0;
-    Ok(square.square_root().scaled(&Rational::from(if odd { -sum } else { sum })))
-}
-
-/// sum over k of (-1)^k C(a, k) C(b, x - k) C(c, y - k).
-fn binomial_sum(a: i32, b: i32, c: i32, x: i32, y: i32) -> Integer {
-    let first = 0.max(x - b).max(y - c);
-    let last = a.min(x).min(y);
-    let mut sum = Integer::new();
-    if first > last {
-        return sum;
-    }
-    let binomial = |n: i32, k: i32| {
-        let (n, k) = (u32::try_from(n).unwrap_or(0), u32::try_from(k).unwrap_or(0));
-        Integer::from(Integer::binomial_u(n, k))
-    };
-    let mut term = binomial(a, first) * binomial(b, x - first) * binomial(c, y - first);
-    for k in first..=last {
-        if k % 2 == 0 {
-            sum += &term;
-        } else {
-            sum -= &term;
-        }
-        if k < last {
-            // every binomial moves to its neighbour; the product stays whole
-            let up = Integer::from(a - k) * (x - k) * (y - k);
-            let down = Integer::from(k + 1) * (b - x + k + 1) * (c - y + k + 1);
-            term *= up;
-            term.div_exact_mut(&down);
-        }
-    }
-    sum
+    Ok(square.square_root_times(if odd { -sum } else { sum }))
 }
 
 /// The Clebsch-Gordan coefficient <j1 m1 j2 m2|J M>.
@@ -167,6 +139,7 @@ mod tests {
         assert!(matches!(threej(h(1), h(2), h(2), h(1), h(0), h(-1)), Err(AngularError::Sum { .. })));
         assert!(matches!(threej(h(-2), h(2), h(2), h(0), h(0), h(0)), Err(AngularError::Negative { .. })));
         assert!(matches!(threej(h(2), h(2), h(2), h(1), h(0), h(-1)), Err(AngularError::Projection { .. })));
+        assert!(matches!(threej(h(20_000), h(2), h(2), h(0), h(0), h(0)), Err(AngularError::TooLarge { .. })));
     }
 
     /// sum over m1 of (2 j3 + 1) 3j(j1 j2 j3; m1 m2 m3) 3j(j1 j2 j3'; m1 m2 m3) = delta(j3, j3').

@@ -136,6 +136,15 @@ impl Surd {
         Some(Surd { terms: BTreeMap::from([(Unit::root(free), value)]) })
     }
 
+    /// A rational times the square root of an integer that is known to be squarefree and positive.
+    pub(crate) fn with_squarefree_root(root: Integer, factor: Rational) -> Self {
+        let mut terms = BTreeMap::new();
+        if factor.cmp0() != Ordering::Equal {
+            terms.insert(Unit::root(root), GaussianRational { re: factor, im: Rational::new() });
+        }
+        Surd { terms }
+    }
+
     /// The square root of this number where it is a rational; otherwise `None`.
     pub fn sqrt(&self) -> Option<Self> {
         Self::sqrt_of(self.as_rational()?.as_ref())

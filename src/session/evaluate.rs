@@ -282,7 +282,7 @@ impl Evaluation<'_> {
 }
 
 /// A real value with its standard uncertainty in the concise form.
-fn concise(scalar: &Scalar, sigma: &rug::Float) -> String {
+pub(super) fn concise(scalar: &Scalar, sigma: &rug::Float) -> String {
     match scalar.to_ball(256) {
         Ok(ball) => uncertain::concise_float(ball.re.mid(), sigma),
         Err(_) => render(scalar, 10).text,

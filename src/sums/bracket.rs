@@ -102,7 +102,8 @@ impl Evaluator<'_> {
     ) -> Evaluated<Option<Number>> {
         let key = (bracket.system.clone(), anchor.to_string(), level);
         let kept = self.kept.remove(&key).unwrap_or_default();
-        let mut walker = Walker { evaluator: self, system: system.clone(), backend, bits: level.map(|l| l.bits), kept };
+        let mut walker =
+            Walker { evaluator: self, system: system.clone(), backend, bits: level.map(|l| l.bits), kept, outer: None };
         let result = walker.bracket(bracket, environment);
         let kept = std::mem::take(&mut walker.kept);
         // Nudged kets belong to no value.

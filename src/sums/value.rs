@@ -75,6 +75,9 @@ impl Evaluator<'_> {
                 }
             }
         }
+        if !sources.is_empty() && !scalar.is_real() {
+            return Err(Failure::new(term.place, complex_with_uncertainty()));
+        }
         if wanted == Wanted::Exact && (!sources.is_empty() || matches!(scalar, Scalar::Approx(_))) {
             return Err(Failure::new(term.place, Trouble::NotExact));
         }
@@ -122,16 +125,17 @@ impl Evaluator<'_> {
         let difference = ends[0].sub(&ends[1], 256).map_err(|error| Failure::new(term.place, error))?;
         let ball = difference.to_ball(256).map_err(|error| Failure::new(term.place, error))?;
         if !ball.is_real() {
-            return Err(Failure::new(
-                term.place,
-                Trouble::Refused {
-                    message: "a complex value depends on a number with an uncertainty".into(),
-                    help: "take the parts one by one: `re(…)`, `im(…)`".into(),
-                },
-            ));
+            return Err(Failure::new(term.place, complex_with_uncertainty()));
         }
         let real: &Ball = &ball.re;
         Ok(Float::with_val(64, real.mid()) << (SHIFT_BITS - 1))
+    }
+}
+
+fn complex_with_uncertainty() -> Trouble {
+    Trouble::Refused {
+        message: "a complex value depends on a number with an uncertainty".into(),
+        help: "take the parts one by one: `re(…)`, `im(…)`".into(),
     }
 }
 

@@ -116,6 +116,8 @@ pub struct FunctionOfH {
     pub constant: Number,
     pub slope: Number,
     pub omitted: Vec<Omitted>,
+    /// Whether the values are to be conjugated. On the cut of a logarithm or a root this is not the function of the conjugated argument.
+    pub adjoint: bool,
 }
 
 #[derive(Clone, Copy, PartialEq, Eq, Hash, Debug)]
@@ -207,7 +209,8 @@ pub trait System: Send + Sync {
     /// The adjoint of an operator: a factor and the operator it is a multiple of.
     fn adjoint(&self, atom: &Atom) -> (i32, Atom);
 
-    /// Why an operator leads nowhere from a sector, in the words of the trade (`D changes l by one`), for an exact zero.
+    /// Why an operator leads nowhere from a sector, in the words of the trade (`D changes l by one`), for an exact zero;
+    /// empty where there is no rule.
     fn selection_rule(&self, atom: &Atom) -> String;
 
     /// The backend whose numbers are exact, if there is one.

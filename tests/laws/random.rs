@@ -127,6 +127,7 @@ pub fn last_outcome(text: &str) -> Outcome {
 /// The number of a record line, exact or approximate; `None` for what is not one real rational or decimal.
 pub fn number(record: &str) -> Option<Rational> {
     let text = record.trim_start_matches(['=', '~', ' ']);
+    let text = text.split(" exactly:").next().unwrap_or(text);
     if record.starts_with("= 0 exactly") {
         return Some(Rational::new());
     }
@@ -134,6 +135,11 @@ pub fn number(record: &str) -> Option<Rational> {
         return Some(if text.starts_with('-') { -value } else { value });
     }
     text.parse().ok()
+}
+
+/// Whether the record of a `compare` says that both sides agree; two zeros that are not proved agree.
+pub fn agrees(record: &str) -> bool {
+    record.contains("equal") || record.contains("both 0 below")
 }
 
 /// A session that starts with the system `m` (H and V), its ground state g, and a number of digits.

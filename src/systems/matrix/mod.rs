@@ -309,8 +309,9 @@ impl System for MatrixSystem {
         (1, atom.clone())
     }
 
-    fn selection_rule(&self, atom: &Atom) -> String {
-        format!("{} has only zero elements between the states reached", atom.name)
+    /// A matrix has none: its zeros are arithmetic.
+    fn selection_rule(&self, _: &Atom) -> String {
+        String::new()
     }
 
     fn exact(&self, effort: &Effort) -> Option<Arc<dyn Backend>> {
