@@ -163,7 +163,7 @@ fn replay_tells_differences_in_full() {
        entry       1/2 + 1/3
        recorded    = 2/3
        recomputed  = 5/6
-       in common   none, the forms differ
+       in common   not counted: exact results are equal or not
     3  agrees to 4 digits      ~ 2.718
     4  differs
        entry       exp(1)

@@ -21,7 +21,7 @@ pub fn entry(entry: &ReplayEntry, paint: Paint) -> String {
         }
         ReplayVerdict::NotRecorded => line(Paint::warning, "has no record", &entry.recomputed),
         ReplayVerdict::Differs { digits_in_common } => {
-            let common = digits_in_common.map_or_else(|| "none, the forms differ".into(), count);
+            let common = digits_in_common.map_or_else(|| why_not_counted(entry), count);
             let mut shown = format!("{number:>5}  {}\n", paint.bad("differs"));
             shown.push_str(&block("entry", &entry.text.lines().collect::<Vec<_>>()));
             shown.push_str(&block("recorded", &entry.recorded));
@@ -67,6 +67,16 @@ fn count(digits: u32) -> String {
         0 => "no digits".into(),
         1 => "1 digit".into(),
         _ => format!("{digits} digits"),
+    }
+}
+
+/// Digits are not counted between exact values, nor between results of two kinds.
+fn why_not_counted(entry: &ReplayEntry) -> String {
+    let exact = |lines: &[String]| lines.iter().all(|line| line.starts_with('='));
+    match (exact(&entry.recorded), exact(&entry.recomputed)) {
+        (true, true) => "not counted: exact results are equal or not".into(),
+        (a, b) if a != b => "not counted: one is exact, the other is not".into(),
+        _ => "not counted: the results have different forms".into(),
     }
 }
 
