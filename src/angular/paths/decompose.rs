@@ -16,8 +16,11 @@ use std::collections::BTreeMap;
 /// Longest chain.
 const LONGEST: usize = 40;
 
-/// Most paths, counting every value of the summed indices and every part of an operator.
-const MOST_PATHS: usize = 500_000;
+/// Most factors, paths times columns.
+const MOST_FACTORS: usize = 100_000;
+
+/// Most choices of the parts of operators, and of the values of summed indices.
+const MOST_CHOICES: usize = 100_000;
 
 /// What a decomposition takes for granted.
 #[derive(Clone, PartialEq, Eq, Debug)]
@@ -69,9 +72,10 @@ pub fn decompose(sum: &ChainSum, setting: &Setting, effort: &Effort) -> Result<D
         check_state(state)?;
     }
     let columns = Columns::of(sum)?;
-    let mut work = Work { setting, columns: &columns, coefficients: Coefficients::default(), effort, left: MOST_PATHS };
+    let mut work = Work { setting, columns: &columns, coefficients: Coefficients::default(), effort };
     let mut contributions = Vec::new();
     for (index, product) in sum.products.iter().enumerate() {
+        check_count(contributions.len().saturating_mul(columns.len()), MOST_FACTORS)?;
         for ((key, levels), factors) in work.product(product)? {
             contributions.push(Contribution { product: index, key, levels, factors });
         }
@@ -105,7 +109,6 @@ struct Work<'a> {
     columns: &'a Columns,
     coefficients: Coefficients,
     effort: &'a Effort,
-    left: usize,
 }
 
 impl Work<'_> {
@@ -120,6 +123,7 @@ impl Work<'_> {
         if places.iter().any(|parts| parts.is_empty()) {
             return Ok(sums);
         }
+        check_count(places.iter().map(|parts| parts.len()).fold(1, usize::saturating_mul), MOST_CHOICES)?;
         loop {
             self.effort.check()?;
             let parts: Vec<&Part> = places.iter().zip(&choice).map(|(parts, i)| &parts[*i]).collect();
@@ -138,6 +142,7 @@ impl Work<'_> {
         }
         let indices = summed_indices(parts)?;
         let mut choice = vec![0_usize; indices.len()];
+        check_count(indices.iter().fold(1, |count: usize, _| count.saturating_mul(3)), MOST_CHOICES)?;
         loop {
             let mut values: BTreeMap<&str, IndexValue> = BTreeMap::new();
             for (index, value) in indices.iter().zip(&choice) {
@@ -160,6 +165,7 @@ impl Work<'_> {
                     *sum += factor;
                 }
             }
+            check_count(sums.len().saturating_mul(self.columns.len()), MOST_FACTORS)?;
             if !advance(&mut choice, |_| 3) {
                 return Ok(());
             }
@@ -173,12 +179,11 @@ impl Work<'_> {
             columns: self.columns,
             coefficients: &mut self.coefficients,
             effort: self.effort,
-            left: self.left,
-            limit: MOST_PATHS,
+            limit: MOST_FACTORS,
         };
         let paths = walk.run(&bracket.bra, steps, &bracket.ket)?;
         let all = partial.len().saturating_mul(paths.len());
-        self.left = walk.left.checked_sub(all).ok_or(PathError::TooMany { limit: MOST_PATHS })?;
+        check_count(all.saturating_mul(self.columns.len()), MOST_FACTORS)?;
         let mut out = Vec::with_capacity(all);
         for (levels, factors) in &paths {
             let chain = radial_chain(bracket, steps, levels);
@@ -211,6 +216,10 @@ fn check_shape(bracket: &Bracket) -> Result<(), PathError> {
         return Err(PathError::Gaps { operators, gaps });
     }
     Ok(())
+}
+
+fn check_count(count: usize, limit: usize) -> Result<(), PathError> {
+    if count > limit { Err(PathError::TooMany { limit }) } else { Ok(()) }
 }
 
 /// Moves a mixed-radix counter on; false when it has run through.

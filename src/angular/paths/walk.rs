@@ -24,8 +24,7 @@ pub(super) struct Walk<'a> {
     pub(super) columns: &'a Columns,
     pub(super) coefficients: &'a mut Coefficients,
     pub(super) effort: &'a Effort,
-    /// How many more paths may be found.
-    pub(super) left: usize,
+    /// The most factors, paths times columns, that may be found.
     pub(super) limit: usize,
 }
 
@@ -130,8 +129,8 @@ impl Walk<'_> {
         let Some(bra) = bras.get(&partial.level) else { return Ok(()) };
         partial.inside.reverse();
         let count = self.columns.len();
-        if !paths.contains_key(&partial.inside) {
-            self.left = self.left.checked_sub(1).ok_or(PathError::TooMany { limit: self.limit })?;
+        if paths.len().saturating_mul(count) > self.limit {
+            return Err(PathError::TooMany { limit: self.limit });
         }
         let factors = paths.entry(partial.inside).or_insert_with(|| vec![Surd::zero(); count]);
         for (column, factor) in factors.iter_mut().enumerate() {
