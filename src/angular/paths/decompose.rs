@@ -3,7 +3,7 @@
 use super::PathError;
 use super::coefficients::Coefficients;
 use super::columns::Columns;
-use super::key::{Block, ChainKey, Endpoint, Orientation, RadialChain, orientation_sign};
+use super::key::{Block, ChainKey, Endpoint, Orientation, RadialChain};
 use super::walk::{Step, Walk};
 use crate::angular::chain::{AngularVector, Bracket, ChainSum, Part, Product, State};
 use crate::angular::polarization::{Component, ComponentError, IndexValue};
@@ -18,6 +18,9 @@ const LONGEST: usize = 40;
 
 /// Most factors, paths times columns.
 const MOST_FACTORS: usize = 100_000;
+
+/// Most steps from one level to another in one bracket.
+const MOST_LINKS: usize = 1_000_000;
 
 /// Most choices of the parts of operators, and of the values of summed indices.
 const MOST_CHOICES: usize = 100_000;
@@ -51,7 +54,6 @@ pub struct Contribution {
 #[derive(Clone, PartialEq, Eq, Debug)]
 pub struct Decomposition {
     pub columns: Columns,
-    pub orientation: Orientation,
     /// Ascending by product, key and levels.
     pub contributions: Vec<Contribution>,
 }
@@ -80,7 +82,7 @@ pub fn decompose(sum: &ChainSum, setting: &Setting, effort: &Effort) -> Result<D
             contributions.push(Contribution { product: index, key, levels, factors });
         }
     }
-    Ok(Decomposition { columns, orientation: setting.orientation, contributions })
+    Ok(Decomposition { columns, contributions })
 }
 
 fn check_state(state: &State) -> Result<(), PathError> {
@@ -180,17 +182,15 @@ impl Work<'_> {
             coefficients: &mut self.coefficients,
             effort: self.effort,
             limit: MOST_FACTORS,
+            links: MOST_LINKS,
         };
         let paths = walk.run(&bracket.bra, steps, &bracket.ket)?;
         let all = partial.len().saturating_mul(paths.len());
         check_count(all.saturating_mul(self.columns.len()), MOST_FACTORS)?;
         let mut out = Vec::with_capacity(all);
         for (levels, factors) in &paths {
-            let chain = radial_chain(bracket, steps, levels);
-            let sign = match self.setting.orientation {
-                Orientation::AsWritten => Sign::Plus,
-                Orientation::SmallerTermFirst => orientation_sign(&chain.elements, &chain.terms()),
-            };
+            let chain = radial_chain(bracket, steps, levels, self.setting.orientation);
+            let sign = chain.orientation_sign();
             for (key, before, coefficients) in &partial {
                 let mut key = key.clone();
                 key.brackets.push(chain.clone());
@@ -265,7 +265,7 @@ fn steps<'a>(parts: &[&'a Part], values: &BTreeMap<&str, IndexValue>) -> Result<
     Ok(steps)
 }
 
-fn radial_chain(bracket: &Bracket, steps: &[Step], levels: &[Level]) -> RadialChain {
+fn radial_chain(bracket: &Bracket, steps: &[Step], levels: &[Level], orientation: Orientation) -> RadialChain {
     let mut gaps = bracket.gaps.clone();
     let mut blocks = Vec::with_capacity(levels.len());
     for (i, level) in levels.iter().enumerate() {
@@ -277,6 +277,7 @@ fn radial_chain(bracket: &Bracket, steps: &[Step], levels: &[Level]) -> RadialCh
     }
     let end = |state: &State| Endpoint { name: state.name.clone(), term: state.term };
     RadialChain {
+        orientation,
         bra: end(&bracket.bra),
         elements: steps.iter().map(|step| step.tensor.element.clone()).collect(),
         blocks,
