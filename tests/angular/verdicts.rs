@@ -231,6 +231,35 @@ fn the_same_multiple_of_every_chain_does_not_move_a_zero() {
     assert!(other.proportional_to(&alpha).iter().all(Option::is_none));
 }
 
+/// <P R D> + <D R P> is zero: the momentum is antisymmetric where the dipole is symmetric.
+#[test]
+fn momentum_and_dipole_in_both_orders() {
+    let z = || Component::Spherical(0);
+    let p = || Operator::momentum("grad", z());
+    let d = || Operator::new(Tensor::polar_vector("D"), z());
+    let product =
+        |operators| Product::from(Bracket::with_resolvent(triplet_s(), operators, &Resolvent::new("R"), triplet_s()));
+    let both = ChainSum { products: vec![product(vec![p(), d()]), product(vec![d(), p()])] };
+    let analysis = analysed(&both, Electrons::TWO);
+    assert_eq!(only(&analysis).verdict, Verdict::VanishesByHermiticity { itself: false, products: vec![0, 1] });
+    assert!(analysis.chains[0].equal_levels.is_empty());
+    let one = ChainSum { products: vec![product(vec![p(), p()])] };
+    assert_eq!(only(&analysed(&one, Electrons::TWO)).sums, ["1/3", "1/3", "1/3"].map(rational));
+}
+
+/// A scalar factor without a number keeps chains apart and takes every zero along.
+#[test]
+fn a_symbol_inherits_the_zero() {
+    let mut sum = response(&triplet_s(), 0, vec![orbit_dot_spin()]);
+    let mut with_moment = sum.products[0].clone();
+    with_moment.symbol = "a".into();
+    with_moment.coefficient = Surd::from(2);
+    sum.products.push(with_moment);
+    let analysis = analysed(&sum, Electrons::TWO);
+    assert_eq!(analysis.chains.len(), 2);
+    assert!(analysis.chains.iter().all(|chain| chain.verdict == Verdict::CancelsExactly));
+}
+
 /// <V> <D G G D> has no path where <V> has none: the normalisation term of a triplet S state.
 #[test]
 fn products_of_brackets() {
