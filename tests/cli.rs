@@ -130,6 +130,7 @@ fn json_has_an_object_for_every_entry() {
         "value",
         "digits",
         "unit",
+        "decimal",
         "verdict",
         "record",
         "notes",

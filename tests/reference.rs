@@ -1,105 +1,97 @@
-//! Values against an independent computation in Python (tests/reference/), run in the same test.
+//! Values against independent computations in Python (tests/reference/), run in the same test.
 
 use ketwork::num::parse_decimal;
 use ketwork::session::{NoFiles, Outcome, Session};
 use rug::Rational;
-use std::path::PathBuf;
+use std::path::{Path, PathBuf};
 use std::process::Command;
 use std::sync::Arc;
 
-/// The interpreter with the packages of tests/reference/requirements.txt: the one the README sets up, or `KETWORK_PYTHON`.
-fn python() -> PathBuf {
-    match std::env::var_os("KETWORK_PYTHON") {
-        Some(path) => path.into(),
-        None => PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("target/reference/bin/python"),
-    }
-}
+/// Digits asked of the program; the references give 60.
+const DIGITS: u32 = 40;
 
-fn reference(script: &str) -> Vec<(String, Vec<Rational>)> {
-    let output = Command::new(python())
-        .arg(PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("tests/reference").join(script))
+/// What the expressions of tests/reference/polarizability.py mean.
+const POLARIZABILITIES: &str = "\
+system h = hydrogenic(Z=1)
+state g = h[1s]
+state s = h[2s]
+state p = h[2p]
+state q = h[2p, m=1]
+resolvent R1(w) = 1/(E(g) + w - H)
+resolvent R2(w) = 1/(E(s) + w - H)
+operator F = r^2 C(2)_0
+define dipole_1s(w) = -<g| D_z (R1(w) + R1(-w)) D_z |g>
+define quadrupole_1s(w) = -<g| F (R1(w) + R1(-w)) F |g>
+define dipole_2s(w) = -<s| D_z (R2(w) + R2(-w)) D_z |s>
+define dipole_2p(w) = -(<p| D_z (R2(w) + R2(-w)) D_z |p> + 2 <q| D_z (R2(w) + R2(-w)) D_z |q>)/3
+";
+
+/// The lines that a script of tests/reference/ prints, by the Python that the README's test command sets up, or that of `KETWORK_PYTHON`.
+fn reference(script: &str) -> Vec<String> {
+    let root = Path::new(env!("CARGO_MANIFEST_DIR"));
+    let python =
+        std::env::var_os("KETWORK_PYTHON").map_or_else(|| root.join("target/reference/bin/python"), PathBuf::from);
+    let output = Command::new(python)
+        .arg(root.join("tests/reference").join(script))
         .output()
-        .expect("no Python with the reference packages: run the test command of the README, which sets it up");
-    assert!(output.status.success(), "{}", String::from_utf8_lossy(&output.stderr));
-    String::from_utf8(output.stdout)
-        .expect("text")
-        .lines()
-        .map(|line| {
-            let words: Vec<&str> = line.rsplitn(3, ' ').collect();
-            let mut values = Vec::new();
-            let mut rest = line.len();
-            for word in words {
-                let Some(value) = signed(word) else { break };
-                if rest != line.len() && line[..rest].trim_end().ends_with(')') {
-                    break;
-                }
-                values.insert(0, value);
-                rest = rest.saturating_sub(word.len() + 1);
-            }
-            (line[..rest].trim().to_string(), values)
-        })
-        .collect()
+        .expect("no Python with the reference packages: the test command of the README sets it up");
+    assert!(output.status.success(), "{script}: {}", String::from_utf8_lossy(&output.stderr));
+    String::from_utf8(output.stdout).expect("text").lines().map(str::to_string).collect()
 }
 
-fn signed(word: &str) -> Option<Rational> {
-    match word.strip_prefix('-') {
-        Some(word) => parse_decimal(word).ok().map(|value| -value),
-        None => parse_decimal(word).ok(),
+/// The session that holds `preamble` and then one entry a line, evaluated; with it the number of the first of those entries.
+fn evaluated(preamble: &str, entries: &[String]) -> (Session, usize) {
+    let text = format!("ketwork session 1\ndigits {DIGITS}\n{preamble}{}\n", entries.join("\n"));
+    let mut session = Session::open(&text, Arc::new(NoFiles)).expect("a session");
+    session.evaluate(&mut |_, _| {});
+    let first = session.len() - entries.len() + 1;
+    (session, first)
+}
+
+/// A decimal, with or without sign.
+fn decimal(text: &str) -> Rational {
+    match text.strip_prefix('-') {
+        Some(rest) => -parse_decimal(rest).expect(text),
+        None => parse_decimal(text).expect(text),
     }
 }
 
-/// The numbers of a record line: real part, and imaginary part where there is one.
-fn record_values(record: &str) -> Vec<Rational> {
-    let mut values = Vec::new();
-    let mut sign = 1;
-    for word in record.trim_start_matches(['~', '=', ' ']).split(' ') {
-        match word {
-            "-" => sign = -1,
-            "+" => sign = 1,
-            "i" => {}
-            word => {
-                let value = match word.split_once('/') {
-                    Some((a, b)) => signed(a).and_then(|a| Some(a / signed(b)?)),
-                    None => signed(word),
-                };
-                values.push(value.expect(record) * sign);
-            }
-        }
+/// Real and imaginary part of an approximate record, `~ a` or `~ a + b i`.
+fn parts(record: &str) -> Vec<Rational> {
+    let words: Vec<&str> = record.strip_prefix("~ ").expect(record).split(' ').collect();
+    match words[..] {
+        [real] => vec![decimal(real)],
+        [real, "+", imaginary, "i"] => vec![decimal(real), decimal(imaginary)],
+        [real, "-", imaginary, "i"] => vec![decimal(real), -decimal(imaginary)],
+        _ => panic!("{record}"),
     }
-    values
 }
 
 #[test]
-fn dynamic_polarizability_of_hydrogen_and_its_zeros_to_forty_digits() {
-    let expected = reference("polarizability.py");
-    assert!(expected.len() >= 10, "{expected:?}");
-    let mut text = String::from(
-        "ketwork session 1\ndigits 40\nsystem h = hydrogenic(Z=1)\nstate g = h[1s]\nresolvent R(w) = 1/(E(g) + w - H)\n\
-         define pol(w) = -<g| D_z (R(w) + R(-w)) D_z |g>\n",
-    );
-    let first = session_lines(&text);
-    for (name, _) in &expected {
-        text.push_str(name);
-        text.push('\n');
-    }
-    let mut session = Session::open(&text, Arc::new(NoFiles)).expect("a session");
-    session.evaluate(&mut |_, _| {});
-    for (position, (name, values)) in expected.iter().enumerate() {
+fn dynamic_polarizabilities_and_zeros_to_every_digit_claimed() {
+    let lines = reference("polarizability.py");
+    assert!(lines.len() >= 15, "{lines:?}");
+    let expressions: Vec<String> =
+        lines.iter().map(|line| line.split('\t').next().expect("an expression").to_string()).collect();
+    let (session, first) = evaluated(POLARIZABILITIES, &expressions);
+    for (position, line) in lines.iter().enumerate() {
         let entry = session.entry(first + position).expect("an entry for each value");
-        assert_eq!(entry.text, name);
-        let Some(Outcome::Result(answer)) = entry.outcome else { panic!("{name}: {:?}", entry.outcome) };
-        let got = record_values(&answer.lines[0]);
-        assert_eq!(got.len(), values.len(), "{name}: {}", answer.lines[0]);
-        let size = values.iter().map(|v| Rational::from(v.abs_ref())).max().expect("a value");
-        for (a, b) in got.iter().zip(values) {
-            let distance = Rational::from(a - b).abs();
-            let allowed = parse_decimal("1e-39").expect("a decimal") * &size;
-            assert!(distance <= allowed, "{name}: {} and {}", answer.lines[0], b.to_f64());
+        let Some(Outcome::Result(answer)) = entry.outcome else { panic!("{line}: {:?}", entry.outcome) };
+        let got = parts(&answer.lines[0]);
+        let wanted: Vec<Rational> = line.split('\t').skip(1).map(decimal).collect();
+        assert_eq!(got.len(), wanted.len(), "{line}: {}", answer.lines[0]);
+        // One unit in the last of 40 digits, of the larger part.
+        let size = wanted.iter().map(|part| part.clone().abs()).max().expect("a value");
+        let allowed = size * decimal("1e-39");
+        for (a, b) in got.iter().zip(&wanted) {
+            assert!(Rational::from(a - b).abs() <= allowed, "{line}: {}", answer.lines[0]);
         }
     }
 }
 
-/// The number of the entry that follows the text so far: one line an entry behind the header.
-fn session_lines(text: &str) -> usize {
-    text.lines().count()
+#[test]
+fn series_recorded_in_sessions_come_out_without_a_basis() {
+    let lines = reference("series.py");
+    let compared: usize = lines[0].parse().expect("the number of records compared");
+    assert!(compared >= 40, "{compared} records");
 }

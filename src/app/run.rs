@@ -5,10 +5,11 @@ use super::console::{OutputEnd, print, tell};
 use super::provenance::provenance;
 use super::source::SourceText;
 use super::status::Status;
+use crate::lang::diagnostic::Diagnostic;
 use crate::lang::file::{Item, Line, PROVENANCE, SessionText, parse_session};
 use crate::lang::tree::Span;
 use crate::report::json::{self, Position};
-use crate::session::{Outcome, Session};
+use crate::session::{Outcome, Report, Session};
 use std::path::Path;
 
 /// Evaluates the session and prints every entry as soon as it has its result.
@@ -43,6 +44,13 @@ pub fn run(batch: &Batch, path: &Path, as_json: bool) -> Status {
                 Outcome::Stopped if ended.is_none() => {
                     status = status.and(Status::Failed);
                     tell(&format!("stopped at entry {number} of {}; what is printed above is whole", session.len()));
+                }
+                Outcome::Result(answer) if !as_json => {
+                    for note in &answer.notes {
+                        let span = Span::new(0, session.entry(number).map_or(0, |entry| entry.text.len()));
+                        let diagnostic = Diagnostic::warning(span, note.clone());
+                        batch.tell_reports(&mut told, &source, session, &[Report { entry_number: number, diagnostic }]);
+                    }
                 }
                 _ => {}
             }

@@ -26,5 +26,5 @@ pub use effort::{Effort, Interrupted};
 pub use error::{DigitCount, NumberError, Question};
 pub use render::{Agreement, Rendered, RenderedKind, digits_in_common, needs_more, render, render_decimal};
 pub use scalar::{Function, Scalar};
-pub use surd::Surd;
+pub use surd::{Surd, Unit};
 pub use uncertain::{Measured, combine, concise, concise_float, parse_measured, parse_uncertain};

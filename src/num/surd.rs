@@ -36,6 +36,14 @@ impl Unit {
     fn root(radicand: Integer) -> Self {
         Unit { pi_power: 0, radicand }
     }
+
+    /// The product, as a whole number times a unit: sqrt(n) sqrt(m) = g sqrt(n m/g^2) with g = gcd(n, m).
+    pub fn product(&self, other: &Unit) -> (Integer, Unit) {
+        let common = Integer::from(self.radicand.gcd_ref(&other.radicand));
+        let radicand = Integer::from(&self.radicand / &common) * Integer::from(&other.radicand / &common);
+        let pi_power = self.pi_power.saturating_add(other.pi_power);
+        (common, Unit { pi_power, radicand })
+    }
 }
 
 /// a + b i with rational a and b.
@@ -83,6 +91,13 @@ impl Surd {
             terms.insert(Unit::root(Integer::from(1)), value);
         }
         Surd { terms }
+    }
+
+    /// The number (a + b i) times a unit; the radicand of the unit must be squarefree.
+    pub fn of_unit(unit: Unit, a: Rational, b: Rational) -> Self {
+        let mut out = Self::zero();
+        out.add_term(unit, GaussianRational { re: a, im: b });
+        out
     }
 
     /// A whole power of pi.
@@ -396,10 +411,7 @@ impl Mul for &Surd {
         let mut out = Surd::zero();
         for (n, a) in &self.terms {
             for (m, b) in &other.terms {
-                // sqrt(n) sqrt(m) = g sqrt(n m / g^2) with g = gcd(n, m)
-                let g = Integer::from(n.radicand.gcd_ref(&m.radicand));
-                let radicand = Integer::from(&n.radicand / &g) * Integer::from(&m.radicand / &g);
-                let unit = Unit { pi_power: n.pi_power.saturating_add(m.pi_power), radicand };
+                let (g, unit) = n.product(m);
                 let mut c = a.times(b);
                 if g != 1 {
                     c.re *= &g;

@@ -11,6 +11,7 @@ pub fn outcome(outcome: &Outcome, indent: &str, paint: Paint) -> String {
         Outcome::Declared { told } => told.iter().for_each(|text| line(paint.faint(text))),
         Outcome::Result(answer) => {
             answer.lines.iter().for_each(|text| line(paint.result(text)));
+            answer.decimal.iter().for_each(|text| line(paint.faint(&format!("({text})"))));
             answer.notes.iter().for_each(|text| line(paint.warning(&format!("({text})"))));
         }
         Outcome::Failed(_) => line(paint.bad("failed")),
@@ -54,6 +55,7 @@ mod tests {
             value: Some("0.5".into()),
             digits: Some(1),
             unit: None,
+            decimal: None,
             verdict: "fewer digits than asked".into(),
             notes: vec!["1 of the 30 digits asked hold".into()],
         })

@@ -25,6 +25,8 @@ struct EntryObject<'e> {
     value: Option<&'e str>,
     digits: Option<u32>,
     unit: Option<&'e str>,
+    /// An exact value with square roots or pi in it as a decimal.
+    decimal: Option<&'e str>,
     verdict: &'e str,
     record: &'e [String],
     notes: &'e [String],
@@ -83,6 +85,7 @@ pub fn entry(view: &EntryView<'_>, place: &dyn Fn(usize, usize) -> Position) -> 
         value: answer.and_then(|a| a.value.as_deref()),
         digits: answer.and_then(|a| a.digits),
         unit: answer.and_then(|a| a.unit.as_deref()),
+        decimal: answer.and_then(|a| a.decimal.as_deref()),
         verdict,
         record: view.outcome.map_or(&[], Outcome::record),
         notes,
@@ -140,11 +143,12 @@ mod tests {
             value: Some("0.33".into()),
             digits: Some(2),
             unit: None,
+            decimal: None,
             verdict: "digits hold".into(),
             notes: Vec::new(),
         });
         let wanted = "{\"version\":1,\"number\":2,\"line\":5,\"text\":\"sqrt(2) \\\"\",\"kind\":\"approximate\",\"value\":\"0.33\",\
-                      \"digits\":2,\"unit\":null,\"verdict\":\"digits hold\",\"record\":[\"~ 0.33\"],\"notes\":[],\"diagnostics\":[]}\n";
+                      \"digits\":2,\"unit\":null,\"decimal\":null,\"verdict\":\"digits hold\",\"record\":[\"~ 0.33\"],\"notes\":[],\"diagnostics\":[]}\n";
         assert_eq!(entry(&view("sqrt(2) \"", &outcome), &place), wanted);
     }
 

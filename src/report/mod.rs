@@ -5,4 +5,5 @@ pub mod entry;
 pub mod help;
 pub mod json;
 pub mod paint;
+pub mod reference;
 pub mod replay;

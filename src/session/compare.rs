@@ -16,16 +16,35 @@ pub(super) fn comparison(a: &Value, b: &Value, digits: u32) -> Answer {
         value: None,
         digits: None,
         unit: None,
+        decimal: None,
         verdict: "different".into(),
         notes: Vec::new(),
     };
     let show = |scalar: &Scalar| marked(scalar, digits);
+    if a.sigma().is_some() || b.sigma().is_some() {
+        // What is left to say, the distance in standard uncertainties, needs the difference with shared sources cancelled.
+        answer.kind = AnswerKind::Comparison;
+        answer.verdict = "uncertain".into();
+        for (side, value) in [("left", a), ("right", b)] {
+            let shown = match value.sigma() {
+                Some(sigma) => format!("~ {}", super::evaluate::concise(&value.scalar, &sigma)),
+                None => show(&value.scalar),
+            };
+            answer.lines.push(format!(": {side} {shown}"));
+        }
+        return answer;
+    }
     if let (Scalar::Exact(x), Scalar::Exact(y)) = (&a.scalar, &b.scalar)
         && x == y
     {
         answer.lines.push(format!("= equal: {x}"));
         answer.value = Some(x.to_string());
         answer.verdict = "equal".into();
+        return answer;
+    }
+    if let Agreement::BothBelow { power } = digits_in_common(&a.scalar, &b.scalar) {
+        answer.lines.push(format!("~ both 0 below 1e-{power}, not proved"));
+        answer.verdict = "zero, not proved".into();
         return answer;
     }
     let common = common_digits(&a.scalar, &b.scalar, digits);
@@ -52,7 +71,11 @@ pub(super) fn comparison(a: &Value, b: &Value, digits: u32) -> Answer {
 
 /// Adds the distance in standard uncertainties to a comparison of values that have them.
 pub(super) fn add_distance(answer: &mut Answer, difference: &Value) {
-    let Some(sigma) = difference.sigma().filter(|sigma| !sigma.is_zero()) else { return };
+    let Some(sigma) = difference.sigma().filter(|sigma| !sigma.is_zero()) else {
+        answer.lines.push(format!(": difference {}: both rest on the same sources", marked(&difference.scalar, 10)));
+        return;
+    };
+    answer.lines.push(format!(": difference ~ {}", super::evaluate::concise(&difference.scalar, &sigma)));
     let Ok(ball) = difference.scalar.to_ball(128) else { return };
     let distance = Float::with_val(64, ball.re.mid() / sigma).abs();
     answer.lines.push(format!(": {} standard uncertainties apart", brief(&distance)));
@@ -75,7 +98,7 @@ fn marked(scalar: &Scalar, digits: u32) -> String {
     }
 }
 
-/// `expect A = B`. A decimal on the right is met to its last written digit (which may be off by one), a value with an uncertainty within that
+/// `expect A = B`. A decimal on the right is met when the value rounds to it, a value with an uncertainty within that
 /// uncertainty, anything else exactly or to the digits asked.
 ///
 /// Errors: the sentence that says what came out instead.
@@ -87,10 +110,12 @@ pub(super) fn expectation(a: &Value, b: &Value, written: &Expr, digits: u32) -> 
         value: None,
         digits,
         unit: None,
+        decimal: None,
         verdict: "holds".into(),
         notes: Vec::new(),
     };
     if let (Scalar::Exact(x), Scalar::Exact(y)) = (&a.scalar, &b.scalar)
+        && a.sigma().is_none()
         && b.sigma().is_none()
         && x == y
     {
@@ -105,11 +130,16 @@ pub(super) fn expectation(a: &Value, b: &Value, written: &Expr, digits: u32) -> 
     };
     let difference = a.scalar.sub(&b.scalar, bits).and_then(|d| d.to_ball(bits)).map_err(|_| missed())?;
     let distance = difference.magnitude_above();
-    if let Some(sigma) = b.sigma() {
+    if let Some(sigma) = joined_sigma(a, b) {
         return if distance <= sigma { Ok(met("~ holds within the uncertainty".into(), None)) } else { Err(missed()) };
     }
     if let Some(unit) = last_place(written) {
-        return if distance <= unit { Ok(met("~ holds to the digits written".into(), None)) } else { Err(missed()) };
+        // Rounded to the digits written, the value is the one written.
+        return if distance <= unit / 2u32 {
+            Ok(met("~ holds to the digits written".into(), None))
+        } else {
+            Err(missed())
+        };
     }
     if a.scalar.is_exact() && b.scalar.is_exact() {
         return Err(missed());
@@ -119,6 +149,15 @@ pub(super) fn expectation(a: &Value, b: &Value, written: &Expr, digits: u32) -> 
         Ok(met(format!("~ holds to {digits} digits"), Some(digits)))
     } else {
         Err(format!("{}: {common} digits in common", missed()))
+    }
+}
+
+/// The uncertainty of the difference of two independent values.
+fn joined_sigma(a: &Value, b: &Value) -> Option<Float> {
+    match (a.sigma(), b.sigma()) {
+        (None, None) => None,
+        (Some(one), None) | (None, Some(one)) => Some(one),
+        (Some(one), Some(other)) => Some(one.hypot(&other)),
     }
 }
 

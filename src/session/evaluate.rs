@@ -101,7 +101,9 @@ impl Evaluation<'_> {
             EntryKind::Evaluate { expression, unit: None } => {
                 let term = self.resolver().scalar(expression)?;
                 let value = self.scope.evaluator(self.effort).value(&term, self.scope.wanted)?;
-                Ok(Done::Answered(self.answer(&value)))
+                let mut answer = self.answer(&value);
+                answer.notes.extend(value.couplings);
+                Ok(Done::Answered(answer))
             }
             EntryKind::Inspect { verb: InspectVerb::Formula, expression } => {
                 let text = formula::expanded(&mut self.resolver(), expression)?;
@@ -111,6 +113,7 @@ impl Evaluation<'_> {
                     value: Some(text),
                     digits: None,
                     unit: None,
+                    decimal: None,
                     verdict: "formula".into(),
                     notes: Vec::new(),
                 }))
@@ -177,6 +180,7 @@ impl Evaluation<'_> {
                 value: Some(text),
                 digits: None,
                 unit: None,
+                decimal: None,
                 verdict: "uncertain".into(),
                 notes: value.limit.iter().cloned().collect(),
             };
@@ -194,7 +198,6 @@ impl Evaluation<'_> {
         let (line, kind, digits, verdict) = match rendered.kind {
             RenderedKind::Exact => {
                 let zero = matches!(&value.scalar, Scalar::Exact(x) if x.is_zero());
-                notes.extend(self.in_decimals(&value.scalar));
                 if zero && !value.rules.is_empty() {
                     (format!("= 0 exactly: {}", value.rules.join("; ")), AnswerKind::Zero, None, "zero, proved")
                 } else {
@@ -219,6 +222,7 @@ impl Evaluation<'_> {
             value: Some(rendered.text),
             digits,
             unit: None,
+            decimal: if kind == AnswerKind::Exact { self.in_decimals(&value.scalar) } else { None },
             verdict: verdict.into(),
             notes,
         }
@@ -229,7 +233,7 @@ impl Evaluation<'_> {
         let Scalar::Exact(exact) = scalar else { return None };
         let digits = self.digits_wanted();
         let ball = (!exact.is_gaussian()).then(|| scalar.to_ball(crate::sums::bits_for(digits) + 64).ok())??;
-        Some(format!("in decimals {}", render(&Scalar::Approx(ball), digits).text))
+        Some(render(&Scalar::Approx(ball), digits).text)
     }
 
     /// The value of one side of a comparison, and of the difference of both with what they share cancelled.
@@ -278,7 +282,7 @@ impl Evaluation<'_> {
 }
 
 /// A real value with its standard uncertainty in the concise form.
-fn concise(scalar: &Scalar, sigma: &rug::Float) -> String {
+pub(super) fn concise(scalar: &Scalar, sigma: &rug::Float) -> String {
     match scalar.to_ball(256) {
         Ok(ball) => uncertain::concise_float(ball.re.mid(), sigma),
         Err(_) => render(scalar, 10).text,

@@ -34,9 +34,11 @@ pub struct Answer {
     /// Digits that hold; `None` for exact results and tables.
     pub digits: Option<u32>,
     pub unit: Option<String>,
+    /// An exact value with square roots or pi in it to the digits asked, to be shown beside it; not recorded.
+    pub decimal: Option<String>,
     /// `exact`, `digits hold`, `fewer digits than asked`, `zero, not proved`, `zero, proved`, `holds`, `equal`, `different`
     pub verdict: String,
-    /// Said beside the value (why fewer digits hold, why a zero is exact); not recorded.
+    /// Warnings said beside the value (why fewer digits hold, what was left out); not recorded.
     pub notes: Vec<String>,
 }
 

@@ -116,11 +116,12 @@ fn compared_line(old: &str, new: &str) -> Result<Option<u32>, Option<u32>> {
     }
     let mut held = u32::MAX;
     for (x, y) in a.iter().zip(&b) {
-        // The coarser of the two last places decides, so that a record of fewer digits is checked to those.
+        // A record of fewer digits is checked to those.
         let place = x.place.clone().max(y.place.clone());
         let distance = Rational::from(&x.value - &y.value).abs();
         let common = common_digits(&x.value, &distance);
-        if distance > place {
+        // A record of more digits than are computed claims more than was checked.
+        if distance > place || x.place < y.place {
             return Err(Some(common));
         }
         held = held.min(x.digits.min(y.digits));
@@ -194,6 +195,11 @@ mod tests {
         assert_eq!(verdict("~ 4.785", "~ 4.784300343"), ReplayVerdict::Agrees { digits: Some(4) });
         assert_eq!(verdict("~ 4.786", "~ 4.784300343"), ReplayVerdict::Differs { digits_in_common: Some(3) });
         assert_eq!(verdict("~ 1.5 - 2.5 i", "~ 1.5 + 2.5 i"), ReplayVerdict::Differs { digits_in_common: Some(0) });
+    }
+
+    #[test]
+    fn a_record_of_more_digits_than_are_computed_is_not_confirmed() {
+        assert_eq!(verdict("~ 2.718281828999", "~ 2.71828183"), ReplayVerdict::Differs { digits_in_common: Some(9) });
     }
 
     #[test]

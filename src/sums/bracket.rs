@@ -16,6 +16,9 @@ const STEP_BITS: u32 = 64;
 /// Levels tried on a system of fixed size before the value is handed back with the digits it has.
 const FIXED_SIZE_LEVELS: u32 = 4;
 
+/// Most values of brackets kept during one evaluation.
+const MOST_KNOWN: usize = 10_000;
+
 /// Two successive differences with a ratio above this mean slow, algebraic convergence with the basis size.
 const SLOW_RATIO: f64 = 1.0 / 64.0;
 
@@ -52,6 +55,10 @@ impl Evaluator<'_> {
             return Ok(known.clone());
         }
         let value = self.fresh_bracket(&identity, bracket, environment, bits, term.place)?;
+        if self.known.len() >= MOST_KNOWN {
+            self.known.clear();
+            self.never_exact.clear();
+        }
         self.known.insert((identity, bits), value.clone());
         Ok(value)
     }
@@ -95,7 +102,8 @@ impl Evaluator<'_> {
     ) -> Evaluated<Option<Number>> {
         let key = (bracket.system.clone(), anchor.to_string(), level);
         let kept = self.kept.remove(&key).unwrap_or_default();
-        let mut walker = Walker { evaluator: self, system: system.clone(), backend, bits: level.map(|l| l.bits), kept };
+        let mut walker =
+            Walker { evaluator: self, system: system.clone(), backend, bits: level.map(|l| l.bits), kept, outer: None };
         let result = walker.bracket(bracket, environment);
         let kept = std::mem::take(&mut walker.kept);
         // Nudged kets belong to no value.
@@ -131,7 +139,9 @@ impl Evaluator<'_> {
     ) -> Evaluated<Scalar> {
         let range = system.basis_range();
         let (first, largest) = range.unwrap_or((0, 0));
-        let mut level = Level { bits: bits.max(system.data_bits()) + STEP_BITS, basis: first };
+        // A function more is worth about six bits well below threshold; a first level of this size is seldom wasted.
+        let basis = first.max(usize::try_from(bits / 6).unwrap_or(first)).min(largest);
+        let mut level = Level { bits: bits.max(system.data_bits()) + STEP_BITS, basis };
         let mut previous: Option<Complex> = None;
         let mut previous_step: Option<Float> = None;
         let mut steps = 0;

@@ -3,8 +3,8 @@
 use super::environment::Environment;
 use super::problem::{Failure, Trouble};
 use super::walker::Kept;
-use crate::angular::{HalfInteger, threej};
-use crate::num::{Ball, ComplexBall, Effort, Function, NumberError, Scalar, Surd};
+use crate::angular::{HalfInteger, ninej, sixj, threej};
+use crate::num::{Ball, ComplexBall, Effort, NumberError, Scalar, Surd};
 use crate::systems::{Level, Manifold, State, StateLabel, System};
 use crate::theory::terms::*;
 use rug::{Complex, Float, Integer, Rational};
@@ -38,6 +38,8 @@ pub struct Evaluator<'s> {
     pub(super) imprecise_numbers: bool,
     /// Selection rules met, for the reason of an exact zero.
     rules: BTreeSet<String>,
+    /// Pairs of states of one level that an operator couples in first order.
+    couplings: BTreeMap<String, BTreeSet<String>>,
     /// Why a value cannot be had to more digits.
     pub(super) limit: Option<String>,
     pub(super) kept: HashMap<(String, String, Option<Level>), Kept>,
@@ -66,6 +68,7 @@ impl<'s> Evaluator<'s> {
             nudged_numbers: 0,
             imprecise_numbers: false,
             rules: BTreeSet::new(),
+            couplings: BTreeMap::new(),
             limit: None,
             kept: HashMap::new(),
             never_exact: BTreeSet::new(),
@@ -75,7 +78,7 @@ impl<'s> Evaluator<'s> {
     }
 
     pub(super) fn note_rule(&mut self, rule: String) {
-        if self.rules.len() < 8 {
+        if !rule.is_empty() && self.rules.len() < 8 {
             self.rules.insert(rule);
         }
     }
@@ -83,6 +86,25 @@ impl<'s> Evaluator<'s> {
     /// The selection rules met so far, and forgets them.
     pub fn take_rules(&mut self) -> Vec<String> {
         std::mem::take(&mut self.rules).into_iter().collect()
+    }
+
+    pub(super) fn note_coupling(&mut self, left_out: &str, other: &str) {
+        self.couplings.entry(left_out.to_string()).or_default().insert(other.to_string());
+    }
+
+    /// The first-order couplings met so far in words, and forgets them.
+    pub(super) fn take_couplings(&mut self) -> Vec<String> {
+        let couplings = std::mem::take(&mut self.couplings);
+        let told = couplings.into_iter().map(|(left_out, others)| {
+            let more = if others.len() > 4 { ", …" } else { "" };
+            let others: Vec<String> = others.into_iter().take(4).collect();
+            format!(
+                "the level of the state {left_out} is coupled in first order: an operator leads to {}{more} of the same energy, which the prime leaves \
+                 out; perturbation theory of one state of a level needs states that diagonalise the perturbation",
+                others.join("; ")
+            )
+        });
+        told.collect()
     }
 
     /// Why more digits are not to be had, if that came up.
@@ -173,7 +195,7 @@ impl<'s> Evaluator<'s> {
             }
             ScalarNode::Function(function, inner) => {
                 let value = self.scalar(inner, environment, bits)?;
-                value.apply(numeric_function(*function), bits).map_err(at)
+                value.apply(*function, bits).map_err(at)
             }
             ScalarNode::Energy(state) => {
                 let system = self.system(&state.system, state.place)?;
@@ -213,29 +235,36 @@ impl<'s> Evaluator<'s> {
                 }
                 Ok(sum)
             }
-            ScalarNode::ThreeJ(arguments) => {
-                let refused = |place, message: String| {
-                    Failure::new(place, Trouble::Refused { message, help: "write 0, 1/2, 1, 3/2, …".into() })
-                };
-                let mut values = Vec::with_capacity(arguments.len());
-                for argument in arguments {
-                    let value = self.exact_scalar(argument, environment)?;
-                    let Some(rational) = value.as_rational() else {
-                        return Err(refused(argument.place, format!("{value} is not a half-integer")));
-                    };
-                    values.push(
-                        HalfInteger::from_rational(&rational)
-                            .map_err(|error| refused(argument.place, error.to_string()))?,
-                    );
-                }
-                let [j1, j2, j3, m1, m2, m3] = values.as_slice() else {
-                    return Err(refused(place, "a 3j symbol has six arguments".into()));
-                };
-                threej(*j1, *j2, *j3, *m1, *m2, *m3)
-                    .map(Scalar::Exact)
-                    .map_err(|error| refused(place, error.to_string()))
-            }
+            ScalarNode::Wigner(symbol, arguments) => self.wigner(*symbol, arguments, environment, place),
         }
+    }
+
+    /// A 3j, 6j or 9j symbol; exact.
+    fn wigner(
+        &mut self,
+        symbol: WignerSymbol,
+        arguments: &[ScalarTerm],
+        environment: &Environment,
+        place: Place,
+    ) -> Evaluated<Scalar> {
+        let refused = |place, message: String| {
+            Failure::new(place, Trouble::Refused { message, help: "write 0, 1/2, 1, 3/2, …".into() })
+        };
+        let mut j = Vec::with_capacity(arguments.len());
+        for argument in arguments {
+            let value = self.exact_scalar(argument, environment)?;
+            let Some(rational) = value.as_rational() else {
+                return Err(refused(argument.place, format!("{value} is not a half-integer")));
+            };
+            j.push(HalfInteger::from_rational(&rational).map_err(|error| refused(argument.place, error.to_string()))?);
+        }
+        let value = match (symbol, j.as_slice()) {
+            (WignerSymbol::ThreeJ, &[j1, j2, j3, m1, m2, m3]) => threej(j1, j2, j3, m1, m2, m3),
+            (WignerSymbol::SixJ, &[j1, j2, j3, l1, l2, l3]) => sixj([j1, j2, j3, l1, l2, l3]),
+            (WignerSymbol::NineJ, &[a, b, c, d, e, f, g, h, i]) => ninej([[a, b, c], [d, e, f], [g, h, i]]),
+            _ => return Err(refused(place, format!("the symbol takes {}", symbol.arguments().1))),
+        };
+        value.map(Scalar::Exact).map_err(|error| refused(place, error.to_string()))
     }
 
     /// The value of a term that has to be exact (arguments of operators, limits of sums).
@@ -348,19 +377,5 @@ pub(super) fn ball(value: Complex, radius: Float) -> Result<ComplexBall, NumberE
         Ok(ComplexBall::real(Ball::with_radius(value.into_real_imag().0, radius)?))
     } else {
         ComplexBall::from_complex(value, radius)
-    }
-}
-
-fn numeric_function(function: ScalarFunction) -> Function {
-    match function {
-        ScalarFunction::Sqrt => Function::Sqrt,
-        ScalarFunction::Exp => Function::Exp,
-        ScalarFunction::Ln => Function::Ln,
-        ScalarFunction::Sin => Function::Sin,
-        ScalarFunction::Cos => Function::Cos,
-        ScalarFunction::Abs => Function::Abs,
-        ScalarFunction::Conj => Function::Conj,
-        ScalarFunction::Re => Function::Re,
-        ScalarFunction::Im => Function::Im,
     }
 }

@@ -6,6 +6,7 @@
 mod bracket;
 mod environment;
 mod evaluator;
+mod factors;
 mod problem;
 mod root;
 mod value;

@@ -32,6 +32,8 @@ pub struct Value {
     pub sources: Vec<(Place, Float)>,
     /// Selection rules behind an exact zero.
     pub rules: Vec<String>,
+    /// First-order couplings inside a degenerate level that were left out.
+    pub couplings: Vec<String>,
     /// Why there are fewer digits than asked, if so.
     pub limit: Option<String>,
 }
@@ -59,8 +61,10 @@ impl Evaluator<'_> {
         }
         self.limit = None;
         self.take_rules();
+        self.take_couplings();
         let scalar = self.certain_to(term, digits)?;
         let rules = self.take_rules();
+        let couplings = self.take_couplings();
         let limit = self.limit.clone();
         let mut sources = Vec::new();
         for (place, sigma) in measured_sources(term) {
@@ -71,10 +75,13 @@ impl Evaluator<'_> {
                 }
             }
         }
+        if !sources.is_empty() && !scalar.is_real() {
+            return Err(Failure::new(term.place, complex_with_uncertainty()));
+        }
         if wanted == Wanted::Exact && (!sources.is_empty() || matches!(scalar, Scalar::Approx(_))) {
             return Err(Failure::new(term.place, Trouble::NotExact));
         }
-        Ok(Value { scalar, sources, rules, limit })
+        Ok(Value { scalar, sources, rules, couplings, limit })
     }
 
     /// Raises the working precision until `digits` digits are certain.
@@ -118,16 +125,17 @@ impl Evaluator<'_> {
         let difference = ends[0].sub(&ends[1], 256).map_err(|error| Failure::new(term.place, error))?;
         let ball = difference.to_ball(256).map_err(|error| Failure::new(term.place, error))?;
         if !ball.is_real() {
-            return Err(Failure::new(
-                term.place,
-                Trouble::Refused {
-                    message: "a complex value depends on a number with an uncertainty".into(),
-                    help: "take the parts one by one: `re(…)`, `im(…)`".into(),
-                },
-            ));
+            return Err(Failure::new(term.place, complex_with_uncertainty()));
         }
         let real: &Ball = &ball.re;
         Ok(Float::with_val(64, real.mid()) << (SHIFT_BITS - 1))
+    }
+}
+
+fn complex_with_uncertainty() -> Trouble {
+    Trouble::Refused {
+        message: "a complex value depends on a number with an uncertainty".into(),
+        help: "take the parts one by one: `re(…)`, `im(…)`".into(),
     }
 }
 

@@ -5,16 +5,15 @@
 
 use super::environment::Environment;
 use super::evaluator::Evaluator;
-use super::problem::{Failure, Trouble};
+use super::factors::{Factor, Flat, middle};
+use super::problem::Failure;
 use crate::num::Scalar;
-use crate::systems::{
-    Atom, Backend, BlockKet, FunctionKind, FunctionOfH, Number, Obstacle, Omitted, Resolvent, Sector, State, System,
-};
+use crate::systems::{Atom, Backend, BlockKet, Number, Obstacle, Omitted, Resolvent, Sector, State, System};
 use crate::theory::terms::*;
 use std::collections::{BTreeMap, HashMap};
 use std::sync::Arc;
 
-type Walked<T> = Result<T, Failure>;
+pub(super) type Walked<T> = Result<T, Failure>;
 
 /// A ket over all sectors it has a part in, with the text that identifies it inside one evaluation.
 #[derive(Clone)]
@@ -26,28 +25,8 @@ pub struct SectorKet {
 /// Kets that were computed already, by their text; one table for each backend.
 pub type Kept = HashMap<String, SectorKet>;
 
-/// A factor of a chain with the values of its variables.
-#[derive(Clone)]
-struct Factor {
-    operator: OperatorTerm,
-    environment: Environment,
-}
-
-impl Factor {
-    fn key(&self) -> String {
-        format!("{}{{{}}}", self.operator.text, self.environment.fingerprint())
-    }
-
-    fn holds_function_of_h(&self) -> bool {
-        crate::theory::resolve::has_function_of_h(&self.operator)
-    }
-}
-
-/// A chain taken apart: the product of its numbers, and its operators in the order written.
-struct Flat {
-    coefficient: Scalar,
-    factors: Vec<Factor>,
-}
+/// Most kets kept for one backend; a ket of the largest matrix has some hundred kilobytes.
+const MOST_KEPT: usize = 400;
 
 /// Evaluates chains on one backend.
 pub struct Walker<'w, 's> {
@@ -57,6 +36,8 @@ pub struct Walker<'w, 's> {
     /// Working precision of numbers that are not exact; `None` on the exact backend.
     pub bits: Option<u32>,
     pub kept: Kept,
+    /// The eigenstate a bracket ends in, for the note on degenerate levels.
+    pub outer: Option<State>,
 }
 
 impl Walker<'_, '_> {
@@ -68,6 +49,10 @@ impl Walker<'_, '_> {
         };
         let bra = self.ket(&bracket.bra, environment)?;
         let ket = self.ket(&bracket.ket, environment)?;
+        self.outer = match &*bracket.ket.node {
+            KetNode::State(state) => Some(self.evaluator.state(state, environment)?),
+            _ => None,
+        };
         let place = bracket.operator.as_ref().map_or(bracket.ket.place, |operator| operator.place);
         self.scaled_sandwich(&bra, &flat, &ket, place)
     }
@@ -104,6 +89,43 @@ impl Walker<'_, '_> {
                 let atom = self.atom(atom, factor)?;
                 let rule = self.system.selection_rule(&atom);
                 self.evaluator.note_rule(rule);
+            }
+        }
+        Ok(())
+    }
+
+    /// Notes where a ket has a part in other states of the level that a prime leaves out: an operator couples the level in first order, and
+    /// perturbation theory for one state of it holds only if its states diagonalise the operator.
+    fn note_coupling(&mut self, resolvent: &Resolvent, ket: &SectorKet, place: Place) -> Walked<()> {
+        let at = |obstacle| Failure::new(place, obstacle);
+        let Some(outer) = self.outer.clone() else { return Ok(()) };
+        for omitted in &resolvent.omitted {
+            let Omitted::LevelOf(left_out) = omitted else { continue };
+            if !self.system.degenerate(&outer, left_out) {
+                continue;
+            }
+            for (sector, part) in ket.parts.iter() {
+                let states = self.system.level_in(left_out, *sector, &self.evaluator.effort).map_err(at)?;
+                for state in states.iter().filter(|state| **state != outer) {
+                    let other = match self.eigenstate(state, place) {
+                        Ok(ket) => ket.parts.get(sector).cloned(),
+                        Err(failure) if failure.is_inexact() => None,
+                        Err(failure) => return Err(failure),
+                    };
+                    let Some(other) = other else { continue };
+                    let overlap = self.backend.overlap(*sector, &other, part).map_err(at)?;
+                    let coupled = match (&overlap, self.bits) {
+                        (Number::Exact(value), _) => !value.is_zero(),
+                        (Number::Approx(value), Some(bits)) => {
+                            let size = rug::Complex::with_val(32, value).abs().into_real_imag().0;
+                            size > rug::Float::with_val(32, 1) >> (bits / 2)
+                        }
+                        (Number::Approx(_), None) => false,
+                    };
+                    if coupled {
+                        self.evaluator.note_coupling(&outer.label, &state.label);
+                    }
+                }
             }
         }
         Ok(())
@@ -218,15 +240,39 @@ impl Walker<'_, '_> {
                 };
                 Ok(Some(a.times(&b, self.bits.unwrap_or(64))))
             }
-            _ => match self.act(factor, ket) {
+            node => match self.act(factor, ket) {
                 Ok(ket) => self.overlap(bra, &ket, place),
-                Err(failure) if failure.is_inexact() => {
-                    let bra = self.act_adjoint(factor, bra)?;
-                    self.overlap(&bra, ket, place)
-                }
+                Err(failure) if failure.is_inexact() => match (self.act_adjoint(factor, bra), node) {
+                    (Ok(bra), _) => self.overlap(&bra, ket, place),
+                    (Err(failure), OperatorNode::Resolvent(linear)) if failure.is_inexact() => {
+                        self.through(bra, factor, linear, ket)
+                    }
+                    (Err(failure), _) => Err(failure),
+                },
                 Err(failure) => Err(failure),
             },
         }
+    }
+
+    /// <bra| (a + b H)^-1 |ket> where the resolvent can act on neither side alone.
+    fn through(
+        &mut self,
+        bra: &SectorKet,
+        factor: &Factor,
+        linear: &LinearInH,
+        ket: &SectorKet,
+    ) -> Walked<Option<Number>> {
+        let place = factor.operator.place;
+        let (scale, resolvent) = self.resolvent(linear, factor)?;
+        let mut total = None;
+        for (sector, part) in ket.parts.iter() {
+            if let Some(left) = bra.parts.get(sector) {
+                let value = self.backend.through(&resolvent, *sector, left, part);
+                let value = value.map_err(|obstacle| Failure::new(place, obstacle))?;
+                total = Some(self.plus(total, value.times(&scale, self.bits.unwrap_or(64))));
+            }
+        }
+        Ok(total)
     }
 
     fn atom_element(&mut self, bra: &SectorKet, atom: &Atom, ket: &SectorKet, place: Place) -> Walked<Option<Number>> {
@@ -273,7 +319,7 @@ impl Walker<'_, '_> {
         }
         let parts = self.act_anew(factor, ket)?;
         let result = SectorKet { key: key.as_str().into(), parts: Arc::new(parts) };
-        self.kept.insert(key, result.clone());
+        self.keep(key, &result);
         Ok(result)
     }
 
@@ -307,6 +353,7 @@ impl Walker<'_, '_> {
             }
             OperatorNode::Resolvent(linear) => {
                 let (scale, resolvent) = self.resolvent(linear, factor)?;
+                self.note_coupling(&resolvent, ket, place)?;
                 self.each_sector(ket, &scale, place, |backend, sector, part| backend.resolve(&resolvent, sector, part))
             }
             OperatorNode::Function(function, linear) => {
@@ -331,6 +378,14 @@ impl Walker<'_, '_> {
                 self.scaled(&image, &coefficient, place)
             }
         }
+    }
+
+    /// Keeps a ket for the rest of the evaluation; a long sum or search does not pile them up.
+    fn keep(&mut self, key: String, ket: &SectorKet) {
+        if self.kept.len() >= MOST_KEPT {
+            self.kept.clear();
+        }
+        self.kept.insert(key, ket.clone());
     }
 
     /// The adjoint of a factor on a ket, for bras.
@@ -386,8 +441,7 @@ impl Walker<'_, '_> {
             }
             OperatorNode::Function(function, linear) => {
                 let mut function = self.function_of_h(*function, linear, factor)?;
-                function.constant = function.constant.conj();
-                function.slope = function.slope.conj();
+                function.adjoint = true;
                 let one = Number::Exact(crate::num::Surd::one());
                 self.each_sector(ket, &one, place, |backend, sector, part| backend.function(&function, sector, part))?
             }
@@ -412,7 +466,7 @@ impl Walker<'_, '_> {
             }
         };
         let result = SectorKet { key: key.as_str().into(), parts: Arc::new(parts) };
-        self.kept.insert(key, result.clone());
+        self.keep(key, &result);
         Ok(result)
     }
 
@@ -524,7 +578,7 @@ impl Walker<'_, '_> {
         }
         let parts = self.backend.state(state).map_err(|obstacle| Failure::new(place, obstacle))?;
         let result = SectorKet { key: key.as_str().into(), parts: Arc::new(parts.into_iter().collect()) };
-        self.kept.insert(key, result.clone());
+        self.keep(key, &result);
         Ok(result)
     }
 
@@ -536,165 +590,6 @@ impl Walker<'_, '_> {
         let key = format!("{coefficient:?}*{}", ket.key);
         Ok(SectorKet { key: key.into(), parts: Arc::new(self.scaled(&ket, &number, place)?) })
     }
-
-    /// Takes products, powers and named operators apart and gathers their numbers.
-    fn flatten(&mut self, operator: &OperatorTerm, environment: &Environment) -> Walked<Flat> {
-        let mut flat = Flat { coefficient: Scalar::one(), factors: Vec::new() };
-        self.flatten_into(operator, environment, &mut flat)?;
-        Ok(flat)
-    }
-
-    fn flatten_into(&mut self, operator: &OperatorTerm, environment: &Environment, flat: &mut Flat) -> Walked<()> {
-        match &*operator.node {
-            OperatorNode::Scalar(scalar) => {
-                let value = self.evaluator.scalar(scalar, environment, self.scalar_bits())?;
-                flat.coefficient = flat
-                    .coefficient
-                    .mul(&value, self.scalar_bits())
-                    .map_err(|error| Failure::new(operator.place, error))?;
-            }
-            OperatorNode::Product(factors) => {
-                for factor in factors {
-                    self.flatten_into(factor, environment, flat)?;
-                }
-            }
-            OperatorNode::Power(inner, power) => {
-                for _ in 0..*power {
-                    self.flatten_into(inner, environment, flat)?;
-                }
-            }
-            OperatorNode::Call(call) => {
-                if let Meaning::Operator(body) = &call.definition.body {
-                    let inside = self.evaluator.enter(call, environment, self.scalar_bits())?;
-                    self.flatten_into(body, &inside, flat)?;
-                }
-            }
-            OperatorNode::Atom(term) => {
-                let factor = Factor { operator: operator.clone(), environment: environment.clone() };
-                let atom = self.named_atom(term, &factor)?;
-                let known = self.system.knows(&atom).map_err(|trouble| Failure::new(operator.place, trouble))?;
-                if known {
-                    flat.factors.push(factor);
-                    return Ok(());
-                }
-                if !(1..=1000).contains(&atom.power) {
-                    return Err(Failure::new(
-                        operator.place,
-                        Trouble::Refused {
-                            message: format!("`{}` has no power {} here", atom.name, atom.power),
-                            help: "of a general operator only whole powers from 1 to 1000 are products; `r` has negative ones".into(),
-                        },
-                    ));
-                }
-                let single = AtomTerm { power: 1, ..term.clone() };
-                let text = format!("{} to its power", operator.text);
-                let single = Term::new(OperatorNode::Atom(single), operator.place, text);
-                let factor = Factor { operator: single, environment: environment.clone() };
-                flat.factors.extend(std::iter::repeat_n(factor, atom.power as usize));
-            }
-            _ => flat.factors.push(Factor { operator: operator.clone(), environment: environment.clone() }),
-        }
-        Ok(())
-    }
-
-    /// The atom with its arguments as numbers and its Cartesian index as a component.
-    fn named_atom(&mut self, term: &AtomTerm, factor: &Factor) -> Walked<Atom> {
-        let place = factor.operator.place;
-        let mut arguments = Vec::with_capacity(term.arguments.len());
-        for argument in &term.arguments {
-            let value = self.evaluator.exact_scalar(argument, &factor.environment)?;
-            let Some(rational) = value.as_rational() else {
-                return Err(Failure::new(
-                    place,
-                    Trouble::Refused {
-                        message: format!(
-                            "`{}` takes whole numbers in its parentheses, and {value} is given",
-                            term.name
-                        ),
-                        help: "write for instance `C(2)_0`".into(),
-                    },
-                ));
-            };
-            arguments.push(rational.into_owned());
-        }
-        let component = term.component.as_ref().map(|index| match factor.environment.index(index) {
-            Some(component) => component.to_string(),
-            None => index.clone(),
-        });
-        Ok(Atom { name: term.name.clone(), component, arguments, power: term.power })
-    }
-
-    /// Like `named_atom`, for an atom the system has already accepted.
-    fn atom(&mut self, term: &AtomTerm, factor: &Factor) -> Walked<Atom> {
-        self.named_atom(term, factor)
-    }
-
-    /// Precision for numbers inside the chain: a little more than the kets have.
-    fn scalar_bits(&self) -> u32 {
-        self.bits.map_or(self.evaluator.exact_bits, |bits| bits + 32)
-    }
-
-    /// A number as the backend takes it.
-    fn number(&mut self, scalar: &Scalar, place: Place) -> Walked<Number> {
-        match (scalar, self.bits) {
-            (Scalar::Exact(surd), _) => Ok(Number::Exact(surd.clone())),
-            (Scalar::Approx(_), None) => Err(Failure::new(place, Obstacle::Inexact)),
-            (Scalar::Approx(ball), Some(bits)) => Ok(Number::Approx(self.evaluator.nudged(ball, bits))),
-        }
-    }
-
-    /// 1/(a + b H) = scale (z - H)^-1 with z = -a/b and scale = -1/b.
-    fn resolvent(&mut self, linear: &LinearInH, factor: &Factor) -> Walked<(Number, Resolvent)> {
-        let place = factor.operator.place;
-        let bits = self.scalar_bits();
-        let constant = self.evaluator.scalar(&linear.constant, &factor.environment, bits)?;
-        let slope = self.evaluator.scalar(&linear.slope, &factor.environment, bits)?;
-        let scale = Scalar::one().div(&slope, bits).map_err(|error| Failure::new(place, error))?.neg();
-        let z = constant.mul(&scale, bits).map_err(|error| Failure::new(place, error))?;
-        let resolvent =
-            Resolvent { z: self.number(&z, place)?, omitted: self.omitted(&linear.omitted, &factor.environment)? };
-        Ok((self.number(&scale, place)?, resolvent))
-    }
-
-    fn function_of_h(&mut self, function: ScalarFunction, linear: &LinearInH, factor: &Factor) -> Walked<FunctionOfH> {
-        let place = factor.operator.place;
-        let bits = self.scalar_bits();
-        let constant = self.evaluator.scalar(&linear.constant, &factor.environment, bits)?;
-        let slope = self.evaluator.scalar(&linear.slope, &factor.environment, bits)?;
-        let kind = match function {
-            ScalarFunction::Sqrt => FunctionKind::Sqrt,
-            ScalarFunction::Exp => FunctionKind::Exp,
-            _ => FunctionKind::Ln,
-        };
-        Ok(FunctionOfH {
-            kind,
-            constant: self.number(&constant, place)?,
-            slope: self.number(&slope, place)?,
-            omitted: self.omitted(&linear.omitted, &factor.environment)?,
-        })
-    }
-
-    fn omitted(&mut self, terms: &[OmittedTerm], environment: &Environment) -> Walked<Vec<Omitted>> {
-        terms
-            .iter()
-            .map(|term| match term {
-                OmittedTerm::LevelOf(state) => Ok(Omitted::LevelOf(self.evaluator.state(state, environment)?)),
-                OmittedTerm::Manifold(manifold) => {
-                    Ok(Omitted::Manifold(self.evaluator.manifold(manifold, environment)?))
-                }
-            })
-            .collect()
-    }
-}
-
-/// Where the two sides of a numeric chain meet: half of the functions of H on each side, so that solves are shared and the error of each side
-/// multiplies that of the other.
-fn middle(factors: &[Factor]) -> usize {
-    let solves: Vec<usize> = (0..factors.len()).filter(|&k| factors[k].holds_function_of_h()).collect();
-    let left = solves.len() / 2;
-    let start = if left == 0 { 0 } else { solves[left - 1] + 1 };
-    let end = solves.get(left).copied().unwrap_or(factors.len());
-    if start < end { start } else { start.min(factors.len() - 1) }
 }
 
 fn hamiltonian() -> Atom {

@@ -116,6 +116,8 @@ pub struct FunctionOfH {
     pub constant: Number,
     pub slope: Number,
     pub omitted: Vec<Omitted>,
+    /// Whether the values are to be conjugated. On the cut of a logarithm or a root this is not the function of the conjugated argument.
+    pub adjoint: bool,
 }
 
 #[derive(Clone, Copy, PartialEq, Eq, Hash, Debug)]
@@ -192,6 +194,9 @@ pub trait System: Send + Sync {
     /// Tells whether two states belong to the same level (their energies are equal, not only close).
     fn degenerate(&self, a: &State, b: &State) -> bool;
 
+    /// The states of a state's level that have a part in a sector, the state itself included.
+    fn level_in(&self, state: &State, sector: Sector, effort: &Effort) -> Result<Vec<State>, Obstacle>;
+
     /// Tells whether the system has this operator with this component, arguments and power.
     ///
     /// Errors: `UnknownOperator`, or `Refused` with the reason. A power other than 1 that the system does not know as an operator of its
@@ -204,13 +209,8 @@ pub trait System: Send + Sync {
     /// The adjoint of an operator: a factor and the operator it is a multiple of.
     fn adjoint(&self, atom: &Atom) -> (i32, Atom);
 
-    /// The operator as a power of pi times another, where that makes elements exact which are not otherwise: delta(r) = pi^-1 (pi delta(r)).
-    /// The caller may take either; `knows`, `couple` and `adjoint` have both.
-    fn without_pi(&self, _: &Atom) -> Option<(i32, Atom)> {
-        None
-    }
-
-    /// Why an operator leads nowhere from a sector, in the words of the trade (`D changes l by one`), for an exact zero.
+    /// Why an operator leads nowhere from a sector, in the words of the trade (`D changes l by one`), for an exact zero;
+    /// empty where there is no rule.
     fn selection_rule(&self, atom: &Atom) -> String;
 
     /// The backend whose numbers are exact, if there is one.
@@ -236,6 +236,11 @@ pub trait Backend: Send + Sync {
 
     /// Q (z - H)^-1 Q on a ket.
     fn resolve(&self, resolvent: &Resolvent, sector: Sector, ket: &BlockKet) -> Result<BlockKet, Obstacle>;
+
+    /// <bra| Q (z - H)^-1 Q |ket> inside a sector, where the resolvent on neither of them has a form the backend can hold.
+    fn through(&self, _: &Resolvent, _: Sector, _bra: &BlockKet, _ket: &BlockKet) -> Result<Number, Obstacle> {
+        Err(Obstacle::Inexact)
+    }
 
     /// A function of H on a ket.
     fn function(&self, function: &FunctionOfH, sector: Sector, ket: &BlockKet) -> Result<BlockKet, Obstacle>;

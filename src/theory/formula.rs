@@ -6,13 +6,18 @@
 use super::names::Binding;
 use super::problem::{Fault, Kind, Problem};
 use super::resolve::Resolver;
-use crate::lang::tree::{Argument, DefinitionKind, Expr, ExprKind, LabelPart, Operation, Span, StateRef, StateRefKind};
+use crate::lang::tree::{
+    Argument, DefinitionKind, Expr, ExprKind, LabelPart, Name, Operation, Span, StateRef, StateRefKind,
+};
 use crate::num::decimal;
 use rug::Rational;
 use std::collections::BTreeMap;
 
 /// Largest number of terms an expansion may have.
 const TERM_LIMIT: usize = 10_000;
+
+/// Most parts of an expression with all definitions put in.
+const PART_LIMIT: usize = 100_000;
 
 /// Deepest nesting of definitions put into each other.
 const DEPTH_LIMIT: usize = 100;
@@ -32,7 +37,7 @@ struct Monomial {
 /// Errors: what the expression itself has wrong, or an expansion of more than 10,000 terms.
 pub fn expanded(resolver: &mut Resolver<'_>, expression: &Expr) -> Result<String, Problem> {
     resolver.scalar(expression)?;
-    let mut expansion = Expansion { resolver, depth: 0, at: expression.span };
+    let mut expansion = Expansion { resolver, depth: 0, parts: 0, at: expression.span };
     let inlined = expansion.inline(expression, &BTreeMap::new())?;
     let terms = expansion.multiply_out(&inlined)?;
     let merged = merge(terms);
@@ -42,6 +47,8 @@ pub fn expanded(resolver: &mut Resolver<'_>, expression: &Expr) -> Result<String
 struct Expansion<'x, 'r> {
     resolver: &'x mut Resolver<'r>,
     depth: usize,
+    /// Parts put in so far.
+    parts: usize,
     at: Span,
 }
 
@@ -63,6 +70,13 @@ impl Expansion<'_, '_> {
 
     /// Puts the bodies of definitions in place of their names.
     fn inline(&mut self, e: &Expr, arguments: &Arguments) -> Result<Expr, Problem> {
+        self.parts += 1;
+        if self.parts > PART_LIMIT {
+            return self.refuse(
+                format!("written out, the expression has more than {PART_LIMIT} parts"),
+                "expand a part of it, or evaluate it as it stands",
+            );
+        }
         let inner = |this: &mut Self, part: &Expr| this.inline(part, arguments);
         Ok(match &e.kind {
             ExprKind::Name(name) => match (arguments.get(name), self.resolver.names.bound.get(name)) {
@@ -74,6 +88,8 @@ impl Expansion<'_, '_> {
                 _ => expr(e.kind.clone()),
             },
             ExprKind::Call { name, arguments: given, subscript } => {
+                let bound = self.with_bound_variables(given, arguments);
+                let arguments = &bound;
                 let mut put = Vec::with_capacity(given.len());
                 for argument in given {
                     put.push(self.inline_argument(argument, arguments)?);
@@ -102,7 +118,14 @@ impl Expansion<'_, '_> {
             }
             ExprKind::Bracket { bra, chain, ket } => {
                 let chain = chain.as_deref().map(|chain| inner(self, chain)).transpose()?;
-                let (bra, left) = self.open_ket(bra, arguments)?;
+                let (opened, left) = self.open_ket(bra, arguments)?;
+                // A chain reads the same from the other end only if its factors are Hermitian; otherwise the bra keeps its name.
+                let (bra, left) = match left {
+                    Some(operators) if !is_plainly_hermitian(&operators) => {
+                        (self.with_arguments(bra, arguments)?, None)
+                    }
+                    left => (opened, left),
+                };
                 let (ket, right) = self.open_ket(ket, arguments)?;
                 // <u| with |u> = X|g> is <g|X^+: only chains of Hermitian factors can be turned round in this notation.
                 let left = left.map(|operators| reversed(&operators));
@@ -114,6 +137,25 @@ impl Expansion<'_, '_> {
         })
     }
 
+    /// The arguments with variables of a range standing for themselves; a variable that an argument mentions gets another name.
+    fn with_bound_variables(&self, given: &[Argument], arguments: &Arguments) -> Arguments {
+        let mut bound = arguments.clone();
+        for argument in given {
+            let Argument::Range { variable, .. } = argument else { continue };
+            let taken = |name: &str| {
+                arguments.values().any(|value| {
+                    value.to_string().split(|c: char| !(c.is_alphanumeric() || c == '_')).any(|word| word == name)
+                })
+            };
+            let mut name = variable.text.clone();
+            while taken(&name) {
+                name.push('1');
+            }
+            bound.insert(variable.text.clone(), expr(ExprKind::Name(name)));
+        }
+        bound
+    }
+
     fn inline_argument(&mut self, argument: &Argument, arguments: &Arguments) -> Result<Argument, Problem> {
         Ok(match argument {
             Argument::Positional(value) => Argument::Positional(self.inline(value, arguments)?),
@@ -121,7 +163,10 @@ impl Expansion<'_, '_> {
                 Argument::Named { name: name.clone(), value: self.inline(value, arguments)? }
             }
             Argument::Range { variable, from, to } => Argument::Range {
-                variable: variable.clone(),
+                variable: match arguments.get(&variable.text).map(|renamed| &renamed.kind) {
+                    Some(ExprKind::Name(renamed)) => Name { text: renamed.clone(), span: variable.span },
+                    _ => variable.clone(),
+                },
                 from: self.inline(from, arguments)?,
                 to: self.inline(to, arguments)?,
             },
@@ -172,6 +217,17 @@ impl Expansion<'_, '_> {
             }
             _ => Ok((reference.clone(), None)),
         }
+    }
+
+    /// A named ket with its arguments put in.
+    fn with_arguments(&mut self, reference: &StateRef, arguments: &Arguments) -> Result<StateRef, Problem> {
+        let mut filled = reference.clone();
+        if let StateRefKind::Named { arguments: given, .. } = &mut filled.kind {
+            for value in given {
+                *value = self.inline(value, arguments)?;
+            }
+        }
+        Ok(filled)
     }
 
     /// A labelled state with the arguments put into the holes of its label.
@@ -352,6 +408,37 @@ fn holds_ket(e: &Expr) -> bool {
         ExprKind::Binary { left, right, .. } => holds_ket(left) || holds_ket(right),
         _ => false,
     }
+}
+
+/// Tells whether an expression is its own adjoint factor by factor, as far as that is seen from its words alone.
+fn is_plainly_hermitian(e: &Expr) -> bool {
+    match &e.kind {
+        ExprKind::Number(_) => true,
+        ExprKind::Name(name) => name != "i" && !name.contains("_+") && !name.contains("_-"),
+        ExprKind::Call { name, arguments, subscript } => {
+            !subscript.as_ref().is_some_and(|q| q.starts_with(['+', '-']))
+                && (name.text == "E"
+                    || arguments
+                        .iter()
+                        .all(|a| matches!(a, Argument::Positional(value) if is_plainly_hermitian(value))))
+                && name.text != "sqrt"
+                && name.text != "ln"
+        }
+        ExprKind::Negate(inner) | ExprKind::Primed(inner) => is_plainly_hermitian(inner),
+        ExprKind::Without { body, .. } => is_plainly_hermitian(body),
+        ExprKind::Binary { left, right, .. } => is_plainly_hermitian(left) && is_plainly_hermitian(right),
+        ExprKind::Bracket { bra, chain, ket } => {
+            bra.to_string() == ket.to_string()
+                && chain.as_ref().is_none_or(|chain| is_plainly_hermitian(chain) && is_single(chain))
+        }
+        _ => false,
+    }
+}
+
+/// Whether a chain is one operator, so that its mean value is real when it is Hermitian.
+fn is_single(e: &Expr) -> bool {
+    matches!(e.kind, ExprKind::Name(_) | ExprKind::Call { .. })
+        || matches!(&e.kind, ExprKind::Binary { operation: Operation::Power, left, .. } if is_single(left))
 }
 
 /// A chain read from the other end.

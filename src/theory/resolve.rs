@@ -249,6 +249,15 @@ impl<'a> Resolver<'a> {
             None => {}
         }
         match name {
+            "inf" => {
+                return self.fault(
+                    span,
+                    Fault::Other {
+                        message: "`inf` is no number to compute with".into(),
+                        help: "ranges of `zero` and `sum` are finite; `inf` stands for an infinite nuclear mass: `mass=inf`".into(),
+                    },
+                );
+            }
             "pi" => return Ok(Meaning::Scalar(self.term(ScalarNode::Pi, span))),
             "i" => return Ok(Meaning::Scalar(self.term(ScalarNode::Exact(Surd::i()), span))),
             "H" => return Ok(Meaning::Operator(self.term(OperatorNode::Hamiltonian, span))),
@@ -264,7 +273,7 @@ impl<'a> Resolver<'a> {
         if self.operator_word(name) {
             return Ok(self.atom(base, component, Vec::new(), span));
         }
-        if ScalarFunction::named(name).is_some() {
+        if function_named(name).is_some() {
             return self.fault(
                 span,
                 Fault::ArgumentCount {
@@ -325,7 +334,7 @@ impl<'a> Resolver<'a> {
             let plain = self.positional(&name.text, arguments, span)?;
             return self.call_definition(definition, &plain, span);
         }
-        if let Some(function) = ScalarFunction::named(&name.text) {
+        if let Some(function) = function_named(&name.text) {
             let [argument] = self.positional(&name.text, arguments, span)?.try_into().or_else(|list: Vec<Expr>| {
                 self.fault(
                     span,
@@ -345,20 +354,22 @@ impl<'a> Resolver<'a> {
         match name.text.as_str() {
             "E" => self.energy(arguments, span),
             "zero" | "sum" => self.bound_variable(name, arguments, span),
-            "threej" => {
-                let plain = self.positional(&name.text, arguments, span)?;
-                if plain.len() != 6 {
+            symbol if WignerSymbol::named(symbol).is_some_and(|_| !self.names.later.contains_key(symbol)) => {
+                let plain = self.positional(symbol, arguments, span)?;
+                let Some(symbol) = WignerSymbol::named(symbol) else { return self.unknown(symbol, name.span) };
+                let (count, wanted) = symbol.arguments();
+                if plain.len() != count {
                     return self.fault(
                         span,
                         Fault::ArgumentCount {
                             name: name.text.clone(),
-                            wanted: "six arguments (j1, j2, j3, m1, m2, m3)".into(),
+                            wanted: wanted.into(),
                             got: format!("{} are", plain.len()),
                         },
                     );
                 }
                 let terms = plain.iter().map(|a| self.scalar(a)).collect::<Resolved<Vec<_>>>()?;
-                Ok(Meaning::Scalar(self.term(ScalarNode::ThreeJ(terms), span)))
+                Ok(Meaning::Scalar(self.term(ScalarNode::Wigner(symbol, terms), span)))
             }
             "delta" if self.names.operators.contains("delta") => {
                 let plain = self.positional(&name.text, arguments, span)?;
@@ -418,7 +429,7 @@ impl<'a> Resolver<'a> {
                             Fault::WrongBinding {
                                 name: name.clone(),
                                 got: other.describe(),
-                                wanted: "a state: E(g) is the energy of an eigenstate".into(),
+                                wanted: "an eigenstate (`state g = h[1s]`)".into(),
                             },
                         );
                     }

@@ -4,6 +4,7 @@
 //! the variables in scope, identifies the term while names keep their meaning, which they do during one evaluation.
 
 use crate::lang::tree::{DefinitionKind, Expr, Span};
+pub use crate::num::Function as ScalarFunction;
 use crate::num::Surd;
 use rug::Rational;
 use std::sync::Arc;
@@ -67,38 +68,52 @@ pub enum ScalarNode {
         to: ScalarTerm,
         body: ScalarTerm,
     },
-    /// `threej(j1, j2, j3, m1, m2, m3)`
-    ThreeJ(Vec<ScalarTerm>),
+    /// `threej(j1, j2, j3, m1, m2, m3)` and its like
+    Wigner(WignerSymbol, Vec<ScalarTerm>),
 }
 
+/// The function of numbers with that name in the session language.
+pub fn function_named(name: &str) -> Option<ScalarFunction> {
+    Some(match name {
+        "sqrt" => ScalarFunction::Sqrt,
+        "exp" => ScalarFunction::Exp,
+        "ln" => ScalarFunction::Ln,
+        "sin" => ScalarFunction::Sin,
+        "cos" => ScalarFunction::Cos,
+        "abs" => ScalarFunction::Abs,
+        "conj" => ScalarFunction::Conj,
+        "re" => ScalarFunction::Re,
+        "im" => ScalarFunction::Im,
+        _ => return None,
+    })
+}
+
+/// The symbols of angular momentum theory that expressions may ask for.
 #[derive(Clone, Copy, PartialEq, Eq, Debug, Hash)]
-pub enum ScalarFunction {
-    Sqrt,
-    Exp,
-    Ln,
-    Sin,
-    Cos,
-    Abs,
-    Conj,
-    Re,
-    Im,
+pub enum WignerSymbol {
+    ThreeJ,
+    SixJ,
+    NineJ,
 }
 
-impl ScalarFunction {
-    /// The function of that name in the session language.
+impl WignerSymbol {
+    /// The symbol of that name in the session language.
     pub fn named(name: &str) -> Option<Self> {
-        Some(match name {
-            "sqrt" => Self::Sqrt,
-            "exp" => Self::Exp,
-            "ln" => Self::Ln,
-            "sin" => Self::Sin,
-            "cos" => Self::Cos,
-            "abs" => Self::Abs,
-            "conj" => Self::Conj,
-            "re" => Self::Re,
-            "im" => Self::Im,
-            _ => return None,
-        })
+        match name {
+            "threej" => Some(Self::ThreeJ),
+            "sixj" => Some(Self::SixJ),
+            "ninej" => Some(Self::NineJ),
+            _ => None,
+        }
+    }
+
+    /// How many arguments it takes, and which.
+    pub fn arguments(self) -> (usize, &'static str) {
+        match self {
+            Self::ThreeJ => (6, "six arguments (j1, j2, j3, m1, m2, m3)"),
+            Self::SixJ => (6, "six arguments (the upper row, then the lower)"),
+            Self::NineJ => (9, "nine arguments, row by row"),
+        }
     }
 }
 

@@ -20,7 +20,7 @@ impl Walk<'_> {
         (self.visit)(term);
         match &*term.node {
             ScalarNode::Exact(_) | ScalarNode::Measured { .. } | ScalarNode::Pi | ScalarNode::Variable(_) => {}
-            ScalarNode::Sum(list) | ScalarNode::Product(list) | ScalarNode::ThreeJ(list) => {
+            ScalarNode::Sum(list) | ScalarNode::Product(list) | ScalarNode::Wigner(_, list) => {
                 list.iter().for_each(|inner| self.scalar(inner));
             }
             ScalarNode::Negated(inner) | ScalarNode::Function(_, inner) => self.scalar(inner),

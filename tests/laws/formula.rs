@@ -13,7 +13,7 @@ fn operator(random: &mut Random, depth: u32) -> String {
         4 => format!("({} + {})", operator(random, depth - 1), operator(random, depth - 1)),
         5 => format!("({} - {})", operator(random, depth - 1), scalar(random, depth - 1)),
         6 => format!("{} {}", operator(random, depth - 1), operator(random, depth - 1)),
-        7 => format!("{}/{} {}", random.between(1, 5), random.between(1, 5), operator(random, depth - 1)),
+        7 => format!("({}/{}) {}", random.between(1, 5), random.between(1, 5), operator(random, depth - 1)),
         _ => format!("({})^{}", operator(random, depth - 1), random.between(1, 3)),
     }
 }
@@ -22,7 +22,7 @@ fn scalar(random: &mut Random, depth: u32) -> String {
     match random.below(if depth == 0 { 4 } else { 8 }) {
         0 => "<g|V|g>".into(),
         1 => "a".into(),
-        2 => format!("{}", random.between(1, 9)),
+        2 => format!("({})", random.between(1, 9)),
         3 => "E(g)".into(),
         4 => format!("<g|{}|g>", operator(random, depth - 1)),
         5 => format!("<u|{}|g>", operator(random, depth - 1)),
@@ -47,11 +47,14 @@ fn expansions_keep_the_value() {
             written(&v),
             written(&w)
         );
-        let Outcome::Result(answer) = last_outcome(&format!("{base}formula {expression}\n")) else {
-            panic!("seed {seed}: no formula of {expression} in\n{base}")
+        let answer = match last_outcome(&format!("{base}formula {expression}\n")) {
+            Outcome::Result(answer) => answer,
+            // Too long to be written out is an answer too; evaluation does not multiply out.
+            Outcome::Failed(reports) if reports[0].diagnostic.message.contains("more than 10000 terms") => continue,
+            other => panic!("seed {seed}: {other:?} of {expression} in\n{base}"),
         };
         let formula = answer.value.unwrap_or_default();
         let record = last_record(&format!("{base}compare {expression} with {formula}\n"));
-        assert!(record.contains("equal"), "seed {seed}: {record}\n{expression}\n{formula}\nin\n{base}");
+        assert!(agrees(&record), "seed {seed}: {record}\n{expression}\n{formula}\nin\n{base}");
     }
 }

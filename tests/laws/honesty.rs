@@ -8,7 +8,7 @@ fn cancelling(random: &mut Random) -> String {
     let w = random.between(1, 99);
     let tiny = random.between(1, 35);
     let chains = [
-        format!("<g|V R V|g> - <g|V S V|g>"),
+        "<g|V R V|g> - <g|V S V|g>".to_string(),
         format!("<g|V R W R V|g> + 10^-{tiny} <g|W|g>"),
         format!("(<g|V R V|g> + 10^{tiny}) - 10^{tiny}"),
         format!(
@@ -31,7 +31,7 @@ fn agrees_to_every_digit(short: &str, long: &str) -> bool {
     let place = exponent.parse::<i64>().unwrap_or(0) - decimals;
     let unit = ketwork::num::parse_decimal(&format!("1e{place}")).unwrap_or_default();
     // A correctly rounded value lies within half a unit; the longer one is itself rounded.
-    rug::Rational::from(a - b).abs() <= unit * rug::Rational::from((5001, 10000))
+    (a - b).abs() <= unit * rug::Rational::from((5001, 10000))
 }
 
 #[test]

@@ -69,7 +69,7 @@ pub fn with_spectrum(random: &mut Random, levels: &[Rational]) -> Rows {
             let t = Rational::from((random.between(-3, 3), random.between(1, 3)));
             let square = Rational::from(t.square_ref());
             let norm = Rational::from(&square + 1u32);
-            let c = Rational::from(1 - square) / &norm;
+            let c = (1 - square) / &norm;
             let s = Rational::from(&t * 2u32) / &norm;
             rotate(&mut rows, p, q, &c, &s);
         }
@@ -127,10 +127,19 @@ pub fn last_outcome(text: &str) -> Outcome {
 /// The number of a record line, exact or approximate; `None` for what is not one real rational or decimal.
 pub fn number(record: &str) -> Option<Rational> {
     let text = record.trim_start_matches(['=', '~', ' ']);
+    let text = text.split(" exactly:").next().unwrap_or(text);
+    if record.starts_with("= 0 exactly") {
+        return Some(Rational::new());
+    }
     if let Ok(value) = parse_decimal(text.trim_start_matches('-')) {
         return Some(if text.starts_with('-') { -value } else { value });
     }
     text.parse().ok()
+}
+
+/// Whether the record of a `compare` says that both sides agree; two zeros that are not proved agree.
+pub fn agrees(record: &str) -> bool {
+    record.contains("equal") || record.contains("both 0 below")
 }
 
 /// A session that starts with the system `m` (H and V), its ground state g, and a number of digits.

@@ -1,7 +1,8 @@
 //! The exact backend: functions that are finite sums of powers times exponentials.
 
 use super::action::{self, NoFunction};
-use super::bound::{bound_state, level_at};
+use super::bound::{bound_state, energy, level_at};
+use super::closed_sum::{NoSum, reduced_sum};
 use super::finite_solution::{finite_solution, project_out};
 use super::function::{RadialFunction, Unintegrable};
 use super::labels::{omitted_levels, quantum_numbers, short};
@@ -68,11 +69,6 @@ pub(super) fn apply_exactly(operator: Radial, l: u32, lp: u32, u: &RadialFunctio
         Radial::PSquared => action::p_squared(u, l),
         Radial::PFourth => action::p_squared(u, l).and_then(|once| action::p_squared(&once, l)),
         Radial::DeltaTimesPi => action::delta_times_pi(u),
-        Radial::Delta => match action::delta_times_pi(u) {
-            Ok(v) if v.is_zero() => Ok(v),
-            Ok(_) => return Err(Obstacle::Inexact),
-            Err(reason) => Err(reason),
-        },
         Radial::Hamiltonian => action::hamiltonian(u, l),
     };
     result.map_err(|reason| match reason {
@@ -95,11 +91,10 @@ pub(super) fn element_exactly(
             let ket = apply_exactly(Radial::PSquared, l, l, ket)?;
             bra.inner(&ket).map_err(named)
         }
-        Radial::Delta | Radial::DeltaTimesPi => {
+        Radial::DeltaTimesPi => {
             let bra = bra.value_at_nucleus().map_err(named)?;
             let ket = ket.value_at_nucleus().map_err(named)?;
-            let value = (&bra.conj() * &ket).scaled(&Rational::from((1, 4)));
-            Ok(if operator == Radial::Delta { &value * &Surd::pi_to(-1) } else { value })
+            Ok((&bra.conj() * &ket).scaled(&Rational::from((1, 4))))
         }
         _ => bra.inner(&apply_exactly(operator, l, lp, ket)?).map_err(named),
     }
@@ -131,6 +126,19 @@ pub(super) fn resolve_exactly(
     let source = project_out(source, l, levels).map_err(named)?;
     let solution = finite_solution(z, l, &source, effort)?.ok_or(Obstacle::Inexact)?;
     project_out(&solution, l, levels).map_err(named)
+}
+
+fn no_sum(reason: NoSum) -> Obstacle {
+    let operator = "the sum over intermediate states";
+    match reason {
+        NoSum::Unintegrable(reason) => no_integral(operator, reason),
+        NoSum::Diverges => Obstacle::Diverges {
+            operator: operator.into(),
+            why: "the operators on both of its sides are so singular at the nucleus that highly excited states do not fade out".into(),
+        },
+        NoSum::NotRational => Obstacle::Inexact,
+        NoSum::Interrupted(stop) => Obstacle::Interrupted(stop),
+    }
 }
 
 fn open(ket: &BlockKet) -> Result<&RadialFunction, Obstacle> {
@@ -172,6 +180,37 @@ impl Backend for ExactBackend {
         Ok(Arc::new(u.scaled(&Rational::from(self.scale.energy.recip_ref()))))
     }
 
+    fn through(
+        &self,
+        resolvent: &Resolvent,
+        sector: Sector,
+        bra: &BlockKet,
+        ket: &BlockKet,
+    ) -> Result<Number, Obstacle> {
+        let l = orbital(sector)?;
+        let (bra, ket) = (open(bra)?, open(ket)?);
+        let z = match &resolvent.z {
+            Number::Exact(z) => z.as_rational().map(|z| Rational::from(z.as_ref() / &self.scale.energy)),
+            Number::Approx(_) => None,
+        };
+        let Some(z) = z else {
+            return Err(Obstacle::Inexact);
+        };
+        let levels = levels_left_out(resolvent, &z, l)?;
+        let Some(n) = level_at(&z) else {
+            return Err(Obstacle::Inexact);
+        };
+        let mut value = reduced_sum(n, l, bra, ket, &self.effort).map_err(no_sum)?;
+        // the other levels left out, term by term
+        let named = |reason| no_integral("the sum over intermediate states", reason);
+        for other in levels.into_iter().filter(|&other| other != n) {
+            let state = bound_state(other, l);
+            let product = &bra.inner(&state).map_err(named)? * &state.inner(ket).map_err(named)?;
+            value -= &product.scaled(&(energy(n) - energy(other)).recip());
+        }
+        Ok(Number::Exact(value.scaled(&Rational::from(self.scale.energy.recip_ref()))))
+    }
+
     fn function(&self, _: &FunctionOfH, _: Sector, _: &BlockKet) -> Result<BlockKet, Obstacle> {
         Err(Obstacle::Inexact)
     }
@@ -182,10 +221,6 @@ impl Backend for ExactBackend {
             let Number::Exact(weight) = weight else {
                 return Err(Obstacle::Inexact);
             };
-            if weight.has_pi() {
-                // Radial functions carry square roots; pi comes with matrix elements only.
-                return Err(Obstacle::Inexact);
-            }
             sum.add_scaled(weight, open(ket)?);
         }
         Ok(Arc::new(sum))

@@ -1,19 +1,19 @@
 //! Radial functions that are known exactly: sums of powers of r times decaying exponentials.
 //!
 //! A function u stands for the wave function u(r)/r Y_lm, so that <v|u> is the integral of conj(v) u over r. Lengths are those of the atom
-//! with charge and reduced mass one; `scale.rs` says how the real atom's differ.
+//! with charge and reduced mass one; `radial` says how the real atom's differ.
 
 use super::laurent::Laurent;
-use crate::num::Surd;
-use rug::{Integer, Rational};
+use crate::num::{Surd, Unit};
+use rug::Rational;
 use std::cmp::Ordering;
 use std::collections::{BTreeMap, BTreeSet};
 
-/// What a term carries besides its polynomial: sqrt(root) e^(-kappa r), times i where `imaginary`.
+/// What a term carries besides its polynomial: its unit times e^(-kappa r), times i where `imaginary`.
 #[derive(Clone, PartialEq, Eq, PartialOrd, Ord, Debug)]
 pub(super) struct Envelope {
     pub(super) kappa: Rational,
-    pub(super) root: Integer,
+    pub(super) unit: Unit,
     pub(super) imaginary: bool,
 }
 
@@ -42,7 +42,7 @@ impl RadialFunction {
         let mut out = Self::default();
         for (unit, c) in weight.terms() {
             for (part, imaginary) in [(&c.re, false), (&c.im, true)] {
-                let envelope = Envelope { kappa: kappa.clone(), root: unit.radicand.clone(), imaginary };
+                let envelope = Envelope { kappa: kappa.clone(), unit: unit.clone(), imaginary };
                 out.add_term(envelope, part, polynomial);
             }
         }
@@ -87,17 +87,15 @@ impl RadialFunction {
     /// Adds weight times another function.
     pub(super) fn add_scaled(&mut self, weight: &Surd, other: &RadialFunction) {
         for (unit, c) in weight.terms() {
-            let root = &unit.radicand;
             for (envelope, polynomial) in &other.terms {
-                let common = Integer::from(root.gcd_ref(&envelope.root));
-                let free = Integer::from(root / &common) * Integer::from(&envelope.root / &common);
+                let (common, unit) = unit.product(&envelope.unit);
                 for (part, turned) in [(&c.re, false), (&c.im, true)] {
                     let mut factor = Rational::from(part * &common);
                     if turned && envelope.imaginary {
                         factor = -factor;
                     }
                     let imaginary = turned != envelope.imaginary;
-                    let target = Envelope { kappa: envelope.kappa.clone(), root: free.clone(), imaginary };
+                    let target = Envelope { kappa: envelope.kappa.clone(), unit: unit.clone(), imaginary };
                     self.add_term(target, &factor, polynomial);
                 }
             }
@@ -127,8 +125,7 @@ impl RadialFunction {
         for (envelope, polynomial) in &self.terms {
             let c = polynomial.expansion_coefficient(&envelope.kappa, power);
             let (re, im) = if envelope.imaginary { (Rational::new(), c) } else { (c, Rational::new()) };
-            let root = Surd::sqrt_of(&Rational::from(&envelope.root)).unwrap_or_default();
-            sum += &(&root * &Surd::gaussian(re, im));
+            sum += &Surd::of_unit(envelope.unit.clone(), re, im);
         }
         sum
     }
@@ -153,21 +150,19 @@ impl RadialFunction {
         let mut product: BTreeMap<Envelope, Laurent> = BTreeMap::new();
         for (bra, p) in &self.terms {
             for (ket, q) in &other.terms {
-                let common = Integer::from(bra.root.gcd_ref(&ket.root));
-                let root = Integer::from(&bra.root / &common) * Integer::from(&ket.root / &common);
+                let (common, unit) = bra.unit.product(&ket.unit);
                 let kappa = Rational::from(&bra.kappa + &ket.kappa);
                 // conj(i) = -i, conj(i) i = 1
                 let sign = if bra.imaginary && !ket.imaginary { -1 } else { 1 };
-                let envelope = Envelope { kappa, root, imaginary: bra.imaginary != ket.imaginary };
+                let envelope = Envelope { kappa, unit, imaginary: bra.imaginary != ket.imaginary };
                 product.entry(envelope).or_default().add_scaled(&(Rational::from(common) * sign), &p.product(q));
             }
         }
         check_at_nucleus(&product)?;
         for (envelope, polynomial) in &product {
             let integral = polynomial.integral(&envelope.kappa);
-            let root = Surd::sqrt_of(&Rational::from(&envelope.root)).unwrap_or_default();
-            let unit = if envelope.imaginary { Surd::i() } else { Surd::one() };
-            value += &(&root * &unit).scaled(&integral);
+            let (re, im) = if envelope.imaginary { (Rational::new(), integral) } else { (integral, Rational::new()) };
+            value += &Surd::of_unit(envelope.unit.clone(), re, im);
         }
         Ok(value)
     }
@@ -191,11 +186,11 @@ fn check_at_nucleus(product: &BTreeMap<Envelope, Laurent>) -> Result<(), Uninteg
     if lowest >= 0 {
         return Ok(());
     }
-    let classes: BTreeSet<(&Integer, bool)> = product.keys().map(|e| (&e.root, e.imaginary)).collect();
+    let classes: BTreeSet<(&Unit, bool)> = product.keys().map(|e| (&e.unit, e.imaginary)).collect();
     for power in lowest..0 {
-        for &(root, imaginary) in &classes {
+        for &(unit, imaginary) in &classes {
             let mut sum = Rational::new();
-            for (envelope, polynomial) in product.iter().filter(|(e, _)| &e.root == root && e.imaginary == imaginary) {
+            for (envelope, polynomial) in product.iter().filter(|(e, _)| &e.unit == unit && e.imaginary == imaginary) {
                 sum += polynomial.expansion_coefficient(&envelope.kappa, power);
             }
             if sum.cmp0() != Ordering::Equal {

@@ -3,7 +3,7 @@
 use rug::Rational;
 use std::cmp::Ordering;
 
-/// sum over i of coefficients[i] r^(lowest + i); first and last coefficient are not zero.
+/// sum over i of `coefficients[i] r^(lowest + i)`; first and last coefficient are not zero.
 #[derive(Clone, PartialEq, Eq, Debug, Default)]
 pub(super) struct Laurent {
     lowest: i64,

@@ -1,10 +1,11 @@
 //! One electron without spin in the field of a nucleus: H = p^2/(2 mu) - Z/r in the relative coordinate.
 //!
-//! Everything inside is done for charge and reduced mass one, in lengths rho = mu Z r; [`radial`] holds the factors. The exact backend
+//! Everything inside is done for charge and reduced mass one, in lengths rho = mu Z r; `radial` holds the factors. The exact backend
 //! represents functions as polynomials times exponentials, the numeric one expands them in Coulomb Sturmian functions.
 
 mod action;
 mod bound;
+mod closed_sum;
 mod exact;
 mod finite_solution;
 mod function;
@@ -25,14 +26,15 @@ mod vector;
 
 use crate::num::{Effort, Surd};
 use crate::systems::{
-    Atom, Backend, Coupling, Level, Manifold, Number, Obstacle, Sector, State, StateLabel, System, SystemError,
+    Atom, Backend, Block, Coupling, Level, Manifold, Number, Obstacle, Sector, State, StateLabel, System, SystemError,
 };
 use exact::ExactBackend;
 use numeric::NumericBackend;
 use radial::Scale;
 use rug::Rational;
 use std::cmp::Ordering;
-use std::sync::Arc;
+use std::collections::HashMap;
+use std::sync::{Arc, Mutex, PoisonError};
 use sturmian::Kept;
 
 /// A hydrogen-like atom.
@@ -42,7 +44,14 @@ pub struct Hydrogenic {
     mass: Option<Rational>,
     scale: Scale,
     kept: Arc<Kept>,
+    couplings: Arc<Couplings>,
 }
+
+/// Where operators lead from sectors, as far as it was asked: the same few are asked for at every level of accuracy.
+type Couplings = Mutex<HashMap<(Atom, Sector), Vec<Coupling>>>;
+
+/// Most answers kept.
+const KEPT_COUPLINGS: usize = 10_000;
 
 impl Hydrogenic {
     /// An atom with nuclear charge Z and nuclear mass in electron masses; `None` for an infinite mass.
@@ -67,7 +76,7 @@ impl Hydrogenic {
         // mu = M/(1 + M)
         let reduced_mass = mass.as_ref().map_or(Rational::from(1), |m| m / Rational::from(m + 1));
         let scale = Scale::new(&charge, &reduced_mass);
-        Ok(Hydrogenic { charge, mass, scale, kept: Arc::default() })
+        Ok(Hydrogenic { charge, mass, scale, kept: Arc::default(), couplings: Arc::default() })
     }
 
     /// The charge of the nucleus.
@@ -104,20 +113,30 @@ impl System for Hydrogenic {
         a.numbers.first() == b.numbers.first()
     }
 
+    fn level_in(&self, state: &State, sector: Sector, _: &Effort) -> Result<Vec<State>, Obstacle> {
+        let (n, ..) = labels::quantum_numbers(state).ok_or_else(exact::foreign)?;
+        let Block::Orbital { l } = sector.block else { return Ok(Vec::new()) };
+        Ok((l < n).then(|| labels::named_state(n, l, sector.twice_m / 2)).into_iter().collect())
+    }
+
     fn knows(&self, atom: &Atom) -> Result<bool, SystemError> {
         operators::knows(atom)
     }
 
     fn couple(&self, atom: &Atom, from: Sector) -> Vec<Coupling> {
-        operators::couple(atom, from, &self.charge)
+        let mut couplings = self.couplings.lock().unwrap_or_else(PoisonError::into_inner);
+        if let Some(known) = couplings.get(&(atom.clone(), from)) {
+            return known.clone();
+        }
+        let found = operators::couple(atom, from, &self.charge);
+        if couplings.len() < KEPT_COUPLINGS {
+            couplings.insert((atom.clone(), from), found.clone());
+        }
+        found
     }
 
     fn adjoint(&self, atom: &Atom) -> (i32, Atom) {
         operators::adjoint(atom)
-    }
-
-    fn without_pi(&self, atom: &Atom) -> Option<(i32, Atom)> {
-        operators::without_pi(atom)
     }
 
     fn selection_rule(&self, atom: &Atom) -> String {

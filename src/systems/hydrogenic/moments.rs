@@ -3,6 +3,8 @@
 use super::function::RadialFunction;
 use super::laurent::Laurent;
 use super::vector::Vector;
+use crate::num::Surd;
+use crate::systems::Number;
 use rug::{Float, Integer, Rational, ops::Pow};
 use std::cmp::Ordering;
 
@@ -25,8 +27,9 @@ pub(super) fn moments(u: &RadialFunction, basis: &LaguerreBasis, count: usize, b
     let mut out = Vector::real(vec![Float::new(bits); count]);
     for (envelope, polynomial) in u.terms() {
         let found = one_exponential(polynomial, &envelope.kappa, basis, count, bits)?;
-        let root = Float::with_val(bits, &envelope.root).sqrt();
-        let found: Vec<Float> = found.iter().map(|f| Float::with_val(bits, f * &root)).collect();
+        let unit = Surd::of_unit(envelope.unit.clone(), Rational::from(1), Rational::new());
+        let unit = Number::Exact(unit).to_complex(bits).into_real_imag().0;
+        let found: Vec<Float> = found.iter().map(|f| Float::with_val(bits, f * &unit)).collect();
         let part = if envelope.imaginary {
             Vector { re: vec![Float::new(bits); count], im: Some(found) }
         } else {

@@ -10,7 +10,6 @@ use super::series::Series;
 use super::vector::Vector;
 use crate::num::Surd;
 use crate::systems::{Number, Obstacle};
-use rug::float::Constant;
 use rug::{Complex, Float, Rational};
 
 /// A ket in one block: the sum of all its parts.
@@ -119,11 +118,7 @@ impl NumericKet {
     /// Errors: `Inexact` where the result is not a function, not even with a delta function.
     pub(super) fn applied(&self, operator: Radial, l: u32, lp: u32) -> Result<Self, Obstacle> {
         if let Some(exact) = self.as_exact() {
-            match apply_exactly(operator, l, lp, exact) {
-                Ok(u) => return Ok(Self::from_exact(u, lp, self.bits)),
-                Err(Obstacle::Inexact) if operator == Radial::Delta => {}
-                Err(obstacle) => return Err(obstacle),
-            }
+            return Ok(Self::from_exact(apply_exactly(operator, l, lp, exact)?, lp, self.bits));
         }
         match operator {
             Radial::Power(s) => self.powered(s, l, lp),
@@ -142,10 +137,10 @@ impl NumericKet {
                 half.origin = origin;
                 Ok(half)
             }
-            Radial::Delta | Radial::DeltaTimesPi => {
+            Radial::DeltaTimesPi => {
                 let value = self.value_at_nucleus(&operator.name())?;
                 let mut out = Self::from_exact(RadialFunction::default(), lp, self.bits);
-                out.contact = Some(value * contact_factor(operator, self.bits));
+                out.contact = Some(value / 4);
                 out.origin = Origin::contact();
                 Ok(out)
             }
@@ -314,14 +309,14 @@ pub(super) fn element(
                 (Err(obstacle), _) | (_, Err(obstacle)) => Err(obstacle),
             }
         }
-        Radial::Delta | Radial::DeltaTimesPi => {
+        Radial::DeltaTimesPi => {
             if let (Some(bra), Some(ket)) = (bra.as_exact(), ket.as_exact())
                 && let Ok(value) = super::exact::element_exactly(operator, (l, lp), bra, ket)
             {
                 return Ok(Number::Exact(value));
             }
             let product = bra.value_at_nucleus(&name)?.conj() * ket.value_at_nucleus(&name)?;
-            Ok(Number::Approx(product * contact_factor(operator, ket.bits)))
+            Ok(Number::Approx(product / 4))
         }
         _ => match ket.applied(operator, l, lp) {
             Ok(image) => bra.inner(&image, &name),
@@ -341,12 +336,6 @@ pub(super) fn element(
 
 fn differentiable(allowed: bool) -> Result<(), Obstacle> {
     if allowed { Ok(()) } else { Err(Obstacle::Inexact) }
-}
-
-/// 1/(4 pi), or 1/4 for pi delta(r).
-fn contact_factor(operator: Radial, bits: u32) -> Float {
-    let quarter = Float::with_val(bits, 0.25);
-    if operator == Radial::Delta { quarter / Float::with_val(bits, Constant::Pi) } else { quarter }
 }
 
 fn origin_of(u: &RadialFunction, l: u32) -> Origin {

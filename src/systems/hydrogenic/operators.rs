@@ -30,8 +30,8 @@ enum Operator {
     LSquared,
     /// A multiple of a radial operator.
     Scalar(Radial, Rational),
-    /// A multiple of a delta function, which keeps to s waves.
-    Contact(Radial, Rational),
+    /// A multiple of pi delta(r), which keeps to s waves.
+    Contact(Surd),
 }
 
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
@@ -46,11 +46,6 @@ pub(super) fn knows(atom: &Atom) -> Result<bool, SystemError> {
     Ok(read(atom, &Rational::from(1))?.is_some())
 }
 
-/// delta(r) as pi^-1 times an operator with rational elements.
-pub(super) fn without_pi(atom: &Atom) -> Option<(i32, Atom)> {
-    (atom.name == "delta(r)").then(|| (-1, Atom { name: "pi delta(r)".into(), ..atom.clone() }))
-}
-
 /// Where an operator leads from a sector of the atom with a nuclear charge.
 pub(super) fn couple(atom: &Atom, from: Sector, charge: &Rational) -> Vec<Coupling> {
     let Block::Orbital { l } = from.block else {
@@ -63,8 +58,8 @@ pub(super) fn couple(atom: &Atom, from: Sector, charge: &Rational) -> Vec<Coupli
     let stay = |factor: Surd, radial: Radial| vec![Coupling { to: from, factor, radial: radial.operator() }];
     match operator {
         Operator::Scalar(radial, factor) => stay(Surd::from(factor), radial),
-        Operator::Contact(radial, factor) if l == 0 => stay(Surd::from(factor), radial),
-        Operator::Contact(..) => Vec::new(),
+        Operator::Contact(factor) if l == 0 => stay(factor, Radial::DeltaTimesPi),
+        Operator::Contact(_) => Vec::new(),
         Operator::LSquared if l == 0 => Vec::new(),
         Operator::LSquared => stay(Surd::from(i64::from(l) * (i64::from(l) + 1)), Radial::Power(0)),
         Operator::Vector { kind: Vector::Orbital, parts } => orbital(l, m, &parts),
@@ -106,7 +101,7 @@ pub(super) fn selection_rule(atom: &Atom) -> String {
             format!("{name} changes l by {} and {}", steps.join(" or "), change(&parts))
         }
         Ok(Some(Operator::Tensor { k: 1, parts })) => format!("{name} changes l by one and {}", change(&parts)),
-        Ok(Some(Operator::Contact(..))) => format!("{name} acts on s waves only: all others vanish at the nucleus"),
+        Ok(Some(Operator::Contact(_))) => format!("{name} acts on s waves only: all others vanish at the nucleus"),
         Ok(Some(Operator::LSquared)) => format!("{name} is zero in s waves"),
         _ => format!("{name} keeps l and m"),
     }
@@ -179,11 +174,10 @@ fn read(atom: &Atom, charge: &Rational) -> Result<Option<Operator>, SystemError>
                 )),
             }
         }
-        "delta(r)" | "pi delta(r)" => {
+        "delta(r)" => {
             no_component(atom)?;
             match atom.power {
-                1 if name == "delta(r)" => Ok(Some(Operator::Contact(Radial::Delta, one))),
-                1 => Ok(Some(Operator::Contact(Radial::DeltaTimesPi, one))),
+                1 => Ok(Some(Operator::Contact(Surd::pi_to(-1)))),
                 _ => Err(refused(
                     format!("{} does not exist: a delta function has no powers", written(atom)),
                     "write delta(r) to the first power",
@@ -200,7 +194,7 @@ fn read(atom: &Atom, charge: &Rational) -> Result<Option<Operator>, SystemError>
         }
         "darwin" => {
             no_component(atom)?;
-            power_of(atom, Operator::Contact(Radial::DeltaTimesPi, Rational::from(charge / 2)))
+            power_of(atom, Operator::Contact(Surd::from(Rational::from(charge / 2))))
         }
         _ => Err(SystemError::UnknownOperator {
             name: atom.name.clone(),

@@ -12,9 +12,7 @@ pub(super) enum Radial {
     Gradient,
     PSquared,
     PFourth,
-    /// delta(r); its elements hold 1/pi.
-    Delta,
-    /// pi delta(r); its elements are free of pi.
+    /// pi delta(r), whose elements are free of pi.
     DeltaTimesPi,
     Hamiltonian,
 }
@@ -26,7 +24,6 @@ impl Radial {
             Radial::Gradient => ("gradient", 0),
             Radial::PSquared => ("p", 2),
             Radial::PFourth => ("p", 4),
-            Radial::Delta => ("delta(r)", 0),
             Radial::DeltaTimesPi => ("pi delta(r)", 0),
             Radial::Hamiltonian => ("H", 0),
         };
@@ -40,7 +37,6 @@ impl Radial {
             ("gradient", _) => Ok(Radial::Gradient),
             ("p", 2) => Ok(Radial::PSquared),
             ("p", 4) => Ok(Radial::PFourth),
-            ("delta(r)", _) => Ok(Radial::Delta),
             ("pi delta(r)", _) => Ok(Radial::DeltaTimesPi),
             ("H", _) => Ok(Radial::Hamiltonian),
             (kind, index) => Err(Obstacle::Refused {
@@ -59,7 +55,7 @@ impl Radial {
             Radial::Gradient => "P".into(),
             Radial::PSquared => "p^2".into(),
             Radial::PFourth => "p^4".into(),
-            Radial::Delta | Radial::DeltaTimesPi => "delta(r)".into(),
+            Radial::DeltaTimesPi => "delta(r)".into(),
             Radial::Hamiltonian => "H".into(),
         }
     }
@@ -94,7 +90,7 @@ impl Scale {
             Radial::Gradient => power(1),
             Radial::PSquared => power(2),
             Radial::PFourth => power(4),
-            Radial::Delta | Radial::DeltaTimesPi => power(3),
+            Radial::DeltaTimesPi => power(3),
             Radial::Hamiltonian => self.energy.clone(),
         }
     }

@@ -46,21 +46,26 @@ impl SturmianBlock {
     /// *Source*: derived here: H b = (-k^2/2 + (k n - 1)/r) b with n = b + l + 1, 1/r is diagonal, and 2 k r has the three-term recursion
     /// of the Laguerre polynomials.
     fn matrix<T: Scalar>(&self, zeta: &T, number: impl Fn(&Float) -> T) -> Result<Tridiagonal<T>, LinalgError> {
-        let unit = Float::with_val(self.bits, Rational::from(&self.k * 2)).pow(2 * self.l + 2).recip();
+        // everything over the denominator of k, so that 1 - k n is exact: where it is zero, nothing but zeta is left
+        let (up, down) = (self.k.numer().to_i32(), self.k.denom().to_i32());
+        let (up, down) = (up.unwrap_or(i32::MAX), down.unwrap_or(i32::MAX));
+        let unit = Float::with_val(self.bits, Rational::from(&self.k * 2)).pow(2 * self.l + 2) * down;
+        let unit = unit.recip();
+        let zeta = zeta.times(&zeta.whole(down));
+        let twice_zeta = zeta.times(&zeta.whole(2));
         let inverse_r = square_norms(2 * self.l + 1, self.count, self.bits);
         let (mut diagonal, mut off) = (Vec::with_capacity(self.count), Vec::with_capacity(self.count));
         for (b, norm) in inverse_r.iter().enumerate().rev() {
             let norm = number(&Float::with_val(self.bits, norm * &unit));
-            let b = super::laurent::to_power(b);
-            let n = b + i64::from(self.l) + 1;
-            // (2 zeta n - k n + 1)/r
-            let rest = Float::with_val(self.bits, 1 - Rational::from(&self.k * n));
-            let mut entry = zeta.times(&number(&Float::with_val(self.bits, 2 * n)));
-            entry.add(&number(&rest));
+            let index = i32::try_from(b).unwrap_or(i32::MAX);
+            let twice_l = 2 * i32::try_from(self.l).unwrap_or(i32::MAX / 4);
+            // (2 zeta n + 1 - k n)/r with n = b + l + 1
+            let n = index + twice_l / 2 + 1;
+            let mut entry = twice_zeta.times(&zeta.whole(n));
+            entry.add(&zeta.whole(down - up * n));
             diagonal.push(entry.times(&norm));
-            if b + 1 < super::laurent::to_power(self.count) {
-                let beside = number(&Float::with_val(self.bits, -(b + 2 * i64::from(self.l) + 2)));
-                off.push(zeta.times(&beside).times(&norm));
+            if b + 1 < self.count {
+                off.push(zeta.times(&zeta.whole(-(index + twice_l + 2))).times(&norm));
             }
         }
         Tridiagonal::new(diagonal, off)

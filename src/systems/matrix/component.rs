@@ -19,7 +19,8 @@ pub struct Component {
     pub members: Vec<usize>,
     /// Whether every entry inside is real.
     pub is_real: bool,
-    /// The common denominator of all entries, in which only square roots and i are left above the line; `None` if it is very long.
+    /// The common denominator of all entries, with which only roots and i (and pi, which makes guesses of energies less often right) are left
+    /// above the line; `None` if it is very long.
     pub denominator: Option<Integer>,
     size_exponent: OnceLock<i64>,
 }
@@ -69,8 +70,6 @@ pub fn components(h: &ExactMatrix) -> Vec<Component> {
 fn with_denominators(mut common: Integer, entry: &Entry) -> Option<Integer> {
     match entry {
         Entry::Rational(q) => common.lcm_mut(q.denom()),
-        // Multiples of pi are no algebraic numbers; no denominator makes them integers.
-        Entry::Roots(surd) if surd.has_pi() => return None,
         Entry::Roots(surd) => {
             for (_, c) in surd.terms() {
                 common.lcm_mut(c.re.denom());

@@ -40,7 +40,7 @@ pub fn solve(rows: Vec<Vec<Surd>>, effort: &Effort) -> Result<Option<Solutions>,
             })
         }));
     }
-    if entries().all(|entry| entry.is_gaussian()) {
+    if entries().all(|entry| !entry.has_pi() && entry.terms().all(|(unit, _)| unit.radicand == 1)) {
         if rows.len() > LARGEST_RATIONAL {
             return Ok(None);
         }

@@ -44,14 +44,6 @@ impl Entry {
         }
     }
 
-    /// Whether there is no square root in it (i may be).
-    pub fn is_gaussian(&self) -> bool {
-        match self {
-            Entry::Rational(_) => true,
-            Entry::Roots(surd) => surd.is_gaussian(),
-        }
-    }
-
     /// The longest numerator, denominator or radicand, in bits.
     fn bits(&self) -> u32 {
         match self {

@@ -255,7 +255,7 @@ impl NumericBackend {
         Obstacle::Singular {
             level: match digits {
                 None => format!("{name} (energy {energy})"),
-                Some(digits) => format!("{name} (energy {energy}) in all {digits} digits looked at"),
+                Some(digits) => format!("{name} (energy {energy}, the same in all {digits} digits looked at)"),
             },
         }
     }

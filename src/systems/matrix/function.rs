@@ -103,9 +103,10 @@ fn argument(function: &FunctionOfH, energy: &Float, precision: u32) -> Complex {
 /// f(a + b E); on the cut of logarithm and square root the value from above, as for numbers.
 fn value(function: &FunctionOfH, energy: &Float, precision: u32) -> Complex {
     let argument = argument(function, energy, precision);
-    match function.kind {
+    let value = match function.kind {
         FunctionKind::Exp => argument.exp(),
         FunctionKind::Ln => argument.ln(),
         FunctionKind::Sqrt => argument.sqrt(),
-    }
+    };
+    if function.adjoint { value.conj() } else { value }
 }

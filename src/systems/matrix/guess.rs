@@ -8,8 +8,6 @@ use super::component::shifted_rows;
 use super::elimination::solve;
 use super::entries::ExactKet;
 use super::modular::states_at;
-use super::obstacle;
-use crate::linalg::eigen::refine_cluster;
 use crate::num::{Effort, Surd};
 use crate::systems::Obstacle;
 use rug::{Float, Integer, Rational};
@@ -136,8 +134,7 @@ impl MatrixSystem {
         if let Some(known) = self.windows.lock().unwrap_or_else(PoisonError::into_inner).get(&key) {
             return Ok(known.clone());
         }
-        let h = self.hermitian(component, bits + 64)?;
-        let cluster = refine_cluster(&h, 0..h.order(), bits, effort).map_err(obstacle)?;
+        let cluster = self.refined(component, 0..self.components[component].order(), bits, 0, effort)?;
         let error = self.error_at(component, bits);
         let found: Windows = Arc::new(cluster.values.iter().map(|value| Window::around(value, &error)).collect());
         let mut known = self.windows.lock().unwrap_or_else(PoisonError::into_inner);

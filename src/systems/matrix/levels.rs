@@ -7,9 +7,8 @@ use super::MatrixSystem;
 use super::entries::ExactKet;
 use super::guess::{ExactEnergy, Window};
 use super::modular::distinct;
-use super::obstacle;
+use super::refined::on_ladder;
 use super::states::{exact_states, numeric_states};
-use crate::linalg::eigen::refine_cluster;
 use crate::num::{Effort, Scalar, Surd};
 use crate::systems::{Number, Obstacle};
 use rug::{Complex, Float};
@@ -119,9 +118,9 @@ impl MatrixSystem {
         let rough = self.rough(effort)?;
         let cluster = rough.cluster_of(place);
         let all: BTreeSet<usize> = (0..self.components.len()).collect();
-        let (mut bits, mut found) = (FIRST_BITS, false);
+        let (mut bits, mut found) = (on_ladder(FIRST_BITS), false);
         for component in rough.places[cluster.clone()].iter().map(|place| place.component).collect::<BTreeSet<_>>() {
-            bits = bits.max(self.bits_for_guess(component).unwrap_or(0));
+            bits = bits.max(on_ladder(self.bits_for_guess(component).unwrap_or(0)));
         }
         loop {
             effort.check()?;
@@ -261,6 +260,7 @@ impl MatrixSystem {
         effort: &Effort,
         items: &mut Vec<Item>,
     ) -> Result<(), Obstacle> {
+        let bits = on_ladder(bits);
         let precision = bits + 64;
         if let [only] = self.components[component].members.as_slice() {
             let energy = self.hamiltonian().entry(*only, *only);
@@ -269,8 +269,7 @@ impl MatrixSystem {
             items.push(Item { component, places: 0..1, window, exact: Some(ExactEnergy { energy, span }) });
             return Ok(());
         }
-        let h = self.hermitian(component, precision)?;
-        let cluster = refine_cluster(&h, range.clone(), bits, effort).map_err(obstacle)?;
+        let cluster = self.refined(component, range.clone(), bits, 0, effort)?;
         let error = self.error_at(component, bits);
         for level in &cluster.levels {
             let places = cluster.first + level.start..cluster.first + level.end;
@@ -399,8 +398,7 @@ impl MatrixSystem {
         let mut states: Vec<(usize, Vec<Complex>)> = Vec::with_capacity(level.size);
         for part in &level.parts {
             let wanted = (bits + 32).max(level.bits);
-            let h = self.hermitian(part.component, wanted + 64 + level.gap_bits)?;
-            let cluster = refine_cluster(&h, part.places.clone(), wanted, effort).map_err(obstacle)?;
+            let cluster = self.refined(part.component, part.places.clone(), wanted, level.gap_bits, effort)?;
             let vectors = (part.places.start.checked_sub(cluster.first))
                 .and_then(|start| cluster.vectors.get(start..start + part.places.len()))
                 .ok_or(Obstacle::Undecided)?;
@@ -424,8 +422,7 @@ impl MatrixSystem {
         }
         let part = level.parts.first().ok_or(Obstacle::Undecided)?;
         let wanted = bits.max(level.bits);
-        let h = self.hermitian(part.component, wanted + 64)?;
-        let cluster = refine_cluster(&h, part.places.clone(), wanted, effort).map_err(obstacle)?;
+        let cluster = self.refined(part.component, part.places.clone(), wanted, level.gap_bits, effort)?;
         let at = part.places.start.checked_sub(cluster.first).and_then(|at| cluster.values.get(at));
         at.cloned().ok_or(Obstacle::Undecided)
     }

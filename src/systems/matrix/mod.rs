@@ -17,6 +17,7 @@ mod levels;
 mod market;
 mod modular;
 mod numeric;
+mod refined;
 mod rough;
 mod states;
 mod vectors;
@@ -75,6 +76,7 @@ pub struct Inner {
     /// Numbers of distinct eigenvalues in sets of components.
     distinct: Mutex<BTreeMap<BTreeSet<usize>, usize>>,
     work: Mutex<Vec<Arc<numeric::Work>>>,
+    clusters: refined::Clusters,
     solvers: factored::Solvers,
 }
 
@@ -119,6 +121,7 @@ impl MatrixSystem {
             windows: Mutex::default(),
             distinct: Mutex::default(),
             work: Mutex::default(),
+            clusters: refined::Clusters::default(),
             solvers: factored::Solvers::default(),
         })))
     }
@@ -273,6 +276,12 @@ impl System for MatrixSystem {
         }
     }
 
+    fn level_in(&self, state: &State, _: Sector, effort: &Effort) -> Result<Vec<State>, Obstacle> {
+        let places = self.level(self.place(&state.numbers), effort)?.places();
+        let named = |place: usize| State { label: place.to_string(), numbers: vec![i64::try_from(place).unwrap_or(0)] };
+        Ok(places.map(named).collect())
+    }
+
     fn knows(&self, atom: &Atom) -> Result<bool, SystemError> {
         if !self.operators.iter().any(|(name, _)| *name == atom.name) {
             let known = self.operators.iter().map(|(name, _)| name.clone()).collect();
@@ -300,8 +309,9 @@ impl System for MatrixSystem {
         (1, atom.clone())
     }
 
-    fn selection_rule(&self, atom: &Atom) -> String {
-        format!("{} has no element here", atom.name)
+    /// A matrix has none: its zeros are arithmetic.
+    fn selection_rule(&self, _: &Atom) -> String {
+        String::new()
     }
 
     fn exact(&self, effort: &Effort) -> Option<Arc<dyn Backend>> {

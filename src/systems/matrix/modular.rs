@@ -73,6 +73,8 @@ fn coprime_base(radicands: impl Iterator<Item = Integer>) -> Vec<Integer> {
 struct Field<'p> {
     prime: &'p Prime,
     i: u64,
+    /// Any element serves as the image of a transcendental number, for all but a vanishing share of primes.
+    pi: u64,
     /// The base and the images of its square roots.
     roots: Vec<(&'p Integer, u64)>,
 }
@@ -80,11 +82,13 @@ struct Field<'p> {
 impl<'p> Field<'p> {
     fn new(prime: &'p Prime, base: &'p [Integer]) -> Option<Self> {
         let i = prime.sqrt(prime.from_i64(-1))?;
+        // The digits of pi after the point, moved about so that no number of a session fits the image for two primes.
+        let pi = prime.from_i64(0x243F_6A88_85A3_08D3) ^ (prime.value() >> 7);
         let mut roots = Vec::with_capacity(base.len());
         for factor in base {
             roots.push((factor, prime.sqrt(prime.from_integer(factor))?));
         }
-        Some(Field { prime, i, roots })
+        Some(Field { prime, i, pi: pi % prime.value(), roots })
     }
 
     /// Writes the image of H in a component into a block on the diagonal of a larger matrix.
@@ -115,10 +119,8 @@ impl<'p> Field<'p> {
 
     fn surd(&self, value: &Surd) -> Option<u64> {
         let mut sum = 0;
-        // pi is transcendental: any element serves as its image, for all but a vanishing share of primes.
-        let pi = self.prime.from_i64(0x3243_F6A8_885A_308D);
         for (unit, c) in value.terms() {
-            let power = self.prime.power(pi, u64::from(unit.pi_power.unsigned_abs()));
+            let power = self.prime.power(self.pi, u64::from(unit.pi_power.unsigned_abs()));
             let power = if unit.pi_power < 0 { self.prime.inverse(power)? } else { power };
             let factors = self.roots.iter().filter(|(factor, _)| unit.radicand.is_divisible(factor));
             let root = factors.fold(power, |product, (_, root)| self.prime.multiply(product, *root));

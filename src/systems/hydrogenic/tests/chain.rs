@@ -39,7 +39,7 @@ pub(super) fn manifold(atom: &Hydrogenic, text: &str) -> Manifold {
     atom.manifold(&label, &Effort::new()).expect("a manifold")
 }
 
-/// An operator from a short text: `D_z`, `r^-3`, `C(2)_0`, `delta(r)`; `pidelta(r)` for pi times delta(r).
+/// An operator from a short text: `D_z`, `r^-3`, `C(2)_0`, `delta(r)`.
 pub(super) fn operator(text: &str) -> Atom {
     let (rest, power) = match text.rsplit_once('^') {
         Some((rest, power)) => (rest, power.parse().expect("a power")),
@@ -52,7 +52,7 @@ pub(super) fn operator(text: &str) -> Atom {
     };
     let (name, arguments) = match rest.strip_prefix("C(").and_then(|r| r.strip_suffix(')')) {
         Some(k) => ("C".to_string(), vec![Rational::from(k.parse::<i64>().expect("a rank"))]),
-        None => (rest.replace("pidelta", "pi delta"), vec![]),
+        None => (rest.to_string(), vec![]),
     };
     Atom { name, component, arguments, power }
 }
@@ -188,17 +188,7 @@ fn overlap(backend: &dyn Backend, left: &Ket, right: &Ket) -> Result<Number, Obs
 }
 
 pub(super) fn approximate(number: &Number, bits: u32) -> rug::Complex {
-    match number {
-        Number::Approx(z) => rug::Complex::with_val(bits, z),
-        Number::Exact(surd) => {
-            let mut sum = rug::Complex::new(bits);
-            for (unit, c) in surd.terms() {
-                let root = rug::Float::with_val(bits, &unit.radicand).sqrt();
-                sum += rug::Complex::with_val(bits, (&c.re, &c.im)) * root;
-            }
-            sum
-        }
-    }
+    number.to_complex(bits)
 }
 
 const BITS: u32 = 1024;

@@ -12,7 +12,12 @@ const BITS: u32 = 300;
 
 fn cases() -> ProptestConfig {
     let scale: u32 = std::env::var("KETWORK_CASES").ok().and_then(|n| n.parse().ok()).unwrap_or(64);
-    ProptestConfig { cases: scale, failure_persistence: None, ..ProptestConfig::default() }
+    ProptestConfig {
+        cases: scale,
+        rng_seed: proptest::test_runner::RngSeed::Fixed(0x6b65_7477),
+        failure_persistence: None,
+        ..ProptestConfig::default()
+    }
 }
 
 fn any_atom() -> impl Strategy<Value = Hydrogenic> {
@@ -32,31 +37,8 @@ fn any_state(largest: u32) -> impl Strategy<Value = State> {
 
 fn any_operator() -> impl Strategy<Value = &'static str> {
     prop::sample::select(vec![
-        "D_z",
-        "D_x",
-        "D_y",
-        "D_+1",
-        "D_-1",
-        "P_z",
-        "P_x",
-        "P_-1",
-        "r",
-        "r^2",
-        "r^3",
-        "r^-1",
-        "r^-2",
-        "r^-3",
-        "p^2",
-        "p^4",
-        "H",
-        "L_z",
-        "L_+1",
-        "L^2",
-        "C(1)_0",
-        "C(2)_0",
-        "C(2)_-1",
-        "pidelta(r)",
-        "r^0",
+        "D_z", "D_x", "D_y", "D_+1", "D_-1", "P_z", "P_x", "P_-1", "r", "r^2", "r^3", "r^-1", "r^-2", "r^-3", "p^2",
+        "p^4", "H", "L_z", "L_+1", "L^2", "C(1)_0", "C(2)_0", "C(2)_-1", "delta(r)", "r^0",
     ])
 }
 
@@ -134,7 +116,8 @@ proptest! {
         let atom = hydrogen();
         let exact = atom.exact(&Effort::new()).expect("exact backend");
         let [n, l, _] = state.numbers[..] else { panic!("three numbers") };
-        prop_assume!(s - 2 > -2 * l - 3);
+        // below, the means do not exist
+        let s = if s - 2 > -2 * l - 3 { s } else { -s };
         let mean = |power: i64| match value(&atom, &*exact, &state, &operators(&format!("r^{power}")), &state) {
             Ok(Number::Exact(value)) => value.as_rational().expect("rational").into_owned(),
             other => panic!("{power}: {other:?}"),
@@ -225,5 +208,28 @@ proptest! {
             sum += Complex::with_val(BITS, element.square_ref()) / gap;
         }
         prop_assert!(close(&evaluate(full(z)), &sum, 60));
+    }
+}
+
+/// An energy that differs from a level left out by rounding, or by a little more, at exponentials with and without a finite binary form.
+#[test]
+fn energies_next_to_a_level_left_out() {
+    for anchor in ["2p", "3p"] {
+        let atom = Hydrogenic::new(rational(3, 1), Some(rational(14, 1))).expect("an atom");
+        let (bra, ket) = (state(&atom, "1s", 0), state(&atom, anchor, 0));
+        let exact = atom.exact(&Effort::new()).expect("exact backend");
+        let numeric = numeric(&atom, 320, &ket);
+        let q = reduced(&atom, &ket);
+        let steps = chain("r^3 Q r D_z", &q);
+        let known = size(&split(&atom, &*exact, &bra, &steps, 0, &ket).expect("finite"));
+        let Step::Resolvent(resolvent) = &q else { panic!("a resolvent") };
+        let z = resolvent.z.to_complex(BITS + 32);
+        for (ulps, bits) in [(0, 250), (1, 250), (-3, 250), (1 << 20, 240), (-(1 << 30), 230)] {
+            let shift = Complex::with_val(BITS + 32, &z * ulps) >> (BITS + 32);
+            let near = Resolvent { z: Number::Approx(Complex::with_val(BITS + 32, &z + &shift)), ..resolvent.clone() };
+            let steps = chain("r^3 Q r D_z", &Step::Resolvent(near));
+            let found = size(&split(&atom, &*numeric, &bra, &steps, 0, &ket).expect("a value"));
+            assert!(close(&found, &known, bits), "{anchor} {ulps}: {found} {known}");
+        }
     }
 }

@@ -3,7 +3,13 @@
 use super::*;
 
 fn function(kind: FunctionKind, constant: Surd, slope: Surd) -> FunctionOfH {
-    FunctionOfH { kind, constant: Number::Exact(constant), slope: Number::Exact(slope), omitted: Vec::new() }
+    FunctionOfH {
+        kind,
+        constant: Number::Exact(constant),
+        slope: Number::Exact(slope),
+        omitted: Vec::new(),
+        adjoint: false,
+    }
 }
 
 /// <e_0| f(a + b H) |e_1> for H = [[1, 1], [1, 1]] (energies 0 and 2) and a third state by itself with energy 4; V = H with a 1 in place of 0.
@@ -39,6 +45,19 @@ fn exponentials_roots_and_logarithms() {
     assert_close(&value(FunctionKind::Ln, q(-1, 1), q(-1, 1), 2).expect("a number"), &logarithm, 180);
     let imaginary = Number::Approx(Complex::with_val(256, (0, number(2).sqrt())));
     assert_close(&value(FunctionKind::Sqrt, q(0, 1), q(-1, 1), 1).expect("a number"), &imaginary, 180);
+}
+
+#[test]
+fn the_adjoint_on_the_cut() {
+    // (ln(-1 - H))^+ on the state with energy 4: ln 5 - i pi
+    let (m, _) = model();
+    let backend = numeric(&m, 192);
+    let top = ket(&backend, &state(&m, 2)).expect("numbers");
+    let adjoint = FunctionOfH { adjoint: true, ..function(FunctionKind::Ln, q(-1, 1), q(-1, 1)) };
+    let image = backend.function(&adjoint, WHOLE, &top).expect("numbers");
+    let pi = Float::with_val(256, rug::float::Constant::Pi);
+    let expected = Number::Approx(Complex::with_val(256, (Float::with_val(256, 5).ln(), -pi)));
+    assert_close(&backend.overlap(WHOLE, &top, &image).expect("a number"), &expected, 180);
 }
 
 #[test]

@@ -98,6 +98,26 @@ fn orbital_angular_momentum_of_a_p_wave() {
 }
 
 #[test]
+fn energies_with_pi() {
+    // 3 < pi < sqrt 10, and pi twice.
+    let h =
+        ExactMatrix::from_diagonals(vec![vec![Surd::pi_to(1), root(10, 1), q(3, 1), Surd::pi_to(1)]]).expect("real");
+    let m = system(h, vec![]);
+    assert_eq!(levels(&m), [(0, 1), (1, 2), (3, 1)]);
+    assert_eq!(energy(&m, 2), Number::Exact(Surd::pi_to(1)));
+    // pi (1 + sigma_x) and 2 pi: the levels 0, 2 pi, 2 pi
+    let rows = vec![
+        vec![Surd::pi_to(1), Surd::pi_to(1), Surd::zero()],
+        vec![Surd::pi_to(1), Surd::pi_to(1), Surd::zero()],
+        vec![Surd::zero(), Surd::zero(), Surd::pi_to(1).scaled(&Rational::from(2))],
+    ];
+    let m = system(matrix(rows), vec![]);
+    assert_eq!(levels(&m), [(0, 1), (1, 2)]);
+    assert_eq!(energy(&m, 0), Number::Exact(Surd::zero()));
+    assert_eq!(energy(&m, 1), Number::Exact(Surd::pi_to(1).scaled(&Rational::from(2))));
+}
+
+#[test]
 fn a_hopping_ring_of_five() {
     // 2 cos(2 pi k/5): 2, twice (sqrt 5 - 1)/2, twice -(sqrt 5 + 1)/2
     let ring = symmetric(5, |i, j| q(i64::from(i == j + 1 || (i == 4 && j == 0)), 1));
