@@ -62,16 +62,28 @@ pub fn refine_cluster(
     bits: u32,
     effort: &Effort,
 ) -> Result<EigenCluster, LinalgError> {
+    let preview = spectrum_preview(h, effort)?;
+    refine_cluster_near(h, preview.as_ref(), wanted, bits, effort)
+}
+
+/// Like [`refine_cluster`], with the preview of H where one is known.
+pub fn refine_cluster_near(
+    h: &HermitianMatrix,
+    preview: Option<&Preview>,
+    wanted: Range<usize>,
+    bits: u32,
+    effort: &Effort,
+) -> Result<EigenCluster, LinalgError> {
     let order = h.order();
     if wanted.end > order || wanted.is_empty() {
         return Err(LinalgError::NoSuchEigenvalue { last: wanted.end.saturating_sub(1), order });
     }
-    let Some(preview) = spectrum_preview(h) else { return from_all(h, None, wanted, bits, effort) };
+    let Some(preview) = preview else { return from_all(h, None, wanted, bits, effort) };
     let range = preview.cluster(wanted.start, wanted.end - 1);
     if 2 * range.len() > order {
-        return from_all(h, Some(&preview), range, bits, effort);
+        return from_all(h, Some(preview), range, bits, effort);
     }
-    iterate(h, &preview, range, bits, effort)
+    iterate(h, preview, range, bits, effort)
 }
 
 /// Takes a range out of all eigenpairs.

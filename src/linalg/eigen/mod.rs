@@ -3,9 +3,10 @@
 
 mod cluster;
 mod full;
+mod machine;
 mod preview;
 mod tridiagonalise;
 
-pub use cluster::{EigenCluster, refine_cluster};
+pub use cluster::{EigenCluster, refine_cluster, refine_cluster_near};
 pub use full::{Eigenpairs, all_eigenpairs};
 pub use preview::{Preview, spectrum_preview};

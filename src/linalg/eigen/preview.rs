@@ -1,15 +1,13 @@
 //! A look at the spectrum in machine numbers.
 
-use nalgebra::{DMatrix, SymmetricEigen};
 use rug::Float;
 
+use super::machine::eigenvalues;
 use crate::linalg::hermitian::HermitianMatrix;
+use crate::num::{Effort, Interrupted};
 
 /// Eigenvalues this near to each other, relative to the largest, are not told apart by machine numbers.
 const RESOLUTION: f64 = 1.0 / (1u64 << 40) as f64;
-
-/// Sweeps of the machine-number eigenvalue routine; it needs a few for each eigenvalue.
-const SWEEPS_EACH: usize = 60;
 
 /// Approximate eigenvalues in rising order, as multiples of a power of two.
 #[derive(Clone, Debug)]
@@ -23,39 +21,33 @@ pub struct Preview {
 /// Finds the spectrum approximately in machine numbers, each eigenvalue as often as its multiplicity; `None` if the
 /// machine numbers did not settle.
 ///
-/// *Range*: any exponents: the matrix is scaled by a power of two. *Accuracy*: about order * 2^-52 of the largest
-/// eigenvalue: small eigenvalues of a matrix with a wide spread are lost. *Cost*: about order^3 (8 order^3 if complex)
-/// machine operations.
-pub fn spectrum_preview(h: &HermitianMatrix) -> Option<Preview> {
+/// *Range*: any exponents: the matrix is scaled by a power of two. *Accuracy*: about order * 2^-52 of the largest eigenvalue:
+/// small eigenvalues of a matrix with a wide spread are lost. *Errors*: stopped. *Cost*: about 4/3 order^3 (11 order^3 if complex) machine
+/// operations.
+pub fn spectrum_preview(h: &HermitianMatrix, effort: &Effort) -> Result<Option<Preview>, Interrupted> {
     let order = h.order();
-    let exponent = i32::try_from(h.exponent().unwrap_or(0)).ok()?;
+    let Ok(exponent) = i32::try_from(h.exponent().unwrap_or(0)) else { return Ok(None) };
     let scaled = |x: &Float| Float::with_val(53, x >> exponent).to_f64();
-    let matrix = match h.im() {
-        None => h.re().map(|x| scaled(&x)),
-        Some(im) => DMatrix::from_fn(2 * order, 2 * order, |i, j| {
-            let entry = (i % order, j % order);
-            match (i < order, j < order) {
-                (true, true) | (false, false) => scaled(&h.re()[entry]),
-                (false, true) => scaled(&im[entry]),
-                (true, false) => -scaled(&im[entry]),
-            }
-        }),
+    let lower = match h.im() {
+        None => (0..order).map(|i| (0..=i).map(|j| scaled(&h.re()[(i, j)])).collect()).collect(),
+        // [[X, -Y], [Y, X]]
+        Some(im) => (0..2 * order)
+            .map(|i| {
+                let entry = |j: usize| match (i < order, j < order) {
+                    (true, _) => scaled(&h.re()[(i, j)]),
+                    (false, true) => scaled(&im[(i - order, j)]),
+                    (false, false) => scaled(&h.re()[(i - order, j - order)]),
+                };
+                (0..=i).map(entry).collect()
+            })
+            .collect(),
     };
-    let sweeps = SWEEPS_EACH * matrix.nrows().max(1);
-    let mut values: Vec<f64> = if matrix.is_empty() {
-        Vec::new()
-    } else {
-        SymmetricEigen::try_new(matrix, f64::EPSILON, sweeps)?.eigenvalues.iter().copied().collect()
-    };
-    if values.iter().any(|x| !x.is_finite()) {
-        return None;
-    }
-    values.sort_by(f64::total_cmp);
+    let Some(mut values) = eigenvalues(lower, effort)? else { return Ok(None) };
     if !h.is_real() {
         // The real matrix of twice the order has every eigenvalue twice.
         values = values.chunks(2).map(|pair| pair.iter().sum::<f64>() / pair.len() as f64).collect();
     }
-    Some(Preview { values, exponent })
+    Ok(Some(Preview { values, exponent }))
 }
 
 impl Preview {

@@ -108,7 +108,7 @@ fn preview_sees_each_value_once() {
     let values = numbers(&["-3e500", "-1e500", "-1e500", "2e500", "4e500"]);
     for complex in [false, true] {
         let h = with_spectrum(&values, 8, complex);
-        let preview = spectrum_preview(&h).expect("settled");
+        let preview = spectrum_preview(&h, &Effort::new()).expect("not stopped").expect("settled");
         assert_eq!(preview.values.len(), 5);
         for (k, expected) in values.iter().enumerate() {
             let ratio = preview.value(k).expect("there") / expected;

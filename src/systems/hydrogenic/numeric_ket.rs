@@ -123,7 +123,7 @@ impl NumericKet {
         match operator {
             Radial::Power(s) => self.powered(s, l, lp),
             Radial::Gradient => {
-                differentiable(self.origin.has_gradient(lp))?;
+                self.differentiable(self.origin.has_gradient(lp))?;
                 self.mapped(operator, l, lp, self.origin.gradient(l, lp), |s| s.gradient(gradient_term(l, lp)))
             }
             Radial::PSquared => self.p_squared(l),
@@ -158,7 +158,7 @@ impl NumericKet {
     }
 
     fn p_squared(&self, l: u32) -> Result<Self, Obstacle> {
-        differentiable(self.origin.has_p_squared(l))?;
+        self.differentiable(self.origin.has_p_squared(l))?;
         let mut out = self.mapped(Radial::PSquared, l, l, self.origin.p_squared(l), |s| s.p_squared(l))?;
         if let Some(series) = self.series.as_ref().filter(|_| l == 0) {
             // -(1/r)'' holds 4 pi delta(r)
@@ -168,6 +168,14 @@ impl NumericKet {
             }
         }
         Ok(out)
+    }
+
+    fn differentiable(&self, allowed: bool) -> Result<(), Obstacle> {
+        match (allowed, self.origin.certain) {
+            (true, _) => Ok(()),
+            (false, true) => Err(Obstacle::Inexact),
+            (false, false) => Err(Obstacle::Undecided),
+        }
     }
 
     /// Applies an operator to every part by itself.
@@ -332,10 +340,6 @@ pub(super) fn element(
             Err(obstacle) => Err(obstacle),
         },
     }
-}
-
-fn differentiable(allowed: bool) -> Result<(), Obstacle> {
-    if allowed { Ok(()) } else { Err(Obstacle::Inexact) }
 }
 
 fn origin_of(u: &RadialFunction, l: u32) -> Origin {

@@ -9,6 +9,8 @@ pub(super) struct Origin {
     pub(super) logarithm: bool,
     /// Whether the coefficient of that power is known not to cancel.
     pub(super) certain: bool,
+    /// Whether a plain power series follows, without logarithms.
+    pub(super) analytic: bool,
     /// Whether a delta function comes with it, be it only in the limit of a complete basis.
     pub(super) delta: bool,
 }
@@ -18,7 +20,7 @@ const NOWHERE: i64 = i64::MAX / 8;
 
 impl Origin {
     pub(super) const fn pure(power: i64) -> Self {
-        Origin { power, logarithm: false, certain: true, delta: false }
+        Origin { power, logarithm: false, certain: true, analytic: true, delta: false }
     }
 
     /// The zero function's.
@@ -54,7 +56,7 @@ impl Origin {
                 Origin { logarithm: self.logarithm || other.logarithm, certain: self.certain && other.certain, ..self }
             }
         };
-        Origin { delta: self.delta || other.delta, ..leading }
+        Origin { delta: self.delta || other.delta, analytic: self.analytic && other.analytic, ..leading }
     }
 
     /// After the radial gradient from block l to lp.
@@ -64,13 +66,15 @@ impl Origin {
         if kept { self } else { self.shifted(-1) }
     }
 
-    /// After p^2 in block l; 1/r in s waves, that is r^0, leaves a delta function, and r^-1 from the term r ln r that follows it.
+    /// After p^2 in block l.
+    ///
+    /// 1/r in s waves, that is r^0, leaves a delta function; of what follows r goes, but r ln r becomes r^-1.
     pub(super) fn p_squared(self, l: u32) -> Self {
         if self.logarithm {
             return self.shifted(-2);
         }
         if l == 0 && self.power == 0 {
-            return Origin { delta: true, ..self.shifted(-1) };
+            return Origin { delta: true, ..self.shifted(if self.analytic { 0 } else { -1 }) };
         }
         self.shifted(if self.power == i64::from(l) + 1 { -1 } else { -2 })
     }
@@ -89,10 +93,10 @@ impl Origin {
         // a delta function asks for r^0
         let source = if self.delta { Origin { delta: false, ..self.joined(Self::pure(-2)) } } else { self };
         if source.is_zero() || source.power + 2 > regular {
-            Origin::pure(regular)
+            Origin { analytic: source.analytic, ..Origin::pure(regular) }
         } else {
             let logarithm = source.logarithm || source.power + 2 == regular;
-            Origin { power: source.power + 2, logarithm, ..source }
+            Origin { power: source.power + 2, logarithm, analytic: false, ..source }
         }
     }
 
@@ -133,8 +137,10 @@ mod tests {
         assert!(!solution.finite_at_nucleus());
         // p^4 and delta(r) on s states: the solution starts with r^0, that is 1/r
         let source = Origin::pure(1).p_squared(0).p_squared(0);
-        assert_eq!((source.power, source.delta), (-1, true));
-        assert_eq!(source.solution(0).power, 0);
+        assert_eq!((source.power, source.delta), (0, true));
+        let solution = source.solution(0);
+        assert_eq!((solution.power, solution.analytic), (0, false));
+        assert_eq!(solution.p_squared(0).power, -1);
         assert_eq!(Origin::contact().solution(0).power, 0);
         // p^4 on 2p: r^2 -> r -> 1/r -> the solution starts with r
         assert_eq!(Origin::pure(2).p_squared(1).p_squared(1).solution(1).power, 1);

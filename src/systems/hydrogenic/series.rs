@@ -83,6 +83,10 @@ impl Series {
     /// *Source*: derived here, with x L'' = (x - a - 1) L' - m L.
     pub(super) fn p_squared(&self, l: u32) -> Self {
         let (p, a, l) = (self.basis.power, i64::from(self.basis.order), i64::from(l));
+        if p == -l {
+            // both (d/dr + l/r) and, in s waves, (d/dr - l/r) keep this power
+            return self.gradient(l).gradient(-l).scaled_by(&Rational::from(-1));
+        }
         // -2k r^(p-1) e [ (x/4 - m - p) L_m + (2p - a - 1) L_m' ]
         let quarter = |x: &[Float]| {
             let quarter = scale(times_variable(x, self.basis.order, self.bits), &Float::with_val(self.bits, 0.25));
@@ -221,6 +225,7 @@ mod tests {
             ((1, 2), 2, 3, 1),
             ((1, 3), 3, 1, 1),
             ((2, 1), 0, 3, 1),
+            ((2, 1), 0, 3, 0),
             ((1, 1), 5, 2, 2),
             ((1, 1), -1, 7, 3),
         ] {
@@ -263,5 +268,7 @@ mod tests {
         // p^2 of a regular function loses one power, the gradient to l + 1 none
         assert_eq!(series.p_squared(0).basis.power, 0);
         assert_eq!(series.gradient(-1).basis.power, 1);
+        // and p^2 of r^0 in s waves none either: what it loses is the delta function
+        assert_eq!(series.times_power(-1).p_squared(0).basis.power, 0);
     }
 }

@@ -125,17 +125,17 @@ fn cut(word: &str) -> String {
     if word.chars().count() > 30 { word.chars().take(30).chain(['…']).collect() } else { word.to_string() }
 }
 
-fn number(word: &str, line: usize) -> Result<Rational, MatrixFault> {
+fn number(word: &str) -> Result<Rational, String> {
     let (sign, digits) = match word.strip_prefix('-') {
         Some(digits) => (-1, digits),
         None => (1, word.strip_prefix('+').unwrap_or(word)),
     };
     let value = match digits.split_once('/') {
-        None => unsigned(digits, word, line)?,
+        None => unsigned(digits, word)?,
         Some((above, below)) => {
-            let (above, below) = (unsigned(above, word, line)?, unsigned(below, word, line)?);
+            let (above, below) = (unsigned(above, word)?, unsigned(below, word)?);
             if below == 0 {
-                return Err(fault(line, format!("`{}` divides by zero", cut(word))));
+                return Err(format!("`{}` divides by zero", cut(word)));
             }
             above / below
         }
@@ -144,13 +144,13 @@ fn number(word: &str, line: usize) -> Result<Rational, MatrixFault> {
 }
 
 /// A number without a sign. Files of the trade write `1.`, `.5`, `1E5` and `1D5`; the language's decimals have digits on both sides of the point.
-fn unsigned(digits: &str, word: &str, line: usize) -> Result<Rational, MatrixFault> {
+fn unsigned(digits: &str, word: &str) -> Result<Rational, String> {
     let (mantissa, exponent) = match digits.split_once(['e', 'E', 'd', 'D']) {
         Some((mantissa, exponent)) => (mantissa, Some(exponent)),
         None => (digits, None),
     };
     if mantissa.starts_with(['+', '-']) {
-        return Err(fault(line, format!("`{}` is not a number", cut(word))));
+        return Err(format!("`{}` is not a number", cut(word)));
     }
     let mut text = match (mantissa.starts_with('.'), mantissa.ends_with('.')) {
         (true, false) => format!("0{mantissa}"),
@@ -162,8 +162,8 @@ fn unsigned(digits: &str, word: &str, line: usize) -> Result<Rational, MatrixFau
         text.push_str(exponent.strip_prefix('+').unwrap_or(exponent));
     }
     parse_decimal(&text).map_err(|error| match error {
-        DecimalError::NotANumber { .. } => fault(line, format!("`{}` is not a number", cut(word))),
-        other => fault(line, other.to_string()),
+        DecimalError::NotANumber { .. } => format!("`{}` is not a number", cut(word)),
+        other => other.to_string(),
     })
 }
 
@@ -174,16 +174,18 @@ struct Values<'b> {
 }
 
 impl Values<'_> {
-    fn read(&mut self, words: &[&str], line: usize) -> Result<Surd, MatrixFault> {
+    /// The entry of a row and column, counted from 0.
+    fn read(&mut self, words: &[&str], (row, column): (usize, usize), line: usize) -> Result<Surd, MatrixFault> {
+        let wrong = |message: String| fault(line, format!("row {}, column {}: {message}", row + 1, column + 1));
         let value = match (self.banner.complex, words) {
-            (false, [re]) => Surd::from(number(re, line)?),
-            (true, [re, im]) => Surd::gaussian(number(re, line)?, number(im, line)?),
-            (false, _) => return Err(fault(line, "one number is wanted as the entry")),
-            (true, _) => return Err(fault(line, "two numbers are wanted as the entry, real and imaginary part")),
+            (false, [re]) => Surd::from(number(re).map_err(wrong)?),
+            (true, [re, im]) => Surd::gaussian(number(re).map_err(wrong)?, number(im).map_err(wrong)?),
+            (false, _) => return Err(wrong("one number is wanted as the entry".into())),
+            (true, _) => return Err(wrong("two numbers are wanted as the entry, real and imaginary part".into())),
         };
         self.bits += u64::from(value.bits());
         if self.bits > MOST_BITS {
-            return Err(fault(line, "the entries up to here are longer than all entries of a file may be together"));
+            return Err(wrong("the entries up to here are longer than all entries of a file may be together".into()));
         }
         Ok(value)
     }
@@ -219,7 +221,7 @@ fn read_coordinates<'t>(
             _ => Err(fault(line, format!("{what} `{}` is not one of 1 to {order}", cut(word)))),
         };
         let (row, column) = (index(row, "row")?, index(column, "column")?);
-        let entry = values.read(rest, line)?;
+        let entry = values.read(rest, (row, column), line)?;
         if banner.symmetry != Symmetry::General {
             if column > row {
                 return Err(fault(
@@ -264,7 +266,7 @@ fn read_array<'t>(
             };
             last = line;
             let words: Vec<&str> = text.split_whitespace().collect();
-            let entry = values.read(&words, line)?;
+            let entry = values.read(&words, (row, column), line)?;
             if banner.symmetry != Symmetry::General && row != column {
                 rows[column].insert(row, values.mirrored(&entry));
             }
@@ -333,7 +335,10 @@ mod tests {
                 "%%MatrixMarket matrix coordinate real symmetric\n2 2 1\n1 3 1\n",
                 "line 3: column `3` is not one of 1 to 2",
             ),
-            ("%%MatrixMarket matrix coordinate real symmetric\n2 2 1\n1 1 x\n", "line 3: `x` is not a number"),
+            (
+                "%%MatrixMarket matrix coordinate real symmetric\n2 2 1\n1 1 x\n",
+                "line 3: row 1, column 1: `x` is not a number",
+            ),
             (
                 "%%MatrixMarket matrix coordinate real symmetric\n2 2 1\n1 2 5\n",
                 "line 3: row 1, column 2 lies above the diagonal, and a symmetric file keeps the entries on and below it",
@@ -342,12 +347,21 @@ mod tests {
                 "%%MatrixMarket matrix coordinate real general\n2 2 2\n1 2 5\n2 1 6\n",
                 "row 1, column 2 is not the complex conjugate of row 2, column 1",
             ),
-            ("%%MatrixMarket matrix coordinate real symmetric\n2 2 1\n1 1 --1\n", "line 3: `--1` is not a number"),
-            ("%%MatrixMarket matrix coordinate real symmetric\n2 2 1\n1 1 1/-2\n", "line 3: `1/-2` is not a number"),
-            ("%%MatrixMarket matrix coordinate real symmetric\n2 2 1\n1 1 1/0\n", "line 3: `1/0` divides by zero"),
+            (
+                "%%MatrixMarket matrix coordinate real symmetric\n2 2 1\n1 1 --1\n",
+                "line 3: row 1, column 1: `--1` is not a number",
+            ),
+            (
+                "%%MatrixMarket matrix coordinate real symmetric\n2 2 1\n1 1 1/-2\n",
+                "line 3: row 1, column 1: `1/-2` is not a number",
+            ),
+            (
+                "%%MatrixMarket matrix coordinate real symmetric\n2 2 1\n1 1 1/0\n",
+                "line 3: row 1, column 1: `1/0` divides by zero",
+            ),
             (
                 "%%MatrixMarket matrix coordinate real symmetric\n2 2 1\n1 1 1e999999999\n",
-                "line 3: the power of ten 999999999 is too large; at most 100000 is read",
+                "line 3: row 1, column 1: the power of ten 999999999 is too large; at most 100000 is read",
             ),
             (
                 "%%MatrixMarket matrix coordinate real symmetric\n2 2 3\n1 1 0\n\n1 1 0\n",
@@ -367,7 +381,7 @@ mod tests {
             ),
             (
                 "%%MatrixMarket matrix coordinate complex hermitian\n1 1 1\n1 1 2\n",
-                "line 3: two numbers are wanted as the entry, real and imaginary part",
+                "line 3: row 1, column 1: two numbers are wanted as the entry, real and imaginary part",
             ),
             (
                 "%%MatrixMarket matrix array real symmetric\n2 2\n1\n2\n",

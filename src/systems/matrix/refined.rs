@@ -1,12 +1,13 @@
 //! Eigenvalues and eigenvectors of one component to a precision, kept for what asks again.
 //!
-//! Precisions are rounded up to a ladder, so that an energy, its state and the next precision of a chain share the work; what is found does not
-//! depend on what was asked before.
+//! Precisions are rounded up to a ladder, so that an energy, its state and the next precision of a chain share the work. A sum over many states
+//! makes it pay to find all of them at once; they are the same to the precision, whichever way.
 
 use super::{MatrixSystem, obstacle};
-use crate::linalg::eigen::{EigenCluster, refine_cluster};
+use crate::linalg::eigen::{EigenCluster, refine_cluster_near};
 use crate::num::Effort;
 use crate::systems::Obstacle;
+use std::collections::{BTreeMap, BTreeSet};
 use std::ops::Range;
 use std::sync::{Arc, Mutex, PoisonError};
 
@@ -15,6 +16,9 @@ const STEP: u32 = 256;
 
 /// Bits of entries beyond those of the eigenvalues, enough for vectors that lose half of them to the nearness of a neighbour.
 const ENTRY_GUARD: u32 = 128;
+
+/// Clusters of one component asked for one by one before all are found at once, which costs about as much.
+const ONE_BY_ONE: usize = 16;
 
 /// Memory that kept vectors may take together, in bytes.
 const MEMORY: u64 = 1 << 28;
@@ -32,6 +36,8 @@ struct Key {
 #[derive(Default)]
 pub struct Clusters {
     kept: Mutex<Vec<(Key, Arc<EigenCluster>, u64)>>,
+    /// First places asked for, by component, bits and bits of entries.
+    asked: Mutex<BTreeMap<(usize, u32, u32), BTreeSet<usize>>>,
 }
 
 impl Clusters {
@@ -54,6 +60,21 @@ impl Clusters {
     }
 }
 
+impl Clusters {
+    /// Whether so many clusters like this one were asked for that all should be found at once.
+    fn asks_for_all(&self, key: &Key) -> bool {
+        let mut asked = self.asked.lock().unwrap_or_else(PoisonError::into_inner);
+        let places = asked.entry((key.component, key.bits, key.entry_bits)).or_default();
+        places.insert(key.places.start);
+        places.len() > ONE_BY_ONE
+    }
+}
+
+/// The memory of eigenvectors of a component.
+fn bytes(vectors: usize, order: usize, bits: u32) -> u64 {
+    2 * (vectors * order) as u64 * (u64::from(bits) / 8 + 64)
+}
+
 /// The precision of the ladder that holds so many bits.
 pub fn on_ladder(bits: u32) -> u32 {
     bits.div_ceil(STEP).saturating_mul(STEP)
@@ -72,14 +93,20 @@ impl MatrixSystem {
     ) -> Result<Arc<EigenCluster>, Obstacle> {
         let bits = on_ladder(bits);
         let more = on_ladder(gap_bits.saturating_sub(ENTRY_GUARD / 2));
-        let key = Key { component, places: places.clone(), bits, entry_bits: bits + ENTRY_GUARD + more };
-        if let Some(known) = self.clusters.find(&key) {
+        let order = self.components[component].order();
+        let mut key = Key { component, places, bits, entry_bits: bits + ENTRY_GUARD + more };
+        let all = Key { places: 0..order, ..key.clone() };
+        if let Some(known) = self.clusters.find(&key).or_else(|| self.clusters.find(&all)) {
             return Ok(known);
         }
+        if bytes(order, order, bits) <= MEMORY / 2 && self.clusters.asks_for_all(&key) {
+            key = all;
+        }
         let h = self.hermitian(component, key.entry_bits)?;
-        let cluster = Arc::new(refine_cluster(&h, places, bits, effort).map_err(obstacle)?);
-        let numbers = 2 * (cluster.vectors.len() * h.order()) as u64;
-        self.clusters.keep(key, cluster.clone(), numbers * (u64::from(bits) / 8 + 64));
+        let rough = self.rough(effort)?;
+        let preview = rough.previews.get(&component);
+        let cluster = Arc::new(refine_cluster_near(&h, preview, key.places.clone(), bits, effort).map_err(obstacle)?);
+        self.clusters.keep(key, cluster.clone(), bytes(cluster.vectors.len(), order, bits));
         Ok(cluster)
     }
 }

@@ -2,10 +2,11 @@
 
 use super::MatrixSystem;
 use super::obstacle;
-use crate::linalg::eigen::{all_eigenpairs, spectrum_preview};
+use crate::linalg::eigen::{Preview, all_eigenpairs, spectrum_preview};
 use crate::num::Effort;
 use crate::systems::{Number, Obstacle};
 use rug::Float;
+use std::collections::BTreeMap;
 use std::ops::Range;
 
 /// Bits of the windows.
@@ -37,20 +38,23 @@ pub struct RoughSpectrum {
     pub places: Vec<RoughPlace>,
     /// Sets of places whose windows hang together. A cluster is certain to hold the states with these places in the spectrum.
     pub clusters: Vec<Range<usize>>,
+    /// By component, where there is more than one state and machine numbers settle.
+    pub previews: BTreeMap<usize, Preview>,
 }
 
 impl RoughSpectrum {
     pub fn new(system: &MatrixSystem, effort: &Effort) -> Result<Self, Obstacle> {
         let mut places = Vec::with_capacity(system.order());
+        let mut previews = BTreeMap::new();
         for component in 0..system.components.len() {
             effort.check()?;
-            windows(system, component, effort, &mut places)?;
+            windows(system, component, effort, &mut places, &mut previews)?;
         }
         places.sort_by(|a, b| {
             a.middle().total_cmp(&b.middle()).then(a.component.cmp(&b.component)).then(a.local.cmp(&b.local))
         });
         let clusters = clusters(&places);
-        Ok(RoughSpectrum { places, clusters })
+        Ok(RoughSpectrum { places, clusters, previews })
     }
 
     /// The cluster that holds the state with this place.
@@ -65,6 +69,7 @@ fn windows(
     component: usize,
     effort: &Effort,
     places: &mut Vec<RoughPlace>,
+    previews: &mut BTreeMap<usize, Preview>,
 ) -> Result<(), Obstacle> {
     let members = &system.components[component].members;
     let (values, lost) = if let [only] = members.as_slice() {
@@ -72,8 +77,12 @@ fn windows(
         (vec![entry.into_real_imag().0], BITS - 2)
     } else {
         let h = system.hermitian(component, BITS)?;
-        match spectrum_preview(&h) {
-            Some(preview) => ((0..members.len()).filter_map(|k| preview.value(k)).collect(), RESOLUTION),
+        match spectrum_preview(&h, effort)? {
+            Some(preview) => {
+                let values = (0..members.len()).filter_map(|k| preview.value(k)).collect();
+                previews.insert(component, preview);
+                (values, RESOLUTION)
+            }
             None => (
                 all_eigenpairs(&system.hermitian(component, 4 * BITS)?, 2 * BITS, effort).map_err(obstacle)?.values,
                 BITS - 8,

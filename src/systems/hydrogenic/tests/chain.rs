@@ -187,22 +187,13 @@ fn overlap(backend: &dyn Backend, left: &Ket, right: &Ket) -> Result<Number, Obs
     Ok(sum)
 }
 
-pub(super) fn approximate(number: &Number, bits: u32) -> rug::Complex {
-    number.to_complex(bits)
-}
-
+/// Precision of sums of approximate numbers.
 const BITS: u32 = 1024;
 
 fn add(a: Number, b: Number) -> Number {
-    match (a, b) {
-        (Number::Exact(a), Number::Exact(b)) => Number::Exact(&a + &b),
-        (a, b) => Number::Approx(approximate(&a, BITS) + approximate(&b, BITS)),
-    }
+    a.plus(&b, BITS)
 }
 
 fn multiply(a: &Surd, b: Number) -> Number {
-    match b {
-        Number::Exact(b) => Number::Exact(a * &b),
-        b => Number::Approx(approximate(&Number::Exact(a.clone()), BITS) * approximate(&b, BITS)),
-    }
+    Number::Exact(a.clone()).times(&b, BITS)
 }

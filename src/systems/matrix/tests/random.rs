@@ -137,3 +137,21 @@ fn shifted_resolvents_agree_with_numbers() {
         assert!(difference < Float::with_val(64, 1) >> 130u32, "seed {seed}: differ by {difference}");
     }
 }
+
+#[test]
+fn states_found_one_by_one_and_all_at_once_are_the_same() {
+    let mut random = Random(7);
+    let order = 24;
+    let (h, v) = (random.hermitian(order, false), random.hermitian(order, false));
+    let m = system(h.clone(), vec![("V", v.clone())]);
+    let mean = |m: &MatrixSystem, place: usize| {
+        let backend = numeric(m, 150);
+        let ket = ket(&backend, &state(m, place)).expect("numbers");
+        backend.element(&operator(1), WHOLE, WHOLE, &ket, &ket).expect("a number")
+    };
+    let together: Vec<Number> = (0..order).map(|place| mean(&m, place)).collect();
+    for place in (0..order).rev().step_by(5) {
+        let alone = system(h.clone(), vec![("V", v.clone())]);
+        assert_close(&mean(&alone, place), &together[place], 150);
+    }
+}
