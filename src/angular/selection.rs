@@ -110,7 +110,7 @@ impl BlockRules {
         if self.electrons.count == Some(2) && exchanged {
             return Some(SelectionRule::SpinExchange);
         }
-        tensor.element.known_factor(a, b).is_zero().then_some(SelectionRule::KnownElement)
+        tensor.element.known_factor_vanishes(a, b).then_some(SelectionRule::KnownElement)
     }
 
     /// Every rule broken by an operator on the way from a level to another; the second is checked as an intermediate block where `inside`.

@@ -234,6 +234,23 @@ impl Element {
         }
     }
 
+    /// Whether the known factor is zero, without computing it.
+    pub(crate) fn known_factor_vanishes(&self, bra: Term, ket: Term) -> bool {
+        let (same_l, same_s) = (bra.l == ket.l, bra.s == ket.s);
+        match self.angular_part {
+            AngularPart::Whole => false,
+            AngularPart::SpinFree => !same_s,
+            // (l k l'; 0 0 0) vanishes for an odd sum, and where there is no triangle
+            AngularPart::Harmonic => {
+                let (low, high) = (bra.l.abs_diff(ket.l), bra.l.saturating_add(ket.l));
+                !same_s || !(low..=high).contains(&self.orbital) || (low % 2 != self.orbital % 2)
+            }
+            AngularPart::OrbitalMomentum => !same_s || !same_l || bra.l == 0,
+            AngularPart::Spin => !same_s || !same_l || bra.s.twice() == 0,
+            AngularPart::OrbitalMomentumAndSpin => !same_s || !same_l || bra.l == 0 || bra.s.twice() == 0,
+        }
+    }
+
     /// The sign with which the radial element between two terms turns into that of the opposite order; `None` where tau is not said.
     ///
     /// Source: <LS|||T|||L'S'> = tau (-1)^{L-L'+S-S'} <L'S'|||T|||LS>, derived here from the definition of the reduced element.
@@ -296,6 +313,31 @@ mod tests {
         assert!(matches!(Tensor::new("T", 1, 1, 3), Err(TensorError::Triangle { .. })));
         assert!(matches!(Tensor::new("T", 1000, 1, 3), Err(TensorError::TooLarge { rank: 1000 })));
         assert!(Tensor::new("T", 2, 1, 3).is_ok());
+    }
+
+    #[test]
+    fn known_factors_vanish_where_it_is_said() {
+        let rank = |k| Tensor::harmonic("C", k).expect("a rank");
+        let tensors = [
+            Tensor::scalar("T"),
+            Tensor::polar_vector("D"),
+            rank(1),
+            rank(2),
+            rank(3),
+            Tensor::orbital_momentum("1"),
+            Tensor::total_spin("1"),
+            Tensor::orbit_dot_spin("xi"),
+        ];
+        for tensor in tensors {
+            for code in 0..144_u32 {
+                let term = |l, twice_s| Term::natural(l, HalfInteger::from_twice(twice_s));
+                let spin = |digit: u32| i32::try_from(digit).expect("small");
+                let (bra, ket) = (term(code % 4, spin(code / 4 % 3)), term(code / 12 % 4, spin(code / 48)));
+                let element = &tensor.element;
+                let zero = element.known_factor(bra, ket).is_zero();
+                assert_eq!(element.known_factor_vanishes(bra, ket), zero, "{} {bra} {ket}", element.name);
+            }
+        }
     }
 
     /// The scalar product of two vectors is -sqrt 3 [A B]^0: A_+1 B_-1 enters with -1.

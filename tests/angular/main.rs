@@ -4,6 +4,7 @@ mod brute;
 mod brute_force;
 mod parts;
 mod random;
+mod refusals;
 mod symbols;
 mod tables;
 mod verdicts;

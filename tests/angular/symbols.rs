@@ -123,7 +123,7 @@ fn symbols_are_those_of_sympy() {
         ask("3j", &j, three(j));
         let j = random_six(&mut random, largest);
         ask("6j", &j, six(j));
-        let j = random_nine(&mut random, if case % 20 == 0 { 16 } else { 7 });
+        let j = random_nine(&mut random, if case % 20 == 0 { 10 } else { 5 });
         ask("9j", &j, nine(j));
     }
     let answers = reference(&questions);

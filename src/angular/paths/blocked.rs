@@ -4,6 +4,7 @@ use crate::angular::chain::{AngularVector, Bracket, Part, State};
 use crate::angular::half_integer::HalfInteger;
 use crate::angular::selection::{BlockRules, SelectionRule};
 use crate::angular::term::{Level, Parity, Term};
+use crate::num::{Effort, Interrupted};
 use std::collections::BTreeMap;
 
 /// Most levels the search looks at in one place of a chain.
@@ -22,11 +23,11 @@ pub struct Broken {
 ///
 /// Only the first part of an operator that is a sum is looked at.
 /// Cost: the square of the number of levels within reach, times operators.
-pub fn blocked(bracket: &Bracket, rules: &BlockRules) -> Vec<Broken> {
+pub fn blocked(bracket: &Bracket, rules: &BlockRules, effort: &Effort) -> Result<Vec<Broken>, Interrupted> {
     let parts: Vec<&Part> = bracket.operators.iter().filter_map(|operator| operator.parts.first()).collect();
     let universe = universe(bracket, &parts);
     if universe.len() > MOST_LEVELS {
-        return Vec::new();
+        return Ok(Vec::new());
     }
     // the best way to every level of the present place: rules broken, and how
     let mut best: BTreeMap<Level, (usize, Vec<Broken>)> =
@@ -36,6 +37,7 @@ pub fn blocked(bracket: &Bracket, rules: &BlockRules) -> Vec<Broken> {
         let targets = if inside { universe.clone() } else { levels_of(&bracket.ket) };
         let mut next: BTreeMap<Level, (usize, Vec<Broken>)> = BTreeMap::new();
         for target in targets {
+            effort.check()?;
             for (level, (cost, way)) in &best {
                 let broken = rules.broken(&part.tensor, *level, target, inside);
                 let cost = cost + broken.len();
@@ -52,7 +54,7 @@ pub fn blocked(bracket: &Bracket, rules: &BlockRules) -> Vec<Broken> {
         }
         best = next;
     }
-    best.into_values().min_by_key(|(cost, _)| *cost).map(|(_, way)| way).unwrap_or_default()
+    Ok(best.into_values().min_by_key(|(cost, _)| *cost).map(|(_, way)| way).unwrap_or_default())
 }
 
 fn levels_of(state: &State) -> Vec<Level> {

@@ -3,7 +3,7 @@
 use super::PathError;
 use super::coefficients::Coefficients;
 use super::columns::Columns;
-use super::key::{Block, ChainKey, Endpoint, Orientation, RadialChain, orientation_sign};
+use super::key::{Block, ChainKey, Endpoint, Orientation, RadialChain};
 use super::walk::{Step, Walk};
 use crate::angular::chain::{AngularVector, Bracket, ChainSum, Part, Product, State};
 use crate::angular::polarization::{Component, ComponentError, IndexValue};
@@ -16,8 +16,14 @@ use std::collections::BTreeMap;
 /// Longest chain.
 const LONGEST: usize = 40;
 
-/// Most paths, counting every value of the summed indices and every part of an operator.
-const MOST_PATHS: usize = 500_000;
+/// Most factors, paths times columns.
+const MOST_FACTORS: usize = 100_000;
+
+/// Most steps from one level to another in one bracket.
+const MOST_LINKS: usize = 1_000_000;
+
+/// Most choices of the parts of operators, and of the values of summed indices.
+const MOST_CHOICES: usize = 100_000;
 
 /// What a decomposition takes for granted.
 #[derive(Clone, PartialEq, Eq, Debug)]
@@ -48,7 +54,6 @@ pub struct Contribution {
 #[derive(Clone, PartialEq, Eq, Debug)]
 pub struct Decomposition {
     pub columns: Columns,
-    pub orientation: Orientation,
     /// Ascending by product, key and levels.
     pub contributions: Vec<Contribution>,
 }
@@ -69,14 +74,15 @@ pub fn decompose(sum: &ChainSum, setting: &Setting, effort: &Effort) -> Result<D
         check_state(state)?;
     }
     let columns = Columns::of(sum)?;
-    let mut work = Work { setting, columns: &columns, coefficients: Coefficients::default(), effort, left: MOST_PATHS };
+    let mut work = Work { setting, columns: &columns, coefficients: Coefficients::default(), effort };
     let mut contributions = Vec::new();
     for (index, product) in sum.products.iter().enumerate() {
+        check_count(contributions.len().saturating_mul(columns.len()), MOST_FACTORS)?;
         for ((key, levels), factors) in work.product(product)? {
             contributions.push(Contribution { product: index, key, levels, factors });
         }
     }
-    Ok(Decomposition { columns, orientation: setting.orientation, contributions })
+    Ok(Decomposition { columns, contributions })
 }
 
 fn check_state(state: &State) -> Result<(), PathError> {
@@ -105,7 +111,6 @@ struct Work<'a> {
     columns: &'a Columns,
     coefficients: Coefficients,
     effort: &'a Effort,
-    left: usize,
 }
 
 impl Work<'_> {
@@ -120,6 +125,7 @@ impl Work<'_> {
         if places.iter().any(|parts| parts.is_empty()) {
             return Ok(sums);
         }
+        check_count(places.iter().map(|parts| parts.len()).fold(1, usize::saturating_mul), MOST_CHOICES)?;
         loop {
             self.effort.check()?;
             let parts: Vec<&Part> = places.iter().zip(&choice).map(|(parts, i)| &parts[*i]).collect();
@@ -138,6 +144,7 @@ impl Work<'_> {
         }
         let indices = summed_indices(parts)?;
         let mut choice = vec![0_usize; indices.len()];
+        check_count(indices.iter().fold(1, |count: usize, _| count.saturating_mul(3)), MOST_CHOICES)?;
         loop {
             let mut values: BTreeMap<&str, IndexValue> = BTreeMap::new();
             for (index, value) in indices.iter().zip(&choice) {
@@ -160,6 +167,7 @@ impl Work<'_> {
                     *sum += factor;
                 }
             }
+            check_count(sums.len().saturating_mul(self.columns.len()), MOST_FACTORS)?;
             if !advance(&mut choice, |_| 3) {
                 return Ok(());
             }
@@ -173,19 +181,16 @@ impl Work<'_> {
             columns: self.columns,
             coefficients: &mut self.coefficients,
             effort: self.effort,
-            left: self.left,
-            limit: MOST_PATHS,
+            limit: MOST_FACTORS,
+            links: MOST_LINKS,
         };
         let paths = walk.run(&bracket.bra, steps, &bracket.ket)?;
         let all = partial.len().saturating_mul(paths.len());
-        self.left = walk.left.checked_sub(all).ok_or(PathError::TooMany { limit: MOST_PATHS })?;
+        check_count(all.saturating_mul(self.columns.len()), MOST_FACTORS)?;
         let mut out = Vec::with_capacity(all);
         for (levels, factors) in &paths {
-            let chain = radial_chain(bracket, steps, levels);
-            let sign = match self.setting.orientation {
-                Orientation::AsWritten => Sign::Plus,
-                Orientation::SmallerTermFirst => orientation_sign(&chain.elements, &chain.terms()),
-            };
+            let chain = radial_chain(bracket, steps, levels, self.setting.orientation);
+            let sign = chain.orientation_sign();
             for (key, before, coefficients) in &partial {
                 let mut key = key.clone();
                 key.brackets.push(chain.clone());
@@ -211,6 +216,10 @@ fn check_shape(bracket: &Bracket) -> Result<(), PathError> {
         return Err(PathError::Gaps { operators, gaps });
     }
     Ok(())
+}
+
+fn check_count(count: usize, limit: usize) -> Result<(), PathError> {
+    if count > limit { Err(PathError::TooMany { limit }) } else { Ok(()) }
 }
 
 /// Moves a mixed-radix counter on; false when it has run through.
@@ -256,7 +265,7 @@ fn steps<'a>(parts: &[&'a Part], values: &BTreeMap<&str, IndexValue>) -> Result<
     Ok(steps)
 }
 
-fn radial_chain(bracket: &Bracket, steps: &[Step], levels: &[Level]) -> RadialChain {
+fn radial_chain(bracket: &Bracket, steps: &[Step], levels: &[Level], orientation: Orientation) -> RadialChain {
     let mut gaps = bracket.gaps.clone();
     let mut blocks = Vec::with_capacity(levels.len());
     for (i, level) in levels.iter().enumerate() {
@@ -268,6 +277,7 @@ fn radial_chain(bracket: &Bracket, steps: &[Step], levels: &[Level]) -> RadialCh
     }
     let end = |state: &State| Endpoint { name: state.name.clone(), term: state.term };
     RadialChain {
+        orientation,
         bra: end(&bracket.bra),
         elements: steps.iter().map(|step| step.tensor.element.clone()).collect(),
         blocks,

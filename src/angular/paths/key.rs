@@ -7,7 +7,7 @@ use crate::angular::term::Term;
 use std::fmt;
 
 /// The order in which the two sides of a reduced element are written.
-#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+#[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Debug)]
 pub enum Orientation {
     /// `<bra||O||ket>` as the chain has it.
     AsWritten,
@@ -32,6 +32,7 @@ pub struct Block {
 /// Everything the radial part of one bracket depends on.
 #[derive(Clone, PartialEq, Eq, PartialOrd, Ord, Hash, Debug)]
 pub struct RadialChain {
+    pub orientation: Orientation,
     pub bra: Endpoint,
     pub elements: Vec<Element>,
     pub blocks: Vec<Block>,
@@ -46,15 +47,30 @@ impl RadialChain {
         std::iter::once(self.bra.term).chain(inside).chain(std::iter::once(self.ket.term)).collect()
     }
 
+    /// The sign with which the radial element of an operator turns round, where it is written with its smaller term first and that is not the
+    /// order of the chain.
+    fn turned(&self, element: &Element, sides: &[Term]) -> Option<Sign> {
+        let turns = self.orientation == Orientation::SmallerTermFirst && sides[0] > sides[1];
+        if turns { element.reversal(sides[0], sides[1]) } else { None }
+    }
+
+    /// The sign that the orientation costs the whole chain.
+    pub(super) fn orientation_sign(&self) -> Sign {
+        let terms = self.terms();
+        let signs =
+            self.elements.iter().zip(terms.windows(2)).filter_map(|(element, sides)| self.turned(element, sides));
+        signs.fold(Sign::Plus, Sign::times)
+    }
+
     /// The chain read from the right, and the sign it is equal to this one with; `None` where tau of an operator is not known.
     ///
     /// Range: real radial elements, which is what a known tau says; any z, since a real H makes resolvents symmetric.
-    pub fn reversed(&self, orientation: Orientation) -> Option<(RadialChain, Sign)> {
+    pub fn reversed(&self) -> Option<(RadialChain, Sign)> {
         let terms = self.terms();
         let mut sign = Sign::Plus;
         for (element, sides) in self.elements.iter().zip(terms.windows(2)) {
             let turned = element.reversal(sides[0], sides[1])?;
-            let already = orientation == Orientation::SmallerTermFirst && sides[0] != sides[1];
+            let already = self.orientation == Orientation::SmallerTermFirst && sides[0] != sides[1];
             if !already {
                 sign = sign.times(turned);
             }
@@ -66,17 +82,6 @@ impl RadialChain {
         std::mem::swap(&mut chain.bra, &mut chain.ket);
         Some((chain, sign))
     }
-}
-
-/// The sign that writing every element of known tau with its smaller term first costs.
-pub(super) fn orientation_sign(elements: &[Element], terms: &[Term]) -> Sign {
-    let mut sign = Sign::Plus;
-    for (element, sides) in elements.iter().zip(terms.windows(2)) {
-        if sides[0] > sides[1] {
-            sign = sign.times(element.reversal(sides[0], sides[1]).unwrap_or(Sign::Plus));
-        }
-    }
-    sign
 }
 
 /// The radial part of a product of brackets.
@@ -98,7 +103,8 @@ impl fmt::Display for Block {
     }
 }
 
-/// Writes the reduced elements from left to right with the resolvents between them: `<g||D||^3P> R <^3P||D||g>`.
+/// Writes the reduced elements from left to right with the resolvents between them, each in the orientation its factor is for:
+/// `<g||D||^3P> R <g||D||^3P>` with the smaller term first.
 impl fmt::Display for RadialChain {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         if self.elements.is_empty() {
@@ -107,6 +113,7 @@ impl fmt::Display for RadialChain {
         let mut sides = vec![self.bra.name.clone()];
         sides.extend(self.blocks.iter().map(Block::to_string));
         sides.push(self.ket.name.clone());
+        let terms = self.terms();
         for (i, element) in self.elements.iter().enumerate() {
             if i > 0 {
                 write!(f, " ")?;
@@ -114,7 +121,9 @@ impl fmt::Display for RadialChain {
                     write!(f, "{} ", resolvent.label)?;
                 }
             }
-            write!(f, "<{}||{}||{}>", sides[i], element.name, sides[i + 1])?;
+            let turned = self.turned(element, &terms[i..i + 2]).is_some();
+            let (left, right) = if turned { (i + 1, i) } else { (i, i + 1) };
+            write!(f, "<{}||{}||{}>", sides[left], element.name, sides[right])?;
         }
         Ok(())
     }

@@ -45,7 +45,7 @@ pub enum PathError {
     Projection { name: String },
     #[error("a chain has more than {limit} operators")]
     TooLong { limit: usize },
-    #[error("there are more than {limit} paths")]
+    #[error("there are more than {limit} factors of paths to find")]
     TooMany { limit: usize },
 }
 

@@ -24,9 +24,10 @@ pub(super) struct Walk<'a> {
     pub(super) columns: &'a Columns,
     pub(super) coefficients: &'a mut Coefficients,
     pub(super) effort: &'a Effort,
-    /// How many more paths may be found.
-    pub(super) left: usize,
+    /// The most factors, paths times columns, that may be found.
     pub(super) limit: usize,
+    /// How many more times an operator may be followed from one level to another.
+    pub(super) links: usize,
 }
 
 /// A partial path, from the ket up to a place of the chain.
@@ -78,20 +79,24 @@ impl Walk<'_> {
     }
 
     /// The levels at every place of the chain that operators join with the bra, from left to right; the last place is the ket's.
-    fn reachable(&self, bra: BTreeSet<Level>, steps: &[Step]) -> Result<Vec<BTreeSet<Level>>, PathError> {
+    fn reachable(&mut self, bra: BTreeSet<Level>, steps: &[Step]) -> Result<Vec<BTreeSet<Level>>, PathError> {
         let mut places = vec![bra];
         for (i, step) in steps.iter().enumerate() {
             let mut next = BTreeSet::new();
             for level in &places[i] {
                 self.effort.check()?;
-                next.extend(self.rules.neighbours(step.tensor, *level, i + 1 < steps.len()));
-                if next.len() > self.limit {
-                    return Err(PathError::TooMany { limit: self.limit });
-                }
+                let neighbours = self.rules.neighbours(step.tensor, *level, i + 1 < steps.len());
+                self.count_links(neighbours.len())?;
+                next.extend(neighbours);
             }
             places.push(next);
         }
         Ok(places)
+    }
+
+    fn count_links(&mut self, links: usize) -> Result<(), PathError> {
+        self.links = self.links.checked_sub(links).ok_or(PathError::TooMany { limit: self.limit })?;
+        Ok(())
     }
 
     fn extend(
@@ -102,10 +107,10 @@ impl Walk<'_> {
         stack: &mut Vec<Partial>,
     ) -> Result<(), PathError> {
         let place = partial.place - 1;
-        for level in self.rules.neighbours(step.tensor, partial.level, place > 0) {
-            if !reachable.contains(&level) {
-                continue;
-            }
+        let mut neighbours = self.rules.neighbours(step.tensor, partial.level, place > 0);
+        neighbours.retain(|level| reachable.contains(level));
+        self.count_links(neighbours.len())?;
+        for level in neighbours {
             let reduced = &partial.reduced * &self.coefficients.reduced(step.tensor, level, partial.level)?;
             let mut amplitudes = Vec::with_capacity(partial.amplitudes.len());
             for from in &partial.amplitudes {
@@ -130,8 +135,8 @@ impl Walk<'_> {
         let Some(bra) = bras.get(&partial.level) else { return Ok(()) };
         partial.inside.reverse();
         let count = self.columns.len();
-        if !paths.contains_key(&partial.inside) {
-            self.left = self.left.checked_sub(1).ok_or(PathError::TooMany { limit: self.limit })?;
+        if paths.len().saturating_mul(count) > self.limit {
+            return Err(PathError::TooMany { limit: self.limit });
         }
         let factors = paths.entry(partial.inside).or_insert_with(|| vec![Surd::zero(); count]);
         for (column, factor) in factors.iter_mut().enumerate() {

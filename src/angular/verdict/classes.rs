@@ -69,7 +69,7 @@ pub(super) fn classes(decomposition: &Decomposition) -> BTreeMap<ChainKey, Class
         let mut levels = contribution.levels.clone();
         let (mut sign, mut reversed, mut odd) = (Sign::Plus, false, false);
         for (chain, own) in key.brackets.iter_mut().zip(&mut levels) {
-            let Some((turned, turned_sign)) = chain.reversed(decomposition.orientation) else { continue };
+            let Some((turned, turned_sign)) = chain.reversed() else { continue };
             if turned < *chain {
                 *chain = turned;
                 own.reverse();
@@ -83,11 +83,7 @@ pub(super) fn classes(decomposition: &Decomposition) -> BTreeMap<ChainKey, Class
         let negative = sign == Sign::Minus;
         let factors = contribution.factors.iter().map(|f| if negative { -f } else { f.clone() }).collect();
         let class = classes.entry(key).or_insert_with_key(|key| {
-            let even = |chain: &RadialChain| {
-                chain
-                    .reversed(decomposition.orientation)
-                    .is_some_and(|(turned, sign)| turned == *chain && sign == Sign::Plus)
-            };
+            let even = |chain: &RadialChain| chain.reversed() == Some((chain.clone(), Sign::Plus));
             Class { paths: Vec::new(), odd, symmetric: key.brackets.iter().map(even).collect() }
         });
         class.paths.push(ChainPath { product: contribution.product, reversed, levels, factors });

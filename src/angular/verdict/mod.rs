@@ -122,17 +122,20 @@ pub fn analyse(
     for (index, product) in sum.products.iter().enumerate() {
         effort.check()?;
         if decomposition.contributions.iter().all(|c| c.product != index) {
-            closed.extend(closed_bracket(index, product, setting));
+            closed.push(closed_bracket(index, product, setting, effort)?);
         }
     }
     Ok(Analysis { closed, ..analyse_paths(sum, &decomposition, split) })
 }
 
-fn closed_bracket(index: usize, product: &Product, setting: &Setting) -> Option<Closed> {
-    let brackets = product.brackets.iter().enumerate();
-    let mut broken = brackets.map(|(i, bracket)| (i, blocked(bracket, &setting.rules)));
-    let (bracket, broken) = broken.find(|(_, broken)| !broken.is_empty()).unwrap_or((0, Vec::new()));
-    Some(Closed { product: index, bracket, broken })
+fn closed_bracket(index: usize, product: &Product, setting: &Setting, effort: &Effort) -> Result<Closed, PathError> {
+    for (bracket, own) in product.brackets.iter().enumerate() {
+        let broken = blocked(own, &setting.rules, effort)?;
+        if !broken.is_empty() {
+            return Ok(Closed { product: index, bracket, broken });
+        }
+    }
+    Ok(Closed { product: index, bracket: 0, broken: Vec::new() })
 }
 
 fn analyse_paths(sum: &ChainSum, decomposition: &Decomposition, split: Option<&BTreeSet<Term>>) -> Analysis {
