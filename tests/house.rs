@@ -20,7 +20,7 @@ const ROOMS: [(&str, &[&str]); 10] = [
 ];
 
 /// What only the top floor may do: print, and look at clock, environment and files.
-const OUTSIDE: [&str; 14] = [
+const OUTSIDE: [&str; 13] = [
     "println!",
     "eprintln!",
     "print!(",
@@ -30,15 +30,14 @@ const OUTSIDE: [&str; 14] = [
     "std::io",
     "std::net",
     "std::process",
-    "std::time",
+    "Instant",
     "SystemTime",
-    "Instant::now",
     "temp_dir",
     "File::open",
 ];
 
 /// Lines a file of src/ may have, its unit tests not counted: one file is one idea.
-const LONGEST_FILE: usize = 700;
+const LONGEST_FILE: usize = 600;
 
 /// A file below src/: its room, its path from there, its text.
 struct Source {
@@ -174,7 +173,7 @@ fn no_text_names_a_machine() {
         .map(|word| word.concat());
     let unfinished = [["TO", "DO"], ["FIX", "ME"], ["XX", "X"]].map(|word| word.concat());
     let places =
-        ["src", "grammar", "sessions", "tests", ".ci", "README.md", "DEVELOPERS.md", "Cargo.toml", "clippy.toml"];
+        ["src", "grammar", "sessions", "tests", ".ci", "README.md", "DEVELOPERS.md", "Cargo.toml", ".clippy.toml"];
     let mut read = 0;
     for place in places.map(|place| root().join(place)) {
         for file in if place.is_dir() { files(&place) } else { vec![place] } {
@@ -212,7 +211,6 @@ fn the_top_level_is_the_one_agreed_on() {
         "DEVELOPERS.md",
         "LICENSE",
         "README.md",
-        "clippy.toml",
         "grammar",
         "sessions",
         "src",

@@ -49,7 +49,12 @@ pub fn run(batch: &Batch, path: &Path, as_json: bool) -> Status {
                     for note in &answer.notes {
                         let span = Span::new(0, session.entry(number).map_or(0, |entry| entry.text.len()));
                         let diagnostic = Diagnostic::warning(span, note.clone());
-                        batch.tell_reports(&mut told, &source, session, &[Report { entry_number: number, diagnostic }]);
+                        batch.tell_reports(
+                            &mut told,
+                            &source,
+                            session,
+                            &[Report { entry_number: number, diagnostic, unmet: false }],
+                        );
                     }
                 }
                 _ => {}

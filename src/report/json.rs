@@ -155,7 +155,7 @@ mod tests {
     #[test]
     fn a_failed_entry_carries_its_diagnostics() {
         let diagnostic = Diagnostic::new(Span::new(3, 4), "no state `g`").with_help("declare it");
-        let outcome = Outcome::Failed(vec![Report { entry_number: 2, diagnostic }]);
+        let outcome = Outcome::Failed(vec![Report { entry_number: 2, diagnostic, unmet: false }]);
         let line = entry(&view("E(g)", &outcome), &place);
         let wanted = "\"diagnostics\":[{\"severity\":\"error\",\"entry\":2,\"line\":5,\"column\":4,\"message\":\"no state `g`\",\
                       \"label\":\"\",\"help\":\"declare it\",\"notes\":[]}]}\n";

@@ -271,11 +271,8 @@ impl Evaluation<'_> {
             Ok(answer) => Ok(Done::Answered(answer)),
             Err(message) => {
                 let span = left.span.to(right.span);
-                let help = "correct the entry that is wrong, or what is expected of it".into();
-                Err(Wrong::from(Failure {
-                    place: Place { entry: self.entry, span },
-                    trouble: Trouble::Refused { message, help },
-                }))
+                let place = Place { entry: self.entry, span };
+                Err(Wrong::from(Failure { place, trouble: Trouble::Unmet(message) }))
             }
         }
     }

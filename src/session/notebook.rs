@@ -1,7 +1,7 @@
 //! The list of entries and what is done with it.
 
 use super::diagnose::report_of;
-use super::evaluate::{Done, Evaluation};
+use super::evaluate::{Done, Evaluation, Wrong};
 use super::files::DataFiles;
 use super::outcome::{Outcome, Report};
 use super::scope::{Effect, Scope};
@@ -9,6 +9,7 @@ use crate::lang::diagnostic::Diagnostic;
 use crate::lang::file::{EntryText, Item as TextItem, Line, RecordLine, SessionText, parse_session};
 use crate::lang::tree::{Entry, EntryKind, Name, Span};
 use crate::num::Effort;
+use crate::sums::Trouble;
 use std::collections::BTreeSet;
 use std::sync::Arc;
 
@@ -267,12 +268,14 @@ impl Session {
             Err(diagnostics) => {
                 let reports = diagnostics
                     .iter()
-                    .map(|diagnostic| Report { entry_number: number, diagnostic: diagnostic.clone() })
+                    .map(|diagnostic| Report { entry_number: number, diagnostic: diagnostic.clone(), unmet: false })
                     .collect();
                 (Outcome::Failed(reports), None)
             }
             Ok(tree) => match self.clash(tree, scope) {
-                Some(diagnostic) => (Outcome::Failed(vec![Report { entry_number: number, diagnostic }]), None),
+                Some(diagnostic) => {
+                    (Outcome::Failed(vec![Report { entry_number: number, diagnostic, unmet: false }]), None)
+                }
                 None => {
                     let evaluation = Evaluation {
                         scope,
@@ -309,12 +312,13 @@ impl Session {
         Some(super::diagnose::diagnostic_of_fault(name.span, &fault))
     }
 
-    fn failed(&self, number: usize, wrong: super::evaluate::Wrong) -> Outcome {
-        if let super::evaluate::Wrong::Evaluation(failure) = &wrong
+    fn failed(&self, number: usize, wrong: Wrong) -> Outcome {
+        if let Wrong::Evaluation(failure) = &wrong
             && failure.is_interrupted()
         {
             return Outcome::Stopped;
         }
+        let unmet = matches!(&wrong, Wrong::Evaluation(failure) if matches!(failure.trouble, Trouble::Unmet(_)));
         let (place, mut diagnostic) = report_of(&wrong);
         let at = self.number_of(place.entry);
         let (at, elsewhere) = if at == 0 || at == number { (number, false) } else { (at, true) };
@@ -324,7 +328,7 @@ impl Session {
         if at == number && place.entry != self.entries().nth(number - 1).map_or(0, |e| e.identity) {
             diagnostic.span = Span::default();
         }
-        Outcome::Failed(vec![Report { entry_number: at, diagnostic }])
+        Outcome::Failed(vec![Report { entry_number: at, diagnostic, unmet }])
     }
 
     /// Adds an entry at the end, or revises the one that binds the same name, and evaluates what depends on it.

@@ -21,6 +21,8 @@ pub enum Outcome {
 pub struct Report {
     pub entry_number: usize,
     pub diagnostic: Diagnostic,
+    /// Whether it says that an `expect` was evaluated and is not met.
+    pub unmet: bool,
 }
 
 /// A result as it is recorded and shown.

@@ -2,8 +2,11 @@
 
 use super::notebook::Session;
 use super::outcome::{Outcome, Report};
-use crate::num::decimal;
-use crate::sums::bits_for;
+use super::scope::Scope;
+use crate::lang::parser::parse_expression;
+use crate::num::{Effort, decimal};
+use crate::sums::{Environment, bits_for};
+use crate::theory::Resolver;
 use rug::{Float, Rational};
 
 /// What became of one entry.
@@ -53,7 +56,15 @@ impl Session {
             let Some(view) = session.entry(number) else { return };
             let (recomputed, reports, failed) = match view.outcome {
                 Some(Outcome::Result(answer)) => (answer.lines.clone(), Vec::new(), None),
-                Some(Outcome::Failed(reports)) => (Vec::new(), reports.clone(), Some(ReplayVerdict::Failed)),
+                Some(Outcome::Failed(reports)) => {
+                    // An expectation that is not met is a disagreement; it was evaluated.
+                    let unmet = !reports.is_empty() && reports.iter().all(|report| report.unmet);
+                    let verdict =
+                        if unmet { ReplayVerdict::Differs { digits_in_common: None } } else { ReplayVerdict::Failed };
+                    let told =
+                        reports.iter().filter(|report| report.unmet).map(|report| report.diagnostic.message.clone());
+                    (told.collect(), reports.clone(), Some(verdict))
+                }
                 Some(Outcome::Stopped) | None => (Vec::new(), Vec::new(), Some(ReplayVerdict::Stopped)),
                 Some(Outcome::Declared { .. }) => (Vec::new(), Vec::new(), None),
             };
@@ -105,11 +116,9 @@ fn compared(recorded: &[&str], recomputed: &[String]) -> ReplayVerdict {
 /// off by one.
 fn compared_line(old: &str, new: &str) -> Result<Option<u32>, Option<u32>> {
     let (old, new) = (normal(old), normal(new));
-    let (Some(a), Some(b)) = (old.strip_prefix("~ "), new.strip_prefix("~ ")) else {
-        return if old == new { Ok(None) } else { Err(None) };
-    };
-    let (Some(a), Some(b)) = (parts(a), parts(b)) else {
-        return if old == new { Ok(None) } else { Err(None) };
+    let both = (old.strip_prefix("~ ").and_then(parts), new.strip_prefix("~ ").and_then(parts));
+    let (Some(a), Some(b)) = both else {
+        return if old == new { Ok(None) } else { Err(digits_of_different_forms(&old, &new)) };
     };
     if a.len() != b.len() || a.iter().zip(&b).any(|(x, y)| x.unit != y.unit) {
         return Err(Some(0));
@@ -127,6 +136,24 @@ fn compared_line(old: &str, new: &str) -> Result<Option<u32>, Option<u32>> {
         held = held.min(x.digits.min(y.digits));
     }
     Ok(Some(held))
+}
+
+/// Digits two real values have in common when at least one of them is exact; `None` where a record is not one number.
+fn digits_of_different_forms(old: &str, new: &str) -> Option<u32> {
+    let (old, new) = (real_value(old)?, real_value(new)?);
+    Some(common_digits(&old, &Rational::from(&old - &new).abs()))
+}
+
+/// The number a record line states, to more digits than are compared.
+fn real_value(line: &str) -> Option<Rational> {
+    const BITS: u32 = 512;
+    let text = line.strip_prefix("= ").or_else(|| line.strip_prefix("~ "))?;
+    let expression = parse_expression(text).ok()?;
+    let scope = Scope::new();
+    let term = Resolver::new(&scope.names, text, 0).scalar(&expression).ok()?;
+    let value = scope.evaluator(&Effort::new()).scalar(&term, &Environment::default(), BITS).ok()?;
+    let ball = value.to_ball(BITS).ok().filter(|ball| ball.is_real())?;
+    ball.re.mid().to_rational()
 }
 
 /// The record with its blanks made single.
@@ -205,7 +232,9 @@ mod tests {
     #[test]
     fn exact_records_agree_to_the_letter() {
         assert_eq!(verdict("= 9/2", "= 9/2"), ReplayVerdict::Agrees { digits: None });
-        assert_eq!(verdict("= 9/2", "~ 4.5"), ReplayVerdict::Differs { digits_in_common: None });
+        assert_eq!(verdict("= 1/3", "~ 0.3334"), ReplayVerdict::Differs { digits_in_common: Some(3) });
+        assert_eq!(verdict("~ 3.14159", "= pi"), ReplayVerdict::Differs { digits_in_common: Some(6) });
+        assert_eq!(verdict("= 9/2", "= holds"), ReplayVerdict::Differs { digits_in_common: None });
         assert_eq!(
             verdict("~ 0 below 1e-40, not proved", "~ 0 below 1e-40, not proved"),
             ReplayVerdict::Agrees { digits: None }

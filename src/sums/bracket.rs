@@ -22,6 +22,16 @@ const MOST_KNOWN: usize = 10_000;
 /// Two successive differences with a ratio above this mean slow, algebraic convergence with the basis size.
 const SLOW_RATIO: f64 = 1.0 / 64.0;
 
+/// A bracket that is computed with numbers, and the state its kets start from.
+#[derive(Clone, Copy)]
+struct Numeric<'n> {
+    system: &'n Arc<dyn System>,
+    anchor: &'n State,
+    bracket: &'n Bracket,
+    environment: &'n Environment,
+    place: Place,
+}
+
 impl Evaluator<'_> {
     /// The value of a bracket, summed over its Cartesian indices.
     pub(super) fn bracket(
@@ -88,7 +98,7 @@ impl Evaluator<'_> {
             return Err(Failure::new(place, Obstacle::Inexact));
         };
         let anchor = self.state(&anchor, environment)?;
-        self.by_levels(&system, &anchor, bracket, environment, bits, place)
+        self.by_levels(&Numeric { system: &system, anchor: &anchor, bracket, environment, place }, bits)
     }
 
     fn walk(
@@ -114,29 +124,15 @@ impl Evaluator<'_> {
     }
 
     /// One numeric value: at one level, with the inexact numbers inside at their midpoints.
-    fn at_level(
-        &mut self,
-        system: &Arc<dyn System>,
-        anchor: &State,
-        level: Level,
-        bracket: &Bracket,
-        environment: &Environment,
-        place: Place,
-    ) -> Evaluated<Option<Number>> {
+    fn at_level(&mut self, numeric: &Numeric<'_>, level: Level) -> Evaluated<Option<Number>> {
+        let Numeric { system, anchor, bracket, environment, place } = *numeric;
         let backend = system.numeric(level, anchor, &self.effort).map_err(|obstacle| Failure::new(place, obstacle))?;
         self.walk(system, backend, Some(level), &anchor.label, bracket, environment)
     }
 
     /// Raises the level until two successive values agree to `bits` bits, or the ceiling of the basis is reached.
-    fn by_levels(
-        &mut self,
-        system: &Arc<dyn System>,
-        anchor: &State,
-        bracket: &Bracket,
-        environment: &Environment,
-        bits: u32,
-        place: Place,
-    ) -> Evaluated<Scalar> {
+    fn by_levels(&mut self, numeric: &Numeric<'_>, bits: u32) -> Evaluated<Scalar> {
+        let Numeric { system, place, .. } = *numeric;
         let range = system.basis_range();
         let (first, largest) = range.unwrap_or((0, 0));
         // A function more is worth about six bits well below threshold; a first level of this size is seldom wasted.
@@ -148,7 +144,7 @@ impl Evaluator<'_> {
         loop {
             self.effort.check().map_err(|stop| Failure::new(place, stop))?;
             self.imprecise_numbers = false;
-            let value = match self.at_level(system, anchor, level, bracket, environment, place) {
+            let value = match self.at_level(numeric, level) {
                 Ok(None) => return Ok(Scalar::zero()),
                 Ok(Some(Number::Exact(value))) => return Ok(Scalar::Exact(value)),
                 Ok(Some(Number::Approx(value))) => Some(value),
@@ -177,8 +173,8 @@ impl Evaluator<'_> {
                             self.limit =
                                 Some(format!("the basis of {largest} functions a block does not carry more digits"));
                         }
-                        let radius =
-                            radius + self.influence(system, anchor, level, bracket, environment, place, &value)?;
+                        // Two levels may agree to the last bit; that is no proof of exactness, least of all of a zero.
+                        let radius = radius.max(&(wanted >> 8u32)) + self.influence(numeric, level, &value)?;
                         return ball(value, radius).map(Scalar::Approx).map_err(|error| Failure::new(place, error));
                     }
                     previous_step = Some(step);
@@ -192,17 +188,7 @@ impl Evaluator<'_> {
     }
 
     /// How far the value moves when the inexact numbers inside the chain go to the edge of their radius.
-    #[allow(clippy::too_many_arguments)]
-    fn influence(
-        &mut self,
-        system: &Arc<dyn System>,
-        anchor: &State,
-        level: Level,
-        bracket: &Bracket,
-        environment: &Environment,
-        place: Place,
-        value: &Complex,
-    ) -> Evaluated<Float> {
+    fn influence(&mut self, numeric: &Numeric<'_>, level: Level, value: &Complex) -> Evaluated<Float> {
         let mut largest = Float::with_val(32, 0);
         if !self.imprecise_numbers || self.nudge.is_some() {
             return Ok(largest);
@@ -210,7 +196,7 @@ impl Evaluator<'_> {
         for nudge in [Nudge::Up, Nudge::Alternating] {
             self.nudge = Some(nudge);
             self.nudged_numbers = 0;
-            let moved = self.at_level(system, anchor, level, bracket, environment, place);
+            let moved = self.at_level(numeric, level);
             self.nudge = None;
             if let Some(Number::Approx(moved)) = moved? {
                 let distance = magnitude(&(Complex::with_val(level.bits, value) - moved));

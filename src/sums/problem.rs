@@ -73,6 +73,9 @@ pub enum Trouble {
     NoSignChange(Box<NoSignChange>),
     #[error("the sign changes at {variable} = {near} through a pole, not through zero")]
     Pole { variable: String, near: String },
+    /// What an `expect` wanted and what came out.
+    #[error("{0}")]
+    Unmet(String),
     #[error("not available yet: {0}")]
     NotYet(String),
 }
@@ -133,6 +136,7 @@ impl Trouble {
             }
             Trouble::NoSignChange(_) => "choose an interval at whose ends the expression has opposite signs".into(),
             Trouble::Pole { .. } => "choose an interval between two poles (resonances)".into(),
+            Trouble::Unmet(_) => "correct the entry that is wrong, or what is expected of it".into(),
             Trouble::NotWhole { .. } => "write whole numbers, as in `sum(n in 1 .. 20, …)`".into(),
             _ => return None,
         })

@@ -1,18 +1,12 @@
 //! Sums, products, quotients and powers of resolved expressions: what may stand next to what.
 
 use super::problem::{Fault, Kind, Problem};
-use super::resolve::Resolver;
+use super::resolve::{Resolved, Resolver};
 use super::terms::*;
 use crate::lang::tree::{Expr, ExprKind, Operation, Span};
 use crate::num::Surd;
 
-type Resolved<T> = Result<T, Problem>;
-
 impl Resolver<'_> {
-    fn refuse<T>(&self, span: Span, fault: Fault) -> Resolved<T> {
-        Err(Problem::new(self.place(span), fault))
-    }
-
     /// A chain of additions and subtractions, taken apart from the left without recursion.
     pub(super) fn sum(&mut self, expr: &Expr) -> Resolved<Meaning> {
         let mut operands = Vec::new();
@@ -43,7 +37,7 @@ impl Resolver<'_> {
             .map(Meaning::kind)
             .find(|kind| *kind != first && !(*kind == Kind::Number && first == Kind::Operator) || *kind == Kind::Bra)
         {
-            return self.refuse(span, Fault::CannotCombine { left: first, right: other, action: "added" });
+            return self.fault(span, Fault::CannotCombine { left: first, right: other, action: "added" });
         }
         Ok(match first {
             Kind::Number => {
@@ -61,7 +55,7 @@ impl Resolver<'_> {
                 let kets: Vec<KetTerm> = kets.collect();
                 let systems: Vec<&str> = kets.iter().filter_map(system_of).collect();
                 if let Some(other) = systems.iter().find(|s| **s != systems[0]) {
-                    return self.refuse(
+                    return self.fault(
                         span,
                         Fault::Other {
                             message: format!("kets of two systems, {} and {other}, are added", systems[0]),
@@ -211,7 +205,7 @@ impl Resolver<'_> {
                 Meaning::Operator(Term::new(OperatorNode::Dyad(ket, bra.bra), self.place(span), text))
             }
             (left, right) => {
-                return self.refuse(
+                return self.fault(
                     span,
                     Fault::CannotCombine { left: left.kind(), right: right.kind(), action: "multiplied in this order" },
                 );
@@ -240,7 +234,7 @@ impl Resolver<'_> {
             ExprKind::Primed(inner) => {
                 let meaning = self.resolve(inner)?;
                 let Meaning::Operator(operator) = meaning else {
-                    return self.refuse(span, Fault::MisplacedPrime);
+                    return self.fault(span, Fault::MisplacedPrime);
                 };
                 self.resolvent(&operator, true, power, span)
             }
@@ -273,7 +267,7 @@ impl Resolver<'_> {
             .ok()
             .and_then(|exponent| power.checked_mul(exponent))
             .filter(|power| *power <= OPERATOR_POWER_LIMIT)
-            .map_or_else(|| self.refuse(span, power_limit()), Ok)
+            .map_or_else(|| self.fault(span, power_limit()), Ok)
     }
 
     fn inverse_of_meaning(&mut self, denominator: &Expr, power: u32) -> Resolved<Meaning> {
@@ -298,7 +292,7 @@ impl Resolver<'_> {
                 _ => self.resolvent(&operator, false, power, span),
             },
             other => {
-                self.refuse(span, Fault::CannotCombine { left: Kind::Number, right: other.kind(), action: "divided" })
+                self.fault(span, Fault::CannotCombine { left: Kind::Number, right: other.kind(), action: "divided" })
             }
         }
     }
@@ -317,9 +311,9 @@ impl Resolver<'_> {
 
     fn linear_part(&mut self, operator: &OperatorTerm, primed: bool, span: Span) -> Resolved<LinearInH> {
         let Some((constant, slope)) = self.linear(operator) else {
-            return self.refuse(span, Fault::DenominatorNotLinear);
+            return self.fault(span, Fault::DenominatorNotLinear);
         };
-        let Some(slope) = slope else { return self.refuse(span, Fault::DivisionByOperator) };
+        let Some(slope) = slope else { return self.fault(span, Fault::DivisionByOperator) };
         let constant = constant.unwrap_or_else(|| self.number(0, span));
         let mut omitted = self.left_out();
         if primed {
@@ -332,7 +326,7 @@ impl Resolver<'_> {
                 }
             }
             let [state] = different.as_slice() else {
-                return self.refuse(span, Fault::PrimeWithoutEnergy { found: different.len() });
+                return self.fault(span, Fault::PrimeWithoutEnergy { found: different.len() });
             };
             omitted.push(OmittedTerm::LevelOf((*state).clone()));
         }
@@ -347,7 +341,7 @@ impl Resolver<'_> {
         span: Span,
     ) -> Resolved<Meaning> {
         if !matches!(function, ScalarFunction::Ln | ScalarFunction::Sqrt | ScalarFunction::Exp) {
-            return self.refuse(
+            return self.fault(
                 span,
                 Fault::Other {
                     message: "this function is not taken of operators".into(),
@@ -413,7 +407,7 @@ impl Resolver<'_> {
 
     pub(super) fn power(&mut self, base: &Expr, exponent: &Expr, span: Span) -> Resolved<Meaning> {
         if let ExprKind::Primed(_) = base.kind {
-            return self.refuse(span, Fault::MisplacedPrime);
+            return self.fault(span, Fault::MisplacedPrime);
         }
         match self.resolve(base)? {
             Meaning::Scalar(base) => {
@@ -422,7 +416,7 @@ impl Resolver<'_> {
             }
             Meaning::Operator(operator) => {
                 let Some(exponent) = whole_number(exponent) else {
-                    return self.refuse(span, Fault::OperatorPower);
+                    return self.fault(span, Fault::OperatorPower);
                 };
                 match &*operator.node {
                     OperatorNode::Atom(atom) => {
@@ -434,11 +428,11 @@ impl Resolver<'_> {
                         let power = u32::try_from(exponent).unwrap_or(OPERATOR_POWER_LIMIT);
                         Ok(Meaning::Operator(self.term(OperatorNode::Power(operator, power), span)))
                     }
-                    _ if exponent > i64::from(OPERATOR_POWER_LIMIT) => self.refuse(span, power_limit()),
-                    _ => self.refuse(span, Fault::OperatorPower),
+                    _ if exponent > i64::from(OPERATOR_POWER_LIMIT) => self.fault(span, power_limit()),
+                    _ => self.fault(span, Fault::OperatorPower),
                 }
             }
-            other => self.refuse(
+            other => self.fault(
                 span,
                 Fault::CannotCombine { left: other.kind(), right: Kind::Number, action: "raised to a power" },
             ),

@@ -3,7 +3,9 @@
 //! `theory` knows systems and operators by name only; whether an atom has an operator is asked where sums meet systems.
 
 pub mod algebra;
+mod calls;
 pub mod formula;
+mod indices;
 pub mod names;
 pub mod problem;
 pub mod resolve;

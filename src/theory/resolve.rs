@@ -1,22 +1,23 @@
 //! Resolves a tree into terms: what each name stands for, and whether each part is a number, an operator or a ket.
 
+use super::indices::{count_indices, count_indices_ket};
 use super::names::{Binding, Names};
 use super::problem::{Fault, Kind, Problem};
 use super::terms::*;
 use crate::lang::tree::{
-    Argument, DefinitionKind, Expr, ExprKind, Label, LabelPart, Name, Operation, Span, StateRef, StateRefKind,
+    DefinitionKind, Expr, ExprKind, Label, LabelPart, Name, Operation, Span, StateRef, StateRefKind,
 };
 use crate::num::{Surd, decimal};
 use std::sync::Arc;
 
-type Resolved<T> = Result<T, Problem>;
+pub(super) type Resolved<T> = Result<T, Problem>;
 
 /// Resolves the expressions of one entry.
 pub struct Resolver<'a> {
     pub(super) names: &'a Names,
     source: &'a str,
     entry: u64,
-    variables: Vec<String>,
+    pub(super) variables: Vec<String>,
     without: Vec<ManifoldTerm>,
 }
 
@@ -30,7 +31,7 @@ impl<'a> Resolver<'a> {
         Place { entry: self.entry, span }
     }
 
-    fn fault<T>(&self, span: Span, fault: Fault) -> Resolved<T> {
+    pub(super) fn fault<T>(&self, span: Span, fault: Fault) -> Resolved<T> {
         Err(Problem::new(self.place(span), fault))
     }
 
@@ -327,154 +328,6 @@ impl<'a> Resolver<'a> {
         })
     }
 
-    /// A function call: functions of numbers and of H, energies, defined names, operators with arguments.
-    fn call(&mut self, name: &Name, arguments: &[Argument], subscript: Option<&str>, span: Span) -> Resolved<Meaning> {
-        if let Some(Binding::Definition(definition)) = self.names.bound.get(&name.text) {
-            let definition = definition.clone();
-            let plain = self.positional(&name.text, arguments, span)?;
-            return self.call_definition(definition, &plain, span);
-        }
-        if let Some(function) = function_named(&name.text) {
-            let [argument] = self.positional(&name.text, arguments, span)?.try_into().or_else(|list: Vec<Expr>| {
-                self.fault(
-                    span,
-                    Fault::ArgumentCount {
-                        name: name.text.clone(),
-                        wanted: "one argument".into(),
-                        got: format!("{} are", list.len()),
-                    },
-                )
-            })?;
-            return match self.resolve(&argument)? {
-                Meaning::Scalar(inner) => Ok(Meaning::Scalar(self.term(ScalarNode::Function(function, inner), span))),
-                Meaning::Operator(inner) => self.function_of_h(function, &inner, span),
-                other => self.fault(argument.span, Fault::WrongKind { wanted: Kind::Number, got: other.kind() }),
-            };
-        }
-        match name.text.as_str() {
-            "E" => self.energy(arguments, span),
-            "zero" | "sum" => self.bound_variable(name, arguments, span),
-            symbol if WignerSymbol::named(symbol).is_some_and(|_| !self.names.later.contains_key(symbol)) => {
-                let plain = self.positional(symbol, arguments, span)?;
-                let Some(symbol) = WignerSymbol::named(symbol) else { return self.unknown(symbol, name.span) };
-                let (count, wanted) = symbol.arguments();
-                if plain.len() != count {
-                    return self.fault(
-                        span,
-                        Fault::ArgumentCount {
-                            name: name.text.clone(),
-                            wanted: wanted.into(),
-                            got: format!("{} are", plain.len()),
-                        },
-                    );
-                }
-                let terms = plain.iter().map(|a| self.scalar(a)).collect::<Resolved<Vec<_>>>()?;
-                Ok(Meaning::Scalar(self.term(ScalarNode::Wigner(symbol, terms), span)))
-            }
-            "delta" if self.names.operators.contains("delta") => {
-                let plain = self.positional(&name.text, arguments, span)?;
-                match plain.as_slice() {
-                    [Expr { kind: ExprKind::Name(of), .. }] => {
-                        Ok(self.atom(&format!("delta({of})"), subscript, Vec::new(), span))
-                    }
-                    _ => self.fault(
-                        span,
-                        Fault::ArgumentForm { name: "delta".into(), wanted: "a coordinate: `delta(r)`".into() },
-                    ),
-                }
-            }
-            other if self.names.later.contains_key(other) => self.unknown(other, span),
-            other if self.names.operators.contains(other) => {
-                let plain = self.positional(other, arguments, span)?;
-                let terms = plain.iter().map(|a| self.scalar(a)).collect::<Resolved<Vec<_>>>()?;
-                Ok(self.atom(other, subscript, terms, span))
-            }
-            other => {
-                if self.variables.iter().any(|v| v == other) {
-                    return self.fault(
-                        name.span,
-                        Fault::Other {
-                            message: format!("`{other}` is a number here, and is written like a function"),
-                            help: format!("put a blank or `*` between: `{other} (…)`"),
-                        },
-                    );
-                }
-                self.unknown(other, name.span)
-            }
-        }
-    }
-
-    /// The arguments as plain expressions; other forms are refused.
-    fn positional(&self, name: &str, arguments: &[Argument], span: Span) -> Resolved<Vec<Expr>> {
-        arguments
-            .iter()
-            .map(|argument| match argument {
-                Argument::Positional(expr) => Ok(expr.clone()),
-                _ => self.fault(
-                    span,
-                    Fault::ArgumentForm { name: name.into(), wanted: "plain expressions between commas".into() },
-                ),
-            })
-            .collect()
-    }
-
-    fn energy(&mut self, arguments: &[Argument], span: Span) -> Resolved<Meaning> {
-        let state = match arguments {
-            [Argument::Positional(Expr { kind: ExprKind::Name(name), span: name_span })] => {
-                match self.names.bound.get(name) {
-                    Some(Binding::State(state)) => state.clone(),
-                    Some(other) => {
-                        return self.fault(
-                            *name_span,
-                            Fault::WrongBinding {
-                                name: name.clone(),
-                                got: other.describe(),
-                                wanted: "an eigenstate (`state g = h[1s]`)".into(),
-                            },
-                        );
-                    }
-                    None => return self.unknown(name, *name_span),
-                }
-            }
-            [Argument::Positional(Expr { kind: ExprKind::Labelled { system, label }, .. })] => {
-                self.state(system, label)?
-            }
-            _ => {
-                return self.fault(
-                    span,
-                    Fault::ArgumentForm { name: "E".into(), wanted: "one state: `E(g)` or `E(h[1s])`".into() },
-                );
-            }
-        };
-        Ok(Meaning::Scalar(self.term(ScalarNode::Energy(state), span)))
-    }
-
-    /// `zero(w in a .. b, f)` and `sum(n in a .. b, f)`.
-    fn bound_variable(&mut self, name: &Name, arguments: &[Argument], span: Span) -> Resolved<Meaning> {
-        let [Argument::Range { variable, from, to }, Argument::Positional(body)] = arguments else {
-            let example =
-                if name.text == "zero" { "zero(w in 0.40 .. 0.44, pol(w))" } else { "sum(n in 1 .. 20, f(n))" };
-            return self.fault(
-                span,
-                Fault::ArgumentForm {
-                    name: name.text.clone(),
-                    wanted: format!("a variable with its range, then an expression: `{example}`"),
-                },
-            );
-        };
-        let (from, to) = (self.scalar(from)?, self.scalar(to)?);
-        self.variables.push(variable.text.clone());
-        let body = self.scalar(body);
-        self.variables.pop();
-        let (variable, body) = (variable.text.clone(), body?);
-        let node = if name.text == "zero" {
-            ScalarNode::Root { variable, from, to, body }
-        } else {
-            ScalarNode::Series { variable, from, to, body }
-        };
-        Ok(Meaning::Scalar(self.term(node, span)))
-    }
-
     /// A labelled state of a system bound above.
     pub fn state(&mut self, system: &Name, label: &Label) -> Resolved<StateTerm> {
         self.known_system(system)?;
@@ -592,66 +445,6 @@ impl Meaning {
             Meaning::Operator(_) => Kind::Operator,
             Meaning::Ket(_) => Kind::Ket,
             Meaning::Bra(_) => Kind::Bra,
-        }
-    }
-}
-
-/// Cartesian summation indices are the components i, j and k.
-pub fn is_index(component: &str) -> bool {
-    matches!(component, "i" | "j" | "k")
-}
-
-type Counts = std::collections::BTreeMap<String, usize>;
-
-fn count_indices(operator: &OperatorTerm, count: &mut Counts) {
-    match &*operator.node {
-        OperatorNode::Atom(AtomTerm { component: Some(component), power, .. }) if is_index(component) => {
-            *count.entry(component.clone()).or_default() += power.unsigned_abs() as usize;
-        }
-        OperatorNode::Atom(_) | OperatorNode::Scalar(_) | OperatorNode::Hamiltonian => {}
-        OperatorNode::Resolvent(_) | OperatorNode::Function(..) => {}
-        OperatorNode::Sum(terms) => {
-            // Every term of a sum must carry the same indices; the largest count shows the first that does not.
-            let mut joined = Counts::new();
-            for term in terms {
-                let mut single = Counts::new();
-                count_indices(term, &mut single);
-                for (index, n) in single {
-                    let entry = joined.entry(index).or_default();
-                    *entry = (*entry).max(n);
-                }
-            }
-            for (index, n) in joined {
-                *count.entry(index).or_default() += n;
-            }
-        }
-        OperatorNode::Product(factors) => factors.iter().for_each(|factor| count_indices(factor, count)),
-        OperatorNode::Power(inner, power) => (0..*power).for_each(|_| count_indices(inner, count)),
-        OperatorNode::Dyad(ket, bra) => {
-            count_indices_ket(ket, count);
-            count_indices_ket(bra, count);
-        }
-        OperatorNode::Call(call) => {
-            if let Meaning::Operator(body) = &call.definition.body {
-                count_indices(body, count);
-            }
-        }
-    }
-}
-
-fn count_indices_ket(ket: &KetTerm, count: &mut Counts) {
-    match &*ket.node {
-        KetNode::State(_) => {}
-        KetNode::Applied(operator, inner) => {
-            count_indices(operator, count);
-            count_indices_ket(inner, count);
-        }
-        KetNode::Sum(terms) => terms.iter().for_each(|term| count_indices_ket(term, count)),
-        KetNode::Scaled(_, inner) => count_indices_ket(inner, count),
-        KetNode::Call(call) => {
-            if let Meaning::Ket(body) = &call.definition.body {
-                count_indices_ket(body, count);
-            }
         }
     }
 }

@@ -3,7 +3,6 @@
 
 mod cluster;
 mod full;
-mod machine;
 mod preview;
 mod tridiagonalise;
 
