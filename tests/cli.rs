@@ -163,7 +163,7 @@ fn replay_tells_differences_in_full() {
        entry       1/2 + 1/3
        recorded    = 2/3
        recomputed  = 5/6
-       in common   not counted: exact results are equal or not
+       in common   no digits
     3  agrees to 4 digits      ~ 2.718
     4  differs
        entry       exp(1)
@@ -187,6 +187,9 @@ fn replay_goes_on_with_the_next_file_and_the_gravest_status_counts() {
     assert_eq!(status(&["bad.ketwork", "good.ketwork"]), 1);
     assert_eq!(status(&["broken.ketwork", "good.ketwork"]), 2);
     assert_eq!(status(&["missing.ketwork", "bad.ketwork"]), 2);
+    // An expectation that is not met was evaluated: it disagrees.
+    fs::write(folder.path().join("unmet.ketwork"), "ketwork session 1\nexpect 2 = 3\n  = holds\n").unwrap();
+    assert_eq!(status(&["unmet.ketwork"]), 1);
     let both = ran(folder.path(), &["replay", "missing.ketwork", "good.ketwork"]);
     assert_eq!(both.out, "    1  agrees exactly          = 2\ngood.ketwork: 1 agrees\n");
     assert_eq!(both.err, "error: there is no file missing.ketwork\n");
