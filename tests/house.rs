@@ -217,7 +217,7 @@ fn the_top_level_is_the_one_agreed_on() {
         "target",
         "tests",
     ];
-    let hidden = [".ci", ".config", ".git", ".gitignore", ".rustfmt.toml"];
+    let hidden = [".ci", ".clippy.toml", ".config", ".git", ".gitignore", ".rustfmt.toml"];
     for entry in fs::read_dir(root()).expect("the checkout") {
         let name = entry.expect("an entry").file_name().to_string_lossy().into_owned();
         assert!(agreed.contains(&name.as_str()) || hidden.contains(&name.as_str()), "{name} stands at the top level");
