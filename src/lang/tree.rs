@@ -9,7 +9,7 @@
 use serde::Serialize;
 
 /// Byte range `start..end` in the source text.
-#[derive(Clone, Copy, PartialEq, Eq, Debug, Default, Hash, Serialize)]
+#[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Debug, Default, Hash, Serialize)]
 pub struct Span {
     pub start: usize,
     pub end: usize,

@@ -31,7 +31,9 @@ pub struct Evaluator<'s> {
     /// Exact partial sums longer than this go on as balls; `digits exact` lifts it.
     pub(super) longest_sum: u32,
     /// One measured source is moved by this much; used for gradients.
-    pub(super) shift: Option<(Place, Rational)>,
+    pub(super) shift: Option<(Source, Rational)>,
+    /// The system a moved datum belongs to, with the datum moved.
+    moved_system: Option<(String, Arc<dyn System>)>,
     /// Inexact numbers inside chains are moved to the edge of their radius, all up or alternating; used to see what they do to the value.
     pub(super) nudge: Option<Nudge>,
     pub(super) nudged_numbers: usize,
@@ -64,6 +66,7 @@ impl<'s> Evaluator<'s> {
             exact_bits: 128,
             longest_sum: LONGEST_EXACT_SUM,
             shift: None,
+            moved_system: None,
             nudge: None,
             nudged_numbers: 0,
             imprecise_numbers: false,
@@ -120,12 +123,36 @@ impl<'s> Evaluator<'s> {
     }
 
     pub(super) fn system(&self, name: &str, place: Place) -> Evaluated<Arc<dyn System>> {
+        if let Some((moved, system)) = &self.moved_system
+            && moved == name
+        {
+            return Ok(system.clone());
+        }
         self.systems.get(name).cloned().ok_or_else(|| {
             Failure::new(
                 place,
                 Trouble::Refused { message: format!("the system `{name}` is not there"), help: String::new() },
             )
         })
+    }
+
+    /// Moves one source by `delta`, and forgets what was computed before.
+    pub(super) fn move_source(&mut self, source: &Source, delta: Rational, place: Place) -> Evaluated<()> {
+        self.forget();
+        if let Source::Datum { system: name, index } = source {
+            let system = self.system(name, place)?;
+            let moved = system.moved(*index, &delta).map_err(|error| Failure::new(place, error))?;
+            self.moved_system = Some((name.clone(), moved));
+        }
+        self.shift = Some((source.clone(), delta));
+        Ok(())
+    }
+
+    /// Puts the moved source back.
+    pub(super) fn put_back(&mut self) {
+        self.forget();
+        self.shift = None;
+        self.moved_system = None;
     }
 
     /// The value of a term, exact or as a ball from work at `bits` bits.
@@ -154,9 +181,9 @@ impl<'s> Evaluator<'s> {
         let at = |error: NumberError| Failure::new(place, error);
         match &*term.node {
             ScalarNode::Exact(value) => Ok(Scalar::Exact(value.clone())),
-            ScalarNode::Measured { value, .. } => {
+            ScalarNode::Measured { source, value, .. } => {
                 let moved = match &self.shift {
-                    Some((source, delta)) if *source == place => Rational::from(value + delta),
+                    Some((moved, delta)) if moved == source => Rational::from(value + delta),
                     _ => value.clone(),
                 };
                 Ok(Scalar::Exact(Surd::from(moved)))

@@ -29,7 +29,7 @@ pub enum Wanted {
 pub struct Value {
     pub scalar: Scalar,
     /// Contributions of the measured sources to the value, one standard uncertainty each, signed.
-    pub sources: Vec<(Place, Float)>,
+    pub sources: Vec<(Source, Float)>,
     /// Selection rules behind an exact zero.
     pub rules: Vec<String>,
     /// First-order couplings inside a degenerate level that were left out.
@@ -67,12 +67,10 @@ impl Evaluator<'_> {
         let couplings = self.take_couplings();
         let limit = self.limit.clone();
         let mut sources = Vec::new();
-        for (place, sigma) in measured_sources(term) {
-            if sigma != 0 {
-                let gradient = self.gradient(term, place, &sigma)?;
-                if !gradient.is_zero() {
-                    sources.push((place, gradient));
-                }
+        for (source, sigma) in self.uncertain_sources(term)? {
+            let gradient = self.gradient(term, &source, &sigma)?;
+            if !gradient.is_zero() {
+                sources.push((source, gradient));
             }
         }
         if !sources.is_empty() && !scalar.is_real() {
@@ -82,6 +80,20 @@ impl Evaluator<'_> {
             return Err(Failure::new(term.place, Trouble::NotExact));
         }
         Ok(Value { scalar, sources, rules, couplings, limit })
+    }
+
+    /// Everything with an uncertainty that a term rests on, with its standard uncertainty, each once.
+    fn uncertain_sources(&mut self, term: &ScalarTerm) -> Evaluated<Vec<(Source, Rational)>> {
+        let mut found = measured_sources(term);
+        for name in systems_of(term) {
+            let data = self.system(&name, term.place)?.data();
+            found.extend(data.into_iter().enumerate().map(|(index, sigma)| {
+                let source = Source::Datum { system: name.clone(), index };
+                (source, sigma)
+            }));
+        }
+        found.retain(|(_, sigma)| *sigma != 0);
+        Ok(found)
     }
 
     /// Raises the working precision until `digits` digits are certain.
@@ -110,18 +122,16 @@ impl Evaluator<'_> {
     }
 
     /// The change of a real value when a source moves by one standard uncertainty, to first order.
-    fn gradient(&mut self, term: &ScalarTerm, source: Place, sigma: &Rational) -> Evaluated<Float> {
+    fn gradient(&mut self, term: &ScalarTerm, source: &Source, sigma: &Rational) -> Evaluated<Float> {
         let shift = Rational::from(sigma >> SHIFT_BITS);
         let mut ends = Vec::with_capacity(2);
         for delta in [shift.clone(), Rational::from(-&shift)] {
-            self.forget();
-            self.shift = Some((source, delta));
+            self.move_source(source, delta, term.place)?;
             // The difference of the two ends is smaller than they are by the shift.
             let value = self.certain_to(term, GRADIENT_DIGITS + SHIFT_BITS / 2 + 10);
-            self.shift = None;
+            self.put_back();
             ends.push(value?);
         }
-        self.forget();
         let difference = ends[0].sub(&ends[1], 256).map_err(|error| Failure::new(term.place, error))?;
         let ball = difference.to_ball(256).map_err(|error| Failure::new(term.place, error))?;
         if !ball.is_real() {
@@ -144,14 +154,30 @@ pub fn bits_for(digits: u32) -> u32 {
     (f64::from(digits) * std::f64::consts::LOG2_10).ceil() as u32
 }
 
-/// The measured numbers a term rests on, each once.
-pub fn measured_sources(term: &ScalarTerm) -> Vec<(Place, Rational)> {
-    let mut found = Vec::new();
+/// The numbers with an uncertainty that are written in a term or stand for constants in it, each once.
+pub fn measured_sources(term: &ScalarTerm) -> Vec<(Source, Rational)> {
+    let mut found: Vec<(Source, Rational)> = Vec::new();
     crate::theory::visit::scalars(term, &mut |inner| {
-        if let ScalarNode::Measured { sigma, .. } = &*inner.node
-            && !found.iter().any(|(place, _)| *place == inner.place)
+        if let ScalarNode::Measured { source, sigma, .. } = &*inner.node
+            && !found.iter().any(|(known, _)| known == source)
         {
-            found.push((inner.place, sigma.clone()));
+            found.push((source.clone(), sigma.clone()));
+        }
+    });
+    found
+}
+
+/// The systems whose states and energies a term rests on, each once.
+fn systems_of(term: &ScalarTerm) -> Vec<String> {
+    let mut found: Vec<String> = Vec::new();
+    crate::theory::visit::scalars(term, &mut |inner| {
+        let system = match &*inner.node {
+            ScalarNode::Energy(state) => &state.system,
+            ScalarNode::Bracket(bracket) => &bracket.system,
+            _ => return,
+        };
+        if !found.contains(system) {
+            found.push(system.clone());
         }
     });
     found

@@ -7,11 +7,13 @@
 pub mod hydrogenic;
 pub mod matrix;
 mod number;
+mod symmetry;
 
 use crate::num::{Effort, Interrupted, Surd};
 use rug::{Complex, Rational};
 use std::any::Any;
 use std::sync::Arc;
+pub use symmetry::Symmetry;
 
 /// A symmetry block with its magnetic component: what a ket is split into.
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Debug)]
@@ -28,6 +30,10 @@ pub enum Block {
     Whole,
     /// One electron without spin, orbital angular momentum l.
     Orbital { l: u32 },
+    /// One electron with spin, l and s = 1/2 coupled to j.
+    Coupled { l: u32, twice_j: u32 },
+    /// Levels of which only J and the parity are known.
+    Level { twice_j: u32, odd: bool },
 }
 
 /// A label as the session gives it: `2p` with options such as m = 1; whole number holes are already filled in.
@@ -224,6 +230,21 @@ pub trait System: Send + Sync {
 
     /// Bits below which the data of the system cannot be told apart; numeric work starts above.
     fn data_bits(&self) -> u32;
+
+    /// What the angular algebra knows of the system; `None` for a space without symmetry.
+    fn symmetry(&self) -> Option<&dyn Symmetry> {
+        None
+    }
+
+    /// The standard uncertainties of the numbers the system was made of, in a fixed order; zero for those without.
+    fn data(&self) -> Vec<Rational> {
+        Vec::new()
+    }
+
+    /// The system with one of its data moved.
+    fn moved(&self, _datum: usize, _by: &Rational) -> Result<Arc<dyn System>, SystemError> {
+        Err(SystemError::Refused { message: "the system has no data of its own".into(), help: String::new() })
+    }
 }
 
 /// Kets, operators and resolvents of a system at one accuracy. Every ket passed in must come from the same backend.

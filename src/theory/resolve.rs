@@ -128,7 +128,8 @@ impl<'a> Resolver<'a> {
             ExprKind::Measured { value, uncertainty } => {
                 match (decimal::parse_decimal(value), decimal::parse_decimal(uncertainty)) {
                     (Ok(value), Ok(sigma)) => {
-                        Ok(Meaning::Scalar(self.term(ScalarNode::Measured { value, sigma }, expr.span)))
+                        let source = Source::Written(self.place(expr.span));
+                        Ok(Meaning::Scalar(self.term(ScalarNode::Measured { source, value, sigma }, expr.span)))
                     }
                     (Err(error), _) | (_, Err(error)) => {
                         self.fault(expr.span, Fault::Other { message: error.to_string(), help: String::new() })

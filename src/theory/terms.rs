@@ -10,7 +10,7 @@ use rug::Rational;
 use std::sync::Arc;
 
 /// Where a term stands: the entry that holds it, and the span inside that entry's text.
-#[derive(Clone, Copy, PartialEq, Eq, Debug, Default, Hash)]
+#[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Debug, Default, Hash)]
 pub struct Place {
     pub entry: u64,
     pub span: Span,
@@ -34,11 +34,23 @@ impl<N> Term<N> {
     }
 }
 
+/// Where an uncertainty comes from. The same source counts once, however often it enters a value; different sources are independent.
+#[derive(Clone, PartialEq, Eq, PartialOrd, Ord, Hash, Debug)]
+pub enum Source {
+    /// A number with an uncertainty, by the place where it is written.
+    Written(Place),
+    /// A recommended constant, by its name.
+    Constant(&'static str),
+    /// A number of a table of levels: the system's name in the session, and which of [`crate::systems::System::data`].
+    Datum { system: String, index: usize },
+}
+
 #[derive(Clone, Debug)]
 pub enum ScalarNode {
     Exact(Surd),
-    /// A value with a standard uncertainty; the place is the source's identity: the same source counts once.
+    /// A value with a standard uncertainty.
     Measured {
+        source: Source,
         value: Rational,
         sigma: Rational,
     },

@@ -30,8 +30,8 @@ impl ExactBackend {
 /// The orbital angular momentum of a sector.
 pub(super) fn orbital(sector: Sector) -> Result<u32, Obstacle> {
     match sector.block {
-        Block::Orbital { l } => Ok(l),
-        Block::Whole => Err(Obstacle::Refused {
+        Block::Orbital { l } | Block::Coupled { l, .. } => Ok(l),
+        Block::Whole | Block::Level { .. } => Err(Obstacle::Refused {
             message: "a hydrogen-like atom has blocks with an orbital angular momentum only".into(),
             help: "take states of this atom".into(),
         }),
