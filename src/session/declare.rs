@@ -9,6 +9,7 @@ use crate::sums::Environment;
 use crate::systems::System;
 use crate::systems::hydrogenic::Hydrogenic;
 use crate::systems::matrix::{ExactMatrix, MatrixSystem};
+use crate::systems::symbolic::Symbolic;
 use crate::theory::{Fault, Problem, Resolver, terms::Place};
 use rug::Rational;
 use std::sync::Arc;
@@ -45,6 +46,7 @@ impl Declaration<'_> {
                 let (system, operators) = self.matrix(kind, arguments)?;
                 (Arc::new(system), operators)
             }
+            "symbolic" => (Arc::new(self.symbolic(kind, arguments)?), Vec::new()),
             other => {
                 let fault = match self.scope.names.later.get(other) {
                     Some(what) => Fault::NotYet { what: what.clone() },
@@ -89,6 +91,26 @@ impl Declaration<'_> {
             }
         }
         Hydrogenic::new(charge, mass).or_else(|error| self.refuse(kind.span, error.to_string(), error.help()))
+    }
+
+    /// `symbolic(electrons=2)`
+    fn symbolic(&self, kind: &Name, arguments: &[Argument]) -> Result<Symbolic, Wrong> {
+        let form = "write `symbolic(electrons=1)`, `symbolic(electrons=2)`, or `symbolic(electrons=n)` for any number";
+        let [Argument::Named { name, value }] = arguments else {
+            return self.refuse(kind.span, "`symbolic` takes the number of electrons", form);
+        };
+        if name.text != "electrons" {
+            return self.refuse(name.span, format!("`{}` is not an argument of `symbolic`", name.text), form);
+        }
+        if matches!(&value.kind, ExprKind::Name(any) if any == "n") {
+            return Symbolic::new(None).or_else(|error| self.refuse(kind.span, error.to_string(), error.help()));
+        }
+        let number = self.exact(value)?;
+        let count = number.as_rational().filter(|q| q.is_integer()).and_then(|q| q.numer().to_u32());
+        let Some(count) = count else {
+            return self.refuse(value.span, format!("{number} is not a number of electrons"), form);
+        };
+        Symbolic::new(Some(count)).or_else(|error| self.refuse(value.span, error.to_string(), error.help()))
     }
 
     fn positive(&self, name: &Name, value: &Expr) -> Result<Rational, Wrong> {

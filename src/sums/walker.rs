@@ -368,7 +368,11 @@ impl Walker<'_, '_> {
                 self.scaled(&left, &amplitude, place)
             }
             // Flattening has taken these apart.
-            OperatorNode::Scalar(_) | OperatorNode::Product(_) | OperatorNode::Power(..) | OperatorNode::Call(_) => {
+            OperatorNode::Scalar(_)
+            | OperatorNode::Product(_)
+            | OperatorNode::Power(..)
+            | OperatorNode::Tensor(_)
+            | OperatorNode::Call(_) => {
                 let flat = self.flatten(&factor.operator, &factor.environment)?;
                 let mut image = ket.clone();
                 for inner in flat.factors.iter().rev() {
@@ -455,7 +459,11 @@ impl Walker<'_, '_> {
                     }
                 }
             }
-            OperatorNode::Scalar(_) | OperatorNode::Product(_) | OperatorNode::Power(..) | OperatorNode::Call(_) => {
+            OperatorNode::Scalar(_)
+            | OperatorNode::Product(_)
+            | OperatorNode::Power(..)
+            | OperatorNode::Tensor(_)
+            | OperatorNode::Call(_) => {
                 let flat = self.flatten(&factor.operator, &factor.environment)?;
                 let mut image = ket.clone();
                 for inner in &flat.factors {

@@ -7,13 +7,14 @@
 pub mod hydrogenic;
 pub mod matrix;
 mod number;
+pub mod symbolic;
 mod symmetry;
 
 use crate::num::{Effort, Interrupted, Surd};
 use rug::{Complex, Rational};
 use std::any::Any;
 use std::sync::Arc;
-pub use symmetry::Symmetry;
+pub use symmetry::{LevelShift, Symmetry};
 
 /// A symmetry block with its magnetic component: what a ket is split into.
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Debug)]
@@ -230,6 +231,11 @@ pub trait System: Send + Sync {
 
     /// Bits below which the data of the system cannot be told apart; numeric work starts above.
     fn data_bits(&self) -> u32;
+
+    /// The states of a manifold that have a part in a sector.
+    fn members(&self, _manifold: &Manifold, _sector: Sector) -> Vec<State> {
+        Vec::new()
+    }
 
     /// What the angular algebra knows of the system; `None` for a space without symmetry.
     fn symmetry(&self) -> Option<&dyn Symmetry> {

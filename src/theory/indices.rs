@@ -14,7 +14,10 @@ pub(super) fn count_indices(operator: &OperatorTerm, count: &mut Counts) {
         OperatorNode::Atom(AtomTerm { component: Some(component), power, .. }) if is_index(component) => {
             *count.entry(component.clone()).or_default() += power.unsigned_abs() as usize;
         }
-        OperatorNode::Atom(_) | OperatorNode::Scalar(_) | OperatorNode::Hamiltonian => {}
+        OperatorNode::Tensor(TensorTerm { component: Some(component), .. }) if is_index(component) => {
+            *count.entry(component.clone()).or_default() += 1;
+        }
+        OperatorNode::Tensor(_) | OperatorNode::Atom(_) | OperatorNode::Scalar(_) | OperatorNode::Hamiltonian => {}
         OperatorNode::Resolvent(_) | OperatorNode::Function(..) => {}
         OperatorNode::Sum(terms) => {
             // Every term of a sum must carry the same indices; the largest count shows the first that does not.

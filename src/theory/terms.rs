@@ -3,6 +3,8 @@
 //! Terms know systems only by name. Every term carries the place it was written at and the text it was written as; the text, with the values of
 //! the variables in scope, identifies the term while names keep their meaning, which they do during one evaluation.
 
+use crate::angular::polarization::Polarization;
+use crate::angular::tensor::Tensor;
 use crate::lang::tree::{DefinitionKind, Expr, Span};
 pub use crate::num::Function as ScalarFunction;
 use crate::num::Surd;
@@ -194,7 +196,27 @@ pub enum OperatorNode {
     Resolvent(LinearInH),
     /// f(constant + slope H), the omitted states left out.
     Function(ScalarFunction, LinearInH),
+    /// An operator of which only the symmetry is given.
+    Tensor(TensorTerm),
     Call(Call),
+}
+
+/// An operator known by its ranks alone.
+#[derive(Clone, PartialEq, Eq, Debug)]
+pub struct TensorTerm {
+    pub tensor: Tensor,
+    pub component: Option<String>,
+    pub along: Option<Direction>,
+}
+
+/// The direction a vector operator is taken along.
+#[derive(Clone, PartialEq, Eq, Debug)]
+pub enum Direction {
+    Fixed(Polarization),
+    /// The polarization of the light, left open.
+    Light,
+    /// Its complex conjugate.
+    LightConjugate,
 }
 
 /// An operator as written, its arguments not yet numbers.
@@ -202,6 +224,8 @@ pub enum OperatorNode {
 pub struct AtomTerm {
     pub name: String,
     pub component: Option<String>,
+    /// Stands in place of a component.
+    pub along: Option<Direction>,
     pub arguments: Vec<ScalarTerm>,
     pub power: i64,
 }

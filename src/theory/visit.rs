@@ -59,7 +59,7 @@ impl Walk<'_> {
         match &*term.node {
             OperatorNode::Scalar(scalar) => self.scalar(scalar),
             OperatorNode::Atom(atom) => atom.arguments.iter().for_each(|argument| self.scalar(argument)),
-            OperatorNode::Hamiltonian => {}
+            OperatorNode::Hamiltonian | OperatorNode::Tensor(_) => {}
             OperatorNode::Sum(list) | OperatorNode::Product(list) => list.iter().for_each(|inner| self.operator(inner)),
             OperatorNode::Power(inner, _) => self.operator(inner),
             OperatorNode::Dyad(ket, bra) => {
