@@ -3,16 +3,22 @@
 use super::evaluate::Wrong;
 use super::files::DataFiles;
 use super::scope::{Effect, Scope};
-use crate::lang::tree::{Argument, Expr, ExprKind, Name};
-use crate::num::{Effort, Surd};
-use crate::sums::Environment;
-use crate::systems::System;
+use crate::lang::tree::{Argument, Expr, ExprKind, LabelPart, Name};
+use crate::num::{Effort, Scalar, Surd};
+use crate::sums::{Environment, Wanted};
 use crate::systems::hydrogenic::Hydrogenic;
 use crate::systems::matrix::{ExactMatrix, MatrixSystem};
+use crate::systems::shifted::Shifted;
 use crate::systems::symbolic::Symbolic;
-use crate::theory::{Fault, Problem, Resolver, terms::Place};
-use rug::Rational;
+use crate::systems::{StateLabel, System};
+use crate::theory::terms::{Place, Source};
+use crate::theory::{Fault, Problem, Resolver};
+use rug::{Float, Rational};
+use std::borrow::Cow;
 use std::sync::Arc;
+
+/// Digits to which shifts that are not exact are taken.
+const SHIFT_DIGITS: u32 = 40;
 
 /// Everything a declaration may look at.
 pub(super) struct Declaration<'d> {
@@ -47,6 +53,7 @@ impl Declaration<'_> {
                 (Arc::new(system), operators)
             }
             "symbolic" => (Arc::new(self.symbolic(kind, arguments)?), Vec::new()),
+            "shifted" => (Arc::new(self.shifted(kind, arguments)?), Vec::new()),
             other => {
                 let fault = match self.scope.names.later.get(other) {
                     Some(what) => Fault::NotYet { what: what.clone() },
@@ -111,6 +118,60 @@ impl Declaration<'_> {
             return self.refuse(value.span, format!("{number} is not a number of electrons"), form);
         };
         Symbolic::new(Some(count)).or_else(|error| self.refuse(value.span, error.to_string(), error.help()))
+    }
+
+    /// `shifted(he, 2^3P_0: 31.9 GHz, …)`
+    fn shifted(&self, kind: &Name, arguments: &[Argument]) -> Result<Shifted, Wrong> {
+        let form = "write the system, then levels with their shifts: `shifted(he, 2^3P_0: 31.9 GHz, 2^3P_1: 2.3 GHz)`";
+        let Some((Argument::Positional(Expr { kind: ExprKind::Name(name), span }), levels)) = arguments.split_first()
+        else {
+            return self.refuse(kind.span, "`shifted` takes a system and levels with their shifts", form);
+        };
+        let Some(base) = self.scope.systems.get(name) else {
+            return self.refuse(*span, format!("`{name}` is not a system declared above"), form);
+        };
+        if levels.is_empty() {
+            return self.refuse(kind.span, "no level is moved", form);
+        }
+        let mut moved = Vec::with_capacity(levels.len());
+        for argument in levels {
+            let Argument::Level { label, value } = argument else {
+                return self.refuse(kind.span, "every level stands with its shift", form);
+            };
+            let text: String = label
+                .parts
+                .iter()
+                .map(|part| match part {
+                    LabelPart::Text(text) => text.clone(),
+                    LabelPart::Computed(_) => "{…}".into(),
+                })
+                .collect();
+            let (by, sigma) = self.real(value)?;
+            let label = StateLabel { text, options: Vec::new() };
+            // each label is looked at alone first, so that an error stands at its place
+            base.manifold(&label, self.effort)
+                .or_else(|error| self.refuse(value.span, error.to_string(), error.help()))?;
+            moved.push((label, by, sigma));
+        }
+        Shifted::new(base.clone(), moved, self.effort)
+            .or_else(|error| self.refuse(kind.span, error.to_string(), error.help()))
+    }
+
+    /// A real number with the standard uncertainty that is written in it.
+    fn real(&self, expr: &Expr) -> Result<(Rational, Rational), Wrong> {
+        let term = Resolver::new(&self.scope.names, self.source, self.entry).scalar(expr)?;
+        let value = self.scope.evaluator(self.effort).value(&term, Wanted::Digits(SHIFT_DIGITS))?;
+        let number = match &value.scalar {
+            Scalar::Exact(exact) if exact.as_rational().is_some() => exact.as_rational().map(Cow::into_owned),
+            other if other.is_real() => other.to_ball(256).ok().and_then(|ball| ball.re.mid().to_rational()),
+            _ => None,
+        };
+        let Some(number) = number else {
+            return self.refuse(expr.span, "a shift is a real number", "write an energy, as 31.9 GHz or 1e-6");
+        };
+        let written = value.sources.iter().filter(|(source, _)| !matches!(source, Source::Constant(_)));
+        let squares = written.fold(Float::new(64), |sum, (_, part)| sum + Float::with_val(64, part.square_ref()));
+        Ok((number, squares.sqrt().to_rational().unwrap_or_default()))
     }
 
     fn positive(&self, name: &Name, value: &Expr) -> Result<Rational, Wrong> {

@@ -99,7 +99,7 @@ impl Evaluation<'_> {
                     let message = "a polarization has no parameters".into();
                     return self.fault(first.span, Fault::Other { message, help: "leave out the parentheses".into() });
                 }
-                let binding = Binding::Polarization(self.resolver().polarization(body)?);
+                let binding = Binding::Polarization(self.resolver().polarization(name, body)?);
                 Ok(Done::Declared(Effect::Bind(name.text.clone(), binding), Vec::new()))
             }
             EntryKind::Definition { kind, name, parameters, body } => {

@@ -3,6 +3,7 @@
 use super::environment::Environment;
 use super::problem::{Failure, Trouble};
 use super::walker::Kept;
+use crate::angular::chain::AngularVector;
 use crate::angular::{HalfInteger, ninej, sixj, threej};
 use crate::num::{Ball, ComplexBall, Effort, NumberError, Scalar, Surd};
 use crate::systems::{Level, Manifold, State, StateLabel, System};
@@ -262,6 +263,7 @@ impl<'s> Evaluator<'s> {
                 }
                 Ok(sum)
             }
+            ScalarNode::LevelPart(part, inner) => self.level_part(*part, inner, environment, bits, place),
             ScalarNode::Wigner(symbol, arguments) => self.wigner(*symbol, arguments, environment, place),
         }
     }
@@ -331,7 +333,13 @@ impl<'s> Evaluator<'s> {
     /// The state a term names.
     pub fn state(&mut self, term: &StateTerm, environment: &Environment) -> Evaluated<State> {
         let system = self.system(&term.system, term.place)?;
-        let label = self.label(&term.label, environment, term.place)?;
+        let mut label = self.label(&term.label, environment, term.place)?;
+        let state = system.state(&label, &self.effort).map_err(|error| Failure::new(term.place, error))?;
+        let Some(projection) = environment.projection() else { return Ok(state) };
+        if open_momentum(&*system, &state).is_none() {
+            return Ok(state);
+        }
+        label.options.push(("M".into(), Rational::from((projection.twice(), 2))));
         system.state(&label, &self.effort).map_err(|error| Failure::new(term.place, error))
     }
 
@@ -384,6 +392,14 @@ impl<'s> Evaluator<'s> {
             self.nudged_numbers += 1;
         }
         value
+    }
+}
+
+/// J of a state whose M is left open; `None` where it is not.
+pub(super) fn open_momentum(system: &dyn System, state: &State) -> Option<HalfInteger> {
+    match system.symmetry()?.end(state).ok()?.vector {
+        AngularVector::Coupled { j, m: None } if j.twice() > 0 => Some(j),
+        _ => None,
     }
 }
 

@@ -7,6 +7,7 @@
 pub mod hydrogenic;
 pub mod matrix;
 mod number;
+pub mod shifted;
 pub mod symbolic;
 mod symmetry;
 
@@ -235,6 +236,11 @@ pub trait System: Send + Sync {
     /// The states of a manifold that have a part in a sector.
     fn members(&self, _manifold: &Manifold, _sector: Sector) -> Vec<State> {
         Vec::new()
+    }
+
+    /// Tells whether a state belongs to a manifold.
+    fn holds(&self, _manifold: &Manifold, _state: &State) -> bool {
+        false
     }
 
     /// What the angular algebra knows of the system; `None` for a space without symmetry.

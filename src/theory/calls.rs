@@ -20,17 +20,13 @@ impl Resolver<'_> {
             let plain = self.positional(&name.text, arguments, span)?;
             return self.call_definition(definition, &plain, span);
         }
+        if let Some(part) = LevelPart::named(&name.text) {
+            let argument = self.only_argument(name, arguments, span)?;
+            let inner = self.scalar(&argument)?;
+            return Ok(Meaning::Scalar(self.term(ScalarNode::LevelPart(part, inner), span)));
+        }
         if let Some(function) = function_named(&name.text) {
-            let [argument] = self.positional(&name.text, arguments, span)?.try_into().or_else(|list: Vec<Expr>| {
-                self.fault(
-                    span,
-                    Fault::ArgumentCount {
-                        name: name.text.clone(),
-                        wanted: "one argument".into(),
-                        got: format!("{} are", list.len()),
-                    },
-                )
-            })?;
+            let argument = self.only_argument(name, arguments, span)?;
             return match self.resolve(&argument)? {
                 Meaning::Scalar(inner) => Ok(Meaning::Scalar(self.term(ScalarNode::Function(function, inner), span))),
                 Meaning::Operator(inner) => self.function_of_h(function, &inner, span),
@@ -89,6 +85,20 @@ impl Resolver<'_> {
                 self.unknown(other, name.span)
             }
         }
+    }
+
+    fn only_argument(&self, name: &Name, arguments: &[Argument], span: Span) -> Resolved<Expr> {
+        let [argument] = self.positional(&name.text, arguments, span)?.try_into().or_else(|list: Vec<Expr>| {
+            self.fault(
+                span,
+                Fault::ArgumentCount {
+                    name: name.text.clone(),
+                    wanted: "one argument".into(),
+                    got: format!("{} are", list.len()),
+                },
+            )
+        })?;
+        Ok(argument)
     }
 
     /// The arguments as plain expressions; other forms are refused.

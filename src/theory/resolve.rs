@@ -282,9 +282,9 @@ impl<'a> Resolver<'a> {
             Some((base, component)) if !self.names.operators.contains(name) => (base, Some(component)),
             _ => (name, None),
         };
-        if let Some(entry) = component.and_then(|c| self.names.broken.get(c.strip_suffix("_conj").unwrap_or(c))) {
+        if let Some(entry) = component.and_then(|component| self.broken_direction(component)) {
             let name = component.unwrap_or_default().to_string();
-            return self.fault(span, Fault::Broken { name, entry: *entry });
+            return self.fault(span, Fault::Broken { name, entry });
         }
         if self.operator_word(name) {
             return Ok(self.atom(base, component, Vec::new(), span));

@@ -16,13 +16,27 @@ const CONJUGATE: &str = "_conj";
 
 const TENSOR_FORM: &str = "ranks, as in `tensor(orbital=1, spin=1, total=0)`, and if known `parity=odd`, `adjoint=hermitian`, `spins=antisymmetric`";
 
+/// Whether a word behind `_` is a component whatever names are bound.
+fn is_component(name: &str) -> bool {
+    matches!(name, "x" | "y" | "z") || super::indices::is_index(name) || name.parse::<i32>().is_ok()
+}
+
 impl Resolver<'_> {
+    /// The entry that should have declared the polarization a component names, had it not failed.
+    pub(super) fn broken_direction(&self, component: &str) -> Option<usize> {
+        let name = component.strip_suffix(CONJUGATE).unwrap_or(component);
+        if is_component(name) { None } else { self.names.broken.get(name).copied() }
+    }
+
     /// The direction a component names: a polarization declared above, or the light's, or the conjugate of either.
     pub(super) fn direction(&self, component: &str) -> Option<Direction> {
         let (name, conjugate) = match component.strip_suffix(CONJUGATE) {
             Some(name) => (name, true),
             None => (component, false),
         };
+        if is_component(name) {
+            return None;
+        }
         match self.names.bound.get(name) {
             Some(Binding::Polarization(fixed)) if conjugate => Some(Direction::Fixed(fixed.conj())),
             Some(Binding::Polarization(fixed)) => Some(Direction::Fixed(fixed.clone())),
@@ -118,7 +132,12 @@ impl Resolver<'_> {
     }
 
     /// The polarization a declaration describes: `linear(0, 0, 1)`, `circular(1)`, `jones(1, i)`.
-    pub fn polarization(&mut self, body: &Expr) -> Resolved<Polarization> {
+    pub fn polarization(&mut self, name: &Name, body: &Expr) -> Resolved<Polarization> {
+        if is_component(&name.text) || name.text == LIGHT || name.text.ends_with(CONJUGATE) {
+            let message = format!("`D_{}` has a meaning of its own", name.text);
+            return self
+                .fault(name.span, Fault::Other { message, help: "choose another name, as eps or sigma".into() });
+        }
         let wanted = "`linear(x, y, z)`, `circular(1)`, `circular(-1)` or `jones(e_x, e_y)`";
         let ExprKind::Call { name, arguments, subscript: None } = &body.kind else {
             return self.fault(body.span, Fault::ArgumentForm { name: "polarization".into(), wanted: wanted.into() });

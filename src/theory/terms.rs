@@ -84,6 +84,39 @@ pub enum ScalarNode {
     },
     /// `threej(j1, j2, j3, m1, m2, m3)` and its like
     Wigner(WignerSymbol, Vec<ScalarTerm>),
+    /// A part of the dependence of a level's value on M and on the polarization of the light
+    LevelPart(LevelPart, ScalarTerm),
+}
+
+/// The parts of a value that depends on the M of a level.
+#[derive(Clone, Copy, PartialEq, Eq, Debug, Hash)]
+pub enum LevelPart {
+    Average,
+    Scalar,
+    Vector,
+    Tensor,
+}
+
+impl LevelPart {
+    /// The part of that name in the session language.
+    pub fn named(name: &str) -> Option<Self> {
+        match name {
+            "average" => Some(Self::Average),
+            "scalar_part" => Some(Self::Scalar),
+            "vector_part" => Some(Self::Vector),
+            "tensor_part" => Some(Self::Tensor),
+            _ => None,
+        }
+    }
+
+    pub fn name(self) -> &'static str {
+        match self {
+            Self::Average => "average",
+            Self::Scalar => "scalar_part",
+            Self::Vector => "vector_part",
+            Self::Tensor => "tensor_part",
+        }
+    }
 }
 
 /// The function of numbers with that name in the session language.

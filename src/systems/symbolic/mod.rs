@@ -100,6 +100,10 @@ impl System for Symbolic {
         0
     }
 
+    fn holds(&self, manifold: &Manifold, state: &State) -> bool {
+        states::holds(manifold, state)
+    }
+
     fn symmetry(&self) -> Option<&dyn Symmetry> {
         Some(self)
     }

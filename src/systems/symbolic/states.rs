@@ -122,6 +122,18 @@ pub(super) fn levels(manifold: &Manifold) -> Vec<Level> {
     }
 }
 
+/// Tells whether a state belongs to a manifold.
+pub(super) fn holds(manifold: &Manifold, state: &State) -> bool {
+    if manifold.numbers.get(..4) != state.numbers.get(..4) {
+        return false;
+    }
+    match (manifold.numbers.get(4..), state.numbers.get(4..)) {
+        // one level, and a state of its J
+        (Some(&[_, j]), Some(&[kind, own, ..])) => kind != i64::from(PRODUCT) && j == own,
+        _ => true,
+    }
+}
+
 /// A state as the end of a bracket.
 pub(super) fn end(state: &State, electrons: Electrons) -> Result<chain::State, SystemError> {
     let foreign = || SystemError::Refused {

@@ -142,6 +142,10 @@ impl<'e> Expander<'e> {
                 }
                 sum
             }
+            ScalarNode::LevelPart(part, _) => {
+                let message = format!("`{}` stands inside, and every M is looked at here anyway", part.name());
+                return self.refuse(place, message, "write the expression inside it alone");
+            }
             ScalarNode::Wigner(symbol, list) => NormalSum::number(self.wigner(*symbol, list, arguments, place)?),
         })
     }
