@@ -3,8 +3,8 @@
 use super::environment::Environment;
 use super::problem::{Failure, Trouble};
 use super::walker::Kept;
+use crate::angular::HalfInteger;
 use crate::angular::chain::AngularVector;
-use crate::angular::{HalfInteger, ninej, sixj, threej};
 use crate::num::{Ball, ComplexBall, Effort, NumberError, Scalar, Surd};
 use crate::systems::{Level, Manifold, State, StateLabel, System};
 use crate::theory::terms::*;
@@ -287,11 +287,8 @@ impl<'s> Evaluator<'s> {
             };
             j.push(HalfInteger::from_rational(&rational).map_err(|error| refused(argument.place, error.to_string()))?);
         }
-        let value = match (symbol, j.as_slice()) {
-            (WignerSymbol::ThreeJ, &[j1, j2, j3, m1, m2, m3]) => threej(j1, j2, j3, m1, m2, m3),
-            (WignerSymbol::SixJ, &[j1, j2, j3, l1, l2, l3]) => sixj([j1, j2, j3, l1, l2, l3]),
-            (WignerSymbol::NineJ, &[a, b, c, d, e, f, g, h, i]) => ninej([[a, b, c], [d, e, f], [g, h, i]]),
-            _ => return Err(refused(place, format!("the symbol takes {}", symbol.arguments().1))),
+        let Some(value) = symbol.value(&j) else {
+            return Err(refused(place, format!("the symbol takes {}", symbol.arguments().1)));
         };
         value.map(Scalar::Exact).map_err(|error| refused(place, error.to_string()))
     }

@@ -36,6 +36,7 @@ impl Resolver<'_> {
         match name.text.as_str() {
             "E" => self.energy(arguments, span),
             "tensor" => self.tensor(arguments, subscript, span),
+            "coupled" => self.coupled(arguments, subscript, span),
             "zero" | "sum" => self.bound_variable(name, arguments, span),
             symbol if WignerSymbol::named(symbol).is_some_and(|_| !self.names.later.contains_key(symbol)) => {
                 let plain = self.positional(symbol, arguments, span)?;

@@ -2,11 +2,11 @@
 
 use super::names::Binding;
 use super::normal::Expander;
-use super::problem::Fault;
+use super::problem::{Fault, Kind};
 use super::resolve::{Resolved, Resolver};
 use super::terms::*;
 use crate::angular::polarization::Polarization;
-use crate::angular::tensor::{Sign, SpinExchange, Tensor};
+use crate::angular::tensor::{Sign, SpinExchange, Tensor, coupled_components};
 use crate::lang::tree::{Argument, Expr, ExprKind, Name, Span};
 use crate::num::{Effort, Surd};
 
@@ -129,6 +129,53 @@ impl Resolver<'_> {
         let Meaning::Operator(body) = &definition.body else { return None };
         let OperatorNode::Tensor(term) = &*body.node else { return None };
         (term.component.is_none()).then(|| self.tensor_component(term, component, span))
+    }
+
+    /// `coupled(L, S, 2)_0`: the component of [A B]^K of two vectors, each named without component.
+    pub(super) fn coupled(&mut self, arguments: &[Argument], subscript: Option<&str>, span: Span) -> Resolved<Meaning> {
+        let form = |at: Span| {
+            let wanted = "two vectors, the rank they are coupled to, and a component, as in `coupled(L, S, 2)_0`";
+            self.fault(at, Fault::ArgumentForm { name: "coupled".into(), wanted: wanted.into() })
+        };
+        let [
+            Argument::Positional(Expr { kind: ExprKind::Name(first), span: at_first }),
+            Argument::Positional(Expr { kind: ExprKind::Name(second), span: at_second }),
+            Argument::Positional(Expr { kind: ExprKind::Number(rank), span: at_rank }),
+        ] = arguments
+        else {
+            return form(span);
+        };
+        let (Ok(rank), Some(Ok(q))) = (rank.parse::<u32>(), subscript.map(str::parse::<i32>)) else {
+            return form(at_rank.to(span));
+        };
+        if rank > 2 || q.unsigned_abs() > rank {
+            let message = format!("two vectors do not couple to rank {rank} with component {q}");
+            let help = "the rank is 0, 1 or 2, the component between -rank and rank";
+            return self.fault(span, Fault::Other { message, help: help.into() });
+        }
+        let parts = coupled_components(1, 1, rank, q)
+            .or_else(|error| self.fault(span, Fault::Other { message: error.to_string(), help: error.help() }))?;
+        let mut terms = Vec::with_capacity(parts.len());
+        for (p, r, coefficient) in parts {
+            let left = self.vector_component(first, p, *at_first)?;
+            let right = self.vector_component(second, r, *at_second)?;
+            let shown = coefficient.to_string();
+            let number = Term::new(ScalarNode::Exact(coefficient), self.place(span), shown.as_str());
+            let number = self.identity_multiple(number);
+            let text = format!("({shown}) {} {}", left.text, right.text);
+            terms.push(Term::new(OperatorNode::Product(vec![number, left, right]), self.place(span), text));
+        }
+        Ok(Meaning::Operator(self.term(OperatorNode::Sum(terms), span)))
+    }
+
+    /// The component q of a vector that is named alone.
+    fn vector_component(&mut self, vector: &str, q: i32, span: Span) -> Resolved<OperatorTerm> {
+        let name = if q == 0 { format!("{vector}_0") } else { format!("{vector}_{q:+}") };
+        let meaning = self.resolve(&Expr { kind: ExprKind::Name(name.clone()), span })?;
+        match meaning {
+            Meaning::Operator(term) => Ok(Term { text: name.into(), ..term }),
+            other => self.fault(span, Fault::WrongKind { wanted: Kind::Operator, got: other.kind() }),
+        }
     }
 
     /// The polarization a declaration describes: `linear(0, 0, 1)`, `circular(1)`, `jones(1, i)`.

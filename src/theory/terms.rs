@@ -5,6 +5,7 @@
 
 use crate::angular::polarization::Polarization;
 use crate::angular::tensor::Tensor;
+use crate::angular::{AngularError, HalfInteger, clebsch_gordan, ninej, sixj, threej};
 use crate::lang::tree::{DefinitionKind, Expr, Span};
 pub use crate::num::Function as ScalarFunction;
 use crate::num::Surd;
@@ -138,6 +139,7 @@ pub fn function_named(name: &str) -> Option<ScalarFunction> {
 /// The symbols of angular momentum theory that expressions may ask for.
 #[derive(Clone, Copy, PartialEq, Eq, Debug, Hash)]
 pub enum WignerSymbol {
+    ClebschGordan,
     ThreeJ,
     SixJ,
     NineJ,
@@ -147,6 +149,7 @@ impl WignerSymbol {
     /// The symbol of that name in the session language.
     pub fn named(name: &str) -> Option<Self> {
         match name {
+            "clebsch_gordan" => Some(Self::ClebschGordan),
             "threej" => Some(Self::ThreeJ),
             "sixj" => Some(Self::SixJ),
             "ninej" => Some(Self::NineJ),
@@ -157,9 +160,23 @@ impl WignerSymbol {
     /// How many arguments it takes, and which.
     pub fn arguments(self) -> (usize, &'static str) {
         match self {
+            Self::ClebschGordan => (6, "six arguments (j1, m1, j2, m2, J, M)"),
             Self::ThreeJ => (6, "six arguments (j1, j2, j3, m1, m2, m3)"),
             Self::SixJ => (6, "six arguments (the upper row, then the lower)"),
             Self::NineJ => (9, "nine arguments, row by row"),
+        }
+    }
+
+    /// Its value; `None` for a wrong number of arguments.
+    ///
+    /// Errors: angular momenta or projections that do not exist.
+    pub fn value(self, j: &[HalfInteger]) -> Option<Result<Surd, AngularError>> {
+        match (self, j) {
+            (Self::ClebschGordan, &[j1, m1, j2, m2, j, m]) => Some(clebsch_gordan(j1, m1, j2, m2, j, m)),
+            (Self::ThreeJ, &[j1, j2, j3, m1, m2, m3]) => Some(threej(j1, j2, j3, m1, m2, m3)),
+            (Self::SixJ, &[j1, j2, j3, l1, l2, l3]) => Some(sixj([j1, j2, j3, l1, l2, l3])),
+            (Self::NineJ, &[a, b, c, d, e, f, g, h, i]) => Some(ninej([[a, b, c], [d, e, f], [g, h, i]])),
+            _ => None,
         }
     }
 }

@@ -2,8 +2,8 @@
 
 use super::pieces::{FunctionPiece, NamedState, NormalAtom, NormalBracket, NormalTensor, Piece};
 use super::{NormalSum, NormalTerm, Symbols};
+use crate::angular::HalfInteger;
 use crate::angular::tensor::Sign;
-use crate::angular::{HalfInteger, ninej, sixj, threej};
 use crate::num::{Effort, Scalar, Surd};
 use crate::theory::problem::{Fault, Problem};
 use crate::theory::terms::*;
@@ -229,11 +229,8 @@ impl<'e> Expander<'e> {
                 }
             }
         }
-        let value = match (symbol, j.as_slice()) {
-            (WignerSymbol::ThreeJ, &[j1, j2, j3, m1, m2, m3]) => threej(j1, j2, j3, m1, m2, m3),
-            (WignerSymbol::SixJ, &[j1, j2, j3, l1, l2, l3]) => sixj([j1, j2, j3, l1, l2, l3]),
-            (WignerSymbol::NineJ, &[a, b, c, d, e, f, g, h, i]) => ninej([[a, b, c], [d, e, f], [g, h, i]]),
-            _ => return self.refuse(place, format!("the symbol takes {}", symbol.arguments().1), ""),
+        let Some(value) = symbol.value(&j) else {
+            return self.refuse(place, format!("the symbol takes {}", symbol.arguments().1), "");
         };
         value.or_else(|error| self.refuse(place, error.to_string(), "write 0, 1/2, 1, 3/2, …"))
     }
