@@ -198,10 +198,7 @@ impl Turning<'_, '_> {
     fn atom(&mut self, atom: &NormalAtom, place: Place) -> Evaluated<Vec<Operator>> {
         // directions and indices stand for all components; the tensor is that of any of them
         let open = match (&atom.along, &atom.component) {
-            (Some(Direction::Fixed(fixed)), _) if atom.adjoint => Some(Component::Along(fixed.conj())),
             (Some(Direction::Fixed(fixed)), _) => Some(Component::Along(fixed.clone())),
-            (Some(Direction::Light), _) if atom.adjoint => Some(Component::LightConjugate),
-            (Some(Direction::LightConjugate), _) if atom.adjoint => Some(Component::Light),
             (Some(Direction::Light), _) => Some(Component::Light),
             (Some(Direction::LightConjugate), _) => Some(Component::LightConjugate),
             (None, Some(index)) if is_index(index) => Some(Component::Index(format!("{index}{}", self.brackets))),

@@ -50,6 +50,8 @@ pub struct Evaluator<'s> {
     pub(super) never_exact: BTreeSet<String>,
     /// Values of brackets at a precision.
     pub(super) known: HashMap<(String, u32), Scalar>,
+    /// What variations have been derived to, by their text.
+    pub(super) derived: HashMap<String, ScalarTerm>,
     depth: usize,
 }
 
@@ -77,6 +79,7 @@ impl<'s> Evaluator<'s> {
             kept: HashMap::new(),
             never_exact: BTreeSet::new(),
             known: HashMap::new(),
+            derived: HashMap::new(),
             depth: 0,
         }
     }
@@ -263,6 +266,7 @@ impl<'s> Evaluator<'s> {
                 }
                 Ok(sum)
             }
+            ScalarNode::Vary(variation) => self.vary(term, variation, environment, bits),
             ScalarNode::LevelPart(part, inner) => self.level_part(*part, inner, environment, bits, place),
             ScalarNode::Wigner(symbol, arguments) => self.wigner(*symbol, arguments, environment, place),
         }

@@ -19,6 +19,11 @@ impl Factor {
         format!("{}{{{}}}", self.operator.text, self.environment.fingerprint())
     }
 
+    /// Another operator with the same values of variables.
+    pub(super) fn of(&self, operator: &OperatorTerm) -> Factor {
+        Factor { operator: operator.clone(), environment: self.environment.clone() }
+    }
+
     pub(super) fn holds_function_of_h(&self) -> bool {
         crate::theory::resolve::has_function_of_h(&self.operator)
     }

@@ -13,6 +13,7 @@ mod problem;
 mod proof;
 mod root;
 mod value;
+mod vary;
 mod walker;
 
 pub use angular::AngularSum;

@@ -205,6 +205,11 @@ pub trait System: Send + Sync {
     /// The states of a state's level that have a part in a sector, the state itself included.
     fn level_in(&self, state: &State, sector: Sector, effort: &Effort) -> Result<Vec<State>, Obstacle>;
 
+    /// All states of the level of a state, itself included, in every sector.
+    fn level(&self, state: &State, _effort: &Effort) -> Result<Vec<State>, Obstacle> {
+        Ok(vec![state.clone()])
+    }
+
     /// Tells whether the system has this operator with this component, arguments and power.
     ///
     /// Errors: `UnknownOperator`, or `Refused` with the reason. A power other than 1 that the system does not know as an operator of its
@@ -232,6 +237,11 @@ pub trait System: Send + Sync {
 
     /// Bits below which the data of the system cannot be told apart; numeric work starts above.
     fn data_bits(&self) -> u32;
+
+    /// All states of a manifold.
+    fn states_of(&self, manifold: &Manifold, _effort: &Effort) -> Result<Vec<State>, Obstacle> {
+        Err(Obstacle::NotYet(format!("the states of {} one by one", manifold.label)))
+    }
 
     /// The states of a manifold that have a part in a sector.
     fn members(&self, _manifold: &Manifold, _sector: Sector) -> Vec<State> {

@@ -493,7 +493,7 @@ pub fn has_function_of_h(operator: &OperatorTerm) -> bool {
         | OperatorNode::Hamiltonian
         | OperatorNode::Dyad(..) => false,
         OperatorNode::Sum(terms) | OperatorNode::Product(terms) => terms.iter().any(has_function_of_h),
-        OperatorNode::Power(inner, _) => has_function_of_h(inner),
+        OperatorNode::Power(inner, _) | OperatorNode::Adjoint(inner) => has_function_of_h(inner),
         OperatorNode::Call(call) => {
             matches!(&call.definition.body, Meaning::Operator(body) if has_function_of_h(body))
         }

@@ -87,6 +87,16 @@ pub enum ScalarNode {
     Wigner(WignerSymbol, Vec<ScalarTerm>),
     /// A part of the dependence of a level's value on M and on the polarization of the light
     LevelPart(LevelPart, ScalarTerm),
+    /// `vary(f, V, n)`
+    Vary(Variation),
+}
+
+/// The coefficient of lambda^order in the body when H becomes H + lambda V.
+#[derive(Clone, Debug)]
+pub struct Variation {
+    pub body: ScalarTerm,
+    pub perturbation: OperatorTerm,
+    pub order: u32,
 }
 
 /// The parts of a value that depends on the M of a level.
@@ -248,6 +258,7 @@ pub enum OperatorNode {
     Function(ScalarFunction, LinearInH),
     /// An operator of which only the symmetry is given.
     Tensor(TensorTerm),
+    Adjoint(OperatorTerm),
     Call(Call),
 }
 

@@ -48,6 +48,10 @@ impl Walk<'_> {
             }
             ScalarNode::Energy(state) => self.label(&state.label),
             ScalarNode::LevelPart(_, inner) => self.scalar(inner),
+            ScalarNode::Vary(variation) => {
+                self.scalar(&variation.body);
+                self.operator(&variation.perturbation);
+            }
             ScalarNode::Bracket(bracket) => {
                 self.ket(&bracket.bra);
                 self.ket(&bracket.ket);
@@ -81,7 +85,7 @@ impl Walk<'_> {
             OperatorNode::Atom(atom) => atom.arguments.iter().for_each(|argument| self.scalar(argument)),
             OperatorNode::Hamiltonian | OperatorNode::Tensor(_) => {}
             OperatorNode::Sum(list) | OperatorNode::Product(list) => list.iter().for_each(|inner| self.operator(inner)),
-            OperatorNode::Power(inner, _) => self.operator(inner),
+            OperatorNode::Power(inner, _) | OperatorNode::Adjoint(inner) => self.operator(inner),
             OperatorNode::Dyad(ket, bra) => {
                 self.ket(ket);
                 self.ket(bra);

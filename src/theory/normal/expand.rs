@@ -1,7 +1,8 @@
 //! Multiplies expressions out.
 
-use super::pieces::{FunctionPiece, NamedState, NormalAtom, NormalBracket, NormalTensor, Piece};
-use super::{NormalSum, NormalTerm, Symbols};
+use super::derive::{Degeneracy, Derivation, Unknown};
+use super::pieces::{FunctionPiece, NamedState, NormalAtom, NormalBracket, NormalTensor, Piece, function_name};
+use super::{NormalSum, NormalTerm, SymbolMeaning, Symbols};
 use crate::angular::HalfInteger;
 use crate::angular::tensor::Sign;
 use crate::num::{Effort, Scalar, Surd};
@@ -22,13 +23,13 @@ const DEEPEST: usize = 100;
 /// Precision at which exactness of a function's value is tried.
 const TRIED_BITS: u32 = 64;
 
-type Expanded<T> = Result<T, Problem>;
+pub type Expanded<T> = Result<T, Problem>;
 
 /// The normal forms that variables stand for.
-type Arguments = BTreeMap<String, NormalSum>;
+pub(super) type Arguments = BTreeMap<String, NormalSum>;
 
 /// Pieces in a row, with the product of numbers in front of them.
-type Strings = Vec<(NormalTerm, Vec<Piece>)>;
+pub(super) type Strings = Vec<(NormalTerm, Vec<Piece>)>;
 
 /// Brings expressions to their normal form.
 pub struct Expander<'e> {
@@ -37,11 +38,27 @@ pub struct Expander<'e> {
     /// The first name that was met for each energy, and for each function of H.
     energies: HashMap<String, String>,
     functions: HashMap<String, String>,
+    /// What every symbol stands for.
+    meanings: HashMap<String, SymbolMeaning>,
+    pub(super) degeneracy: Box<dyn Degeneracy + 'e>,
 }
 
 impl<'e> Expander<'e> {
+    /// An expander that knows nothing of the levels of systems.
     pub fn new(effort: &'e Effort) -> Self {
-        Expander { effort, depth: 0, energies: HashMap::new(), functions: HashMap::new() }
+        Self::with_levels(effort, Unknown)
+    }
+
+    /// An expander that knows which states are degenerate, for changes of reduced resolvents.
+    pub fn with_levels(effort: &'e Effort, degeneracy: impl Degeneracy + 'e) -> Self {
+        Expander {
+            effort,
+            depth: 0,
+            energies: HashMap::new(),
+            functions: HashMap::new(),
+            meanings: HashMap::new(),
+            degeneracy: Box::new(degeneracy),
+        }
     }
 
     /// The normal form of a number; variables that are not bound stay symbols.
@@ -51,11 +68,41 @@ impl<'e> Expander<'e> {
         self.scalar(term, &Arguments::new())
     }
 
-    fn refuse<T>(&self, place: Place, message: String, help: &str) -> Expanded<T> {
+    /// What a symbol stands for.
+    pub fn meaning(&self, symbol: &str) -> Option<&SymbolMeaning> {
+        self.meanings.get(symbol)
+    }
+
+    /// A symbol with its meaning.
+    pub(super) fn symbol(&mut self, symbol: String, meaning: SymbolMeaning) -> NormalSum {
+        self.meanings.entry(symbol.clone()).or_insert(meaning);
+        NormalSum::symbol(symbol)
+    }
+
+    /// A state whose label holds no variables.
+    pub(super) fn named_state(&mut self, state: &StateTerm) -> Expanded<NamedState> {
+        self.state(state, &Arguments::new())
+    }
+
+    /// The symbol for the energy of a state.
+    pub(super) fn energy(&mut self, state: &NamedState) -> NormalSum {
+        let shown = format!("E({})", state.shown);
+        let symbol = self.energies.entry(state.name.clone()).or_insert(shown).clone();
+        self.symbol(symbol, SymbolMeaning::Energy(state.clone()))
+    }
+
+    /// A function of H by the name it has in the session, if any.
+    pub(super) fn named_function(&mut self, mut piece: FunctionPiece) -> FunctionPiece {
+        let shown = self.functions.entry(piece.key.clone()).or_insert_with(|| piece.label.clone());
+        piece.label.clone_from(shown);
+        piece
+    }
+
+    pub(super) fn refuse<T>(&self, place: Place, message: String, help: &str) -> Expanded<T> {
         Err(Problem::new(place, Fault::Other { message, help: help.into() }))
     }
 
-    fn check(&self, count: usize, place: Place) -> Expanded<()> {
+    pub(super) fn check(&self, count: usize, place: Place) -> Expanded<()> {
         if self.effort.check().is_err() {
             return Err(Problem::new(place, Fault::Interrupted));
         }
@@ -69,7 +116,7 @@ impl<'e> Expander<'e> {
         Ok(())
     }
 
-    fn product(&self, a: &NormalSum, b: &NormalSum, place: Place) -> Expanded<NormalSum> {
+    pub(super) fn product(&self, a: &NormalSum, b: &NormalSum, place: Place) -> Expanded<NormalSum> {
         self.check(a.terms.len().saturating_mul(b.terms.len()), place)?;
         Ok(a.times(b))
     }
@@ -80,10 +127,10 @@ impl<'e> Expander<'e> {
         Ok(match &*term.node {
             ScalarNode::Exact(value) => NormalSum::number(value.clone()),
             ScalarNode::Pi => NormalSum::number(Surd::pi_to(1)),
-            ScalarNode::Measured { .. } | ScalarNode::Root { .. } => NormalSum::symbol(&*term.text),
+            ScalarNode::Measured { .. } | ScalarNode::Root { .. } => self.given(term, arguments),
             ScalarNode::Variable(name) => match arguments.get(name) {
                 Some(value) => value.clone(),
-                None => NormalSum::symbol(name),
+                None => self.symbol(name.clone(), SymbolMeaning::Given(term.clone(), Vec::new())),
             },
             ScalarNode::Sum(terms) => {
                 let mut sum = NormalSum::default();
@@ -115,18 +162,21 @@ impl<'e> Expander<'e> {
             }
             ScalarNode::Function(function, inner) => {
                 let inner = self.scalar(inner, arguments)?;
-                self.function(*function, &inner, &term.text)
+                self.function(*function, &inner)
             }
             ScalarNode::Energy(state) => {
-                let named = self.state(state, arguments)?;
-                let shown =
-                    if term.text.starts_with("E(") { term.text.to_string() } else { format!("E({})", named.name) };
-                NormalSum::symbol(self.energies.entry(named.name).or_insert(shown).clone())
+                let mut named = self.state(state, arguments)?;
+                if let Some(shown) = term.text.strip_prefix("E(").and_then(|rest| rest.strip_suffix(')'))
+                    && !shown.contains('{')
+                {
+                    named.shown = shown.to_string();
+                }
+                self.energy(&named)
             }
             ScalarNode::Bracket(bracket) => self.bracket(bracket, arguments, place)?,
             ScalarNode::Call(call) => match &call.definition.body {
                 Meaning::Scalar(body) => self.inside(call, arguments, place, |this, inner| this.scalar(body, inner))?,
-                _ => NormalSum::symbol(&*term.text),
+                _ => return self.refuse(place, "a number is needed here".into(), ""),
             },
             ScalarNode::Series { variable, from, to, body } => {
                 let first = self.whole(from, arguments)?;
@@ -142,6 +192,16 @@ impl<'e> Expander<'e> {
                 }
                 sum
             }
+            ScalarNode::Vary(variation) => {
+                let mut sum = self.scalar(&variation.body, arguments)?;
+                let mut factorial = Rational::from(1);
+                let mut derivation = Derivation::new(self, &variation.perturbation, arguments)?;
+                for order in 1..=variation.order {
+                    sum = derivation.change(&sum)?;
+                    factorial *= order;
+                }
+                sum.scaled(&Surd::from(factorial.recip()))
+            }
             ScalarNode::LevelPart(part, _) => {
                 let message = format!("`{}` stands inside, and every M is looked at here anyway", part.name());
                 return self.refuse(place, message, "write the expression inside it alone");
@@ -150,17 +210,28 @@ impl<'e> Expander<'e> {
         })
     }
 
-    fn inverse(&self, sum: &NormalSum, place: Place) -> Expanded<NormalSum> {
+    /// A number that stays as it is written, with the arguments of the definition it stands in.
+    fn given(&mut self, term: &ScalarTerm, arguments: &Arguments) -> NormalSum {
+        let mut symbol = term.text.to_string();
+        let mut used = Vec::new();
+        if matches!(&*term.node, ScalarNode::Root { .. }) {
+            for (name, value) in arguments {
+                symbol += &format!(" at {name} = {value}");
+                used.push((name.clone(), value.clone()));
+            }
+        }
+        self.symbol(symbol, SymbolMeaning::Given(term.clone(), used))
+    }
+
+    pub(super) fn inverse(&mut self, sum: &NormalSum, place: Place) -> Expanded<NormalSum> {
         if sum.terms.is_empty() {
             return self.refuse(place, "a denominator is zero".into(), "look at its terms: they cancel");
         }
-        Ok(sum.inverse().unwrap_or_else(|| NormalSum {
-            terms: vec![NormalTerm {
-                coefficient: Surd::one(),
-                symbols: Symbols::of(sum.to_string()).inverse(),
-                brackets: Vec::new(),
-            }],
-        }))
+        if let Some(inverse) = sum.inverse() {
+            return Ok(inverse);
+        }
+        let symbol = self.symbol(sum.to_string(), SymbolMeaning::Sum(sum.clone()));
+        symbol.inverse().map_or_else(|| self.refuse(place, "a denominator has no inverse".into(), ""), Ok)
     }
 
     fn power(&mut self, base: &NormalSum, exponent: &NormalSum, place: Place) -> Expanded<NormalSum> {
@@ -181,20 +252,21 @@ impl<'e> Expander<'e> {
                 {
                     return Ok(NormalSum::number(value));
                 }
-                Ok(NormalSum::symbol(format!("({base})^({exponent})")))
+                let symbol = format!("({base})^({exponent})");
+                Ok(self.symbol(symbol, SymbolMeaning::Power(base.clone(), exponent.clone())))
             }
         }
     }
 
-    fn function(&self, function: ScalarFunction, inner: &NormalSum, text: &str) -> NormalSum {
+    pub(super) fn function(&mut self, function: ScalarFunction, inner: &NormalSum) -> NormalSum {
         if function == ScalarFunction::Conj {
             return inner.conj();
         }
         match inner.as_number().map(|value| Scalar::Exact(value).apply(function, TRIED_BITS)) {
             Some(Ok(Scalar::Exact(value))) => NormalSum::number(value),
             _ => {
-                let name = text.split('(').next().unwrap_or(text);
-                NormalSum::symbol(format!("{name}({inner})"))
+                let symbol = format!("{}({inner})", function_name(function));
+                self.symbol(symbol, SymbolMeaning::Function(function, inner.clone()))
             }
         }
     }
@@ -278,7 +350,8 @@ impl<'e> Expander<'e> {
         }
         name.push(']');
         let label = LabelTerm { parts: vec![LabelPiece::Text(text)], options, text: name.as_str().into() };
-        Ok(NamedState { term: StateTerm { system: state.system.clone(), label, place: state.place }, name })
+        let term = StateTerm { system: state.system.clone(), label, place: state.place };
+        Ok(NamedState { term, shown: name.clone(), name })
     }
 
     fn bracket(&mut self, bracket: &Bracket, arguments: &Arguments, place: Place) -> Expanded<NormalSum> {
@@ -323,8 +396,12 @@ impl<'e> Expander<'e> {
     fn ket(&mut self, term: &KetTerm, arguments: &Arguments) -> Expanded<Strings> {
         match &*term.node {
             KetNode::State(state) => {
-                let state = self.state(state, arguments)?;
-                Ok(vec![(NormalTerm::number(Surd::one()), vec![Piece::Ket(state)])])
+                let mut named = self.state(state, arguments)?;
+                // what is computed in a label is shown computed
+                if !term.text.contains('{') {
+                    named.shown = term.text.to_string();
+                }
+                Ok(vec![(NormalTerm::number(Surd::one()), vec![Piece::Ket(named)])])
             }
             KetNode::Applied(operator, inner) => {
                 let left = self.operator(operator, arguments)?;
@@ -351,7 +428,7 @@ impl<'e> Expander<'e> {
         }
     }
 
-    fn operator(&mut self, term: &OperatorTerm, arguments: &Arguments) -> Expanded<Strings> {
+    pub(super) fn operator(&mut self, term: &OperatorTerm, arguments: &Arguments) -> Expanded<Strings> {
         let place = term.place;
         self.check(0, place)?;
         let alone = |piece: Piece| Ok(vec![(NormalTerm::number(Surd::one()), vec![piece])]);
@@ -360,6 +437,14 @@ impl<'e> Expander<'e> {
             OperatorNode::Atom(atom) => alone(Piece::Atom(self.atom(atom, arguments)?)),
             OperatorNode::Tensor(tensor) => alone(Piece::Tensor(NormalTensor { term: tensor.clone(), adjoint: false })),
             OperatorNode::Hamiltonian => alone(Piece::Hamiltonian),
+            OperatorNode::Adjoint(inner) => {
+                let strings = self.operator(inner, arguments)?;
+                let adjoint = strings.into_iter().flat_map(|(term, pieces)| {
+                    let pieces: Vec<Piece> = pieces.iter().rev().map(Piece::adjoint).collect();
+                    NormalSum { terms: vec![term] }.conj().terms.into_iter().map(move |term| (term, pieces.clone()))
+                });
+                Ok(adjoint.collect())
+            }
             OperatorNode::Sum(terms) => {
                 let mut sum = Strings::new();
                 for inner in terms {
@@ -490,15 +575,14 @@ impl<'e> Expander<'e> {
                 OmittedTerm::Manifold(manifold) => OmittedTerm::Manifold(manifold.clone()),
             });
         }
-        let mut piece = FunctionPiece::written(function, constant.scaled(&scale), sign, omitted);
-        let shown = self.functions.entry(piece.key.clone()).or_insert_with(|| piece.label.clone());
-        piece.label.clone_from(shown);
+        let piece = FunctionPiece::written(function, constant.scaled(&scale), sign, omitted);
+        let piece = self.named_function(piece);
         Ok(vec![(NormalTerm::number(scale), vec![Piece::Function(piece)])])
     }
 }
 
 /// Takes a string that begins with a bra and ends with a ket apart into brackets.
-fn bracketed(pieces: Vec<Piece>, place: Place) -> NormalTerm {
+pub(super) fn bracketed(pieces: Vec<Piece>, place: Place) -> NormalTerm {
     let mut brackets = Vec::new();
     let mut open: Option<NamedState> = None;
     let mut inner = Vec::new();

@@ -3,15 +3,19 @@
 //! Definitions are put in, brackets are multiplied out into chains of single operators, and like products are joined. What the folder promises:
 //! the sum equals the expression for every value of its symbols (which are real); products stand in the order they are first met in.
 
+mod derive;
 mod expand;
 mod pieces;
 mod symbols;
+mod written;
 
-pub use expand::Expander;
+pub use derive::Degeneracy;
+pub use expand::{Expanded, Expander};
 pub use pieces::{FunctionPiece, NamedState, NormalAtom, NormalBracket, NormalTensor, Piece};
 pub use symbols::Symbols;
 
 use crate::num::Surd;
+use crate::theory::terms::{ScalarFunction, ScalarTerm};
 use rug::Rational;
 use std::collections::HashMap;
 use std::fmt;
@@ -22,6 +26,18 @@ pub struct NormalTerm {
     pub coefficient: Surd,
     pub symbols: Symbols,
     pub brackets: Vec<NormalBracket>,
+}
+
+/// What a symbol stands for.
+#[derive(Clone, Debug)]
+pub enum SymbolMeaning {
+    /// A number as it is written, with the values of the variables around it.
+    Given(ScalarTerm, Vec<(String, NormalSum)>),
+    Energy(NamedState),
+    /// A sum that stands in a denominator.
+    Sum(NormalSum),
+    Function(ScalarFunction, NormalSum),
+    Power(NormalSum, NormalSum),
 }
 
 /// A sum of products.

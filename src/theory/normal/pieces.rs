@@ -23,6 +23,8 @@ pub struct NamedState {
     pub term: StateTerm,
     /// `h[2p, m=1]`: system and label as text.
     pub name: String,
+    /// How the session calls it: `g`, or the name.
+    pub shown: String,
 }
 
 impl PartialEq for NamedState {
@@ -92,11 +94,36 @@ impl Piece {
         match self {
             Piece::Ket(state) => Piece::Bra(state.clone()),
             Piece::Bra(state) => Piece::Ket(state.clone()),
-            Piece::Atom(atom) => Piece::Atom(NormalAtom { adjoint: !atom.adjoint, ..atom.clone() }),
+            Piece::Atom(atom) => Piece::Atom(atom.adjoint()),
             Piece::Tensor(tensor) => Piece::Tensor(NormalTensor { adjoint: !tensor.adjoint, ..tensor.clone() }),
             Piece::Hamiltonian => Piece::Hamiltonian,
             Piece::Function(function) => Piece::Function(function.conj()),
         }
+    }
+}
+
+impl NormalAtom {
+    /// A spherical component has a mark for its adjoint, a direction is conjugated, everything else is its own adjoint.
+    fn adjoint(&self) -> Self {
+        let mut atom = self.clone();
+        match (&self.along, self.component.as_deref()) {
+            (Some(along), Some(component)) => {
+                atom.along = Some(match along {
+                    Direction::Fixed(fixed) => Direction::Fixed(fixed.conj()),
+                    Direction::Light => Direction::LightConjugate,
+                    Direction::LightConjugate => Direction::Light,
+                });
+                atom.component = Some(match component.strip_suffix("_conj") {
+                    Some(plain) => plain.to_string(),
+                    None => format!("{component}_conj"),
+                });
+            }
+            (None, Some(component)) if component.parse::<i32>().is_ok_and(|q| q != 0) => {
+                atom.adjoint = !self.adjoint;
+            }
+            _ => {}
+        }
+        atom
     }
 }
 
@@ -145,7 +172,7 @@ impl FunctionPiece {
     }
 }
 
-fn function_name(function: ScalarFunction) -> &'static str {
+pub(super) fn function_name(function: ScalarFunction) -> &'static str {
     match function {
         ScalarFunction::Sqrt => "sqrt",
         ScalarFunction::Exp => "exp",
@@ -218,8 +245,8 @@ impl fmt::Display for NormalTensor {
 impl fmt::Display for Piece {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
-            Piece::Ket(state) => write!(f, "|{}>", state.name),
-            Piece::Bra(state) => write!(f, "<{}|", state.name),
+            Piece::Ket(state) => write!(f, "|{}>", state.shown),
+            Piece::Bra(state) => write!(f, "<{}|", state.shown),
             Piece::Atom(atom) => write!(f, "{atom}"),
             Piece::Tensor(tensor) => write!(f, "{tensor}"),
             Piece::Hamiltonian => write!(f, "H"),
@@ -232,8 +259,8 @@ impl fmt::Display for NormalBracket {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         let pieces: Vec<String> = self.pieces.iter().map(Piece::to_string).collect();
         if pieces.is_empty() {
-            return write!(f, "<{}|{}>", self.bra.name, self.ket.name);
+            return write!(f, "<{}|{}>", self.bra.shown, self.ket.shown);
         }
-        write!(f, "<{}| {} |{}>", self.bra.name, pieces.join(" "), self.ket.name)
+        write!(f, "<{}| {} |{}>", self.bra.shown, pieces.join(" "), self.ket.shown)
     }
 }

@@ -20,6 +20,11 @@ impl Symbols {
         self.0.is_empty()
     }
 
+    /// The symbols with their powers, in order.
+    pub fn factors(&self) -> impl Iterator<Item = (&str, i64)> {
+        self.0.iter().map(|(symbol, power)| (symbol.as_str(), *power))
+    }
+
     #[must_use]
     pub fn times(&self, other: &Symbols) -> Self {
         let mut powers = self.0.clone();
