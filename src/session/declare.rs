@@ -7,6 +7,7 @@ use crate::lang::tree::{Argument, Expr, ExprKind, LabelPart, Name};
 use crate::num::{Effort, Scalar, Surd};
 use crate::sums::{Environment, Wanted};
 use crate::systems::hydrogenic::Hydrogenic;
+use crate::systems::levels::{LevelSystem, MOST_FAULTS};
 use crate::systems::matrix::{ExactMatrix, MatrixSystem};
 use crate::systems::shifted::Shifted;
 use crate::systems::symbolic::Symbolic;
@@ -46,14 +47,21 @@ impl Declaration<'_> {
 
     /// `system name = kind(arguments)`
     pub fn system(&self, name: &Name, kind: &Name, arguments: &[Argument]) -> Result<Effect, Wrong> {
-        let (system, operators): (Arc<dyn System>, Vec<String>) = match kind.text.as_str() {
-            "hydrogenic" => (Arc::new(self.hydrogenic(kind, arguments)?), Vec::new()),
+        let (mut operators, mut tensors) = (Vec::new(), Vec::new());
+        let system: Arc<dyn System> = match kind.text.as_str() {
+            "hydrogenic" => Arc::new(self.hydrogenic(kind, arguments)?),
             "matrix" => {
-                let (system, operators) = self.matrix(kind, arguments)?;
-                (Arc::new(system), operators)
+                let (system, matrices) = self.matrix(kind, arguments)?;
+                operators = matrices;
+                Arc::new(system)
             }
-            "symbolic" => (Arc::new(self.symbolic(kind, arguments)?), Vec::new()),
-            "shifted" => (Arc::new(self.shifted(kind, arguments)?), Vec::new()),
+            "levels" => {
+                let system = self.levels(kind, arguments)?;
+                tensors = system.operators();
+                Arc::new(system)
+            }
+            "symbolic" => Arc::new(self.symbolic(kind, arguments)?),
+            "shifted" => Arc::new(self.shifted(kind, arguments)?),
             other => {
                 let fault = match self.scope.names.later.get(other) {
                     Some(what) => Fault::NotYet { what: what.clone() },
@@ -66,7 +74,7 @@ impl Declaration<'_> {
                 return Err(Problem::new(self.place(kind.span), fault).into());
             }
         };
-        Ok(Effect::System { name: name.text.clone(), system, operators })
+        Ok(Effect::System { name: name.text.clone(), system, operators, tensors })
     }
 
     fn hydrogenic(&self, kind: &Name, arguments: &[Argument]) -> Result<Hydrogenic, Wrong> {
@@ -206,6 +214,47 @@ impl Declaration<'_> {
         }
     }
 
+    /// The text of a data file that an argument names.
+    fn data_file(&self, value: &Expr, file: &str) -> Result<String, Wrong> {
+        self.files.read(file).or_else(|problem| {
+            self.refuse(
+                value.span,
+                problem.to_string(),
+                "data files stand in the folder of the session file, or below it",
+            )
+        })
+    }
+
+    /// `levels("file.csv")`
+    fn levels(&self, kind: &Name, arguments: &[Argument]) -> Result<LevelSystem, Wrong> {
+        let [Argument::Positional(value @ Expr { kind: ExprKind::Text(file), .. })] = arguments else {
+            return self.refuse(
+                kind.span,
+                "`levels` takes the name of one file in quotes",
+                "write `levels(\"file.csv\")`; `help level-table` says what stands in the file",
+            );
+        };
+        let faults = match LevelSystem::read(&self.data_file(value, file)?) {
+            Ok(system) => return Ok(system),
+            Err(faults) => faults,
+        };
+        let fault = match faults.as_slice() {
+            [only] => Fault::Other {
+                message: format!("\"{file}\", {}: {}", only.place(), only.defect),
+                help: only.defect.help(),
+            },
+            several => Fault::DataFile {
+                name: file.clone(),
+                faults: several
+                    .iter()
+                    .map(|one| format!("{}: {} — {}", one.place(), one.defect, one.defect.help()))
+                    .collect(),
+                more: several.len() >= MOST_FAULTS,
+            },
+        };
+        Err(Problem::new(self.place(value.span), fault).into())
+    }
+
     /// `matrix(H = …, V = …)`
     fn matrix(&self, kind: &Name, arguments: &[Argument]) -> Result<(MatrixSystem, Vec<String>), Wrong> {
         let mut matrices: Vec<(String, ExactMatrix)> = Vec::new();
@@ -231,16 +280,7 @@ impl Declaration<'_> {
     /// One matrix: a file, rows, `diag(…)` or `diagonals([…], …)`.
     fn entries(&self, value: &Expr) -> Result<ExactMatrix, Wrong> {
         let built = match &value.kind {
-            ExprKind::Text(file) => {
-                let text = self.files.read(file).or_else(|problem| {
-                    self.refuse(
-                        value.span,
-                        problem.to_string(),
-                        "data files stand in the folder of the session file, or below it",
-                    )
-                })?;
-                ExactMatrix::from_matrix_market(&text)
-            }
+            ExprKind::Text(file) => ExactMatrix::from_matrix_market(&self.data_file(value, file)?),
             ExprKind::List(rows) => {
                 let rows = rows.iter().map(|row| self.row(row)).collect::<Result<Vec<_>, _>>()?;
                 ExactMatrix::from_rows(rows)

@@ -5,6 +5,7 @@
 //! [`BlockKet`]s, so that `sums` walks a chain the same way for every atom. Nothing here knows of the session language.
 
 pub mod hydrogenic;
+pub mod levels;
 pub mod matrix;
 mod number;
 pub mod shifted;

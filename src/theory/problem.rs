@@ -75,6 +75,9 @@ pub enum Fault {
     Reserved { name: String },
     #[error("interrupted")]
     Interrupted,
+    /// A data file with several defects, each told with its place and cure.
+    #[error("\"{name}\" has {}{} defects", if *.more { "at least " } else { "" }, .faults.len())]
+    DataFile { name: String, faults: Vec<String>, more: bool },
     #[error("{message}")]
     Other { message: String, help: String },
 }
@@ -96,6 +99,14 @@ impl Fault {
             Fault::NotYet { .. } => "this part is still to come".into(),
             Fault::BoundTwice { .. } => "a second meaning".into(),
             _ => "here".into(),
+        }
+    }
+
+    /// What else belongs to the fault.
+    pub fn notes(&self) -> &[String] {
+        match self {
+            Fault::DataFile { faults, .. } => faults,
+            _ => &[],
         }
     }
 
@@ -136,6 +147,7 @@ impl Fault {
                 format!("choose another name, or change the earlier entry (at the prompt a new declaration of `{name}` revises it)")
             }
             Fault::Reserved { .. } => "choose another name".into(),
+            Fault::DataFile { .. } => "mend the file, then enter the declaration again".into(),
             Fault::Other { help, .. } => return (!help.is_empty()).then(|| help.clone()),
         })
     }
