@@ -250,10 +250,11 @@ impl Element {
             AngularPart::Spin if bra.l == ket.l => &spin() * &root_of(i64::from(bra.twice_l()) + 1),
             AngularPart::Spin => Surd::zero(),
             AngularPart::OrbitalMomentumAndSpin => &orbital() * &spin(),
-            AngularPart::OrbitalSquare => {
+            AngularPart::OrbitalSquare if bra.l == ket.l => {
                 let l = i64::from(bra.l);
-                if bra.l == ket.l { spin_dimension().scaled(&Rational::from(l * (l + 1))) } else { Surd::zero() }
+                (&spin_dimension() * &root_of(2 * l + 1)).scaled(&Rational::from(l * (l + 1)))
             }
+            AngularPart::OrbitalSquare => Surd::zero(),
             AngularPart::Contact if bra.l == 0 && ket.l == 0 => spin_dimension(),
             AngularPart::Contact => Surd::zero(),
         }

@@ -23,7 +23,12 @@ impl Coefficients {
     /// sqrt((2J+1)(2K+1)(2J'+1)) {L L' k; S S' s; J J' K}, times the known part of the element.
     ///
     /// Source: Edmonds, eq. 7.1.5, with the doubly reduced element as one number.
-    pub(in crate::angular) fn reduced(&mut self, tensor: &Tensor, bra: Level, ket: Level) -> Result<Surd, AngularError> {
+    pub(in crate::angular) fn reduced(
+        &mut self,
+        tensor: &Tensor,
+        bra: Level,
+        ket: Level,
+    ) -> Result<Surd, AngularError> {
         let rank = |rank: u32| HalfInteger::whole(i32::try_from(rank).unwrap_or(i32::MAX / 8));
         let momentum = |level: Level| HalfInteger::from_twice(level.term.twice_l());
         let (k, s, total) = (rank(tensor.element.orbital), rank(tensor.element.spin), rank(tensor.total));
