@@ -104,27 +104,31 @@ impl Walker<'_, '_> {
             if !self.system.degenerate(&outer, left_out) {
                 continue;
             }
-            for (sector, part) in ket.parts.iter() {
-                let states = self.system.level_in(left_out, *sector, &self.evaluator.effort).map_err(at)?;
-                for state in states.iter().filter(|state| **state != outer) {
-                    let other = match self.eigenstate(state, place) {
-                        Ok(ket) => ket.parts.get(sector).cloned(),
-                        Err(failure) if failure.is_inexact() => None,
-                        Err(failure) => return Err(failure),
-                    };
-                    let Some(other) = other else { continue };
-                    let overlap = self.backend.overlap(*sector, &other, part).map_err(at)?;
-                    let coupled = match (&overlap, self.bits) {
-                        (Number::Exact(value), _) => !value.is_zero(),
-                        (Number::Approx(value), Some(bits)) => {
-                            let size = rug::Complex::with_val(32, value).abs().into_real_imag().0;
-                            size > rug::Float::with_val(32, 1) >> (bits / 2)
-                        }
-                        (Number::Approx(_), None) => false,
-                    };
-                    if coupled {
-                        self.evaluator.note_coupling(&outer.label, &state.label);
+            // a state may have parts in several sectors: its amplitude is the sum over all of them
+            let mut others: Vec<State> = Vec::new();
+            for sector in ket.parts.keys() {
+                for state in self.system.level_in(&outer, *sector, &self.evaluator.effort).map_err(at)? {
+                    if state != outer && !others.contains(&state) {
+                        others.push(state);
                     }
+                }
+            }
+            for state in others {
+                let other = match self.eigenstate(&state, place) {
+                    Ok(ket) => ket,
+                    Err(failure) if failure.is_inexact() => continue,
+                    Err(failure) => return Err(failure),
+                };
+                let coupled = match (self.overlap(&other, ket, place)?, self.bits) {
+                    (Some(Number::Exact(value)), _) => !value.is_zero(),
+                    (Some(Number::Approx(value)), Some(bits)) => {
+                        let size = rug::Complex::with_val(32, value).abs().into_real_imag().0;
+                        size > rug::Float::with_val(32, 1) >> (bits / 2)
+                    }
+                    (Some(Number::Approx(_)), None) | (None, _) => false,
+                };
+                if coupled {
+                    self.evaluator.note_coupling(&outer.label, &state.label);
                 }
             }
         }
