@@ -88,7 +88,8 @@ impl BlockRules {
         let mut out = Vec::new();
         for other_l in triangle_range(l, element.orbital) {
             for other_s in triangle_range(s, element.spin) {
-                let term = Term::new(u32::try_from(other_l / 2).unwrap_or(0), HalfInteger::from_twice(other_s), parity);
+                let l = u32::try_from(other_l / 2).unwrap_or(0);
+                let term = level.term.other(l, HalfInteger::from_twice(other_s), parity);
                 let absent = inside && self.forbids(term).is_some();
                 if absent || self.operator_forbids(tensor, level.term, term).is_some() {
                     continue;
@@ -124,8 +125,11 @@ impl BlockRules {
         };
         let orbital = closes(a.term.twice_l(), element.orbital, b.term.twice_l());
         let spin = closes(a.term.s.twice(), element.spin, b.term.s.twice());
-        check(orbital, SelectionRule::OrbitalTriangle);
-        check(spin, SelectionRule::SpinTriangle);
+        // without L and S the triangle of J is the only one
+        if !a.term.is_momentum_only() {
+            check(orbital, SelectionRule::OrbitalTriangle);
+            check(spin, SelectionRule::SpinTriangle);
+        }
         check(closes(a.j.twice(), tensor.total, b.j.twice()), SelectionRule::TotalTriangle);
         check((a.term.parity != b.term.parity) == element.odd_parity, SelectionRule::Parity);
         // a symbol that vanishes by its triangle is no further rule

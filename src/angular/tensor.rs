@@ -152,6 +152,11 @@ impl Tensor {
         Tensor { element: Element { angular_part, ..self.element }, ..self }
     }
 
+    /// An operator of rank K on the J of levels of which no more is known; its radial element is `<J||T||J'>`.
+    pub fn of_momentum(name: &str, rank: u32) -> Result<Self, TensorError> {
+        Self::new(name, 0, rank, rank)
+    }
+
     /// The electric dipole operator, or another real vector that is odd and free of spin.
     pub fn polar_vector(name: &str) -> Self {
         Self::of_ranks(name, 1, 0, 1).odd().with_adjoint(Sign::Plus).with_angular_part(AngularPart::SpinFree)

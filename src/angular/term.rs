@@ -29,22 +29,41 @@ impl Parity {
 
 /// What a spectroscopic term says: L, S and parity.
 ///
+/// Of some levels only J and the parity are known; they enter as L = 0 and S = J, on which tensors of orbital rank 0 and spin rank K act as
+/// the Wigner-Eckart theorem for J says, with no further factor.
 /// The order is by L, then S, then parity.
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Debug)]
 pub struct Term {
     pub l: u32,
     pub s: HalfInteger,
     pub parity: Parity,
+    /// Whether L and S are not known and `s` is J.
+    momentum_only: bool,
 }
 
 impl Term {
     pub const fn new(l: u32, s: HalfInteger, parity: Parity) -> Self {
-        Term { l, s, parity }
+        Term { l, s, parity, momentum_only: false }
+    }
+
+    /// A level of which only J and the parity are known.
+    pub const fn of_momentum(j: HalfInteger, parity: Parity) -> Self {
+        Term { l: 0, s: j, parity, momentum_only: true }
+    }
+
+    /// Whether only J and the parity are known.
+    pub const fn is_momentum_only(self) -> bool {
+        self.momentum_only
+    }
+
+    /// Another term, of which as much is known as of this one.
+    pub(crate) const fn other(self, l: u32, s: HalfInteger, parity: Parity) -> Self {
+        Term { l, s, parity, ..self }
     }
 
     /// The term of natural parity (-1)^L.
     pub const fn natural(l: u32, s: HalfInteger) -> Self {
-        Term { l, s, parity: Parity::natural(l) }
+        Term::new(l, s, Parity::natural(l))
     }
 
     pub(crate) fn twice_l(self) -> i32 {
@@ -84,9 +103,16 @@ pub fn momentum_of_letter(letter: char) -> Option<u32> {
     u32::try_from(index).ok()
 }
 
-/// Writes `^3P`, and `^3P^e` where the parity is not (-1)^L.
+/// Writes `^3P`, `^3P^e` where the parity is not (-1)^L, and `J=3/2 odd` where no more is known.
 impl fmt::Display for Term {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        if self.momentum_only {
+            let parity = match self.parity {
+                Parity::Even => "even",
+                Parity::Odd => "odd",
+            };
+            return write!(f, "J={} {parity}", self.s);
+        }
         write!(f, "^{}", self.s.twice() + 1)?;
         match self.letter() {
             Some(letter) => write!(f, "{letter}")?,
@@ -116,6 +142,9 @@ impl Level {
 /// Writes `^3P_1`.
 impl fmt::Display for Level {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        if self.term.is_momentum_only() {
+            return write!(f, "{}", self.term);
+        }
         write!(f, "{}_{}", self.term, self.j)
     }
 }
@@ -157,5 +186,14 @@ mod tests {
         assert_eq!(Term::natural(1, one).to_string(), "^3P");
         assert_eq!(Term::new(1, one, Parity::Even).to_string(), "^3P^e");
         assert_eq!(Level::new(Term::natural(1, one), one).to_string(), "^3P_1");
+    }
+
+    #[test]
+    fn a_level_without_a_term_shows_its_momentum_and_parity() {
+        let j = HalfInteger::from_twice(3);
+        let term = Term::of_momentum(j, Parity::Odd);
+        assert_eq!(Level::new(term, j).to_string(), "J=3/2 odd");
+        assert_eq!(term.momenta().collect::<Vec<_>>(), [j]);
+        assert_ne!(term, Term::new(0, j, Parity::Odd));
     }
 }

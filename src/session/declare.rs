@@ -3,15 +3,23 @@
 use super::evaluate::Wrong;
 use super::files::DataFiles;
 use super::scope::{Effect, Scope};
-use crate::lang::tree::{Argument, Expr, ExprKind, Name};
-use crate::num::{Effort, Surd};
-use crate::sums::Environment;
-use crate::systems::System;
+use crate::lang::tree::{Argument, Expr, ExprKind, LabelPart, Name};
+use crate::num::{Effort, Scalar, Surd};
+use crate::sums::{Environment, Wanted};
 use crate::systems::hydrogenic::Hydrogenic;
+use crate::systems::levels::{LevelSystem, MOST_FAULTS};
 use crate::systems::matrix::{ExactMatrix, MatrixSystem};
-use crate::theory::{Fault, Problem, Resolver, terms::Place};
-use rug::Rational;
+use crate::systems::shifted::Shifted;
+use crate::systems::symbolic::Symbolic;
+use crate::systems::{StateLabel, System};
+use crate::theory::terms::{Place, Source};
+use crate::theory::{Fault, Problem, Resolver};
+use rug::{Float, Rational};
+use std::borrow::Cow;
 use std::sync::Arc;
+
+/// Digits to which shifts that are not exact are taken.
+const SHIFT_DIGITS: u32 = 40;
 
 /// Everything a declaration may look at.
 pub(super) struct Declaration<'d> {
@@ -39,12 +47,21 @@ impl Declaration<'_> {
 
     /// `system name = kind(arguments)`
     pub fn system(&self, name: &Name, kind: &Name, arguments: &[Argument]) -> Result<Effect, Wrong> {
-        let (system, operators): (Arc<dyn System>, Vec<String>) = match kind.text.as_str() {
-            "hydrogenic" => (Arc::new(self.hydrogenic(kind, arguments)?), Vec::new()),
+        let (mut operators, mut tensors) = (Vec::new(), Vec::new());
+        let system: Arc<dyn System> = match kind.text.as_str() {
+            "hydrogenic" => Arc::new(self.hydrogenic(kind, arguments)?),
             "matrix" => {
-                let (system, operators) = self.matrix(kind, arguments)?;
-                (Arc::new(system), operators)
+                let (system, matrices) = self.matrix(kind, arguments)?;
+                operators = matrices;
+                Arc::new(system)
             }
+            "levels" => {
+                let system = self.levels(kind, arguments)?;
+                tensors = system.operators();
+                Arc::new(system)
+            }
+            "symbolic" => Arc::new(self.symbolic(kind, arguments)?),
+            "shifted" => Arc::new(self.shifted(kind, arguments)?),
             other => {
                 let fault = match self.scope.names.later.get(other) {
                     Some(what) => Fault::NotYet { what: what.clone() },
@@ -57,7 +74,7 @@ impl Declaration<'_> {
                 return Err(Problem::new(self.place(kind.span), fault).into());
             }
         };
-        Ok(Effect::System { name: name.text.clone(), system, operators })
+        Ok(Effect::System { name: name.text.clone(), system, operators, tensors })
     }
 
     fn hydrogenic(&self, kind: &Name, arguments: &[Argument]) -> Result<Hydrogenic, Wrong> {
@@ -89,6 +106,80 @@ impl Declaration<'_> {
             }
         }
         Hydrogenic::new(charge, mass).or_else(|error| self.refuse(kind.span, error.to_string(), error.help()))
+    }
+
+    /// `symbolic(electrons=2)`
+    fn symbolic(&self, kind: &Name, arguments: &[Argument]) -> Result<Symbolic, Wrong> {
+        let form = "write `symbolic(electrons=1)`, `symbolic(electrons=2)`, or `symbolic(electrons=n)` for any number";
+        let [Argument::Named { name, value }] = arguments else {
+            return self.refuse(kind.span, "`symbolic` takes the number of electrons", form);
+        };
+        if name.text != "electrons" {
+            return self.refuse(name.span, format!("`{}` is not an argument of `symbolic`", name.text), form);
+        }
+        if matches!(&value.kind, ExprKind::Name(any) if any == "n") {
+            return Symbolic::new(None).or_else(|error| self.refuse(kind.span, error.to_string(), error.help()));
+        }
+        let number = self.exact(value)?;
+        let count = number.as_rational().filter(|q| q.is_integer()).and_then(|q| q.numer().to_u32());
+        let Some(count) = count else {
+            return self.refuse(value.span, format!("{number} is not a number of electrons"), form);
+        };
+        Symbolic::new(Some(count)).or_else(|error| self.refuse(value.span, error.to_string(), error.help()))
+    }
+
+    /// `shifted(he, 2^3P_0: 31.9 GHz, …)`
+    fn shifted(&self, kind: &Name, arguments: &[Argument]) -> Result<Shifted, Wrong> {
+        let form = "write the system, then levels with their shifts: `shifted(he, 2^3P_0: 31.9 GHz, 2^3P_1: 2.3 GHz)`";
+        let Some((Argument::Positional(Expr { kind: ExprKind::Name(name), span }), levels)) = arguments.split_first()
+        else {
+            return self.refuse(kind.span, "`shifted` takes a system and levels with their shifts", form);
+        };
+        let Some(base) = self.scope.systems.get(name) else {
+            return self.refuse(*span, format!("`{name}` is not a system declared above"), form);
+        };
+        if levels.is_empty() {
+            return self.refuse(kind.span, "no level is moved", form);
+        }
+        let mut moved = Vec::with_capacity(levels.len());
+        for argument in levels {
+            let Argument::Level { label, value } = argument else {
+                return self.refuse(kind.span, "every level stands with its shift", form);
+            };
+            let text: String = label
+                .parts
+                .iter()
+                .map(|part| match part {
+                    LabelPart::Text(text) => text.clone(),
+                    LabelPart::Computed(_) => "{…}".into(),
+                })
+                .collect();
+            let (by, sigma) = self.real(value)?;
+            let label = StateLabel { text, options: Vec::new() };
+            // each label is looked at alone first, so that an error stands at its place
+            base.manifold(&label, self.effort)
+                .or_else(|error| self.refuse(value.span, error.to_string(), error.help()))?;
+            moved.push((label, by, sigma));
+        }
+        Shifted::new(base.clone(), moved, self.effort)
+            .or_else(|error| self.refuse(kind.span, error.to_string(), error.help()))
+    }
+
+    /// A real number with the standard uncertainty that is written in it.
+    fn real(&self, expr: &Expr) -> Result<(Rational, Rational), Wrong> {
+        let term = Resolver::new(&self.scope.names, self.source, self.entry).scalar(expr)?;
+        let value = self.scope.evaluator(self.effort).value(&term, Wanted::Digits(SHIFT_DIGITS))?;
+        let number = match &value.scalar {
+            Scalar::Exact(exact) if exact.as_rational().is_some() => exact.as_rational().map(Cow::into_owned),
+            other if other.is_real() => other.to_ball(256).ok().and_then(|ball| ball.re.mid().to_rational()),
+            _ => None,
+        };
+        let Some(number) = number else {
+            return self.refuse(expr.span, "a shift is a real number", "write an energy, as 31.9 GHz or 1e-6");
+        };
+        let written = value.sources.iter().filter(|(source, _)| !matches!(source, Source::Constant(_)));
+        let squares = written.fold(Float::new(64), |sum, (_, part)| sum + Float::with_val(64, part.square_ref()));
+        Ok((number, squares.sqrt().to_rational().unwrap_or_default()))
     }
 
     fn positive(&self, name: &Name, value: &Expr) -> Result<Rational, Wrong> {
@@ -123,6 +214,47 @@ impl Declaration<'_> {
         }
     }
 
+    /// The text of a data file that an argument names.
+    fn data_file(&self, value: &Expr, file: &str) -> Result<String, Wrong> {
+        self.files.read(file).or_else(|problem| {
+            self.refuse(
+                value.span,
+                problem.to_string(),
+                "data files stand in the folder of the session file, or below it",
+            )
+        })
+    }
+
+    /// `levels("file.csv")`
+    fn levels(&self, kind: &Name, arguments: &[Argument]) -> Result<LevelSystem, Wrong> {
+        let [Argument::Positional(value @ Expr { kind: ExprKind::Text(file), .. })] = arguments else {
+            return self.refuse(
+                kind.span,
+                "`levels` takes the name of one file in quotes",
+                "write `levels(\"file.csv\")`; `help level-table` says what stands in the file",
+            );
+        };
+        let faults = match LevelSystem::read(&self.data_file(value, file)?) {
+            Ok(system) => return Ok(system),
+            Err(faults) => faults,
+        };
+        let fault = match faults.as_slice() {
+            [only] => Fault::Other {
+                message: format!("\"{file}\", {}: {}", only.place(), only.defect),
+                help: only.defect.help(),
+            },
+            several => Fault::DataFile {
+                name: file.clone(),
+                faults: several
+                    .iter()
+                    .map(|one| format!("{}: {} — {}", one.place(), one.defect, one.defect.help()))
+                    .collect(),
+                more: several.len() >= MOST_FAULTS,
+            },
+        };
+        Err(Problem::new(self.place(value.span), fault).into())
+    }
+
     /// `matrix(H = …, V = …)`
     fn matrix(&self, kind: &Name, arguments: &[Argument]) -> Result<(MatrixSystem, Vec<String>), Wrong> {
         let mut matrices: Vec<(String, ExactMatrix)> = Vec::new();
@@ -148,16 +280,7 @@ impl Declaration<'_> {
     /// One matrix: a file, rows, `diag(…)` or `diagonals([…], …)`.
     fn entries(&self, value: &Expr) -> Result<ExactMatrix, Wrong> {
         let built = match &value.kind {
-            ExprKind::Text(file) => {
-                let text = self.files.read(file).or_else(|problem| {
-                    self.refuse(
-                        value.span,
-                        problem.to_string(),
-                        "data files stand in the folder of the session file, or below it",
-                    )
-                })?;
-                ExactMatrix::from_matrix_market(&text)
-            }
+            ExprKind::Text(file) => ExactMatrix::from_matrix_market(&self.data_file(value, file)?),
             ExprKind::List(rows) => {
                 let rows = rows.iter().map(|row| self.row(row)).collect::<Result<Vec<_>, _>>()?;
                 ExactMatrix::from_rows(rows)

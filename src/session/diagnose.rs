@@ -23,5 +23,6 @@ pub(super) fn report_of(wrong: &Wrong) -> (Place, Diagnostic) {
 pub(super) fn diagnostic_of_fault(span: Span, fault: &Fault) -> Diagnostic {
     let mut diagnostic = Diagnostic::new(span, fault.to_string()).with_label(fault.label());
     diagnostic.help = fault.help();
+    diagnostic.notes = fault.notes().to_vec();
     diagnostic
 }

@@ -4,10 +4,14 @@ use super::declare::Declaration;
 use super::files::DataFiles;
 use super::outcome::{Answer, AnswerKind};
 use super::scope::{Effect, Scope};
-use crate::lang::tree::{DigitsWanted, Entry, EntryKind, Expr, InspectVerb, Span};
+use crate::lang::tree::{DefinitionKind, DigitsWanted, Entry, EntryKind, Expr, InspectVerb, Span};
 use crate::num::render::{RenderedKind, render};
 use crate::num::{Effort, Scalar, uncertain};
+use crate::sums::AngularSum;
 use crate::sums::{Environment, Failure, Trouble, Value, Wanted};
+use crate::systems::LevelShift;
+use crate::theory::free::free_variables;
+use crate::theory::normal::Expander;
 use crate::theory::terms::{Place, ScalarTerm};
 use crate::theory::{Binding, Fault, Problem, Resolver, formula};
 use std::sync::Arc;
@@ -90,6 +94,14 @@ impl Evaluation<'_> {
                 self.scope.evaluator(self.effort).manifold(&term, &Environment::default())?;
                 Ok(Done::Declared(Effect::Bind(name.text.clone(), Binding::Manifold(term)), Vec::new()))
             }
+            EntryKind::Definition { kind: DefinitionKind::Polarization, name, parameters, body } => {
+                if let Some(first) = parameters.first() {
+                    let message = "a polarization has no parameters".into();
+                    return self.fault(first.span, Fault::Other { message, help: "leave out the parentheses".into() });
+                }
+                let binding = Binding::Polarization(self.resolver().polarization(name, body)?);
+                Ok(Done::Declared(Effect::Bind(name.text.clone(), binding), Vec::new()))
+            }
             EntryKind::Definition { kind, name, parameters, body } => {
                 let definition = self.resolver().definition(*kind, name, parameters, body)?;
                 let binding = Binding::Definition(Arc::new(definition));
@@ -118,9 +130,9 @@ impl Evaluation<'_> {
                     notes: Vec::new(),
                 }))
             }
+            EntryKind::Paths { expression, beside } => self.paths(expression, beside.as_ref()),
             EntryKind::Inspect { verb, .. } => {
                 let what = match verb {
-                    InspectVerb::Paths => "`paths`, the decomposition over intermediate blocks",
                     InspectVerb::Crosscheck => "`crosscheck`, the second way of evaluating",
                     _ => "`contributions`, the largest terms of a sum",
                 };
@@ -132,6 +144,31 @@ impl Evaluation<'_> {
             EntryKind::Converge { .. } => self.not_yet(entry.span, "`converge`, limits of growing bases"),
             EntryKind::Budget { .. } => self.not_yet(entry.span, "`budget`, labelled contributions"),
         }
+    }
+
+    /// `paths A` and `paths A with B`.
+    fn paths(&self, expression: &Expr, beside: Option<&Expr>) -> Result<Done, Wrong> {
+        let place = Place { entry: self.entry, span: expression.span };
+        let (angular, shifts) = self.angular_sum(expression)?;
+        let mut analysis = super::paths::analysis(&angular, &shifts, place, self.effort)?;
+        if let Some(beside) = beside {
+            let (other, _) = self.angular_sum(beside)?;
+            let other = super::paths::analysis(&other, &shifts, place, self.effort)?;
+            let name = self.source.get(beside.span.start..beside.span.end).unwrap_or("the other sum");
+            analysis = analysis.compared_with(name, &other);
+        }
+        Ok(Done::Answered(super::paths::answer(&angular, &shifts, &analysis)))
+    }
+
+    fn angular_sum(&self, expression: &Expr) -> Result<(AngularSum, Vec<LevelShift>), Wrong> {
+        let place = Place { entry: self.entry, span: expression.span };
+        let free = free_variables(expression, &self.scope.names);
+        let term = self.resolver().with_variables(free).scalar(expression)?;
+        let normal = Expander::new(self.effort).expand(&term)?;
+        let mut evaluator = self.scope.evaluator(self.effort);
+        let angular = evaluator.angular_sum(&normal, place)?;
+        let shifts = evaluator.level_shifts(&normal, place)?;
+        Ok((angular, shifts))
     }
 
     fn digits(&self, expr: &Expr) -> Result<Done, Wrong> {

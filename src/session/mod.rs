@@ -10,6 +10,7 @@ mod evaluate;
 pub mod files;
 mod notebook;
 pub mod outcome;
+mod paths;
 mod replay;
 mod scope;
 mod words;

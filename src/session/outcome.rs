@@ -54,6 +54,7 @@ pub enum AnswerKind {
     Comparison,
     Expectation,
     Formula,
+    Paths,
 }
 
 impl Outcome {

@@ -13,11 +13,12 @@ pub const DEFAULT_DIGITS: u32 = 30;
 #[derive(Clone)]
 pub enum Effect {
     Bind(String, Binding),
-    /// A system, with the operators it declares by name.
+    /// A system, with the operators it declares by name: plain ones, and tensors that are written with a component.
     System {
         name: String,
         system: Arc<dyn System>,
         operators: Vec<String>,
+        tensors: Vec<String>,
     },
     Digits(Wanted),
 }
@@ -50,9 +51,11 @@ impl Scope {
                 self.names.bound.insert(name.clone(), binding.clone());
                 self.bound_by.insert(name.clone(), number);
             }
-            Effect::System { name, system, operators } => {
+            Effect::System { name, system, operators, tensors } => {
                 self.names.bound.insert(name.clone(), Binding::System);
                 self.names.matrix_operators.extend(operators.iter().cloned());
+                self.names.operators.extend(tensors.iter().cloned());
+                self.names.later.retain(|word, _| !tensors.contains(word));
                 self.systems.insert(name.clone(), system.clone());
                 self.bound_by.insert(name.clone(), number);
             }

@@ -3,7 +3,8 @@
 use super::environment::Environment;
 use super::problem::{Failure, Trouble};
 use super::walker::Kept;
-use crate::angular::{HalfInteger, ninej, sixj, threej};
+use crate::angular::HalfInteger;
+use crate::angular::chain::AngularVector;
 use crate::num::{Ball, ComplexBall, Effort, NumberError, Scalar, Surd};
 use crate::systems::{Level, Manifold, State, StateLabel, System};
 use crate::theory::terms::*;
@@ -49,6 +50,8 @@ pub struct Evaluator<'s> {
     pub(super) never_exact: BTreeSet<String>,
     /// Values of brackets at a precision.
     pub(super) known: HashMap<(String, u32), Scalar>,
+    /// What variations have been derived to, by their text.
+    pub(super) derived: HashMap<String, ScalarTerm>,
     depth: usize,
 }
 
@@ -76,6 +79,7 @@ impl<'s> Evaluator<'s> {
             kept: HashMap::new(),
             never_exact: BTreeSet::new(),
             known: HashMap::new(),
+            derived: HashMap::new(),
             depth: 0,
         }
     }
@@ -262,6 +266,8 @@ impl<'s> Evaluator<'s> {
                 }
                 Ok(sum)
             }
+            ScalarNode::Vary(variation) => self.vary(term, variation, environment, bits),
+            ScalarNode::LevelPart(part, inner) => self.level_part(*part, inner, environment, bits, place),
             ScalarNode::Wigner(symbol, arguments) => self.wigner(*symbol, arguments, environment, place),
         }
     }
@@ -285,11 +291,8 @@ impl<'s> Evaluator<'s> {
             };
             j.push(HalfInteger::from_rational(&rational).map_err(|error| refused(argument.place, error.to_string()))?);
         }
-        let value = match (symbol, j.as_slice()) {
-            (WignerSymbol::ThreeJ, &[j1, j2, j3, m1, m2, m3]) => threej(j1, j2, j3, m1, m2, m3),
-            (WignerSymbol::SixJ, &[j1, j2, j3, l1, l2, l3]) => sixj([j1, j2, j3, l1, l2, l3]),
-            (WignerSymbol::NineJ, &[a, b, c, d, e, f, g, h, i]) => ninej([[a, b, c], [d, e, f], [g, h, i]]),
-            _ => return Err(refused(place, format!("the symbol takes {}", symbol.arguments().1))),
+        let Some(value) = symbol.value(&j) else {
+            return Err(refused(place, format!("the symbol takes {}", symbol.arguments().1)));
         };
         value.map(Scalar::Exact).map_err(|error| refused(place, error.to_string()))
     }
@@ -331,7 +334,13 @@ impl<'s> Evaluator<'s> {
     /// The state a term names.
     pub fn state(&mut self, term: &StateTerm, environment: &Environment) -> Evaluated<State> {
         let system = self.system(&term.system, term.place)?;
-        let label = self.label(&term.label, environment, term.place)?;
+        let mut label = self.label(&term.label, environment, term.place)?;
+        let state = system.state(&label, &self.effort).map_err(|error| Failure::new(term.place, error))?;
+        let Some(projection) = environment.projection() else { return Ok(state) };
+        if open_momentum(&*system, &state).is_none() {
+            return Ok(state);
+        }
+        label.options.push(("M".into(), Rational::from((projection.twice(), 2))));
         system.state(&label, &self.effort).map_err(|error| Failure::new(term.place, error))
     }
 
@@ -384,6 +393,14 @@ impl<'s> Evaluator<'s> {
             self.nudged_numbers += 1;
         }
         value
+    }
+}
+
+/// J of a state whose M is left open; `None` where it is not.
+pub(super) fn open_momentum(system: &dyn System, state: &State) -> Option<HalfInteger> {
+    match system.symmetry()?.end(state).ok()?.vector {
+        AngularVector::Coupled { j, m: None } if j.twice() > 0 => Some(j),
+        _ => None,
     }
 }
 

@@ -106,6 +106,13 @@ impl Evaluator<'_> {
                     if !needs_more(&scalar, digits) || self.limit.is_some() {
                         return Ok(scalar);
                     }
+                    if best.is_none()
+                        && scalar.may_be_zero()
+                        && let Some(reason) = self.proved_zero(term)
+                    {
+                        self.note_rule(reason);
+                        return Ok(Scalar::zero());
+                    }
                     best = Some(scalar);
                 }
                 Err(failure) if failure.is_undecided() => {}

@@ -351,6 +351,10 @@ impl Walker<'_, '_> {
                 }
                 self.collect(sum, place)
             }
+            OperatorNode::Adjoint(inner) => {
+                let image = self.act_adjoint(&factor.of(inner), ket)?;
+                Ok((*image.parts).clone())
+            }
             OperatorNode::Resolvent(linear) => {
                 let (scale, resolvent) = self.resolvent(linear, factor)?;
                 self.note_coupling(&resolvent, ket, place)?;
@@ -368,7 +372,11 @@ impl Walker<'_, '_> {
                 self.scaled(&left, &amplitude, place)
             }
             // Flattening has taken these apart.
-            OperatorNode::Scalar(_) | OperatorNode::Product(_) | OperatorNode::Power(..) | OperatorNode::Call(_) => {
+            OperatorNode::Scalar(_)
+            | OperatorNode::Product(_)
+            | OperatorNode::Power(..)
+            | OperatorNode::Tensor(_)
+            | OperatorNode::Call(_) => {
                 let flat = self.flatten(&factor.operator, &factor.environment)?;
                 let mut image = ket.clone();
                 for inner in flat.factors.iter().rev() {
@@ -408,6 +416,7 @@ impl Walker<'_, '_> {
                 self.act_atom(&adjoint, &sign, ket, place)?
             }
             OperatorNode::Hamiltonian => return self.act(factor, ket),
+            OperatorNode::Adjoint(inner) => return self.act(&factor.of(inner), ket),
             OperatorNode::Sum(terms) => {
                 let mut sum: BTreeMap<Sector, Vec<(Number, BlockKet)>> = BTreeMap::new();
                 for term in terms {
@@ -455,7 +464,11 @@ impl Walker<'_, '_> {
                     }
                 }
             }
-            OperatorNode::Scalar(_) | OperatorNode::Product(_) | OperatorNode::Power(..) | OperatorNode::Call(_) => {
+            OperatorNode::Scalar(_)
+            | OperatorNode::Product(_)
+            | OperatorNode::Power(..)
+            | OperatorNode::Tensor(_)
+            | OperatorNode::Call(_) => {
                 let flat = self.flatten(&factor.operator, &factor.environment)?;
                 let mut image = ket.clone();
                 for inner in &flat.factors {

@@ -5,15 +5,18 @@
 //! [`BlockKet`]s, so that `sums` walks a chain the same way for every atom. Nothing here knows of the session language.
 
 pub mod hydrogenic;
+pub mod levels;
 pub mod matrix;
 mod number;
+pub mod shifted;
+pub mod symbolic;
 mod symmetry;
 
 use crate::num::{Effort, Interrupted, Surd};
 use rug::{Complex, Rational};
 use std::any::Any;
 use std::sync::Arc;
-pub use symmetry::Symmetry;
+pub use symmetry::{LevelShift, Symmetry};
 
 /// A symmetry block with its magnetic component: what a ket is split into.
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Debug)]
@@ -203,6 +206,11 @@ pub trait System: Send + Sync {
     /// The states of a state's level that have a part in a sector, the state itself included.
     fn level_in(&self, state: &State, sector: Sector, effort: &Effort) -> Result<Vec<State>, Obstacle>;
 
+    /// All states of the level of a state, itself included, in every sector.
+    fn level(&self, state: &State, _effort: &Effort) -> Result<Vec<State>, Obstacle> {
+        Ok(vec![state.clone()])
+    }
+
     /// Tells whether the system has this operator with this component, arguments and power.
     ///
     /// Errors: `UnknownOperator`, or `Refused` with the reason. A power other than 1 that the system does not know as an operator of its
@@ -230,6 +238,21 @@ pub trait System: Send + Sync {
 
     /// Bits below which the data of the system cannot be told apart; numeric work starts above.
     fn data_bits(&self) -> u32;
+
+    /// All states of a manifold.
+    fn states_of(&self, manifold: &Manifold, _effort: &Effort) -> Result<Vec<State>, Obstacle> {
+        Err(Obstacle::NotYet(format!("the states of {} one by one", manifold.label)))
+    }
+
+    /// The states of a manifold that have a part in a sector.
+    fn members(&self, _manifold: &Manifold, _sector: Sector) -> Vec<State> {
+        Vec::new()
+    }
+
+    /// Tells whether a state belongs to a manifold.
+    fn holds(&self, _manifold: &Manifold, _state: &State) -> bool {
+        false
+    }
 
     /// What the angular algebra knows of the system; `None` for a space without symmetry.
     fn symmetry(&self) -> Option<&dyn Symmetry> {

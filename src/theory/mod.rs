@@ -5,10 +5,13 @@
 pub mod algebra;
 mod calls;
 pub mod formula;
-mod indices;
+pub mod free;
+pub mod indices;
 pub mod names;
+pub mod normal;
 pub mod problem;
 pub mod resolve;
+mod tensors;
 pub mod terms;
 pub mod visit;
 

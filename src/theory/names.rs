@@ -1,6 +1,7 @@
 //! The names an entry may use: what the entries above it have bound, and the words of the language.
 
 use super::terms::{Definition, ManifoldTerm, StateTerm};
+use crate::angular::polarization::Polarization;
 use std::collections::{BTreeMap, BTreeSet};
 use std::sync::Arc;
 
@@ -11,6 +12,7 @@ pub enum Binding {
     State(StateTerm),
     Manifold(ManifoldTerm),
     Definition(Arc<Definition>),
+    Polarization(Polarization),
 }
 
 impl Binding {
@@ -21,11 +23,13 @@ impl Binding {
             Binding::System => "a system".into(),
             Binding::State(_) => "a state".into(),
             Binding::Manifold(_) => "a manifold".into(),
+            Binding::Polarization(_) => "a polarization".into(),
             Binding::Definition(definition) => match definition.kind {
                 DefinitionKind::Operator => "an operator".into(),
                 DefinitionKind::Resolvent => "a resolvent".into(),
                 DefinitionKind::Ket => "a ket".into(),
                 DefinitionKind::Define => "a defined number".into(),
+                DefinitionKind::Polarization => "a polarization".into(),
             },
         }
     }

@@ -73,6 +73,11 @@ pub enum Fault {
     BoundTwice { name: String, entry: usize },
     #[error("`{name}` is a word of the language and cannot be a name")]
     Reserved { name: String },
+    #[error("interrupted")]
+    Interrupted,
+    /// A data file with several defects, each told with its place and cure.
+    #[error("\"{name}\" has {}{} defects", if *.more { "at least " } else { "" }, .faults.len())]
+    DataFile { name: String, faults: Vec<String>, more: bool },
     #[error("{message}")]
     Other { message: String, help: String },
 }
@@ -94,6 +99,14 @@ impl Fault {
             Fault::NotYet { .. } => "this part is still to come".into(),
             Fault::BoundTwice { .. } => "a second meaning".into(),
             _ => "here".into(),
+        }
+    }
+
+    /// What else belongs to the fault.
+    pub fn notes(&self) -> &[String] {
+        match self {
+            Fault::DataFile { faults, .. } => faults,
+            _ => &[],
         }
     }
 
@@ -129,11 +142,12 @@ impl Fault {
             Fault::TwoSystems { .. } => "take both from one system, or multiply two brackets".into(),
             Fault::IndexCount { .. } => "write the index twice, as in `D_i R D_i`, or a component: `D_z`".into(),
             Fault::OperatorPower => "write `V^2`, `V^3`, …".into(),
-            Fault::NotYet { .. } => return None,
+            Fault::NotYet { .. } | Fault::Interrupted => return None,
             Fault::BoundTwice { name, .. } => {
                 format!("choose another name, or change the earlier entry (at the prompt a new declaration of `{name}` revises it)")
             }
             Fault::Reserved { .. } => "choose another name".into(),
+            Fault::DataFile { .. } => "mend the file, then enter the declaration again".into(),
             Fault::Other { help, .. } => return (!help.is_empty()).then(|| help.clone()),
         })
     }

@@ -27,6 +27,13 @@ impl<'a> Resolver<'a> {
         Resolver { names, source, entry, variables: Vec::new(), without: Vec::new() }
     }
 
+    /// The same with variables that need no value.
+    #[must_use]
+    pub fn with_variables(mut self, variables: Vec<String>) -> Self {
+        self.variables = variables;
+        self
+    }
+
     pub(super) fn place(&self, span: Span) -> Place {
         Place { entry: self.entry, span }
     }
@@ -75,6 +82,9 @@ impl<'a> Resolver<'a> {
         let meaning = self.resolve(body);
         self.variables.clear();
         let body_meaning = match (kind, meaning?) {
+            (DefinitionKind::Operator, Meaning::Operator(term)) if matches!(&*term.node, OperatorNode::Tensor(_)) => {
+                Meaning::Operator(named_tensor(term, &name.text))
+            }
             (DefinitionKind::Define, Meaning::Scalar(term)) => Meaning::Scalar(term),
             (DefinitionKind::Define, other) => {
                 return self.fault(body.span, Fault::WrongKind { wanted: Kind::Number, got: other.kind() });
@@ -97,7 +107,7 @@ impl<'a> Resolver<'a> {
                 return self.fault(body.span, Fault::WrongKind { wanted: Kind::Operator, got: other.kind() });
             }
             (DefinitionKind::Ket, Meaning::Ket(term)) => Meaning::Ket(term),
-            (DefinitionKind::Ket, other) => {
+            (DefinitionKind::Ket | DefinitionKind::Polarization, other) => {
                 return self.fault(body.span, Fault::WrongKind { wanted: Kind::Ket, got: other.kind() });
             }
         };
@@ -269,11 +279,18 @@ impl<'a> Resolver<'a> {
             return Ok(self.atom(name, None, Vec::new(), span));
         }
         let (base, component) = match name.split_once('_') {
-            Some((base, component)) => (base, Some(component)),
-            None => (name, None),
+            Some((base, component)) if !self.names.operators.contains(name) => (base, Some(component)),
+            _ => (name, None),
         };
+        if let Some(entry) = component.and_then(|component| self.broken_direction(component)) {
+            let name = component.unwrap_or_default().to_string();
+            return self.fault(span, Fault::Broken { name, entry });
+        }
         if self.operator_word(name) {
             return Ok(self.atom(base, component, Vec::new(), span));
+        }
+        if let Some(meaning) = component.and_then(|component| self.component_of_tensor(base, component, span)) {
+            return meaning;
         }
         if function_named(name).is_some() {
             return self.fault(
@@ -292,11 +309,14 @@ impl<'a> Resolver<'a> {
     fn operator_word(&self, name: &str) -> bool {
         let base = name.split_once('_').map_or(name, |(base, _)| base);
         self.names.matrix_operators.contains(name)
+            || self.names.operators.contains(name)
             || self.names.operators.contains(base) && !self.names.later.contains_key(name)
     }
 
     pub(super) fn atom(&self, name: &str, component: Option<&str>, arguments: Vec<ScalarTerm>, span: Span) -> Meaning {
-        let atom = AtomTerm { name: name.into(), component: component.map(Into::into), arguments, power: 1 };
+        let along = component.and_then(|component| self.direction(component));
+        let component = component.map(Into::into);
+        let atom = AtomTerm { name: name.into(), component, along, arguments, power: 1 };
         Meaning::Operator(self.term(OperatorNode::Atom(atom), span))
     }
 
@@ -325,7 +345,8 @@ impl<'a> Resolver<'a> {
             DefinitionKind::Operator | DefinitionKind::Resolvent => {
                 Meaning::Operator(self.term(OperatorNode::Call(call), span))
             }
-            DefinitionKind::Ket => Meaning::Ket(self.term(KetNode::Call(call), span)),
+            // a polarization is bound as such, never as a definition
+            DefinitionKind::Ket | DefinitionKind::Polarization => Meaning::Ket(self.term(KetNode::Call(call), span)),
         })
     }
 
@@ -439,6 +460,18 @@ impl<'a> Resolver<'a> {
     }
 }
 
+/// A tensor that carries the name it is defined with.
+fn named_tensor(term: OperatorTerm, name: &str) -> OperatorTerm {
+    match &*term.node {
+        OperatorNode::Tensor(unnamed) => {
+            let mut tensor = unnamed.clone();
+            tensor.tensor.element.name = name.to_string();
+            Term::new(OperatorNode::Tensor(tensor), term.place, term.text)
+        }
+        _ => term,
+    }
+}
+
 impl Meaning {
     pub fn kind(&self) -> Kind {
         match self {
@@ -454,9 +487,13 @@ impl Meaning {
 pub fn has_function_of_h(operator: &OperatorTerm) -> bool {
     match &*operator.node {
         OperatorNode::Resolvent(_) | OperatorNode::Function(..) => true,
-        OperatorNode::Scalar(_) | OperatorNode::Atom(_) | OperatorNode::Hamiltonian | OperatorNode::Dyad(..) => false,
+        OperatorNode::Scalar(_)
+        | OperatorNode::Atom(_)
+        | OperatorNode::Tensor(_)
+        | OperatorNode::Hamiltonian
+        | OperatorNode::Dyad(..) => false,
         OperatorNode::Sum(terms) | OperatorNode::Product(terms) => terms.iter().any(has_function_of_h),
-        OperatorNode::Power(inner, _) => has_function_of_h(inner),
+        OperatorNode::Power(inner, _) | OperatorNode::Adjoint(inner) => has_function_of_h(inner),
         OperatorNode::Call(call) => {
             matches!(&call.definition.body, Meaning::Operator(body) if has_function_of_h(body))
         }

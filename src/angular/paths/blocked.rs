@@ -3,7 +3,7 @@
 use crate::angular::chain::{AngularVector, Bracket, Part, State};
 use crate::angular::half_integer::HalfInteger;
 use crate::angular::selection::{BlockRules, SelectionRule};
-use crate::angular::term::{Level, Parity, Term};
+use crate::angular::term::{Level, Parity};
 use crate::num::{Effort, Interrupted};
 use std::collections::BTreeMap;
 
@@ -78,7 +78,8 @@ fn universe(bracket: &Bracket, parts: &[&Part]) -> Vec<Level> {
     for l in l_low..=l_high {
         for s in (s_low..=s_high).step_by(2) {
             for parity in [Parity::Even, Parity::Odd] {
-                let term = Term::new(u32::try_from(l).unwrap_or(0), HalfInteger::from_twice(s), parity);
+                let l = u32::try_from(l).unwrap_or(0);
+                let term = bracket.bra.term.other(l, HalfInteger::from_twice(s), parity);
                 levels.extend(term.momenta().map(|j| Level::new(term, j)));
                 if levels.len() > MOST_LEVELS {
                     return levels;

@@ -3,7 +3,7 @@
 use crate::angular::chain::Resolvent;
 use crate::angular::half_integer::HalfInteger;
 use crate::angular::tensor::{Element, Sign};
-use crate::angular::term::Term;
+use crate::angular::term::{Level, Term};
 use std::fmt;
 
 /// The order in which the two sides of a reduced element are written.
@@ -97,7 +97,7 @@ pub struct ChainKey {
 impl fmt::Display for Block {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self.j {
-            Some(j) => write!(f, "{}_{j}", self.term),
+            Some(j) => write!(f, "{}", Level::new(self.term, j)),
             None => write!(f, "{}", self.term),
         }
     }

@@ -119,6 +119,33 @@ impl System for Hydrogenic {
         Ok((l < n).then(|| labels::named_state(n, l, sector.twice_m / 2)).into_iter().collect())
     }
 
+    fn level(&self, state: &State, effort: &Effort) -> Result<Vec<State>, Obstacle> {
+        let (n, ..) = labels::quantum_numbers(state).ok_or_else(exact::foreign)?;
+        let mut states = Vec::new();
+        for l in 0..n {
+            effort.check()?;
+            let reach = i32::try_from(l).unwrap_or(i32::MAX);
+            states.extend((-reach..=reach).map(|m| labels::named_state(n, l, m)));
+        }
+        Ok(states)
+    }
+
+    fn states_of(&self, manifold: &Manifold, effort: &Effort) -> Result<Vec<State>, Obstacle> {
+        let number = |n: i64| u32::try_from(n).map_err(|_| exact::foreign());
+        let (n, momenta) = match manifold.numbers[..] {
+            [n, l] => (number(n)?, number(l)?..number(l)? + 1),
+            [n] => (number(n)?, 0..number(n)?),
+            _ => return Err(exact::foreign()),
+        };
+        let mut states = Vec::new();
+        for l in momenta {
+            effort.check()?;
+            let reach = i32::try_from(l).unwrap_or(i32::MAX);
+            states.extend((-reach..=reach).map(|m| labels::named_state(n, l, m)));
+        }
+        Ok(states)
+    }
+
     fn knows(&self, atom: &Atom) -> Result<bool, SystemError> {
         operators::knows(atom)
     }
