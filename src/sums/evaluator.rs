@@ -213,6 +213,7 @@ impl<'s> Evaluator<'s> {
                 }
                 Ok(product)
             }
+            ScalarNode::Quantity { value, .. } => self.scalar(value, environment, bits),
             ScalarNode::Negated(inner) => Ok(self.scalar(inner, environment, bits)?.neg()),
             ScalarNode::Quotient(a, b) => {
                 let a = self.scalar(a, environment, bits)?;

@@ -4,12 +4,14 @@
 
 pub mod algebra;
 mod calls;
+pub mod dimensions;
 pub mod formula;
 pub mod free;
 pub mod indices;
 pub mod names;
 pub mod normal;
 pub mod problem;
+mod quantities;
 pub mod resolve;
 mod tensors;
 pub mod terms;

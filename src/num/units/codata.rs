@@ -46,7 +46,12 @@ struct Row {
 
 macro_rules! row {
     ($name:literal, $old:expr, $new:expr) => {
-        Row { name: $name, old: $old, new: $new, ids: [concat!($name, " of CODATA-2018"), concat!($name, " of CODATA-2022")] }
+        Row {
+            name: $name,
+            old: $old,
+            new: $new,
+            ids: [concat!($name, " of CODATA-2018"), concat!($name, " of CODATA-2022")],
+        }
     };
 }
 

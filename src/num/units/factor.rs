@@ -58,14 +58,10 @@ impl AtomicFactor {
     /// Source: derived here from the definitions R = alpha^2 m_e c/(2 h), a0 = hbar/(m_e c alpha) and E_h = 2 h c R.
     pub fn of_si(number: Rational, [a, b, t, d]: [i32; 4]) -> Self {
         let (h, c, e) = (exact(PLANCK), exact(SPEED_OF_LIGHT), exact(ELEMENTARY_CHARGE));
-        let rational = (Rational::from(2) * h / &c).pow(a) * (c * 4u32).pow(d - t) * Rational::from(4).pow(-b) * e.pow(d);
-        let atomic_unit = AtomicFactor {
-            rational,
-            pi: d - t - b,
-            alpha: b - 2 * a,
-            rydberg: a - b - t + d,
-            electron_mass: 0,
-        };
+        let rational =
+            (Rational::from(2) * h / &c).pow(a) * (c * 4u32).pow(d - t) * Rational::from(4).pow(-b) * e.pow(d);
+        let atomic_unit =
+            AtomicFactor { rational, pi: d - t - b, alpha: b - 2 * a, rydberg: a - b - t + d, electron_mass: 0 };
         Self::rational(number).times(&atomic_unit.power(-1))
     }
 

@@ -14,4 +14,4 @@ pub use codata::{Constant, ConstantSet, MeasuredConstant};
 pub use dimension::Dimension;
 pub use factor::{AtomicFactor, ELEMENTARY_CHARGE, PLANCK, SPEED_OF_LIGHT};
 pub use unit::{LARGEST_POWER, Unit, UnitFault};
-pub use words::{Lookup, UnitWord, look_up, near, names};
+pub use words::{Lookup, UnitWord, look_up, names, near};

@@ -166,9 +166,10 @@ pub fn near(name: &str) -> Option<String> {
     if name.is_empty() || name.len() > 20 || !name.is_ascii() {
         return None;
     }
-    let prefixed = UNITS.iter().filter(|listed| listed.prefixes).flat_map(|listed| {
-        PREFIXES.iter().map(|(prefix, _)| format!("{prefix}{}", listed.symbol()))
-    });
+    let prefixed = UNITS
+        .iter()
+        .filter(|listed| listed.prefixes)
+        .flat_map(|listed| PREFIXES.iter().map(|(prefix, _)| format!("{prefix}{}", listed.symbol())));
     let known: Vec<String> = names().map(str::to_string).chain(prefixed).collect();
     let lower = name.to_lowercase();
     if let Some(found) = known.iter().find(|known| known.to_lowercase() == lower) {
