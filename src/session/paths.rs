@@ -93,7 +93,7 @@ impl PathsReport<'_> {
         for (position, chain) in analysis.chains.iter().enumerate() {
             self.chain(position, chain, &analysis.columns);
         }
-        let whole = whole(analysis);
+        let whole = whole(analysis, self.shifts);
         self.line(format!("in all: {whole}"));
         if self.lines.len() > MOST_LINES {
             let more = self.lines.len() - MOST_LINES;
@@ -265,14 +265,22 @@ fn zero_somewhere(verdict: &Verdict) -> bool {
 }
 
 /// The whole sum in words.
-fn whole(analysis: &Analysis) -> String {
-    let by_angles = "by its angular factors alone";
+fn whole(analysis: &Analysis, shifts: &[LevelShift]) -> String {
+    let mut assumed = analysis.chains.iter().flat_map(|chain| chain.equal_levels.keys()).peekable();
+    let any_assumed = assumed.peek().is_some();
+    let moved = assumed.any(|term| shifts.iter().any(|shift| shift.level.term == *term));
+    let but = if moved { " but for the shifts" } else { "" };
+    let because = match (moved, any_assumed) {
+        (true, _) => "by its angular factors",
+        (false, true) => "by its angular factors, where the levels of a term have one energy",
+        (false, false) => "by its angular factors alone",
+    };
     match analysis.whole() {
         Whole::NoPath => "zero: no path".into(),
-        Whole::Zero if analysis.columns.projections().is_empty() => format!("zero {by_angles}"),
-        Whole::Zero => format!("zero for every M, {by_angles}"),
-        Whole::ZeroForAskedM => format!("zero for the M that is written, {by_angles}"),
-        Whole::ZeroOnAverage => format!("zero in the average over M, {by_angles}"),
+        Whole::Zero if analysis.columns.projections().is_empty() => format!("zero{but}, {because}"),
+        Whole::Zero => format!("zero for every M{but}, {because}"),
+        Whole::ZeroForAskedM => format!("zero for the M that is written{but}, {because}"),
+        Whole::ZeroOnAverage => format!("zero in the average over M{but}, {because}"),
         Whole::NotZero => {
             let proportional = analysis.chains.iter().find_map(|chain| match &chain.verdict {
                 Verdict::ProportionalTo { which, factor } => Some((which, factor)),
