@@ -20,6 +20,7 @@ pub(super) fn comparison(a: &Value, b: &Value, digits: u32, unit: Option<&str>) 
         decimal: None,
         verdict: "different".into(),
         notes: Vec::new(),
+        remarks: Vec::new(),
     };
     let show = |scalar: &Scalar| in_unit(&marked(scalar, digits), unit);
     if a.sigma().is_some() || b.sigma().is_some() {
@@ -134,6 +135,7 @@ pub(super) fn expectation(
         decimal: None,
         verdict: "holds".into(),
         notes: Vec::new(),
+        remarks: Vec::new(),
     };
     if let (Scalar::Exact(x), Scalar::Exact(y)) = (&a.scalar, &b.scalar)
         && a.sigma().is_none()

@@ -83,7 +83,8 @@ impl Evaluation<'_> {
                     effort: self.effort,
                     files: self.files,
                 };
-                Ok(Done::Declared(declaration.system(name, kind, arguments)?, Vec::new()))
+                let (effect, told) = declaration.system(name, kind, arguments)?;
+                Ok(Done::Declared(effect, told))
             }
             EntryKind::State { name, system, label } => {
                 let term = self.resolver().state(system, label)?;
@@ -120,6 +121,7 @@ impl Evaluation<'_> {
                     decimal: None,
                     verdict: "formula".into(),
                     notes: Vec::new(),
+                    remarks: Vec::new(),
                 }))
             }
             EntryKind::Paths { expression, beside } => self.paths(expression, beside.as_ref()),
@@ -212,6 +214,7 @@ impl Evaluation<'_> {
                 decimal: None,
                 verdict: "uncertain".into(),
                 notes: value.limit.iter().cloned().collect(),
+                remarks: Vec::new(),
             };
         }
         let asked = self.digits_wanted();
@@ -254,6 +257,7 @@ impl Evaluation<'_> {
             decimal: if kind == AnswerKind::Exact { self.in_decimals(&value.scalar) } else { None },
             verdict: verdict.into(),
             notes,
+            remarks: Vec::new(),
         }
     }
 

@@ -11,7 +11,8 @@ use crate::theory::Fault;
 use crate::theory::dimensions::{Known, known};
 use crate::theory::terms::{ScalarTerm, Source};
 
-/// Exact values in a unit that are longer than this are written as decimals, unless `digits exact` stands above.
+/// Exact values in a unit that is no atomic unit are written as decimals when they are longer than this, unless `digits exact` stands above: their
+/// length is that of the constants.
 const LONGEST_EXACT: usize = 20;
 
 impl Evaluation<'_> {
@@ -45,14 +46,15 @@ impl Evaluation<'_> {
         };
         let value = self.value(&term)?;
         let mut answer = match &unit {
-            Some(_) => self.answer(&self.in_short(value.clone())),
+            Some(unit) if !unit.is_atomic() => self.answer(&self.in_short(value.clone())),
+            Some(_) => self.answer(&value),
             None => self.answer(&value),
         };
         if let Some(unit) = unit {
             tell_unit(&mut answer, unit.text());
         }
         answer.notes.extend(value.couplings.iter().cloned());
-        answer.notes.extend(self.constants_behind(&value));
+        answer.remarks.extend(self.constants_behind(&value));
         Ok(Done::Answered(answer))
     }
 
@@ -67,15 +69,15 @@ impl Evaluation<'_> {
     pub(super) fn sides(&self, left: &Expr, right: &Expr) -> Result<(ScalarTerm, ScalarTerm, Option<Unit>), Wrong> {
         let (a, b) = (self.resolver().scalar(left)?, self.resolver().scalar(right)?);
         let Known::Definite(dimension) = self.resolver().check_compared(&a, &b)? else { return Ok((a, b, None)) };
-        let unit = self.resolver().unit_to_show(&[&a, &b], &dimension);
+        let unit = self.resolver().unit_to_show(&[&b, &a], &dimension);
         let one = self.resolver().unit_term(&unit, left.span);
         Ok((over(&a, &one), over(&b, &one), Some(unit)))
     }
 
-    /// A value in a unit with an exact number too long to read as a ball.
+    /// A value whose exact number is too long to read as a ball.
     fn in_short(&self, mut value: Value) -> Value {
         let Scalar::Exact(exact) = &value.scalar else { return value };
-        if self.scope.wanted == Wanted::Exact || !exact.is_gaussian() || exact.to_string().len() <= LONGEST_EXACT {
+        if self.scope.wanted == Wanted::Exact || exact.to_string().len() <= LONGEST_EXACT {
             return value;
         }
         if let Ok(ball) = value.scalar.to_ball(bits_for(self.digits_wanted()) + 64) {
@@ -95,7 +97,7 @@ impl Evaluation<'_> {
             })
             .collect();
         let constants = constants.filter(|list| !list.is_empty())?;
-        Some(format!("the last digits are those of the constants: {}", constants.join(", ")))
+        Some(format!("the uncertainty is that of the constants: {}", constants.join(", ")))
     }
 }
 

@@ -391,10 +391,11 @@ impl Resolver<'_> {
         Ok(Term::new(ScalarNode::Quotient(term.clone(), one), term.place, text))
     }
 
-    /// The unit in which a result of this dimension is shown: the one it is written in, where there is only one, or the atomic unit.
+    /// The unit in which results of this dimension are shown: the only one that the first of the terms with such units is written in, or else
+    /// the atomic unit.
     pub fn unit_to_show(&self, terms: &[&ScalarTerm], dimension: &Dimension) -> Unit {
-        let mut found: Vec<Unit> = Vec::new();
         for term in terms {
+            let mut found: Vec<Unit> = Vec::new();
             super::visit::scalars(term, &mut |inner| {
                 if let ScalarNode::Quantity { unit: Some(unit), .. } = &*inner.node
                     && unit.dimension() == dimension
@@ -403,11 +404,13 @@ impl Resolver<'_> {
                     found.push(unit.clone());
                 }
             });
+            match found.as_slice() {
+                [] => {}
+                [only] => return only.clone(),
+                _ => break,
+            }
         }
-        match found.as_slice() {
-            [only] => only.clone(),
-            _ => Unit::atomic(dimension),
-        }
+        Unit::atomic(dimension)
     }
 }
 

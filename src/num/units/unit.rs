@@ -137,6 +137,14 @@ impl Unit {
         Unit { is_power: false, ..self.clone() }
     }
 
+    /// Whether it is an atomic unit but for a short rational, so that exact results in it are no longer than in atomic units.
+    pub fn is_atomic(&self) -> bool {
+        let AtomicFactor { rational, pi, alpha, rydberg, electron_mass } = self.factor();
+        [pi, alpha, rydberg, electron_mass] == [0; 4]
+            && rational.numer().significant_bits() <= 16
+            && rational.denom().significant_bits() <= 16
+    }
+
     /// Side by side.
     pub fn times(&self, other: &Self) -> Result<Self, UnitFault> {
         if let ([(word, _)], Some((last, _))) = (other.parts.as_slice(), self.parts.last())
