@@ -1,11 +1,11 @@
 //! What `compare` and `expect` say of two values.
 
 use super::outcome::{Answer, AnswerKind};
-use crate::lang::tree::{Expr, ExprKind, Operation};
+use crate::lang::tree::{Expr, ExprKind};
 use crate::num::render::{Agreement, RenderedKind, digits_in_common, render};
-use crate::num::units::{Lookup, look_up};
 use crate::num::{Scalar, decimal};
 use crate::sums::{Value, bits_for, brief};
+use crate::theory::unit_words::number_of_quantity;
 use rug::{Float, Rational};
 
 /// `compare A with B`: equal, or both values with difference, ratio and digits in common.
@@ -106,7 +106,7 @@ fn in_unit(line: &str, unit: Option<&str>) -> String {
     }
 }
 
-fn marked(scalar: &Scalar, digits: u32) -> String {
+pub(super) fn marked(scalar: &Scalar, digits: u32) -> String {
     let rendered = render(scalar, digits);
     match rendered.kind {
         RenderedKind::Exact => format!("= {}", rendered.text),
@@ -148,6 +148,7 @@ pub(super) fn expectation(
         let shown = |value: &Value| {
             let line = match value.sigma() {
                 Some(sigma) => format!("~ {}", super::evaluate::concise(&value.scalar, &sigma)),
+                None if unit.is_some() => super::quantities::marked_decimal(&value.scalar, digits),
                 None => marked(&value.scalar, digits),
             };
             in_unit(&line, unit).trim_start_matches(['=', '~', ' ']).to_string()
@@ -184,26 +185,10 @@ fn joined_sigma(a: &Value, b: &Value) -> Option<Float> {
     }
 }
 
-fn is_product(operation: Operation) -> bool {
-    matches!(operation, Operation::Multiply | Operation::Juxtapose | Operation::Divide)
-}
-
-/// Whether an expression is made of unit words.
-fn is_unit(expr: &Expr) -> bool {
-    match &expr.kind {
-        ExprKind::Name(name) => matches!(look_up(name), Lookup::Word(_)),
-        ExprKind::Binary { operation: Operation::Power, left, .. } => is_unit(left),
-        ExprKind::Binary { operation, left, right } if is_product(*operation) => is_unit(left) && is_unit(right),
-        _ => false,
-    }
-}
-
 /// One unit of the last digit of a number written as a decimal.
 fn last_place(written: &Expr) -> Option<Rational> {
     match &written.kind {
         ExprKind::Negate(inner) => last_place(inner),
-        // A number in its unit; the value is compared in that unit.
-        ExprKind::Binary { operation, left, right } if is_product(*operation) && is_unit(right) => last_place(left),
         ExprKind::Number(text) => {
             let (mantissa, exponent) = match text.split_once(['e', 'E']) {
                 Some((mantissa, exponent)) => (mantissa, exponent.parse::<i32>().ok()?),
@@ -213,6 +198,7 @@ fn last_place(written: &Expr) -> Option<Rational> {
             let place = exponent.checked_sub(i32::try_from(fraction.len()).ok()?)?;
             decimal::parse_decimal(&format!("1e{place}")).ok()
         }
-        _ => None,
+        // The value is compared in the unit.
+        _ => number_of_quantity(written).and_then(last_place),
     }
 }

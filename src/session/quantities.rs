@@ -4,16 +4,17 @@ use super::evaluate::{Done, Evaluation, Wrong};
 use super::outcome::Answer;
 use super::scope::Effect;
 use crate::lang::tree::{Expr, Name};
-use crate::num::Scalar;
 use crate::num::units::{ConstantSet, Unit};
+use crate::num::{Scalar, uncertain};
 use crate::sums::{Value, Wanted, bits_for};
 use crate::theory::Fault;
 use crate::theory::dimensions::{Known, known};
 use crate::theory::terms::{ScalarTerm, Source};
+use rug::Rational;
 
-/// Exact values in a unit that is no atomic unit are written as decimals when they are longer than this, unless `digits exact` stands above: their
-/// length is that of the constants.
-const LONGEST_EXACT: usize = 20;
+/// Longest exact decimal that is written in a unit, and longest exact number of another form; in atomic units exact numbers are never rounded.
+const LONGEST_DECIMAL: usize = 20;
+const LONGEST_FRACTION: usize = 12;
 
 impl Evaluation<'_> {
     /// `constants CODATA-2022`
@@ -46,7 +47,7 @@ impl Evaluation<'_> {
         };
         let value = self.value(&term)?;
         let mut answer = match &unit {
-            Some(unit) if !unit.is_atomic() => self.answer(&self.in_short(value.clone())),
+            Some(unit) if !unit.is_atomic() => self.in_decimals_of(&value),
             Some(_) => self.answer(&value),
             None => self.answer(&value),
         };
@@ -74,16 +75,26 @@ impl Evaluation<'_> {
         Ok((over(&a, &one), over(&b, &one), Some(unit)))
     }
 
-    /// A value whose exact number is too long to read as a ball.
-    fn in_short(&self, mut value: Value) -> Value {
-        let Scalar::Exact(exact) = &value.scalar else { return value };
-        if self.scope.wanted == Wanted::Exact || exact.to_string().len() <= LONGEST_EXACT {
-            return value;
+    /// The answer in a unit that is no atomic unit: an exact decimal where there is a short one, a long fraction rounded.
+    fn in_decimals_of(&self, value: &Value) -> Answer {
+        let exact = match &value.scalar {
+            Scalar::Exact(exact) if self.scope.wanted != Wanted::Exact && value.sources.is_empty() => exact.to_string(),
+            _ => return self.answer(value),
+        };
+        if let Some(decimal) = short_decimal(&value.scalar) {
+            let mut answer = self.answer(value);
+            if answer.value.as_ref() == Some(&exact) {
+                answer.lines.iter_mut().for_each(|line| *line = line.replace(&exact, &decimal));
+                answer.value = Some(decimal);
+            }
+            return answer;
         }
-        if let Ok(ball) = value.scalar.to_ball(bits_for(self.digits_wanted()) + 64) {
-            value.scalar = Scalar::Approx(ball);
+        match value.scalar.to_ball(bits_for(self.digits_wanted()) + 64) {
+            Ok(ball) if exact.len() > LONGEST_FRACTION => {
+                self.answer(&Value { scalar: Scalar::Approx(ball), ..value.clone() })
+            }
+            _ => self.answer(value),
         }
-        value
     }
 
     /// The constants an uncertainty comes from, where it comes from nothing else.
@@ -98,6 +109,20 @@ impl Evaluation<'_> {
             .collect();
         let constants = constants.filter(|list| !list.is_empty())?;
         Some(format!("the uncertainty is that of the constants: {}", constants.join(", ")))
+    }
+}
+
+/// A rational as an exact decimal of few digits, where it is one.
+fn short_decimal(scalar: &Scalar) -> Option<String> {
+    let text = uncertain::concise(&scalar.as_rational()?, &Rational::new());
+    (!text.contains('/') && text.len() <= LONGEST_DECIMAL).then_some(text)
+}
+
+/// A number with its sign of exactness, as an exact decimal where it is a short one.
+pub(super) fn marked_decimal(scalar: &Scalar, digits: u32) -> String {
+    match short_decimal(scalar) {
+        Some(decimal) => format!("= {decimal}"),
+        None => super::compare::marked(scalar, digits),
     }
 }
 

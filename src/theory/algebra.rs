@@ -273,7 +273,9 @@ impl Resolver<'_> {
                 },
                 _ => self.inverse_of_meaning(denominator, power),
             },
-            ExprKind::Binary { operation: Operation::Multiply | Operation::Juxtapose, left, right } => {
+            ExprKind::Binary { operation: Operation::Multiply | Operation::Juxtapose, left, right }
+                if !self.ends_in_unit(right) =>
+            {
                 // 1/(A B) = 1/B 1/A
                 let right = self.inverse(right, power)?;
                 let left = self.inverse(left, power)?;

@@ -6,6 +6,7 @@
 use super::names::Binding;
 use super::problem::{Fault, Kind, Problem};
 use super::resolve::Resolver;
+use super::unit_words::{grouped, number_of_quantity};
 use crate::lang::tree::{
     Argument, DefinitionKind, Expr, ExprKind, LabelPart, Name, Operation, Span, StateRef, StateRefKind,
 };
@@ -261,6 +262,10 @@ impl Expansion<'_, '_> {
     }
 
     fn multiply_out(&mut self, e: &Expr) -> Result<Vec<Monomial>, Problem> {
+        if number_of_quantity(e).is_some() {
+            return Ok(vec![self.single(e.clone())]);
+        }
+        let e = &grouped(e);
         match &e.kind {
             ExprKind::Number(text) => {
                 let number = decimal::parse_decimal(text).unwrap_or_default();

@@ -2,8 +2,8 @@
 
 use super::names::Names;
 use super::terms::function_named;
+use super::unit_words::{ends_in_quantity, is_unit};
 use crate::lang::tree::{Argument, Expr, ExprKind, Operation, StateRef, StateRefKind};
-use crate::num::units::{Lookup, look_up};
 use std::collections::BTreeSet;
 
 /// The unbound names that stand as arguments of definitions, or beside H in a sum, where nothing but a number can be meant.
@@ -77,31 +77,6 @@ impl Search<'_> {
         if let StateRefKind::Named { arguments, .. } = &state.kind {
             arguments.iter().for_each(|argument| self.expr(argument, true));
         }
-    }
-}
-
-/// Whether an expression is made of unit words.
-fn is_unit(expr: &Expr) -> bool {
-    match &expr.kind {
-        ExprKind::Name(name) => matches!(look_up(name), Lookup::Word(_)),
-        ExprKind::Binary { operation: Operation::Power, left, .. } => is_unit(left),
-        ExprKind::Binary { operation: Operation::Add | Operation::Subtract, .. } => false,
-        ExprKind::Binary { left, right, .. } => is_unit(left) && is_unit(right),
-        _ => false,
-    }
-}
-
-/// Whether the last factor of a product is a number or a unit behind one.
-fn ends_in_quantity(expr: &Expr) -> bool {
-    match &expr.kind {
-        ExprKind::Number(_) | ExprKind::Measured { .. } => true,
-        ExprKind::Binary {
-            operation: Operation::Multiply | Operation::Juxtapose | Operation::Divide,
-            left,
-            right,
-            ..
-        } => ends_in_quantity(right) || is_unit(right) && ends_in_quantity(left),
-        _ => false,
     }
 }
 

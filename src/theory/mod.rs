@@ -15,6 +15,7 @@ mod quantities;
 pub mod resolve;
 mod tensors;
 pub mod terms;
+pub mod unit_words;
 pub mod visit;
 
 pub use names::{Binding, Names};

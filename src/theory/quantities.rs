@@ -164,6 +164,11 @@ impl Resolver<'_> {
         Ok(Some((self.in_units(value.clone(), unit, before, span), count)))
     }
 
+    /// Whether the last factor of a product is a unit, to be taken together with what stands before it.
+    pub(super) fn ends_in_unit(&self, last: &Expr) -> bool {
+        self.unit_in(last, Reading::BehindNumber).is_some()
+    }
+
     /// A unit that stands alone.
     pub(super) fn lone_unit<T>(&self, expr: &Expr) -> Option<Resolved<T>> {
         let unit = self.unit_in(expr, Reading::Unbound)?;
