@@ -81,7 +81,7 @@ impl Declaration<'_> {
     }
 
     fn hydrogenic(&self, kind: &Name, arguments: &[Argument], told: &mut Vec<String>) -> Result<Hydrogenic, Wrong> {
-        let (mut charge, mut mass) = (Rational::from(1), None);
+        let (mut charge, mut mass, mut spin) = (Rational::from(1), None, false);
         let mut seen: Vec<&str> = Vec::new();
         for argument in arguments {
             let Argument::Named { name, value } = argument else {
@@ -103,16 +103,34 @@ impl Declaration<'_> {
                     told.extend(note);
                     mass = Some(number);
                 }
+                "spin" => spin = self.spin(value)?,
                 other => {
                     return self.refuse(
                         name.span,
                         format!("`{other}` is not an argument of `hydrogenic`"),
-                        "it has Z (nuclear charge) and mass (nuclear mass in electron masses, `inf` if not given)",
+                        "it has Z (nuclear charge), mass (nuclear mass in electron masses, `inf` if not given) and spin \
+                         (0 if not given, or 1/2)",
                     );
                 }
             }
         }
-        Hydrogenic::new(charge, mass).or_else(|error| self.refuse(kind.span, error.to_string(), error.help()))
+        let atom =
+            Hydrogenic::new(charge, mass).or_else(|error| self.refuse(kind.span, error.to_string(), error.help()))?;
+        Ok(if spin { atom.with_spin() } else { atom })
+    }
+
+    /// Whether the electron has its spin.
+    fn spin(&self, value: &Expr) -> Result<bool, Wrong> {
+        let number = self.exact(value)?;
+        match number.as_rational() {
+            Some(q) if *q == 0 => Ok(false),
+            Some(q) if *q == Rational::from((1, 2)) => Ok(true),
+            _ => self.refuse(
+                value.span,
+                format!("spin = {number} is not the spin of an electron"),
+                "write spin=1/2, or spin=0 to leave the spin out",
+            ),
+        }
     }
 
     /// `symbolic(electrons=2)`

@@ -4,8 +4,8 @@
 
 pub mod algebra;
 mod calls;
+mod checked;
 pub mod dimensions;
-pub mod formula;
 pub mod free;
 pub mod indices;
 pub mod names;
