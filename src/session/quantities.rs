@@ -9,7 +9,7 @@ use crate::num::{Scalar, uncertain};
 use crate::sums::{Value, Wanted, bits_for};
 use crate::theory::Fault;
 use crate::theory::dimensions::{Known, known};
-use crate::theory::terms::{ScalarTerm, Source};
+use crate::theory::terms::{ScalarNode, ScalarTerm, Source};
 use rug::Rational;
 
 /// Longest exact decimal that is written in a unit, and longest exact number of another form; in atomic units exact numbers are never rounded.
@@ -47,7 +47,7 @@ impl Evaluation<'_> {
         };
         let value = self.value(&term)?;
         let mut answer = match &unit {
-            Some(unit) if !unit.is_atomic() => self.in_decimals_of(&value),
+            Some(unit) if !unit.is_atomic() || has_other_units(&term) => self.in_decimals_of(&value),
             Some(_) => self.answer(&value),
             None => self.answer(&value),
         };
@@ -110,6 +110,15 @@ impl Evaluation<'_> {
         let constants = constants.filter(|list| !list.is_empty())?;
         Some(format!("the uncertainty is that of the constants: {}", constants.join(", ")))
     }
+}
+
+/// Whether units stand in a term that are no atomic units.
+fn has_other_units(term: &ScalarTerm) -> bool {
+    let mut found = false;
+    crate::theory::visit::scalars(term, &mut |inner| {
+        found |= matches!(&*inner.node, ScalarNode::Quantity { unit: Some(unit), .. } if !unit.is_atomic());
+    });
+    found
 }
 
 /// A rational as an exact decimal of few digits, where it is one.

@@ -160,8 +160,18 @@ impl Evaluator<'_> {
             return Err(Failure::new(term.place, complex_with_uncertainty()));
         }
         let real: &Ball = &ball.re;
+        if real.contains_zero() && is_negligible(real, &ends[0]) {
+            return Ok(Float::new(64));
+        }
         Ok(Float::with_val(64, real.mid()) << (SHIFT_BITS - 1))
     }
+}
+
+/// Whether a difference that may be zero is so small beside the value that it would be no uncertainty anybody could have.
+fn is_negligible(difference: &Ball, value: &Scalar) -> bool {
+    const BITS: u32 = 60;
+    let change = Float::with_val(64, difference.rad()) << (SHIFT_BITS + BITS);
+    value.to_ball(128).is_ok_and(|ball| change < ball.magnitude_below())
 }
 
 /// Whether the standard uncertainty is so much larger than the radius of a value that further digits would not be shown.

@@ -6,10 +6,12 @@
 use super::problem::Fault;
 use super::resolve::{Resolved, Resolver};
 use super::terms::*;
+use crate::lang::tree::Span;
 use crate::num::units::{ConstantSet, Dimension};
+use rug::Rational;
 
 /// What is known of the dimension of a number.
-#[derive(Clone, PartialEq, Eq, Debug, Default)]
+#[derive(Clone, PartialEq, Eq, PartialOrd, Ord, Debug, Default)]
 pub enum Known {
     /// Made of plain numbers alone, as `2 pi`.
     Number,
@@ -45,8 +47,29 @@ impl Known {
         }
     }
 
+    /// Of a power with this exponent, where it is written as a number.
+    pub(super) fn power(&self, exponent: Option<&Rational>) -> Self {
+        match (self, exponent) {
+            (Known::Number, _) => Known::Number,
+            (Known::Definite(dimension), Some(exponent)) => Known::definite(dimension.power(exponent)),
+            _ => Known::Free,
+        }
+    }
+
+    /// Of a function of the number.
+    pub(super) fn under(self, function: ScalarFunction) -> Self {
+        match (function, self) {
+            (_, Known::Number) => Known::Number,
+            (ScalarFunction::Sqrt, Known::Definite(dimension)) => {
+                Known::Definite(dimension.power(&Rational::from((1, 2))))
+            }
+            (ScalarFunction::Abs | ScalarFunction::Re | ScalarFunction::Im | ScalarFunction::Conj, same) => same,
+            _ => Known::Free,
+        }
+    }
+
     /// The dimension a sum of the two has, or both where they exclude each other.
-    fn joined<'k>(&'k self, other: &'k Self) -> Result<Self, (&'k Self, &'k Self)> {
+    pub(super) fn joined<'k>(&'k self, other: &'k Self) -> Result<Self, (&'k Self, &'k Self)> {
         match (self, other) {
             (Known::Definite(a), Known::Definite(b) | Known::Atomic(b)) | (Known::Atomic(b), Known::Definite(a)) => {
                 if a == b { Ok(Known::Definite(a.clone())) } else { Err((self, other)) }
@@ -76,7 +99,7 @@ impl Known {
 }
 
 /// How to make the one of the other, where there is an accepted way.
-pub(super) fn way_between(a: &Known, b: &Known) -> String {
+fn way_between(a: &Known, b: &Known) -> String {
     let is = |known: &Known, dimension: Dimension| known.dimension() == Some(&dimension);
     let either = |dimension: Dimension| is(a, dimension.clone()) || is(b, dimension);
     if either(Dimension::energy()) && either(Dimension::length()) {
@@ -133,25 +156,11 @@ pub fn known(term: &ScalarTerm) -> Known {
             factors.iter().fold(Known::Number, |product, factor| product.times(&known(factor)))
         }
         ScalarNode::Quotient(a, b) => known(a).times(&known(b).inverse()),
-        ScalarNode::Power(base, exponent) => match (known(base), &*exponent.node) {
-            (Known::Number, _) => match known(exponent) {
-                Known::Number => Known::Number,
-                _ => Known::Free,
-            },
-            (Known::Definite(dimension), _) => match rational(exponent) {
-                Some(power) => Known::definite(dimension.power(&power)),
-                None => Known::Free,
-            },
+        ScalarNode::Power(base, exponent) => match known(exponent) {
+            Known::Number => known(base).power(exact_power(exponent).as_ref()),
             _ => Known::Free,
         },
-        ScalarNode::Function(function, inner) => match (function, known(inner)) {
-            (_, Known::Number) => Known::Number,
-            (ScalarFunction::Sqrt, Known::Definite(dimension)) => {
-                Known::Definite(dimension.power(&rug::Rational::from((1, 2))))
-            }
-            (ScalarFunction::Abs | ScalarFunction::Re | ScalarFunction::Im | ScalarFunction::Conj, same) => same,
-            _ => Known::Free,
-        },
+        ScalarNode::Function(function, inner) => known(inner).under(*function),
         ScalarNode::Root { from, to, .. } => known(from).joined(&known(to)).unwrap_or(Known::Free).of_variable(),
         ScalarNode::Series { body, .. } => known(body),
     }
@@ -168,20 +177,31 @@ impl Known {
 }
 
 /// The rational that a term is as it is written.
-fn rational(term: &ScalarTerm) -> Option<rug::Rational> {
+pub(super) fn exact_power(term: &ScalarTerm) -> Option<Rational> {
     match &*term.node {
         ScalarNode::Exact(value) => value.as_rational().map(|q| q.into_owned()),
-        ScalarNode::Negated(inner) => rational(inner).map(|q| -q),
+        ScalarNode::Negated(inner) => exact_power(inner).map(|q| -q),
+        ScalarNode::Product(factors) => {
+            factors.iter().try_fold(Rational::from(1), |product, factor| Some(product * exact_power(factor)?))
+        }
         ScalarNode::Quotient(a, b) => {
-            let divisor = rational(b).filter(|q| *q != 0)?;
-            Some(rational(a)? / divisor)
+            let divisor = exact_power(b).filter(|q| *q != 0)?;
+            Some(exact_power(a)? / divisor)
         }
         _ => None,
     }
 }
 
+/// A quantity with a unit where a plain number is needed.
+pub(super) fn not_plain(dimension: &Dimension, place: &str) -> Fault {
+    Fault::Other {
+        message: format!("{} stands {place}, where a plain number is needed", dimension.words()),
+        help: format!("divide it by a unit: `(…)/(1 {})`", dimension.atomic_unit()),
+    }
+}
+
 /// Zero is zero in any unit.
-fn is_zero(term: &ScalarTerm) -> bool {
+pub(super) fn is_zero(term: &ScalarTerm) -> bool {
     matches!(&*term.node, ScalarNode::Exact(value) if value.is_zero())
 }
 
@@ -227,14 +247,7 @@ impl Resolver<'_> {
     /// Refuses a quantity with a unit where a plain number is needed.
     pub(super) fn check_plain(&self, term: &ScalarTerm, place: &str) -> Resolved<()> {
         let Known::Definite(dimension) = known(term) else { return Ok(()) };
-        let unit = dimension.atomic_unit();
-        self.fault(
-            term.place.span,
-            Fault::Other {
-                message: format!("{} stands {place}, where a plain number is needed", dimension.words()),
-                help: format!("divide it by a unit: `(…)/(1 {unit})`"),
-            },
-        )
+        self.fault(term.place.span, not_plain(&dimension, place))
     }
 
     /// Refuses quantities with units in functions of plain numbers, and in exponents.
@@ -250,13 +263,26 @@ impl Resolver<'_> {
     pub(super) fn check_power(&self, base: &ScalarTerm, exponent: &ScalarTerm) -> Resolved<()> {
         self.check_plain(exponent, "in an exponent")?;
         if let Known::Definite(dimension) = known(base)
-            && rational(exponent).is_none()
+            && exact_power(exponent).is_none()
         {
             let message = format!("{} is raised to a power that is not written as a number", dimension.words());
             let help = "write the exponent as a whole number or fraction, as in `x^2`, `x^(1/2)`".into();
             return self.fault(exponent.place.span, Fault::Other { message, help });
         }
         Ok(())
+    }
+
+    /// Refuses arguments of a definition that do not fit into it; what is known of its value beyond what the definition says.
+    pub(super) fn check_call(&self, call: &Call, span: Span) -> Resolved<Option<Known>> {
+        let arguments: Vec<Known> = call.arguments.iter().map(known).collect();
+        match super::checked::call(call, &arguments) {
+            Ok(known) => Ok(Some(known).filter(|known| *known != call.definition.known)),
+            Err(Fault::Other { message, help }) => {
+                let message = format!("inside `{}`, with these arguments, {message}", call.definition.name);
+                self.fault(span, Fault::Other { message, help })
+            }
+            Err(fault) => self.fault(span, fault),
+        }
     }
 
     /// Constants of another set than the usual one are part of the meaning of a text.

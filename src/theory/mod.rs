@@ -4,6 +4,7 @@
 
 pub mod algebra;
 mod calls;
+mod checked;
 pub mod dimensions;
 pub mod free;
 pub mod indices;

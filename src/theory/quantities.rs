@@ -368,7 +368,7 @@ impl Resolver<'_> {
                 } else if *wanted == Dimension::energy() && *dimension == Dimension::length() {
                     format!("ask for the photon energy: `photon({}) in {written}`", shortened(&term.text))
                 } else {
-                    super::dimensions::way_between(&known, &Known::Definite(wanted.clone()))
+                    format!("ask for a unit of {}, as `{}`", dimension.words(), dimension.atomic_unit())
                 };
                 return refused(message, help);
             }

@@ -360,8 +360,15 @@ impl<'a> Resolver<'a> {
         }
         let arguments = arguments.iter().map(|argument| self.scalar(argument)).collect::<Resolved<Vec<_>>>()?;
         let call = Call { definition: definition.clone(), arguments };
+        let known = self.check_call(&call, span)?;
         Ok(match definition.kind {
-            DefinitionKind::Define => Meaning::Scalar(self.term(ScalarNode::Call(call), span)),
+            DefinitionKind::Define => {
+                let value = self.term(ScalarNode::Call(call), span);
+                Meaning::Scalar(match known {
+                    Some(known) => self.term(ScalarNode::Quantity { known, unit: None, value }, span),
+                    None => value,
+                })
+            }
             DefinitionKind::Operator | DefinitionKind::Resolvent => {
                 Meaning::Operator(self.term(OperatorNode::Call(call), span))
             }

@@ -45,8 +45,12 @@ mod tests {
     use crate::lang::parser::parse_expression;
 
     #[test]
-    fn numbers_keep_their_units() {
-        let tree = parse_expression("3 C m^2/V").expect("an expression");
-        assert!(number_of_quantity(&tree).is_some() && is_unit(&parse_expression("C m^2/V").expect("a unit")));
+    fn numbers_have_their_units() {
+        for (text, number) in [("3 C m^2/V", Some("3")), ("1.5(2) MHz", Some("1.5(2)")), ("3 x", None), ("x MHz", None)]
+        {
+            let tree = parse_expression(text).expect(text);
+            assert_eq!(number_of_quantity(&tree).map(ToString::to_string).as_deref(), number, "{text}");
+        }
+        assert!(is_unit(&parse_expression("C m^2/V").expect("a unit")));
     }
 }

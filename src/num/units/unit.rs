@@ -58,7 +58,7 @@ impl Unit {
     /// A unit that is a rational multiple of an atomic unit, such as the hartree of a reduced mass.
     pub fn of_system(text: String, number: Rational, dimension: Dimension) -> Self {
         let factor = AtomicFactor::rational(number);
-        Self::of_parts(text.clone(), vec![(UnitWord { name: text, factor, dimension, role: Role::Plain }, 1)], false)
+        Self::of_parts(text.clone(), vec![(UnitWord { name: text, factor, dimension, role: Role::OfSystem }, 1)], false)
     }
 
     /// The unit of plain numbers, as the numerator of `1/cm`.
@@ -139,6 +139,9 @@ impl Unit {
 
     /// Whether it is an atomic unit but for a short rational, so that exact results in it are no longer than in atomic units.
     pub fn is_atomic(&self) -> bool {
+        if self.parts.iter().all(|(word, _)| word.role == Role::OfSystem) {
+            return true;
+        }
         let AtomicFactor { rational, pi, alpha, rydberg, electron_mass } = self.factor();
         [pi, alpha, rydberg, electron_mass] == [0; 4]
             && rational.numer().significant_bits() <= 16

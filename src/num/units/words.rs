@@ -22,6 +22,8 @@ pub enum Role {
     Metre,
     /// A multiple of the second.
     Second,
+    /// A unit of a system, an atomic unit with another mass.
+    OfSystem,
     /// The radian: in rad/s it stands for hbar, otherwise for 1.
     Radian,
 }
@@ -39,13 +41,14 @@ pub enum Lookup {
     Unknown,
 }
 
-/// Prefixes with their powers of ten; `c` stands only before the metre.
-const PREFIXES: [(&str, i32); 11] = [
+/// Prefixes with their powers of ten; `mu` is how the Greek letter is read, `c` stands only before the metre.
+const PREFIXES: [(&str, i32); 12] = [
     ("a", -18),
     ("f", -15),
     ("p", -12),
     ("n", -9),
     ("u", -6),
+    ("mu", -6),
     ("m", -3),
     ("k", 3),
     ("M", 6),
