@@ -325,16 +325,10 @@ impl Declaration<'_> {
             Err(faults) => faults,
         };
         let fault = match faults.as_slice() {
-            [only] => Fault::Other {
-                message: format!("\"{file}\", {}: {}", only.place(), only.defect),
-                help: only.defect.help(),
-            },
+            [only] => Fault::Other { message: format!("\"{file}\", {}", only.to_text()), help: only.defect.help() },
             several => Fault::DataFile {
                 name: file.clone(),
-                faults: several
-                    .iter()
-                    .map(|one| format!("{}: {} — {}", one.place(), one.defect, one.defect.help()))
-                    .collect(),
+                faults: several.iter().map(|one| format!("{}; {}", one.to_text(), one.defect.help())).collect(),
                 more: several.len() >= MOST_FAULTS,
             },
         };

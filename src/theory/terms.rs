@@ -50,6 +50,8 @@ pub enum Source {
     Datum { system: String, index: usize },
 }
 
+// Terms are shared by their nodes; a node is made once.
+#[allow(clippy::large_enum_variant)]
 #[derive(Clone, Debug)]
 pub enum ScalarNode {
     Exact(Surd),

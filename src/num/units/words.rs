@@ -175,7 +175,10 @@ pub fn near(name: &str) -> Option<String> {
         .flat_map(|listed| PREFIXES.iter().map(|(prefix, _)| format!("{prefix}{}", listed.symbol())));
     let known: Vec<String> = names().map(str::to_string).chain(prefixed).collect();
     let lower = name.to_lowercase();
-    if let Some(found) = known.iter().find(|known| known.to_lowercase() == lower) {
+    // of `mHz` and `MHz` the one that differs in fewer letters, then the larger unit, which is the commoner in a spectrum
+    let differing = |known: &str| known.chars().zip(name.chars()).filter(|(a, b)| a != b).count();
+    let other_case = known.iter().filter(|known| known.to_lowercase() == lower);
+    if let Some(found) = other_case.min_by_key(|known| (differing(known), known.starts_with('m'))) {
         return Some(found.clone());
     }
     if name.len() < 3 {
