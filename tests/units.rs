@@ -138,7 +138,7 @@ fn conversions_undo_each_other() {
         ["Hz", "eV", "J", "K", "cm^-1", "rad/s", "hartree", "rydberg"].as_slice(),
         &["m", "nm", "angstrom", "bohr"],
         &["s", "fs", "hbar/hartree"],
-        &["kg", "u", "m_e"],
+        &["kg", "dalton", "m_e"],
         &["V/m", "V/cm", "kV/cm", "hartree/(e a0)", "V cm^-1"],
         &["C m^2/V", "Hz/(V/m)^2", "e^2 a0^2/hartree", "F m^2"],
         &["a0^3", "cm^3", "angstrom^3"],
