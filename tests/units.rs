@@ -140,7 +140,7 @@ fn conversions_undo_each_other() {
         &["s", "fs", "hbar/hartree"],
         &["kg", "dalton", "m_e"],
         &["V/m", "V/cm", "kV/cm", "hartree/(e a0)", "V cm^-1"],
-        &["C m^2/V", "Hz/(V/m)^2", "e^2 a0^2/hartree", "F m^2"],
+        &["C m^2/V", "Hz/(V/m)^2", "e^2 a0^2/hartree", "farad m^2"],
         &["a0^3", "cm^3", "angstrom^3"],
         &["W/cm^2", "W/m^2", "hartree^2/(hbar a0^2)"],
         &["T", "G", "hbar/(e a0^2)"],
