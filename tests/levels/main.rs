@@ -5,7 +5,7 @@ mod gradients;
 mod hostile;
 mod paths;
 #[path = "../laws/random.rs"]
-#[allow(dead_code)]
+#[allow(dead_code, clippy::needless_range_loop)]
 mod random;
 
 use ketwork::lang::parser::parse_expression;
