@@ -164,6 +164,10 @@ fn outline(entry: &Entry) -> String {
         EntryKind::Evaluate { expression, unit: Some(unit) } => {
             format!("(evaluate {} in {})", tree(expression), tree(unit))
         }
+        EntryKind::Paths { expression, beside: None } => format!("(paths {})", tree(expression)),
+        EntryKind::Paths { expression, beside: Some(beside) } => {
+            format!("(paths {} {})", tree(expression), tree(beside))
+        }
         EntryKind::Inspect { verb, expression } => format!("({verb} {})", tree(expression)),
         EntryKind::Compare { left, right } => format!("(compare {} {})", tree(left), tree(right)),
         EntryKind::Expect { left, right } => format!("(expect {} {})", tree(left), tree(right)),

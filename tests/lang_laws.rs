@@ -157,13 +157,9 @@ fn entry() -> impl Strategy<Value = Entry> {
         DefinitionKind::Resolvent,
         DefinitionKind::Ket,
         DefinitionKind::Define,
+        DefinitionKind::Polarization,
     ]);
-    let verb = prop::sample::select(vec![
-        InspectVerb::Paths,
-        InspectVerb::Formula,
-        InspectVerb::Crosscheck,
-        InspectVerb::Contributions,
-    ]);
+    let verb = prop::sample::select(vec![InspectVerb::Formula, InspectVerb::Crosscheck, InspectVerb::Contributions]);
     let line_label = prop_oneof![
         3 => quoted().prop_map(BudgetLabel::Contribution),
         1 => Just(BudgetLabel::Measured),
@@ -180,6 +176,8 @@ fn entry() -> impl Strategy<Value = Entry> {
         4 => (definition, name(), vec(name(), 0..3), value())
             .prop_map(|(kind, name, parameters, body)| EntryKind::Definition { kind, name, parameters, body }),
         4 => (value(), unit()).prop_map(|(expression, unit)| EntryKind::Evaluate { expression, unit }),
+        1 => (value(), proptest::option::of(value()))
+            .prop_map(|(expression, beside)| EntryKind::Paths { expression, beside }),
         2 => (verb, value()).prop_map(|(verb, expression)| EntryKind::Inspect { verb, expression }),
         1 => (value(), value()).prop_map(|(left, right)| EntryKind::Compare { left, right }),
         1 => (value(), value()).prop_map(|(left, right)| EntryKind::Expect { left, right }),

@@ -179,6 +179,7 @@ fn reads_entry(rule: &str, example: &str) -> bool {
         | ("system", EntryKind::System { .. })
         | ("level", EntryKind::State { .. })
         | ("definition", EntryKind::Definition { .. })
+        | ("paths", EntryKind::Paths { .. })
         | ("inspection", EntryKind::Inspect { .. })
         | ("compare", EntryKind::Compare { .. })
         | ("expect", EntryKind::Expect { .. })

@@ -191,7 +191,19 @@ impl Label {
         }
         let s = spin(multiplicity, letter, electrons)?;
         let parity = mark.unwrap_or(Parity::natural(l));
-        let term = Term::new(l, s, parity);
+        Self::of_numbers(n, Term::new(l, s, parity), j, projections, electrons)
+    }
+
+    /// The label of given quantum numbers.
+    ///
+    /// Errors: as [`Label::parse`].
+    pub fn of_numbers(
+        n: Option<u32>,
+        term: Term,
+        j: Option<HalfInteger>,
+        projections: Projections,
+        electrons: Electrons,
+    ) -> Result<Self, LabelError> {
         check_term(n, term, electrons)?;
         if let Some(j) = j {
             check_momentum(term, j)?;

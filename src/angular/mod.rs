@@ -5,6 +5,7 @@
 
 mod binomials;
 pub mod chain;
+pub mod elements;
 mod factorials;
 pub mod half_integer;
 pub mod label;

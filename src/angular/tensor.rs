@@ -58,6 +58,10 @@ pub enum AngularPart {
     Spin,
     /// A scalar function times the product of total L and total S, L first.
     OrbitalMomentumAndSpin,
+    /// A scalar function times L^2.
+    OrbitalSquare,
+    /// A delta function of the position of the only electron: it meets s waves alone.
+    Contact,
 }
 
 /// A doubly reduced element by name, with all that decides where it vanishes.
@@ -206,6 +210,16 @@ impl Tensor {
             .with_angular_part(AngularPart::OrbitalMomentumAndSpin)
     }
 
+    /// L^2 times a scalar of the given name.
+    pub fn orbital_square(name: &str) -> Self {
+        Self::scalar(name).with_angular_part(AngularPart::OrbitalSquare)
+    }
+
+    /// A delta function at the nucleus, for one electron.
+    pub fn contact(name: &str) -> Self {
+        Self::scalar(name).with_angular_part(AngularPart::Contact)
+    }
+
     /// (-1)^k sqrt(2k+1), which makes A^k.B^k of [A B]^0.
     pub fn dot_weight(k: u32) -> Surd {
         let root = root_of(i64::from(k) * 2 + 1);
@@ -236,6 +250,13 @@ impl Element {
             AngularPart::Spin if bra.l == ket.l => &spin() * &root_of(i64::from(bra.twice_l()) + 1),
             AngularPart::Spin => Surd::zero(),
             AngularPart::OrbitalMomentumAndSpin => &orbital() * &spin(),
+            AngularPart::OrbitalSquare if bra.l == ket.l => {
+                let l = i64::from(bra.l);
+                (&spin_dimension() * &root_of(2 * l + 1)).scaled(&Rational::from(l * (l + 1)))
+            }
+            AngularPart::OrbitalSquare => Surd::zero(),
+            AngularPart::Contact if bra.l == 0 && ket.l == 0 => spin_dimension(),
+            AngularPart::Contact => Surd::zero(),
         }
     }
 
@@ -250,7 +271,8 @@ impl Element {
                 let (low, high) = (bra.l.abs_diff(ket.l), bra.l.saturating_add(ket.l));
                 !same_s || !(low..=high).contains(&self.orbital) || (low % 2 != self.orbital % 2)
             }
-            AngularPart::OrbitalMomentum => !same_s || !same_l || bra.l == 0,
+            AngularPart::OrbitalMomentum | AngularPart::OrbitalSquare => !same_s || !same_l || bra.l == 0,
+            AngularPart::Contact => !same_s || bra.l != 0 || ket.l != 0,
             AngularPart::Spin => !same_s || !same_l || bra.s.twice() == 0,
             AngularPart::OrbitalMomentumAndSpin => !same_s || !same_l || bra.l == 0 || bra.s.twice() == 0,
         }
@@ -332,6 +354,8 @@ mod tests {
             Tensor::orbital_momentum("1"),
             Tensor::total_spin("1"),
             Tensor::orbit_dot_spin("xi"),
+            Tensor::orbital_square("1"),
+            Tensor::contact("delta(r)"),
         ];
         for tensor in tensors {
             for code in 0..144_u32 {

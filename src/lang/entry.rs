@@ -72,7 +72,8 @@ impl<'a> Reading<'a> {
             "resolvent" => definition(DefinitionKind::Resolvent)(after),
             "ket" => definition(DefinitionKind::Ket)(after),
             "define" => definition(DefinitionKind::Define)(after),
-            "paths" => inspect(InspectVerb::Paths)(after),
+            "polarization" => definition(DefinitionKind::Polarization)(after),
+            "paths" => self.paths(after, word),
             "formula" => inspect(InspectVerb::Formula)(after),
             "crosscheck" => inspect(InspectVerb::Crosscheck)(after),
             "contributions" => inspect(InspectVerb::Contributions)(after),
@@ -203,6 +204,18 @@ impl<'a> Reading<'a> {
         let (rest, equals) = cut(|rest| self.symbol(rest, "=", Wanted::Equals)).parse(rest)?;
         let (rest, body) = self.operand_after(rest, equals, |rest| self.expression(rest, Setting::Open))?;
         Ok((rest, EntryKind::Definition { kind, name, parameters, body: *body.tree }))
+    }
+
+    /// `paths A`, and `paths A with B`.
+    fn paths(&self, rest: &'a str, word: &'a str) -> Parsed<'a, EntryKind> {
+        let (rest, expression) = self.whole(rest, word)?;
+        match word_text(blanks(rest)) {
+            Ok((after, "with")) => {
+                let (rest, beside) = self.whole(after, "with")?;
+                Ok((rest, EntryKind::Paths { expression, beside: Some(beside) }))
+            }
+            _ => Ok((rest, EntryKind::Paths { expression, beside: None })),
+        }
     }
 
     fn compare(&self, rest: &'a str, word: &'a str) -> Parsed<'a, EntryKind> {

@@ -21,8 +21,12 @@ pub(super) fn lone_states(entry: &Entry, text: &str) -> Vec<(Span, Fault)> {
             unit.iter().for_each(|unit| search.expr(unit));
         }
         EntryKind::Inspect { verb, expression } => {
-            search.kets_allowed = matches!(verb, InspectVerb::Formula | InspectVerb::Paths);
+            search.kets_allowed = matches!(verb, InspectVerb::Formula);
             search.expr(expression);
+        }
+        EntryKind::Paths { expression, beside } => {
+            search.expr(expression);
+            beside.iter().for_each(|beside| search.expr(beside));
         }
         EntryKind::Compare { left, right } | EntryKind::Expect { left, right } => {
             search.expr(left);

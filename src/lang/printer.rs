@@ -282,6 +282,7 @@ impl Display for DefinitionKind {
             DefinitionKind::Resolvent => "resolvent",
             DefinitionKind::Ket => "ket",
             DefinitionKind::Define => "define",
+            DefinitionKind::Polarization => "polarization",
         })
     }
 }
@@ -289,7 +290,6 @@ impl Display for DefinitionKind {
 impl Display for InspectVerb {
     fn fmt(&self, out: &mut Formatter<'_>) -> fmt::Result {
         out.write_str(match self {
-            InspectVerb::Paths => "paths",
             InspectVerb::Formula => "formula",
             InspectVerb::Crosscheck => "crosscheck",
             InspectVerb::Contributions => "contributions",
@@ -318,6 +318,8 @@ impl Display for Entry {
                 write_unit(out, unit.as_ref())
             }
             EntryKind::Inspect { verb, expression } => write!(out, "{verb} {expression}"),
+            EntryKind::Paths { expression, beside: None } => write!(out, "paths {expression}"),
+            EntryKind::Paths { expression, beside: Some(beside) } => write!(out, "paths {expression} with {beside}"),
             EntryKind::Compare { left, right } => write!(out, "compare {left} with {right}"),
             EntryKind::Expect { left, right } => write!(out, "expect {left} = {right}"),
             EntryKind::Sweep { variable, from, to, step, columns } => {

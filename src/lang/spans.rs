@@ -73,6 +73,10 @@ fn walk_entry(kind: &mut EntryKind, visit: Visit<'_>) {
             unit.iter_mut().for_each(|item| walk_expr(item, visit));
         }
         EntryKind::Inspect { verb: _, expression } => walk_expr(expression, visit),
+        EntryKind::Paths { expression, beside } => {
+            walk_expr(expression, visit);
+            beside.iter_mut().for_each(|beside| walk_expr(beside, visit));
+        }
         EntryKind::Compare { left, right } | EntryKind::Expect { left, right } => {
             walk_expr(left, visit);
             walk_expr(right, visit);

@@ -56,8 +56,10 @@ pub enum EntryKind {
     Definition { kind: DefinitionKind, name: Name, parameters: Vec<Name>, body: Expr },
     /// An expression to evaluate, `EXPR in UNIT` when a unit is asked for
     Evaluate { expression: Expr, unit: Option<Expr> },
-    /// `paths EXPR`, `formula EXPR`, `crosscheck EXPR`, `contributions EXPR`
+    /// `formula EXPR`, `crosscheck EXPR`, `contributions EXPR`
     Inspect { verb: InspectVerb, expression: Expr },
+    /// `paths EXPR`, `paths A with B`
+    Paths { expression: Expr, beside: Option<Expr> },
     /// `compare A with B`
     Compare { left: Expr, right: Expr },
     /// `expect A = B`
@@ -97,11 +99,11 @@ pub enum DefinitionKind {
     Resolvent,
     Ket,
     Define,
+    Polarization,
 }
 
 #[derive(Clone, Copy, PartialEq, Eq, Debug, Serialize)]
 pub enum InspectVerb {
-    Paths,
     Formula,
     Crosscheck,
     Contributions,

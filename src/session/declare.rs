@@ -3,16 +3,25 @@
 use super::evaluate::Wrong;
 use super::files::DataFiles;
 use super::scope::{Effect, Scope};
-use crate::lang::tree::{Argument, Expr, ExprKind, Name};
-use crate::num::{Effort, Surd};
-use crate::sums::Environment;
-use crate::systems::System;
+use crate::lang::tree::{Argument, Expr, ExprKind, LabelPart, Name};
+use crate::num::units::Dimension;
+use crate::num::{Effort, Scalar, Surd};
+use crate::sums::{Environment, Wanted};
 use crate::systems::hydrogenic::Hydrogenic;
 use crate::systems::levels::{LevelSystem, MOST_FAULTS};
 use crate::systems::matrix::{ExactMatrix, MatrixSystem};
-use crate::theory::{Fault, Problem, Resolver, terms::Place};
-use rug::Rational;
+use crate::systems::shifted::Shifted;
+use crate::systems::symbolic::Symbolic;
+use crate::systems::{StateLabel, System};
+use crate::theory::dimensions::{Known, known};
+use crate::theory::terms::{Place, ScalarTerm, Source};
+use crate::theory::{Fault, Problem, Resolver};
+use rug::{Float, Rational};
+use std::borrow::Cow;
 use std::sync::Arc;
+
+/// Digits to which shifts that are not exact are taken.
+const SHIFT_DIGITS: u32 = 40;
 
 /// Everything a declaration may look at.
 pub(super) struct Declaration<'d> {
@@ -38,11 +47,12 @@ impl Declaration<'_> {
         Err(Problem::new(self.place(span), fault).into())
     }
 
-    /// `system name = kind(arguments)`
-    pub fn system(&self, name: &Name, kind: &Name, arguments: &[Argument]) -> Result<Effect, Wrong> {
+    /// `system name = kind(arguments)`, with what is to be told about it.
+    pub fn system(&self, name: &Name, kind: &Name, arguments: &[Argument]) -> Result<(Effect, Vec<String>), Wrong> {
+        let mut told = Vec::new();
         let (mut operators, mut tensors) = (Vec::new(), Vec::new());
         let system: Arc<dyn System> = match kind.text.as_str() {
-            "hydrogenic" => Arc::new(self.hydrogenic(kind, arguments)?),
+            "hydrogenic" => Arc::new(self.hydrogenic(kind, arguments, &mut told)?),
             "matrix" => {
                 let (system, matrices) = self.matrix(kind, arguments)?;
                 operators = matrices;
@@ -53,6 +63,8 @@ impl Declaration<'_> {
                 tensors = system.operators();
                 Arc::new(system)
             }
+            "symbolic" => Arc::new(self.symbolic(kind, arguments)?),
+            "shifted" => Arc::new(self.shifted(kind, arguments)?),
             other => {
                 let fault = match self.scope.names.later.get(other) {
                     Some(what) => Fault::NotYet { what: what.clone() },
@@ -65,11 +77,11 @@ impl Declaration<'_> {
                 return Err(Problem::new(self.place(kind.span), fault).into());
             }
         };
-        Ok(Effect::System { name: name.text.clone(), system, operators, tensors })
+        Ok((Effect::System { name: name.text.clone(), system, operators, tensors }, told))
     }
 
-    fn hydrogenic(&self, kind: &Name, arguments: &[Argument]) -> Result<Hydrogenic, Wrong> {
-        let (mut charge, mut mass) = (Rational::from(1), None);
+    fn hydrogenic(&self, kind: &Name, arguments: &[Argument], told: &mut Vec<String>) -> Result<Hydrogenic, Wrong> {
+        let (mut charge, mut mass, mut spin) = (Rational::from(1), None, false);
         let mut seen: Vec<&str> = Vec::new();
         for argument in arguments {
             let Argument::Named { name, value } = argument else {
@@ -86,21 +98,128 @@ impl Declaration<'_> {
             match name.text.as_str() {
                 "Z" => charge = self.positive(name, value)?,
                 "mass" if matches!(&value.kind, ExprKind::Name(inf) if inf == "inf") => mass = None,
-                "mass" => mass = Some(self.positive(name, value)?),
+                "mass" => {
+                    let (number, note) = self.nuclear_mass(value)?;
+                    told.extend(note);
+                    mass = Some(number);
+                }
+                "spin" => spin = self.spin(value)?,
                 other => {
                     return self.refuse(
                         name.span,
                         format!("`{other}` is not an argument of `hydrogenic`"),
-                        "it has Z (nuclear charge) and mass (nuclear mass in electron masses, `inf` if not given)",
+                        "it has Z (nuclear charge), mass (nuclear mass in electron masses, `inf` if not given) and spin \
+                         (0 if not given, or 1/2)",
                     );
                 }
             }
         }
-        Hydrogenic::new(charge, mass).or_else(|error| self.refuse(kind.span, error.to_string(), error.help()))
+        let atom =
+            Hydrogenic::new(charge, mass).or_else(|error| self.refuse(kind.span, error.to_string(), error.help()))?;
+        Ok(if spin { atom.with_spin() } else { atom })
+    }
+
+    /// Whether the electron has its spin.
+    fn spin(&self, value: &Expr) -> Result<bool, Wrong> {
+        let number = self.exact(value)?;
+        match number.as_rational() {
+            Some(q) if *q == 0 => Ok(false),
+            Some(q) if *q == Rational::from((1, 2)) => Ok(true),
+            _ => self.refuse(
+                value.span,
+                format!("spin = {number} is not the spin of an electron"),
+                "write spin=1/2, or spin=0 to leave the spin out",
+            ),
+        }
+    }
+
+    /// `symbolic(electrons=2)`
+    fn symbolic(&self, kind: &Name, arguments: &[Argument]) -> Result<Symbolic, Wrong> {
+        let form = "write `symbolic(electrons=1)`, `symbolic(electrons=2)`, or `symbolic(electrons=n)` for any number";
+        let [Argument::Named { name, value }] = arguments else {
+            return self.refuse(kind.span, "`symbolic` takes the number of electrons", form);
+        };
+        if name.text != "electrons" {
+            return self.refuse(name.span, format!("`{}` is not an argument of `symbolic`", name.text), form);
+        }
+        if matches!(&value.kind, ExprKind::Name(any) if any == "n") {
+            return Symbolic::new(None).or_else(|error| self.refuse(kind.span, error.to_string(), error.help()));
+        }
+        let number = self.exact(value)?;
+        let count = number.as_rational().filter(|q| q.is_integer()).and_then(|q| q.numer().to_u32());
+        let Some(count) = count else {
+            return self.refuse(value.span, format!("{number} is not a number of electrons"), form);
+        };
+        Symbolic::new(Some(count)).or_else(|error| self.refuse(value.span, error.to_string(), error.help()))
+    }
+
+    /// `shifted(he, 2^3P_0: 31.9 GHz, …)`
+    fn shifted(&self, kind: &Name, arguments: &[Argument]) -> Result<Shifted, Wrong> {
+        let form = "write the system, then levels with their shifts: `shifted(he, 2^3P_0: 31.9 GHz, 2^3P_1: 2.3 GHz)`";
+        let Some((Argument::Positional(Expr { kind: ExprKind::Name(name), span }), levels)) = arguments.split_first()
+        else {
+            return self.refuse(kind.span, "`shifted` takes a system and levels with their shifts", form);
+        };
+        let Some(base) = self.scope.systems.get(name) else {
+            return self.refuse(*span, format!("`{name}` is not a system declared above"), form);
+        };
+        if levels.is_empty() {
+            return self.refuse(kind.span, "no level is moved", form);
+        }
+        let mut moved = Vec::with_capacity(levels.len());
+        for argument in levels {
+            let Argument::Level { label, value } = argument else {
+                return self.refuse(kind.span, "every level stands with its shift", form);
+            };
+            let text: String = label
+                .parts
+                .iter()
+                .map(|part| match part {
+                    LabelPart::Text(text) => text.clone(),
+                    LabelPart::Computed(_) => "{…}".into(),
+                })
+                .collect();
+            let (by, sigma) = self.real(value)?;
+            let label = StateLabel { text, options: Vec::new() };
+            // each label is looked at alone first, so that an error stands at its place
+            base.manifold(&label, self.effort)
+                .or_else(|error| self.refuse(value.span, error.to_string(), error.help()))?;
+            moved.push((label, by, sigma));
+        }
+        Shifted::new(base.clone(), moved, self.effort)
+            .or_else(|error| self.refuse(kind.span, error.to_string(), error.help()))
+    }
+
+    /// A real number with the standard uncertainty that is written in it.
+    fn real(&self, expr: &Expr) -> Result<(Rational, Rational), Wrong> {
+        let term = Resolver::new(&self.scope.names, self.source, self.entry).scalar(expr)?;
+        if let Known::Definite(dimension) = known(&term)
+            && dimension != Dimension::energy()
+        {
+            let message = format!("a level is moved by an energy, and this is {}", dimension.words());
+            return self.refuse(expr.span, message, "write an energy, as 31.9 GHz or 1e-6");
+        }
+        let value = self.scope.evaluator(self.effort).value(&term, Wanted::Digits(SHIFT_DIGITS))?;
+        let number = match &value.scalar {
+            Scalar::Exact(exact) if exact.as_rational().is_some() => exact.as_rational().map(Cow::into_owned),
+            other if other.is_real() => other.to_ball(256).ok().and_then(|ball| ball.re.mid().to_rational()),
+            _ => None,
+        };
+        let Some(number) = number else {
+            return self.refuse(expr.span, "a shift is a real number", "write an energy, as 31.9 GHz or 1e-6");
+        };
+        let written = value.sources.iter().filter(|(source, _)| !matches!(source, Source::Constant(_)));
+        let squares = written.fold(Float::new(64), |sum, (_, part)| sum + Float::with_val(64, part.square_ref()));
+        Ok((number, squares.sqrt().to_rational().unwrap_or_default()))
     }
 
     fn positive(&self, name: &Name, value: &Expr) -> Result<Rational, Wrong> {
-        let number = self.exact(value)?;
+        let term = Resolver::new(&self.scope.names, self.source, self.entry).scalar(value)?;
+        if let Known::Definite(dimension) = known(&term) {
+            let message = format!("{} = {} is no plain number", name.text, dimension.words());
+            return self.refuse(value.span, message, "write a positive whole number, fraction or decimal");
+        }
+        let number = self.exact_value(value, &term)?;
         match number.as_rational() {
             Some(q) if *q > 0 => Ok(q.into_owned()),
             _ => self.refuse(
@@ -114,14 +233,55 @@ impl Declaration<'_> {
     /// An argument as an exact number.
     fn exact(&self, expr: &Expr) -> Result<Surd, Wrong> {
         let term = Resolver::new(&self.scope.names, self.source, self.entry).scalar(expr)?;
-        if !crate::sums::measured_sources(&term).is_empty() {
+        match known(&term) {
+            Known::Definite(dimension) if dimension != Dimension::energy() => self.refuse(
+                expr.span,
+                format!("{} stands here, where a plain number or an energy is wanted", dimension.words()),
+                "numbers of a declaration are in atomic units",
+            ),
+            _ => self.exact_value(expr, &term),
+        }
+    }
+
+    /// The mass of a nucleus in electron masses, a number or a mass with its unit, and what is to be told: a system has an exact mass, so that
+    /// the uncertainty of constants is left out.
+    fn nuclear_mass(&self, value: &Expr) -> Result<(Rational, Option<String>), Wrong> {
+        const FORM: &str = "give it in electron masses, as mass=1836.15, or as a mass: mass=4.0026 u, mass=codata.m_p";
+        let term = Resolver::new(&self.scope.names, self.source, self.entry).scalar(value)?;
+        match known(&term) {
+            Known::Definite(dimension) | Known::Atomic(dimension) if dimension != Dimension::mass() => {
+                return self.refuse(value.span, format!("{} is no mass of a nucleus", dimension.words()), FORM);
+            }
+            _ => {}
+        }
+        let sources = crate::sums::measured_sources(&term);
+        if sources.iter().any(|(source, _)| !matches!(source, Source::Constant(_))) {
+            self.exact_value(value, &term)?;
+        }
+        let scalar = self.scope.evaluator(self.effort).scalar(&term, &Environment::default(), 128)?;
+        let Some(mass) = scalar.as_rational().filter(|mass| *mass > 0) else {
+            return self.refuse(value.span, "the mass of a nucleus is a positive rational number", FORM);
+        };
+        if sources.is_empty() {
+            return Ok((mass, None));
+        }
+        let full = self.scope.evaluator(self.effort).value(&term, Wanted::Digits(SHIFT_DIGITS))?;
+        let told = full.sigma().map(|sigma| {
+            let shown = super::evaluate::concise(&full.scalar, &sigma);
+            format!("mass {shown} electron masses; the uncertainty of the constants is left out")
+        });
+        Ok((mass, told))
+    }
+
+    fn exact_value(&self, expr: &Expr, term: &ScalarTerm) -> Result<Surd, Wrong> {
+        if !crate::sums::measured_sources(term).is_empty() {
             return self.refuse(
                 expr.span,
                 "a number with an uncertainty stands in the declaration of a system",
                 "declare the system with the value alone",
             );
         }
-        match self.scope.evaluator(self.effort).scalar(&term, &Environment::default(), 128)? {
+        match self.scope.evaluator(self.effort).scalar(term, &Environment::default(), 128)? {
             crate::num::Scalar::Exact(value) => Ok(value),
             crate::num::Scalar::Approx(_) => self.refuse(
                 expr.span,

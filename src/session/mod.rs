@@ -10,6 +10,8 @@ mod evaluate;
 pub mod files;
 mod notebook;
 pub mod outcome;
+mod paths;
+mod quantities;
 mod replay;
 mod scope;
 mod words;

@@ -313,9 +313,11 @@ impl Session {
     }
 
     fn failed(&self, number: usize, wrong: Wrong) -> Outcome {
-        if let Wrong::Evaluation(failure) = &wrong
-            && failure.is_interrupted()
-        {
+        let stopped = match &wrong {
+            Wrong::Evaluation(failure) => failure.is_interrupted(),
+            Wrong::Meaning(problem) => problem.fault == crate::theory::Fault::Interrupted,
+        };
+        if stopped {
             return Outcome::Stopped;
         }
         let unmet = matches!(&wrong, Wrong::Evaluation(failure) if matches!(failure.trouble, Trouble::Unmet(_)));

@@ -8,9 +8,6 @@ pub fn names() -> Names {
     let mut names = Names::default();
     for (name, word) in vocabulary().names() {
         match (&word.status, word.kind) {
-            (_, WordKind::Unit) => {
-                names.units.insert(name.to_string());
-            }
             (Status::Later(what), WordKind::Function | WordKind::Operator | WordKind::System) => {
                 names.later.insert(base(name).to_string(), format!("`{name}`, {what}"));
             }
@@ -26,9 +23,13 @@ pub fn names() -> Names {
     names
 }
 
-/// The name before component and argument: `D` of `D_z`, `delta` of `delta(r)`.
+/// The name before component and argument: `D` of `D_z`, `delta` of `delta(r)`, all of `spin_orbit`.
 fn base(name: &str) -> &str {
-    name.split(['_', '(', '^']).next().unwrap_or(name)
+    let name = name.split(['(', '^']).next().unwrap_or(name);
+    match name.split_once('_') {
+        Some((base, component)) if component.len() <= 2 => base,
+        _ => name,
+    }
 }
 
 /// Tells whether a word cannot be bound by an entry, since expressions could not tell it from its meaning in the language.

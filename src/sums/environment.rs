@@ -1,5 +1,7 @@
 //! Values of the variables in scope while a term is evaluated.
 
+use crate::angular::HalfInteger;
+use crate::angular::polarization::Polarization;
 use crate::num::Scalar;
 use std::sync::Arc;
 
@@ -9,46 +11,75 @@ pub struct Environment {
     inner: Arc<Inner>,
 }
 
-#[derive(Default, Debug)]
+#[derive(Clone, Default, Debug)]
 struct Inner {
     variables: Vec<(String, Scalar)>,
     indices: Vec<(String, char)>,
+    light: Option<Polarization>,
+    projection: Option<HalfInteger>,
     fingerprint: String,
 }
 
 impl Environment {
-    /// An environment that holds nothing but these variables; indices stay, since they belong to the bracket around.
+    /// An environment that holds nothing but these variables; what belongs to the bracket around stays: indices, the light and M.
     pub fn for_call(&self, variables: Vec<(String, Scalar)>) -> Self {
-        Self::build(variables, self.inner.indices.clone())
+        self.changed(|inner| inner.variables = variables)
     }
 
     /// This environment with one more variable, which hides an earlier one of the same name.
     pub fn with(&self, name: &str, value: Scalar) -> Self {
-        let mut variables = self.inner.variables.clone();
-        variables.retain(|(n, _)| n != name);
-        variables.push((name.to_string(), value));
-        Self::build(variables, self.inner.indices.clone())
+        self.changed(|inner| {
+            inner.variables.retain(|(n, _)| n != name);
+            inner.variables.push((name.to_string(), value));
+        })
     }
 
     /// This environment with a Cartesian index fixed to x, y or z.
     pub fn with_index(&self, index: &str, component: char) -> Self {
-        let mut indices = self.inner.indices.clone();
-        indices.retain(|(n, _)| n != index);
-        indices.push((index.to_string(), component));
-        Self::build(self.inner.variables.clone(), indices)
+        self.changed(|inner| {
+            inner.indices.retain(|(n, _)| n != index);
+            inner.indices.push((index.to_string(), component));
+        })
     }
 
-    fn build(variables: Vec<(String, Scalar)>, indices: Vec<(String, char)>) -> Self {
+    /// This environment with a polarization where it is left open, and an M for levels named without one.
+    pub fn with_level(&self, light: Option<Polarization>, projection: HalfInteger) -> Self {
+        self.changed(|inner| {
+            inner.light = light;
+            inner.projection = Some(projection);
+        })
+    }
+
+    fn changed(&self, change: impl FnOnce(&mut Inner)) -> Self {
         use std::fmt::Write;
+        let mut inner = Inner { fingerprint: String::new(), ..(*self.inner).clone() };
+        change(&mut inner);
         let mut fingerprint = String::new();
-        for (name, value) in &variables {
+        for (name, value) in &inner.variables {
             // Balls print their midpoints and radii in full: equal fingerprints mean equal values.
             let _ = write!(fingerprint, "{name}={value:?};");
         }
-        for (name, component) in &indices {
+        for (name, component) in &inner.indices {
             let _ = write!(fingerprint, "{name}:{component};");
         }
-        Environment { inner: Arc::new(Inner { variables, indices, fingerprint }) }
+        if let Some(light) = &inner.light {
+            let _ = write!(fingerprint, "light {:?};", light.cartesian());
+        }
+        if let Some(projection) = inner.projection {
+            let _ = write!(fingerprint, "M={projection};");
+        }
+        inner.fingerprint = fingerprint;
+        Environment { inner: Arc::new(inner) }
+    }
+
+    /// The polarization of the light, where one is put in.
+    pub fn light(&self) -> Option<&Polarization> {
+        self.inner.light.as_ref()
+    }
+
+    /// The M of levels that are named without one.
+    pub fn projection(&self) -> Option<HalfInteger> {
+        self.inner.projection
     }
 
     pub fn variable(&self, name: &str) -> Option<&Scalar> {

@@ -2,8 +2,10 @@
 
 use super::environment::Environment;
 use super::problem::{Failure, Trouble};
+use super::settled::Settled;
 use super::walker::Kept;
-use crate::angular::{HalfInteger, ninej, sixj, threej};
+use crate::angular::HalfInteger;
+use crate::angular::chain::AngularVector;
 use crate::num::{Ball, ComplexBall, Effort, NumberError, Scalar, Surd};
 use crate::systems::{Level, Manifold, State, StateLabel, System};
 use crate::theory::terms::*;
@@ -49,6 +51,10 @@ pub struct Evaluator<'s> {
     pub(super) never_exact: BTreeSet<String>,
     /// Values of brackets at a precision.
     pub(super) known: HashMap<(String, u32), Scalar>,
+    /// What variations have been derived to, by their text.
+    pub(super) derived: HashMap<String, ScalarTerm>,
+    /// Costly values that hold whatever source is moved.
+    pub(super) settled: Settled,
     depth: usize,
 }
 
@@ -76,6 +82,8 @@ impl<'s> Evaluator<'s> {
             kept: HashMap::new(),
             never_exact: BTreeSet::new(),
             known: HashMap::new(),
+            settled: Settled::new(),
+            derived: HashMap::new(),
             depth: 0,
         }
     }
@@ -115,7 +123,7 @@ impl<'s> Evaluator<'s> {
         self.limit.as_deref()
     }
 
-    /// Forgets every computed ket and value; what does not depend on the shift of a source stays in the systems.
+    /// Forgets every computed ket and value that may rest on a moved source.
     pub(super) fn forget(&mut self) {
         self.kept.clear();
         self.known.clear();
@@ -170,13 +178,13 @@ impl<'s> Evaluator<'s> {
             self.effort
                 .check()
                 .map_err(|stop| Failure::new(term.place, stop))
-                .and_then(|()| self.scalar_node(term, environment, bits))
+                .and_then(|()| self.settled(term, environment, bits))
         };
         self.depth -= 1;
         result
     }
 
-    fn scalar_node(&mut self, term: &ScalarTerm, environment: &Environment, bits: u32) -> Evaluated<Scalar> {
+    pub(super) fn scalar_node(&mut self, term: &ScalarTerm, environment: &Environment, bits: u32) -> Evaluated<Scalar> {
         let place = term.place;
         let at = |error: NumberError| Failure::new(place, error);
         match &*term.node {
@@ -209,6 +217,7 @@ impl<'s> Evaluator<'s> {
                 }
                 Ok(product)
             }
+            ScalarNode::Quantity { value, .. } => self.scalar(value, environment, bits),
             ScalarNode::Negated(inner) => Ok(self.scalar(inner, environment, bits)?.neg()),
             ScalarNode::Quotient(a, b) => {
                 let a = self.scalar(a, environment, bits)?;
@@ -262,6 +271,8 @@ impl<'s> Evaluator<'s> {
                 }
                 Ok(sum)
             }
+            ScalarNode::Vary(variation) => self.vary(term, variation, environment, bits),
+            ScalarNode::LevelPart(part, inner) => self.level_part(*part, inner, environment, bits, place),
             ScalarNode::Wigner(symbol, arguments) => self.wigner(*symbol, arguments, environment, place),
         }
     }
@@ -285,11 +296,8 @@ impl<'s> Evaluator<'s> {
             };
             j.push(HalfInteger::from_rational(&rational).map_err(|error| refused(argument.place, error.to_string()))?);
         }
-        let value = match (symbol, j.as_slice()) {
-            (WignerSymbol::ThreeJ, &[j1, j2, j3, m1, m2, m3]) => threej(j1, j2, j3, m1, m2, m3),
-            (WignerSymbol::SixJ, &[j1, j2, j3, l1, l2, l3]) => sixj([j1, j2, j3, l1, l2, l3]),
-            (WignerSymbol::NineJ, &[a, b, c, d, e, f, g, h, i]) => ninej([[a, b, c], [d, e, f], [g, h, i]]),
-            _ => return Err(refused(place, format!("the symbol takes {}", symbol.arguments().1))),
+        let Some(value) = symbol.value(&j) else {
+            return Err(refused(place, format!("the symbol takes {}", symbol.arguments().1)));
         };
         value.map(Scalar::Exact).map_err(|error| refused(place, error.to_string()))
     }
@@ -331,7 +339,13 @@ impl<'s> Evaluator<'s> {
     /// The state a term names.
     pub fn state(&mut self, term: &StateTerm, environment: &Environment) -> Evaluated<State> {
         let system = self.system(&term.system, term.place)?;
-        let label = self.label(&term.label, environment, term.place)?;
+        let mut label = self.label(&term.label, environment, term.place)?;
+        let state = system.state(&label, &self.effort).map_err(|error| Failure::new(term.place, error))?;
+        let Some(projection) = environment.projection() else { return Ok(state) };
+        if open_momentum(&*system, &state).is_none() {
+            return Ok(state);
+        }
+        label.options.push(("M".into(), Rational::from((projection.twice(), 2))));
         system.state(&label, &self.effort).map_err(|error| Failure::new(term.place, error))
     }
 
@@ -384,6 +398,14 @@ impl<'s> Evaluator<'s> {
             self.nudged_numbers += 1;
         }
         value
+    }
+}
+
+/// J of a state whose M is left open; `None` where it is not.
+pub(super) fn open_momentum(system: &dyn System, state: &State) -> Option<HalfInteger> {
+    match system.symmetry()?.end(state).ok()?.vector {
+        AngularVector::Coupled { j, m: None } if j.twice() > 0 => Some(j),
+        _ => None,
     }
 }
 

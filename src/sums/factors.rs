@@ -19,6 +19,11 @@ impl Factor {
         format!("{}{{{}}}", self.operator.text, self.environment.fingerprint())
     }
 
+    /// Another operator with the same values of variables.
+    pub(super) fn of(&self, operator: &OperatorTerm) -> Factor {
+        Factor { operator: operator.clone(), environment: self.environment.clone() }
+    }
+
     pub(super) fn holds_function_of_h(&self) -> bool {
         crate::theory::resolve::has_function_of_h(&self.operator)
     }
@@ -63,6 +68,13 @@ impl Walker<'_, '_> {
                     self.flatten_into(body, &inside, flat)?;
                 }
             }
+            OperatorNode::Tensor(term) => {
+                return Err(Failure::new(operator.place, without_numbers(&term.tensor.element.name)));
+            }
+            OperatorNode::Atom(term) if term.along.is_some() => {
+                let sum = self.along(term, operator, environment)?;
+                flat.factors.push(Factor { operator: sum, environment: environment.clone() });
+            }
             OperatorNode::Atom(term) => {
                 let factor = Factor { operator: operator.clone(), environment: environment.clone() };
                 let atom = self.named_atom(term, &factor)?;
@@ -92,6 +104,37 @@ impl Walker<'_, '_> {
             _ => flat.factors.push(Factor { operator: operator.clone(), environment: environment.clone() }),
         }
         Ok(())
+    }
+
+    /// A vector along a polarization as the sum of its Cartesian components.
+    fn along(&mut self, term: &AtomTerm, operator: &OperatorTerm, environment: &Environment) -> Walked<OperatorTerm> {
+        let place = operator.place;
+        let open = || {
+            let message = format!("the polarization in `{}` is left open here", operator.text);
+            let help = "take `scalar_part(…)`, `vector_part(…)` or `tensor_part(…)` of the expression, or declare a polarization and write its name in place of `light`";
+            Failure::new(place, Trouble::Refused { message, help: help.into() })
+        };
+        let direction = match term.along.as_ref() {
+            Some(Direction::Fixed(fixed)) => fixed.clone(),
+            Some(Direction::Light) => environment.light().ok_or_else(open)?.clone(),
+            Some(Direction::LightConjugate) => environment.light().ok_or_else(open)?.conj(),
+            None => return Ok(operator.clone()),
+        };
+        let mut terms = Vec::new();
+        for (axis, weight) in ["x", "y", "z"].into_iter().zip(direction.cartesian()) {
+            if weight.is_zero() {
+                continue;
+            }
+            let text = format!("{} of {}", axis, operator.text);
+            let atom = AtomTerm { component: Some(axis.into()), along: None, ..term.clone() };
+            let atom = Term::new(OperatorNode::Atom(atom), place, text.as_str());
+            let shown = weight.to_string();
+            let weight = Term::new(ScalarNode::Exact(weight.clone()), place, shown.as_str());
+            let weight = Term::new(OperatorNode::Scalar(weight), place, shown.as_str());
+            terms.push(Term::new(OperatorNode::Product(vec![weight, atom]), place, format!("({shown}) {text}")));
+        }
+        let text = terms.iter().map(|term| term.text.to_string()).collect::<Vec<_>>().join(" + ");
+        Ok(Term::new(OperatorNode::Sum(terms), place, text))
     }
 
     /// The atom with its arguments as numbers and its Cartesian index as a component.
@@ -212,4 +255,13 @@ pub(super) fn middle(factors: &[Factor]) -> usize {
     let start = if left == 0 { 0 } else { solves[left - 1] + 1 };
     let end = solves.get(left).copied().unwrap_or(factors.len());
     if start < end { start } else { start.min(factors.len() - 1) }
+}
+
+/// An operator known by its ranks has no value.
+fn without_numbers(name: &str) -> Trouble {
+    let name = if name.is_empty() { "the tensor".to_string() } else { format!("`{name}`") };
+    Trouble::Refused {
+        message: format!("{name} is known by its ranks alone and has no value"),
+        help: "`paths` in front of the expression shows what its angular factors are".into(),
+    }
 }

@@ -2,6 +2,7 @@
 
 use crate::num::{Interrupted, NumberError};
 use crate::systems::{Obstacle, SystemError};
+use crate::theory::Fault;
 use crate::theory::terms::Place;
 
 /// A failed evaluation with the place of its cause.
@@ -45,7 +46,7 @@ impl Failure {
             Trouble::Interrupted(_)
                 | Trouble::Obstacle(Obstacle::Interrupted(_))
                 | Trouble::System(SystemError::Interrupted(_))
-        )
+        ) || matches!(&self.trouble, Trouble::Meaning(fault) if **fault == Fault::Interrupted)
     }
 }
 
@@ -76,6 +77,9 @@ pub enum Trouble {
     /// What an `expect` wanted and what came out.
     #[error("{0}")]
     Unmet(String),
+    /// The expression has no meaning here.
+    #[error(transparent)]
+    Meaning(#[from] Box<Fault>),
     #[error("not available yet: {0}")]
     NotYet(String),
 }
@@ -101,6 +105,7 @@ impl Trouble {
             Trouble::Obstacle(Obstacle::Singular { .. }) => "divides by zero on this state".into(),
             Trouble::Obstacle(Obstacle::Diverges { .. }) => "this matrix element does not exist".into(),
             Trouble::Obstacle(Obstacle::OnCut) => "a real energy above threshold".into(),
+            Trouble::Meaning(fault) => fault.label(),
             Trouble::NoSignChange(_) => "no change of sign in this interval".into(),
             Trouble::Pole { .. } => "a pole lies in this interval".into(),
             Trouble::NotYet(_) | Trouble::Obstacle(Obstacle::NotYet(_)) | Trouble::System(SystemError::NotYet(_)) => {
@@ -113,6 +118,7 @@ impl Trouble {
     /// What to write instead.
     pub fn help(&self) -> Option<String> {
         Some(match self {
+            Trouble::Meaning(fault) => return fault.help(),
             Trouble::Number(error) => return error.help().map(String::from),
             Trouble::Obstacle(Obstacle::Singular { level }) => format!(
                 "leave the level out with a prime, `1/(E(g) - H)'`, or with `without P`, or move the energy off {level}"

@@ -18,8 +18,8 @@ pub(super) type Walked<T> = Result<T, Failure>;
 /// A ket over all sectors it has a part in, with the text that identifies it inside one evaluation.
 #[derive(Clone)]
 pub struct SectorKet {
-    key: Arc<str>,
-    parts: Arc<BTreeMap<Sector, BlockKet>>,
+    pub(super) key: Arc<str>,
+    pub(super) parts: Arc<BTreeMap<Sector, BlockKet>>,
 }
 
 /// Kets that were computed already, by their text; one table for each backend.
@@ -104,27 +104,31 @@ impl Walker<'_, '_> {
             if !self.system.degenerate(&outer, left_out) {
                 continue;
             }
-            for (sector, part) in ket.parts.iter() {
-                let states = self.system.level_in(left_out, *sector, &self.evaluator.effort).map_err(at)?;
-                for state in states.iter().filter(|state| **state != outer) {
-                    let other = match self.eigenstate(state, place) {
-                        Ok(ket) => ket.parts.get(sector).cloned(),
-                        Err(failure) if failure.is_inexact() => None,
-                        Err(failure) => return Err(failure),
-                    };
-                    let Some(other) = other else { continue };
-                    let overlap = self.backend.overlap(*sector, &other, part).map_err(at)?;
-                    let coupled = match (&overlap, self.bits) {
-                        (Number::Exact(value), _) => !value.is_zero(),
-                        (Number::Approx(value), Some(bits)) => {
-                            let size = rug::Complex::with_val(32, value).abs().into_real_imag().0;
-                            size > rug::Float::with_val(32, 1) >> (bits / 2)
-                        }
-                        (Number::Approx(_), None) => false,
-                    };
-                    if coupled {
-                        self.evaluator.note_coupling(&outer.label, &state.label);
+            // a state may have parts in several sectors: its amplitude is the sum over all of them
+            let mut others: Vec<State> = Vec::new();
+            for sector in ket.parts.keys() {
+                for state in self.system.level_in(&outer, *sector, &self.evaluator.effort).map_err(at)? {
+                    if state != outer && !others.contains(&state) {
+                        others.push(state);
                     }
+                }
+            }
+            for state in others {
+                let other = match self.eigenstate(&state, place) {
+                    Ok(ket) => ket,
+                    Err(failure) if failure.is_inexact() => continue,
+                    Err(failure) => return Err(failure),
+                };
+                let coupled = match (self.overlap(&other, ket, place)?, self.bits) {
+                    (Some(Number::Exact(value)), _) => !value.is_zero(),
+                    (Some(Number::Approx(value)), Some(bits)) => {
+                        let size = rug::Complex::with_val(32, value).abs().into_real_imag().0;
+                        size > rug::Float::with_val(32, 1) >> (bits / 2)
+                    }
+                    (Some(Number::Approx(_)), None) | (None, _) => false,
+                };
+                if coupled {
+                    self.evaluator.note_coupling(&outer.label, &state.label);
                 }
             }
         }
@@ -311,7 +315,7 @@ impl Walker<'_, '_> {
     }
 
     /// A factor on a ket.
-    fn act(&mut self, factor: &Factor, ket: &SectorKet) -> Walked<SectorKet> {
+    pub(super) fn act(&mut self, factor: &Factor, ket: &SectorKet) -> Walked<SectorKet> {
         self.evaluator.effort.check().map_err(|stop| Failure::new(factor.operator.place, stop))?;
         let key = format!("{}>{}", factor.key(), ket.key);
         if let Some(known) = self.kept.get(&key) {
@@ -351,6 +355,10 @@ impl Walker<'_, '_> {
                 }
                 self.collect(sum, place)
             }
+            OperatorNode::Adjoint(inner) => {
+                let image = self.act_adjoint(&factor.of(inner), ket)?;
+                Ok((*image.parts).clone())
+            }
             OperatorNode::Resolvent(linear) => {
                 let (scale, resolvent) = self.resolvent(linear, factor)?;
                 self.note_coupling(&resolvent, ket, place)?;
@@ -368,7 +376,11 @@ impl Walker<'_, '_> {
                 self.scaled(&left, &amplitude, place)
             }
             // Flattening has taken these apart.
-            OperatorNode::Scalar(_) | OperatorNode::Product(_) | OperatorNode::Power(..) | OperatorNode::Call(_) => {
+            OperatorNode::Scalar(_)
+            | OperatorNode::Product(_)
+            | OperatorNode::Power(..)
+            | OperatorNode::Tensor(_)
+            | OperatorNode::Call(_) => {
                 let flat = self.flatten(&factor.operator, &factor.environment)?;
                 let mut image = ket.clone();
                 for inner in flat.factors.iter().rev() {
@@ -381,7 +393,7 @@ impl Walker<'_, '_> {
     }
 
     /// Keeps a ket for the rest of the evaluation; a long sum or search does not pile them up.
-    fn keep(&mut self, key: String, ket: &SectorKet) {
+    pub(super) fn keep(&mut self, key: String, ket: &SectorKet) {
         if self.kept.len() >= MOST_KEPT {
             self.kept.clear();
         }
@@ -408,6 +420,7 @@ impl Walker<'_, '_> {
                 self.act_atom(&adjoint, &sign, ket, place)?
             }
             OperatorNode::Hamiltonian => return self.act(factor, ket),
+            OperatorNode::Adjoint(inner) => return self.act(&factor.of(inner), ket),
             OperatorNode::Sum(terms) => {
                 let mut sum: BTreeMap<Sector, Vec<(Number, BlockKet)>> = BTreeMap::new();
                 for term in terms {
@@ -455,7 +468,11 @@ impl Walker<'_, '_> {
                     }
                 }
             }
-            OperatorNode::Scalar(_) | OperatorNode::Product(_) | OperatorNode::Power(..) | OperatorNode::Call(_) => {
+            OperatorNode::Scalar(_)
+            | OperatorNode::Product(_)
+            | OperatorNode::Power(..)
+            | OperatorNode::Tensor(_)
+            | OperatorNode::Call(_) => {
                 let flat = self.flatten(&factor.operator, &factor.environment)?;
                 let mut image = ket.clone();
                 for inner in &flat.factors {
@@ -506,13 +523,13 @@ impl Walker<'_, '_> {
         self.collect(parts, place)
     }
 
-    fn scaled(&self, ket: &SectorKet, scale: &Number, place: Place) -> Walked<BTreeMap<Sector, BlockKet>> {
+    pub(super) fn scaled(&self, ket: &SectorKet, scale: &Number, place: Place) -> Walked<BTreeMap<Sector, BlockKet>> {
         let parts = ket.parts.iter().map(|(sector, part)| (*sector, vec![(scale.clone(), part.clone())])).collect();
         self.collect(parts, place)
     }
 
     /// Adds up what came into each sector and leaves out sectors where nothing is left.
-    fn collect(
+    pub(super) fn collect(
         &self,
         sum: BTreeMap<Sector, Vec<(Number, BlockKet)>>,
         place: Place,
@@ -528,67 +545,6 @@ impl Walker<'_, '_> {
             }
         }
         Ok(parts)
-    }
-
-    /// A ket term as parts over sectors.
-    fn ket(&mut self, term: &KetTerm, environment: &Environment) -> Walked<SectorKet> {
-        match &*term.node {
-            KetNode::State(state) => {
-                let state = self.evaluator.state(state, environment)?;
-                self.eigenstate(&state, term.place)
-            }
-            KetNode::Applied(operator, inner) => {
-                let flat = self.flatten(operator, environment)?;
-                let mut image = self.ket(inner, environment)?;
-                for factor in flat.factors.iter().rev() {
-                    image = self.act(factor, &image)?;
-                }
-                self.rescaled(image, &flat.coefficient, term.place)
-            }
-            KetNode::Sum(terms) => {
-                let mut sum: BTreeMap<Sector, Vec<(Number, BlockKet)>> = BTreeMap::new();
-                let one = Number::Exact(crate::num::Surd::one());
-                for inner in terms {
-                    for (sector, part) in self.ket(inner, environment)?.parts.iter() {
-                        sum.entry(*sector).or_default().push((one.clone(), part.clone()));
-                    }
-                }
-                let key = format!("({}){{{}}}", term.text, environment.fingerprint());
-                Ok(SectorKet { key: key.into(), parts: Arc::new(self.collect(sum, term.place)?) })
-            }
-            KetNode::Scaled(scalar, inner) => {
-                let coefficient = self.evaluator.scalar(scalar, environment, self.scalar_bits())?;
-                let image = self.ket(inner, environment)?;
-                self.rescaled(image, &coefficient, term.place)
-            }
-            KetNode::Call(call) => match &call.definition.body {
-                Meaning::Ket(body) => {
-                    let inside = self.evaluator.enter(call, environment, self.scalar_bits())?;
-                    self.ket(body, &inside)
-                }
-                _ => Err(Failure::new(term.place, Obstacle::Inexact)),
-            },
-        }
-    }
-
-    fn eigenstate(&mut self, state: &State, place: Place) -> Walked<SectorKet> {
-        let key = format!("|{}>", state.label);
-        if let Some(known) = self.kept.get(&key) {
-            return Ok(known.clone());
-        }
-        let parts = self.backend.state(state).map_err(|obstacle| Failure::new(place, obstacle))?;
-        let result = SectorKet { key: key.as_str().into(), parts: Arc::new(parts.into_iter().collect()) };
-        self.keep(key, &result);
-        Ok(result)
-    }
-
-    fn rescaled(&mut self, ket: SectorKet, coefficient: &Scalar, place: Place) -> Walked<SectorKet> {
-        if matches!(coefficient, Scalar::Exact(c) if c.is_one()) {
-            return Ok(ket);
-        }
-        let number = self.number(coefficient, place)?;
-        let key = format!("{coefficient:?}*{}", ket.key);
-        Ok(SectorKet { key: key.into(), parts: Arc::new(self.scaled(&ket, &number, place)?) })
     }
 }
 

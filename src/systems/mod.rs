@@ -8,13 +8,15 @@ pub mod hydrogenic;
 pub mod levels;
 pub mod matrix;
 mod number;
+pub mod shifted;
+pub mod symbolic;
 mod symmetry;
 
 use crate::num::{Effort, Interrupted, Surd};
 use rug::{Complex, Rational};
 use std::any::Any;
 use std::sync::Arc;
-pub use symmetry::Symmetry;
+pub use symmetry::{LevelShift, Symmetry};
 
 /// A symmetry block with its magnetic component: what a ket is split into.
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Debug)]
@@ -189,6 +191,11 @@ pub trait System: Send + Sync {
     /// The word that declares it (`hydrogenic`).
     fn kind(&self) -> &'static str;
 
+    /// What may be asked of it by name, as `h.mass`.
+    fn parameters(&self) -> Vec<(&'static str, Rational)> {
+        Vec::new()
+    }
+
     /// The eigenstate that carries a label.
     fn state(&self, label: &StateLabel, effort: &Effort) -> Result<State, SystemError>;
 
@@ -203,6 +210,11 @@ pub trait System: Send + Sync {
 
     /// The states of a state's level that have a part in a sector, the state itself included.
     fn level_in(&self, state: &State, sector: Sector, effort: &Effort) -> Result<Vec<State>, Obstacle>;
+
+    /// All states of the level of a state, itself included, in every sector.
+    fn level(&self, state: &State, _effort: &Effort) -> Result<Vec<State>, Obstacle> {
+        Ok(vec![state.clone()])
+    }
 
     /// Tells whether the system has this operator with this component, arguments and power.
     ///
@@ -231,6 +243,21 @@ pub trait System: Send + Sync {
 
     /// Bits below which the data of the system cannot be told apart; numeric work starts above.
     fn data_bits(&self) -> u32;
+
+    /// All states of a manifold.
+    fn states_of(&self, manifold: &Manifold, _effort: &Effort) -> Result<Vec<State>, Obstacle> {
+        Err(Obstacle::NotYet(format!("the states of {} one by one", manifold.label)))
+    }
+
+    /// The states of a manifold that have a part in a sector.
+    fn members(&self, _manifold: &Manifold, _sector: Sector) -> Vec<State> {
+        Vec::new()
+    }
+
+    /// Tells whether a state belongs to a manifold.
+    fn holds(&self, _manifold: &Manifold, _state: &State) -> bool {
+        false
+    }
 
     /// What the angular algebra knows of the system; `None` for a space without symmetry.
     fn symmetry(&self) -> Option<&dyn Symmetry> {

@@ -37,6 +37,22 @@ impl Number {
         }
     }
 
+    pub fn negated(&self) -> Number {
+        match self {
+            Number::Exact(a) => Number::Exact(-a),
+            Number::Approx(a) => Number::Approx(Complex::with_val(a.prec(), -a)),
+        }
+    }
+
+    /// One over the number; `None` for zero.
+    pub fn inverse(&self, bits: u32) -> Option<Number> {
+        match self {
+            Number::Exact(a) => a.inverse().map(Number::Exact),
+            Number::Approx(a) if a.is_zero() => None,
+            Number::Approx(a) => Some(Number::Approx(Complex::with_val(bits, a.recip_ref()))),
+        }
+    }
+
     pub fn conj(&self) -> Number {
         match self {
             Number::Exact(a) => Number::Exact(a.conj()),

@@ -6,6 +6,9 @@ use super::resolve::{Resolved, Resolver};
 use super::terms::*;
 use crate::lang::tree::{Argument, Expr, ExprKind, Name, Span};
 
+/// Highest order of a variation.
+const HIGHEST_ORDER: u32 = 60;
+
 impl Resolver<'_> {
     /// A function call: functions of numbers and of H, energies, defined names, operators with arguments.
     pub(super) fn call(
@@ -20,25 +23,31 @@ impl Resolver<'_> {
             let plain = self.positional(&name.text, arguments, span)?;
             return self.call_definition(definition, &plain, span);
         }
+        if let Some(part) = LevelPart::named(&name.text) {
+            let argument = self.only_argument(name, arguments, span)?;
+            let inner = self.scalar(&argument)?;
+            return Ok(Meaning::Scalar(self.term(ScalarNode::LevelPart(part, inner), span)));
+        }
         if let Some(function) = function_named(&name.text) {
-            let [argument] = self.positional(&name.text, arguments, span)?.try_into().or_else(|list: Vec<Expr>| {
-                self.fault(
-                    span,
-                    Fault::ArgumentCount {
-                        name: name.text.clone(),
-                        wanted: "one argument".into(),
-                        got: format!("{} are", list.len()),
-                    },
-                )
-            })?;
+            let argument = self.only_argument(name, arguments, span)?;
             return match self.resolve(&argument)? {
-                Meaning::Scalar(inner) => Ok(Meaning::Scalar(self.term(ScalarNode::Function(function, inner), span))),
+                Meaning::Scalar(inner) => {
+                    self.check_function(function, &name.text, &inner)?;
+                    Ok(Meaning::Scalar(self.term(ScalarNode::Function(function, inner), span)))
+                }
                 Meaning::Operator(inner) => self.function_of_h(function, &inner, span),
                 other => self.fault(argument.span, Fault::WrongKind { wanted: Kind::Number, got: other.kind() }),
             };
         }
         match name.text.as_str() {
             "E" => self.energy(arguments, span),
+            "tensor" => self.tensor(arguments, subscript, span),
+            "coupled" => self.coupled(arguments, subscript, span),
+            "vary" => self.vary(arguments, span),
+            "photon" | "wavelength" => {
+                let argument = self.only_argument(name, arguments, span)?;
+                self.photon_or_wavelength(name, &argument, span)
+            }
             "zero" | "sum" => self.bound_variable(name, arguments, span),
             symbol if WignerSymbol::named(symbol).is_some_and(|_| !self.names.later.contains_key(symbol)) => {
                 let plain = self.positional(symbol, arguments, span)?;
@@ -54,7 +63,7 @@ impl Resolver<'_> {
                         },
                     );
                 }
-                let terms = plain.iter().map(|a| self.scalar(a)).collect::<Resolved<Vec<_>>>()?;
+                let terms = plain.iter().map(|a| self.plain(a, "in the symbol")).collect::<Resolved<Vec<_>>>()?;
                 Ok(Meaning::Scalar(self.term(ScalarNode::Wigner(symbol, terms), span)))
             }
             "delta" if self.names.operators.contains("delta") => {
@@ -88,6 +97,20 @@ impl Resolver<'_> {
                 self.unknown(other, name.span)
             }
         }
+    }
+
+    fn only_argument(&self, name: &Name, arguments: &[Argument], span: Span) -> Resolved<Expr> {
+        let [argument] = self.positional(&name.text, arguments, span)?.try_into().or_else(|list: Vec<Expr>| {
+            self.fault(
+                span,
+                Fault::ArgumentCount {
+                    name: name.text.clone(),
+                    wanted: "one argument".into(),
+                    got: format!("{} are", list.len()),
+                },
+            )
+        })?;
+        Ok(argument)
     }
 
     /// The arguments as plain expressions; other forms are refused.
@@ -135,6 +158,46 @@ impl Resolver<'_> {
         Ok(Meaning::Scalar(self.term(ScalarNode::Energy(state), span)))
     }
 
+    /// `vary(f, V)` and `vary(f, V, n)`.
+    fn vary(&mut self, arguments: &[Argument], span: Span) -> Resolved<Meaning> {
+        let plain = self.positional("vary", arguments, span)?;
+        let (body, perturbation, order) = match plain.as_slice() {
+            [body, perturbation] => (body, perturbation, None),
+            [body, perturbation, order] => (body, perturbation, Some(order)),
+            other => {
+                let wanted = "an expression, a perturbation and, if not 1, the order: `vary(E(g), D_z, 2)`".into();
+                let got = if other.len() == 1 { "one is".into() } else { format!("{} are", other.len()) };
+                return self.fault(span, Fault::ArgumentCount { name: "vary".into(), wanted, got });
+            }
+        };
+        let body = self.scalar(body)?;
+        let perturbation = match self.resolve(perturbation)? {
+            Meaning::Operator(term) => term,
+            Meaning::Scalar(term) => self.identity_multiple(term),
+            other => {
+                return self.fault(perturbation.span, Fault::WrongKind { wanted: Kind::Operator, got: other.kind() });
+            }
+        };
+        let order = match order {
+            None => 1,
+            Some(order) => match &order.kind {
+                ExprKind::Number(text) => text.parse().ok().filter(|n| *n <= HIGHEST_ORDER),
+                _ => None,
+            }
+            .map_or_else(
+                || {
+                    let message = format!("the order of a variation is a whole number from 0 to {HIGHEST_ORDER}");
+                    self.fault(
+                        order.span,
+                        Fault::Other { message, help: "write it as a number: `vary(E(g), V, 3)`".into() },
+                    )
+                },
+                Ok,
+            )?,
+        };
+        Ok(Meaning::Scalar(self.term(ScalarNode::Vary(Variation { body, perturbation, order }), span)))
+    }
+
     /// `zero(w in a .. b, f)` and `sum(n in a .. b, f)`.
     fn bound_variable(&mut self, name: &Name, arguments: &[Argument], span: Span) -> Resolved<Meaning> {
         let [Argument::Range { variable, from, to }, Argument::Positional(body)] = arguments else {
@@ -149,9 +212,16 @@ impl Resolver<'_> {
             );
         };
         let (from, to) = (self.scalar(from)?, self.scalar(to)?);
+        let known = self.check_range(&from, &to)?.of_variable();
+        if name.text == "sum" {
+            self.check_plain(&from, "in the range of a sum")?;
+            self.check_plain(&to, "in the range of a sum")?;
+        }
         self.variables.push(variable.text.clone());
+        self.variable_dimensions.push((variable.text.clone(), known));
         let body = self.scalar(body);
         self.variables.pop();
+        self.variable_dimensions.pop();
         let (variable, body) = (variable.text.clone(), body?);
         let node = if name.text == "zero" {
             ScalarNode::Root { variable, from, to, body }

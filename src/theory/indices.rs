@@ -7,14 +7,17 @@ pub fn is_index(component: &str) -> bool {
     matches!(component, "i" | "j" | "k")
 }
 
-pub(super) type Counts = std::collections::BTreeMap<String, usize>;
+pub(in crate::theory) type Counts = std::collections::BTreeMap<String, usize>;
 
-pub(super) fn count_indices(operator: &OperatorTerm, count: &mut Counts) {
+pub(in crate::theory) fn count_indices(operator: &OperatorTerm, count: &mut Counts) {
     match &*operator.node {
         OperatorNode::Atom(AtomTerm { component: Some(component), power, .. }) if is_index(component) => {
             *count.entry(component.clone()).or_default() += power.unsigned_abs() as usize;
         }
-        OperatorNode::Atom(_) | OperatorNode::Scalar(_) | OperatorNode::Hamiltonian => {}
+        OperatorNode::Tensor(TensorTerm { component: Some(component), .. }) if is_index(component) => {
+            *count.entry(component.clone()).or_default() += 1;
+        }
+        OperatorNode::Tensor(_) | OperatorNode::Atom(_) | OperatorNode::Scalar(_) | OperatorNode::Hamiltonian => {}
         OperatorNode::Resolvent(_) | OperatorNode::Function(..) => {}
         OperatorNode::Sum(terms) => {
             // Every term of a sum must carry the same indices; the largest count shows the first that does not.
@@ -32,6 +35,7 @@ pub(super) fn count_indices(operator: &OperatorTerm, count: &mut Counts) {
             }
         }
         OperatorNode::Product(factors) => factors.iter().for_each(|factor| count_indices(factor, count)),
+        OperatorNode::Adjoint(inner) => count_indices(inner, count),
         OperatorNode::Power(inner, power) => (0..*power).for_each(|_| count_indices(inner, count)),
         OperatorNode::Dyad(ket, bra) => {
             count_indices_ket(ket, count);

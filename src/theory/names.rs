@@ -1,6 +1,9 @@
 //! The names an entry may use: what the entries above it have bound, and the words of the language.
 
 use super::terms::{Definition, ManifoldTerm, StateTerm};
+use crate::angular::polarization::Polarization;
+use crate::num::units::ConstantSet;
+use rug::Rational;
 use std::collections::{BTreeMap, BTreeSet};
 use std::sync::Arc;
 
@@ -11,6 +14,7 @@ pub enum Binding {
     State(StateTerm),
     Manifold(ManifoldTerm),
     Definition(Arc<Definition>),
+    Polarization(Polarization),
 }
 
 impl Binding {
@@ -21,11 +25,13 @@ impl Binding {
             Binding::System => "a system".into(),
             Binding::State(_) => "a state".into(),
             Binding::Manifold(_) => "a manifold".into(),
+            Binding::Polarization(_) => "a polarization".into(),
             Binding::Definition(definition) => match definition.kind {
                 DefinitionKind::Operator => "an operator".into(),
                 DefinitionKind::Resolvent => "a resolvent".into(),
                 DefinitionKind::Ket => "a ket".into(),
                 DefinitionKind::Define => "a defined number".into(),
+                DefinitionKind::Polarization => "a polarization".into(),
             },
         }
     }
@@ -43,8 +49,10 @@ pub struct Names {
     pub later: BTreeMap<String, String>,
     /// Names an entry above should have bound, had it not failed, with its number.
     pub broken: BTreeMap<String, usize>,
-    /// Units, recognised behind a number only.
-    pub units: BTreeSet<String>,
+    /// The set of recommended constants in force.
+    pub constants: ConstantSet,
+    /// Parameters of systems by the system's name: `mass`, `reduced_mass`, `Z`.
+    pub parameters: BTreeMap<String, Vec<(&'static str, Rational)>>,
 }
 
 impl Names {

@@ -73,6 +73,8 @@ pub enum Fault {
     BoundTwice { name: String, entry: usize },
     #[error("`{name}` is a word of the language and cannot be a name")]
     Reserved { name: String },
+    #[error("interrupted")]
+    Interrupted,
     /// A data file with several defects, each told with its place and cure.
     #[error("\"{name}\" has {}{} defects", if *.more { "at least " } else { "" }, .faults.len())]
     DataFile { name: String, faults: Vec<String>, more: bool },
@@ -140,7 +142,7 @@ impl Fault {
             Fault::TwoSystems { .. } => "take both from one system, or multiply two brackets".into(),
             Fault::IndexCount { .. } => "write the index twice, as in `D_i R D_i`, or a component: `D_z`".into(),
             Fault::OperatorPower => "write `V^2`, `V^3`, …".into(),
-            Fault::NotYet { .. } => return None,
+            Fault::NotYet { .. } | Fault::Interrupted => return None,
             Fault::BoundTwice { name, .. } => {
                 format!("choose another name, or change the earlier entry (at the prompt a new declaration of `{name}` revises it)")
             }

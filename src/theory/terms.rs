@@ -3,9 +3,14 @@
 //! Terms know systems only by name. Every term carries the place it was written at and the text it was written as; the text, with the values of
 //! the variables in scope, identifies the term while names keep their meaning, which they do during one evaluation.
 
+use super::dimensions::Known;
+use crate::angular::polarization::Polarization;
+use crate::angular::tensor::Tensor;
+use crate::angular::{AngularError, HalfInteger, clebsch_gordan, ninej, sixj, threej};
 use crate::lang::tree::{DefinitionKind, Expr, Span};
 pub use crate::num::Function as ScalarFunction;
 use crate::num::Surd;
+use crate::num::units::Unit;
 use rug::Rational;
 use std::sync::Arc;
 
@@ -45,6 +50,8 @@ pub enum Source {
     Datum { system: String, index: usize },
 }
 
+// Terms are shared by their nodes; a node is made once.
+#[allow(clippy::large_enum_variant)]
 #[derive(Clone, Debug)]
 pub enum ScalarNode {
     Exact(Surd),
@@ -55,6 +62,12 @@ pub enum ScalarNode {
         sigma: Rational,
     },
     Pi,
+    /// A value of which the dimension is known, and the unit it is written in
+    Quantity {
+        known: Known,
+        unit: Option<Unit>,
+        value: ScalarTerm,
+    },
     /// Bound by `zero`, `sum` or a definition's parameter list.
     Variable(String),
     Sum(Vec<ScalarTerm>),
@@ -82,6 +95,49 @@ pub enum ScalarNode {
     },
     /// `threej(j1, j2, j3, m1, m2, m3)` and its like
     Wigner(WignerSymbol, Vec<ScalarTerm>),
+    /// A part of the dependence of a level's value on M and on the polarization of the light
+    LevelPart(LevelPart, ScalarTerm),
+    /// `vary(f, V, n)`
+    Vary(Variation),
+}
+
+/// The coefficient of lambda^order in the body when H becomes H + lambda V.
+#[derive(Clone, Debug)]
+pub struct Variation {
+    pub body: ScalarTerm,
+    pub perturbation: OperatorTerm,
+    pub order: u32,
+}
+
+/// The parts of a value that depends on the M of a level.
+#[derive(Clone, Copy, PartialEq, Eq, Debug, Hash)]
+pub enum LevelPart {
+    Average,
+    Scalar,
+    Vector,
+    Tensor,
+}
+
+impl LevelPart {
+    /// The part of that name in the session language.
+    pub fn named(name: &str) -> Option<Self> {
+        match name {
+            "average" => Some(Self::Average),
+            "scalar_part" => Some(Self::Scalar),
+            "vector_part" => Some(Self::Vector),
+            "tensor_part" => Some(Self::Tensor),
+            _ => None,
+        }
+    }
+
+    pub fn name(self) -> &'static str {
+        match self {
+            Self::Average => "average",
+            Self::Scalar => "scalar_part",
+            Self::Vector => "vector_part",
+            Self::Tensor => "tensor_part",
+        }
+    }
 }
 
 /// The function of numbers with that name in the session language.
@@ -103,6 +159,7 @@ pub fn function_named(name: &str) -> Option<ScalarFunction> {
 /// The symbols of angular momentum theory that expressions may ask for.
 #[derive(Clone, Copy, PartialEq, Eq, Debug, Hash)]
 pub enum WignerSymbol {
+    ClebschGordan,
     ThreeJ,
     SixJ,
     NineJ,
@@ -112,6 +169,7 @@ impl WignerSymbol {
     /// The symbol of that name in the session language.
     pub fn named(name: &str) -> Option<Self> {
         match name {
+            "clebsch_gordan" => Some(Self::ClebschGordan),
             "threej" => Some(Self::ThreeJ),
             "sixj" => Some(Self::SixJ),
             "ninej" => Some(Self::NineJ),
@@ -122,9 +180,23 @@ impl WignerSymbol {
     /// How many arguments it takes, and which.
     pub fn arguments(self) -> (usize, &'static str) {
         match self {
+            Self::ClebschGordan => (6, "six arguments (j1, m1, j2, m2, J, M)"),
             Self::ThreeJ => (6, "six arguments (j1, j2, j3, m1, m2, m3)"),
             Self::SixJ => (6, "six arguments (the upper row, then the lower)"),
             Self::NineJ => (9, "nine arguments, row by row"),
+        }
+    }
+
+    /// Its value; `None` for a wrong number of arguments.
+    ///
+    /// Errors: angular momenta or projections that do not exist.
+    pub fn value(self, j: &[HalfInteger]) -> Option<Result<Surd, AngularError>> {
+        match (self, j) {
+            (Self::ClebschGordan, &[j1, m1, j2, m2, j, m]) => Some(clebsch_gordan(j1, m1, j2, m2, j, m)),
+            (Self::ThreeJ, &[j1, j2, j3, m1, m2, m3]) => Some(threej(j1, j2, j3, m1, m2, m3)),
+            (Self::SixJ, &[j1, j2, j3, l1, l2, l3]) => Some(sixj([j1, j2, j3, l1, l2, l3])),
+            (Self::NineJ, &[a, b, c, d, e, f, g, h, i]) => Some(ninej([[a, b, c], [d, e, f], [g, h, i]])),
+            _ => None,
         }
     }
 }
@@ -143,6 +215,8 @@ pub struct Definition {
     pub kind: DefinitionKind,
     pub parameters: Vec<String>,
     pub body: Meaning,
+    /// What is known of the dimension of a defined number.
+    pub known: Known,
     /// The body as it was written, for `formula`.
     pub written: Expr,
 }
@@ -194,7 +268,28 @@ pub enum OperatorNode {
     Resolvent(LinearInH),
     /// f(constant + slope H), the omitted states left out.
     Function(ScalarFunction, LinearInH),
+    /// An operator of which only the symmetry is given.
+    Tensor(TensorTerm),
+    Adjoint(OperatorTerm),
     Call(Call),
+}
+
+/// An operator known by its ranks alone.
+#[derive(Clone, PartialEq, Eq, Debug)]
+pub struct TensorTerm {
+    pub tensor: Tensor,
+    pub component: Option<String>,
+    pub along: Option<Direction>,
+}
+
+/// The direction a vector operator is taken along.
+#[derive(Clone, PartialEq, Eq, Debug)]
+pub enum Direction {
+    Fixed(Polarization),
+    /// The polarization of the light, left open.
+    Light,
+    /// Its complex conjugate.
+    LightConjugate,
 }
 
 /// An operator as written, its arguments not yet numbers.
@@ -202,6 +297,8 @@ pub enum OperatorNode {
 pub struct AtomTerm {
     pub name: String,
     pub component: Option<String>,
+    /// Stands in place of a component.
+    pub along: Option<Direction>,
     pub arguments: Vec<ScalarTerm>,
     pub power: i64,
 }

@@ -10,11 +10,11 @@ use rug::Rational;
 use std::collections::{BTreeMap, HashMap};
 
 /// Amplitudes by doubled M.
-pub(super) type Amplitudes = BTreeMap<i32, Surd>;
+pub(in crate::angular) type Amplitudes = BTreeMap<i32, Surd>;
 
 /// Keeps the symbols that were computed: few different ones occur many times.
 #[derive(Default)]
-pub(super) struct Coefficients {
+pub(in crate::angular) struct Coefficients {
     reduced: HashMap<[i32; 9], Surd>,
     projected: HashMap<[i32; 5], Surd>,
 }
@@ -23,7 +23,12 @@ impl Coefficients {
     /// sqrt((2J+1)(2K+1)(2J'+1)) {L L' k; S S' s; J J' K}, times the known part of the element.
     ///
     /// Source: Edmonds, eq. 7.1.5, with the doubly reduced element as one number.
-    pub(super) fn reduced(&mut self, tensor: &Tensor, bra: Level, ket: Level) -> Result<Surd, AngularError> {
+    pub(in crate::angular) fn reduced(
+        &mut self,
+        tensor: &Tensor,
+        bra: Level,
+        ket: Level,
+    ) -> Result<Surd, AngularError> {
         let rank = |rank: u32| HalfInteger::whole(i32::try_from(rank).unwrap_or(i32::MAX / 8));
         let momentum = |level: Level| HalfInteger::from_twice(level.term.twice_l());
         let (k, s, total) = (rank(tensor.element.orbital), rank(tensor.element.spin), rank(tensor.total));
@@ -45,7 +50,7 @@ impl Coefficients {
     /// Carries amplitudes of |J' M'> through components of an operator to |J M>, without the reduced factor.
     ///
     /// Source: the Wigner-Eckart theorem, (-1)^{J-M} (J K J'; -M Q M'), M = Q + M'.
-    pub(super) fn carry(
+    pub(in crate::angular) fn carry(
         &mut self,
         total: u32,
         weights: &[(i32, Surd)],

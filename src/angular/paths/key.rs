@@ -6,6 +6,9 @@ use crate::angular::tensor::{Element, Sign};
 use crate::angular::term::{Level, Term};
 use std::fmt;
 
+/// The name of an element whose radial part is an overlap, that of L, S and J.
+const IDENTITY: &str = "1";
+
 /// The order in which the two sides of a reduced element are written.
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Debug)]
 pub enum Orientation {
@@ -114,18 +117,26 @@ impl fmt::Display for RadialChain {
         sides.extend(self.blocks.iter().map(Block::to_string));
         sides.push(self.ket.name.clone());
         let terms = self.terms();
+        let mut parts: Vec<String> = Vec::new();
         for (i, element) in self.elements.iter().enumerate() {
             if i > 0 {
-                write!(f, " ")?;
-                for resolvent in &self.gaps[i - 1] {
-                    write!(f, "{} ", resolvent.label)?;
+                parts.extend(self.gaps[i - 1].iter().map(|resolvent| resolvent.label.clone()));
+            }
+            // L, S and J leave the radial function as it is
+            if element.name == IDENTITY {
+                if sides[i] != sides[i + 1] {
+                    parts.push(format!("<{}|{}>", sides[i], sides[i + 1]));
                 }
+                continue;
             }
             let turned = self.turned(element, &terms[i..i + 2]).is_some();
             let (left, right) = if turned { (i + 1, i) } else { (i, i + 1) };
-            write!(f, "<{}||{}||{}>", sides[left], element.name, sides[right])?;
+            parts.push(format!("<{}||{}||{}>", sides[left], element.name, sides[right]));
         }
-        Ok(())
+        if parts.is_empty() {
+            return write!(f, "<{}|{}>", self.bra.name, self.ket.name);
+        }
+        write!(f, "{}", parts.join(" "))
     }
 }
 

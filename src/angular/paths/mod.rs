@@ -15,6 +15,7 @@ mod key;
 mod walk;
 
 pub use blocked::{Broken, blocked};
+pub(in crate::angular) use coefficients::{Amplitudes, Coefficients};
 pub use columns::Columns;
 pub(crate) use decompose::sort_brackets;
 pub use decompose::{Contribution, Decomposition, Setting, decompose};

@@ -148,6 +148,11 @@ impl Form {
         self.monomials.retain(|_, coefficient| !coefficient.is_zero());
     }
 
+    /// The levels whose shifts stand in it, ascending.
+    pub fn levels(&self) -> BTreeSet<Level> {
+        self.monomials.keys().flatten().copied().collect()
+    }
+
     /// The value for given shifts; `Err` names a level whose shift is missing.
     pub fn value(&self, shifts: &BTreeMap<Level, Rational>) -> Result<Surd, Level> {
         let mut sum = Surd::zero();

@@ -2,6 +2,7 @@
 
 use super::{ChainPath, ChainReport, Verdict, Where};
 use crate::angular::half_integer::HalfInteger;
+use crate::angular::paths::ChainKey;
 use crate::angular::term::{Level, Term};
 use crate::num::Surd;
 use std::collections::BTreeSet;
@@ -23,7 +24,7 @@ impl ChainReport {
         let mut terms: Vec<(String, Surd)> = Vec::new();
         for path in &self.paths {
             let factor = pick(&path.factors)?;
-            let label = path.label(products.len() > 1);
+            let label = path.label(&self.key, products.len() > 1);
             match terms.iter_mut().find(|(known, _)| *known == label) {
                 Some((_, sum)) => *sum += &factor,
                 None => terms.push((label, factor)),
@@ -64,15 +65,19 @@ impl ChainReport {
 
 impl ChainPath {
     /// `J=0`, or `J=1,0,1` where it changes on the way; with the product it comes from where there are several.
-    pub fn label(&self, with_product: bool) -> String {
+    ///
+    /// The J of a place where operators touch is not told: no energy belongs to it.
+    pub fn label(&self, key: &ChainKey, with_product: bool) -> String {
         let mut parts = Vec::new();
         if with_product {
             parts.push(format!("term {}", self.product + 1));
         }
-        for levels in self.levels.iter().filter(|levels| !levels.is_empty()) {
-            let momenta: Vec<String> = levels.iter().map(|level| level.j.to_string()).collect();
-            let same = momenta.iter().all(|j| *j == momenta[0]);
-            parts.push(format!("J={}", if same { momenta[0].clone() } else { momenta.join(",") }));
+        for (levels, chain) in self.levels.iter().zip(&key.brackets) {
+            let told = levels.iter().zip(&chain.gaps).filter(|(_, gap)| !gap.is_empty());
+            let momenta: Vec<String> = told.map(|(level, _)| level.j.to_string()).collect();
+            let Some(first) = momenta.first() else { continue };
+            let same = momenta.iter().all(|j| j == first);
+            parts.push(format!("J={}", if same { first.clone() } else { momenta.join(",") }));
         }
         parts.join(", ")
     }

@@ -3,13 +3,15 @@
 use super::action::{self, NoFunction};
 use super::bound::{bound_state, energy, level_at};
 use super::closed_sum::{NoSum, reduced_sum};
+use super::couplings::sector;
 use super::finite_solution::{finite_solution, project_out};
 use super::function::{RadialFunction, Unintegrable};
-use super::labels::{omitted_levels, quantum_numbers, short};
+use super::numbers::{Numbers, Vector, level_name, omitted_levels};
 use super::radial::{Radial, Scale};
+use crate::angular::{Electrons, HalfInteger, Level, Term, clebsch_gordan};
 use crate::num::{Effort, Surd};
 use crate::systems::{
-    Backend, Block, BlockKet, FunctionOfH, Number, Obstacle, RadialOperator, Resolvent, Sector, State,
+    Backend, Block, BlockKet, FunctionOfH, Number, Obstacle, RadialOperator, Resolvent, Sector, State, SystemError,
 };
 use rug::Rational;
 use std::cmp::Ordering;
@@ -18,12 +20,13 @@ use std::sync::Arc;
 /// Exact kets, operators and resolvents of a hydrogen-like atom.
 pub(super) struct ExactBackend {
     scale: Scale,
+    electrons: Electrons,
     effort: Effort,
 }
 
 impl ExactBackend {
-    pub(super) fn new(scale: Scale, effort: Effort) -> Self {
-        ExactBackend { scale, effort }
+    pub(super) fn new(scale: Scale, electrons: Electrons, effort: Effort) -> Self {
+        ExactBackend { scale, electrons, effort }
     }
 }
 
@@ -38,15 +41,65 @@ pub(super) fn orbital(sector: Sector) -> Result<u32, Obstacle> {
     }
 }
 
-/// The sector and the exact function of an eigenstate.
-pub(super) fn eigenstate(state: &State) -> Result<(Sector, RadialFunction), Obstacle> {
-    let Some((n, l, m)) = quantum_numbers(state) else {
-        return Err(Obstacle::Refused {
-            message: format!("{} is not a state of a hydrogen-like atom", state.label),
-            help: "take states of this atom".into(),
-        });
+/// An eigenstate that is not of this atom.
+pub(super) fn foreign_state(state: &State) -> SystemError {
+    SystemError::Refused {
+        message: format!("{} is not a state of a hydrogen-like atom", state.label),
+        help: "take states of this atom".into(),
+    }
+}
+
+/// The sectors and the exact functions of an eigenstate.
+///
+/// Errors: `Refused` for a level whose M is left open.
+pub(super) fn eigenstate(state: &State, electrons: Electrons) -> Result<Vec<(Sector, RadialFunction)>, Obstacle> {
+    let numbers = Numbers::of(state).ok_or_else(foreign)?;
+    let Numbers { n, l, vector } = numbers;
+    if let Some(count) = numbers.count(electrons) {
+        return Err(open_level(state, count, vector, electrons));
+    }
+    let u = bound_state(n, l);
+    Ok(match vector {
+        Vector::Product { ml, twice_ms } => {
+            let parts = product_amplitudes(l, ml, twice_ms).into_iter().filter(|(_, amplitude)| !amplitude.is_zero());
+            let weighted = |amplitude: &Surd| {
+                let mut part = RadialFunction::default();
+                part.add_scaled(amplitude, &u);
+                part
+            };
+            parts.map(|(sector, amplitude)| (sector, weighted(&amplitude))).collect()
+        }
+        Vector::Coupled { twice_j, twice_m } => vec![(Sector { block: Block::Coupled { l, twice_j }, twice_m }, u)],
+        Vector::Orbital { m } => vec![(Sector { block: Block::Orbital { l }, twice_m: 2 * m }, u)],
+        Vector::Term | Vector::Level { .. } => Vec::new(),
+    })
+}
+
+fn open_level(state: &State, count: u64, vector: Vector, electrons: Electrons) -> Obstacle {
+    let label = &state.label;
+    let example = match vector {
+        Vector::Level { .. } => format!("give M, as in `[{label}, M=1/2]`"),
+        _ if electrons.spin => format!("give j and M, as in `[{label}_1/2, M=1/2]`, or ML and MS"),
+        _ => format!("give m, as in `[{label}, m=0]`"),
     };
-    Ok((Sector { block: Block::Orbital { l }, twice_m: 2 * m }, bound_state(n, l)))
+    Obstacle::Refused {
+        message: format!("{label} has {count} states"),
+        help: format!("{example}; over all M of a level runs `average(…)`"),
+    }
+}
+
+/// |l ml>|1/2 ms> over the sectors of its two j: <l ml 1/2 ms|j M>.
+pub(super) fn product_amplitudes(l: u32, ml: i32, twice_ms: i32) -> Vec<(Sector, Surd)> {
+    let orbital = HalfInteger::whole(i32::try_from(l).unwrap_or(0));
+    let (spin, ms) = (HalfInteger::from_twice(1), HalfInteger::from_twice(twice_ms));
+    let m = HalfInteger::from_twice(2 * ml + twice_ms);
+    let term = Term::natural(l, spin);
+    let coupled = term.momenta().filter(|j| m.twice().abs() <= j.twice()).map(|j| {
+        // projections inside their momenta, as a label's are
+        let amplitude = clebsch_gordan(orbital, HalfInteger::whole(ml), spin, ms, j, m).unwrap_or_default();
+        (sector(Level::new(term, j), m, Electrons::ONE), amplitude)
+    });
+    coupled.collect()
 }
 
 /// Why a matrix element has no value, in words.
@@ -103,13 +156,14 @@ pub(super) fn element_exactly(
 /// The levels left out of a block, after checking that the energy is not another level's.
 ///
 /// z is in units of the atom with charge and reduced mass one.
-pub(super) fn levels_left_out(resolvent: &Resolvent, z: &Rational, l: u32) -> Result<Vec<u32>, Obstacle> {
+pub(super) fn levels_left_out(resolvent: &Resolvent, z: &Rational, sector: Sector) -> Result<Vec<u32>, Obstacle> {
+    let l = orbital(sector)?;
     if z.cmp0() != Ordering::Less {
         return Err(Obstacle::OnCut);
     }
-    let levels = omitted_levels(&resolvent.omitted, l);
+    let levels = omitted_levels(&resolvent.omitted, sector.block);
     match level_at(z) {
-        Some(n) if n > l && !levels.contains(&n) => Err(Obstacle::Singular { level: short(n, l) }),
+        Some(n) if n > l && !levels.contains(&n) => Err(Obstacle::Singular { level: level_name(n, sector.block) }),
         _ => Ok(levels),
     }
 }
@@ -155,8 +209,8 @@ pub(super) fn foreign() -> Obstacle {
 
 impl Backend for ExactBackend {
     fn state(&self, state: &State) -> Result<Vec<(Sector, BlockKet)>, Obstacle> {
-        let (sector, u) = eigenstate(state)?;
-        Ok(vec![(sector, Arc::new(u))])
+        let parts = eigenstate(state, self.electrons)?.into_iter();
+        Ok(parts.map(|(sector, u)| (sector, Arc::new(u) as BlockKet)).collect())
     }
 
     fn apply(&self, operator: &RadialOperator, from: Sector, to: Sector, ket: &BlockKet) -> Result<BlockKet, Obstacle> {
@@ -175,7 +229,7 @@ impl Backend for ExactBackend {
             return Err(Obstacle::Inexact);
         };
         let z = Rational::from(z.as_ref() / &self.scale.energy);
-        let levels = levels_left_out(resolvent, &z, l)?;
+        let levels = levels_left_out(resolvent, &z, sector)?;
         let u = resolve_exactly(&z, &levels, l, open(ket)?, &self.effort)?;
         Ok(Arc::new(u.scaled(&Rational::from(self.scale.energy.recip_ref()))))
     }
@@ -196,7 +250,7 @@ impl Backend for ExactBackend {
         let Some(z) = z else {
             return Err(Obstacle::Inexact);
         };
-        let levels = levels_left_out(resolvent, &z, l)?;
+        let levels = levels_left_out(resolvent, &z, sector)?;
         let Some(n) = level_at(&z) else {
             return Err(Obstacle::Inexact);
         };

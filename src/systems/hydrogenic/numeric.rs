@@ -7,10 +7,12 @@ use super::bound::level_at;
 use super::exact::{eigenstate, foreign, levels_left_out, no_integral, orbital, resolve_exactly};
 use super::finite_solution::project_out;
 use super::function::{RadialFunction, Unintegrable};
-use super::labels::{omitted_levels, short};
+
+use super::numbers::{level_name, omitted_levels};
 use super::numeric_ket::{NumericKet, element, not_a_function};
 use super::radial::{Radial, Scale};
 use super::sturmian::{Energy, Kept, SturmianBlock};
+use crate::angular::Electrons;
 use crate::num::Effort;
 use crate::systems::{
     Backend, BlockKet, FunctionOfH, Level, Number, Obstacle, RadialOperator, Resolvent, Sector, State,
@@ -27,6 +29,7 @@ const ROUNDING: u32 = 24;
 /// Kets, operators and resolvents of a hydrogen-like atom at one accuracy.
 pub(super) struct NumericBackend {
     scale: Scale,
+    electrons: Electrons,
     /// The level whose exponential the basis has.
     anchor: u32,
     count: usize,
@@ -36,20 +39,26 @@ pub(super) struct NumericBackend {
 }
 
 impl NumericBackend {
-    pub(super) fn new(scale: Scale, level: Level, anchor: u32, kept: Arc<Kept>, effort: Effort) -> Self {
+    pub(super) fn new(
+        (scale, electrons): (Scale, Electrons),
+        level: Level,
+        anchor: u32,
+        kept: Arc<Kept>,
+        effort: Effort,
+    ) -> Self {
         let bits = level.bits + GUARD;
-        NumericBackend { scale, anchor, count: level.basis, bits, kept, effort }
+        NumericBackend { scale, electrons, anchor, count: level.basis, bits, kept, effort }
     }
 
     /// The energy of a resolvent in units of the atom with charge and reduced mass one, and the levels left out of block l.
     ///
     /// Errors: `OnCut`, and `Singular` at a level that is not left out, for approximate energies as near as rounding.
-    fn energy(&self, resolvent: &Resolvent, l: u32) -> Result<(Energy, Vec<u32>), Obstacle> {
+    fn energy(&self, resolvent: &Resolvent, sector: Sector) -> Result<(Energy, Vec<u32>), Obstacle> {
         let z = match &resolvent.z {
             Number::Exact(surd) => match surd.as_rational() {
                 Some(z) => {
                     let z = Rational::from(z.as_ref() / &self.scale.energy);
-                    let levels = levels_left_out(resolvent, &z, l)?;
+                    let levels = levels_left_out(resolvent, &z, sector)?;
                     return Ok((Energy::Exact(z), levels));
                 }
                 None if surd.is_real() => Complex::with_val(self.bits, resolvent.z.to_complex(self.bits).real()),
@@ -58,9 +67,10 @@ impl NumericBackend {
             Number::Approx(z) => z.clone(),
         };
         let z = z / &self.scale.energy;
-        let levels = omitted_levels(&resolvent.omitted, l);
+        let levels = omitted_levels(&resolvent.omitted, sector.block);
+        let l = orbital(sector)?;
         if let Some(n) = nearest_level(&z, self.bits - GUARD).filter(|n| *n > l && !levels.contains(n)) {
-            return Err(Obstacle::Singular { level: short(n, l) });
+            return Err(Obstacle::Singular { level: level_name(n, sector.block) });
         }
         if !z.imag().is_zero() {
             return Ok((Energy::Complex(z), levels));
@@ -76,8 +86,9 @@ impl NumericBackend {
         SturmianBlock { k: Rational::from((1, self.anchor)), l, count, bits: self.bits }
     }
 
-    fn resolved(&self, resolvent: &Resolvent, l: u32, ket: &NumericKet) -> Result<NumericKet, Obstacle> {
-        let (z, levels) = self.energy(resolvent, l)?;
+    fn resolved(&self, resolvent: &Resolvent, sector: Sector, ket: &NumericKet) -> Result<NumericKet, Obstacle> {
+        let l = orbital(sector)?;
+        let (z, levels) = self.energy(resolvent, sector)?;
         if let Some(exact) = ket.as_exact() {
             let attempt = match &z {
                 Energy::Exact(z) => resolve_exactly(z, &levels, l, exact, &self.effort),
@@ -134,9 +145,11 @@ fn open(ket: &BlockKet) -> Result<&NumericKet, Obstacle> {
 
 impl Backend for NumericBackend {
     fn state(&self, state: &State) -> Result<Vec<(Sector, BlockKet)>, Obstacle> {
-        let (sector, u) = eigenstate(state)?;
-        let ket = NumericKet::from_exact(u, orbital(sector)?, self.bits);
-        Ok(vec![(sector, Arc::new(ket))])
+        let mut parts: Vec<(Sector, BlockKet)> = Vec::new();
+        for (sector, u) in eigenstate(state, self.electrons)? {
+            parts.push((sector, Arc::new(NumericKet::from_exact(u, orbital(sector)?, self.bits))));
+        }
+        Ok(parts)
     }
 
     fn apply(&self, operator: &RadialOperator, from: Sector, to: Sector, ket: &BlockKet) -> Result<BlockKet, Obstacle> {
@@ -148,7 +161,7 @@ impl Backend for NumericBackend {
     }
 
     fn resolve(&self, resolvent: &Resolvent, sector: Sector, ket: &BlockKet) -> Result<BlockKet, Obstacle> {
-        let u = self.resolved(resolvent, orbital(sector)?, open(ket)?)?;
+        let u = self.resolved(resolvent, sector, open(ket)?)?;
         Ok(Arc::new(u.scaled_by(&Rational::from(self.scale.energy.recip_ref()))))
     }
 

@@ -1,75 +1,56 @@
-//! The operators of the atom: what may be written, where each leads, and with which exact factor.
+//! The operators of the atom: what may be written, and which components of tensors it is made of.
 
 use super::radial::Radial;
-use crate::angular::spherical::c_element;
-use crate::angular::{SphericalWeight, cartesian_components};
+use crate::angular::Electrons;
+use crate::angular::chain::{self, Part};
+use crate::angular::polarization::Component;
+use crate::angular::tensor::{LARGEST_RANK, Sign, Tensor};
 use crate::num::Surd;
-use crate::systems::{Atom, Block, Coupling, Sector, SystemError};
+use crate::systems::{Atom, SystemError};
 use rug::Rational;
 
-/// Largest power of r, and largest rank of a spherical tensor, that may be written.
-const LARGEST: i64 = 200;
+/// Largest power of r that may be written.
+const LARGEST_POWER: i64 = 200;
 
 /// Names for a message about an operator that does not exist.
 const NAMES: [&str; 11] =
     ["D_z", "P_z", "L_z", "L^2", "r", "p^2", "p^4", "delta(r)", "C(1)_0", "mass_velocity", "darwin"];
 
-/// An operator that exists, taken apart.
+/// Those that ask for spin.
+const SPIN_NAMES: [&str; 5] = ["S_z", "J_z", "S^2", "J^2", "spin_orbit"];
+
+/// The name of an element that leaves the radial function as it is.
+const IDENTITY: &str = "1";
+
+/// A component of a tensor with the radial operator its element is.
 #[derive(Clone, PartialEq, Debug)]
-enum Operator {
-    /// A vector by its spherical components.
-    Vector {
-        kind: Vector,
-        parts: Vec<SphericalWeight>,
-    },
-    /// C^k by its spherical components.
-    Tensor {
-        k: u32,
-        parts: Vec<SphericalWeight>,
-    },
-    LSquared,
-    /// A multiple of a radial operator.
-    Scalar(Radial, Rational),
-    /// A multiple of pi delta(r), which keeps to s waves.
-    Contact(Surd),
+pub(super) struct Piece {
+    pub(super) part: Part,
+    pub(super) radial: Radial,
 }
 
-#[derive(Clone, Copy, PartialEq, Eq, Debug)]
-enum Vector {
-    Position,
-    Momentum,
-    Orbital,
+/// What an atom offers its operators.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Setting<'a> {
+    pub(super) charge: &'a Rational,
+    pub(super) electrons: Electrons,
 }
 
 /// Tells whether an operator exists as written; `Ok(false)` where it is a power to be multiplied out.
-pub(super) fn knows(atom: &Atom) -> Result<bool, SystemError> {
-    Ok(read(atom, &Rational::from(1))?.is_some())
+pub(super) fn knows(atom: &Atom, setting: Setting<'_>) -> Result<bool, SystemError> {
+    Ok(read(atom, setting)?.is_some())
 }
 
-/// Where an operator leads from a sector of the atom with a nuclear charge.
-pub(super) fn couple(atom: &Atom, from: Sector, charge: &Rational) -> Vec<Coupling> {
-    let Block::Orbital { l } = from.block else {
-        return Vec::new();
-    };
-    let Ok(Some(operator)) = read(atom, charge) else {
-        return Vec::new();
-    };
-    let m = from.twice_m / 2;
-    let stay = |factor: Surd, radial: Radial| vec![Coupling { to: from, factor, radial: radial.operator() }];
-    match operator {
-        Operator::Scalar(radial, factor) => stay(Surd::from(factor), radial),
-        Operator::Contact(factor) if l == 0 => stay(factor, Radial::DeltaTimesPi),
-        Operator::Contact(_) => Vec::new(),
-        Operator::LSquared if l == 0 => Vec::new(),
-        Operator::LSquared => stay(Surd::from(i64::from(l) * (i64::from(l) + 1)), Radial::Power(0)),
-        Operator::Vector { kind: Vector::Orbital, parts } => orbital(l, m, &parts),
-        Operator::Vector { kind, parts } => tensor(l, m, 1, &parts, kind == Vector::Momentum),
-        Operator::Tensor { k, parts } => {
-            let mut out = tensor(l, m, k, &parts, false);
-            for coupling in &mut out {
-                coupling.radial = Radial::Power(0).operator();
-            }
-            out
+/// An operator as a sum of components of tensors, their elements by name.
+pub(super) fn tensors(atom: &Atom, setting: Setting<'_>) -> Result<chain::Operator, SystemError> {
+    match read(atom, setting)? {
+        Some(pieces) => Ok(chain::Operator { parts: pieces.into_iter().map(|piece| piece.part).collect() }),
+        None => {
+            let factor = written(&Atom { power: 1, ..atom.clone() });
+            Err(refused(
+                format!("{} is a product of operators", written(atom)),
+                format!("write its factors side by side, as {factor} {factor}"),
+            ))
         }
     }
 }
@@ -85,30 +66,8 @@ pub(super) fn adjoint(atom: &Atom) -> (i32, Atom) {
     }
 }
 
-/// The rule behind an operator that leads nowhere.
-pub(super) fn selection_rule(atom: &Atom) -> String {
-    let name = written(atom);
-    let change = |parts: &[SphericalWeight]| match parts {
-        [one] if one.q == 0 => "keeps m".to_string(),
-        [one] => format!("changes m by {:+}", one.q),
-        _ => "changes m by one".to_string(),
-    };
-    match read(atom, &Rational::from(1)) {
-        Ok(Some(Operator::Vector { kind: Vector::Orbital, parts })) => format!("{name} keeps l and {}", change(&parts)),
-        Ok(Some(Operator::Vector { parts, .. })) => format!("{name} changes l by one and {}", change(&parts)),
-        Ok(Some(Operator::Tensor { k, parts })) if k > 1 => {
-            let steps: Vec<String> = (0..=k).rev().step_by(2).map(|s| s.to_string()).collect();
-            format!("{name} changes l by {} and {}", steps.join(" or "), change(&parts))
-        }
-        Ok(Some(Operator::Tensor { k: 1, parts })) => format!("{name} changes l by one and {}", change(&parts)),
-        Ok(Some(Operator::Contact(_))) => format!("{name} acts on s waves only: all others vanish at the nucleus"),
-        Ok(Some(Operator::LSquared)) => format!("{name} is zero in s waves"),
-        _ => format!("{name} keeps l and m"),
-    }
-}
-
 /// The operator as the session writes it.
-fn written(atom: &Atom) -> String {
+pub(super) fn written(atom: &Atom) -> String {
     let mut out = atom.name.clone();
     if !atom.arguments.is_empty() {
         let arguments: Vec<String> = atom.arguments.iter().map(Rational::to_string).collect();
@@ -127,86 +86,172 @@ fn refused(message: String, help: impl Into<String>) -> SystemError {
     SystemError::Refused { message, help: help.into() }
 }
 
-fn read(atom: &Atom, charge: &Rational) -> Result<Option<Operator>, SystemError> {
+type Read = Result<Option<Vec<Piece>>, SystemError>;
+
+/// The pieces of an operator; `None` where it is a power to be multiplied out.
+pub(super) fn read(atom: &Atom, setting: Setting<'_>) -> Read {
     let name = atom.name.as_str();
-    let one = Rational::from(1);
     if name != "C" && !atom.arguments.is_empty() {
         return Err(refused(
             format!("{} takes nothing in parentheses", atom.name),
             format!("write {} alone", atom.name),
         ));
     }
+    if matches!(name, "S" | "J" | "spin_orbit") && !setting.electrons.spin {
+        return Err(refused(
+            format!("{} acts on a spin, and the electron of this atom has none", written(atom)),
+            "declare the system with spin, as in `hydrogenic(Z=1, spin=1/2)`; L_z is the whole angular momentum here",
+        ));
+    }
     match name {
-        "D" => vector(atom, Vector::Position),
-        "P" => vector(atom, Vector::Momentum),
-        "L" if atom.component.is_none() => match atom.power {
-            2 => Ok(Some(Operator::LSquared)),
-            _ => Err(refused(
-                format!("{} is not a scalar this atom has", written(atom)),
-                "write a component, as L_z, or the square L^2; products of these give the rest",
-            )),
-        },
-        "L" => vector(atom, Vector::Orbital),
+        "D" => vector(atom, |component| of_tensor(position(), component, Radial::Power(1))),
+        "P" => vector(atom, |component| times(&-&Surd::i(), of_tensor(gradient(), component, Radial::Gradient))),
+        "L" | "S" | "J" if atom.component.is_none() => square(atom),
+        "L" => vector(atom, orbital),
+        "S" => vector(atom, spin),
+        "J" => vector(atom, |component| [orbital(component.clone()), spin(component)].concat()),
         "C" => spherical_tensor(atom),
         "r" => {
             no_component(atom)?;
-            if atom.power.abs() > LARGEST {
-                return Err(refused(format!("{} is beyond r^{LARGEST}", written(atom)), "choose a lower power"));
+            if atom.power.abs() > LARGEST_POWER {
+                return Err(refused(format!("{} is beyond r^{LARGEST_POWER}", written(atom)), "choose a lower power"));
             }
-            Ok(Some(Operator::Scalar(Radial::Power(atom.power), one)))
+            Ok(Some(scalar(Radial::Power(atom.power))))
         }
-        "p" => {
-            no_component(atom)?;
-            match atom.power {
-                2 => Ok(Some(Operator::Scalar(Radial::PSquared, one))),
-                4 => Ok(Some(Operator::Scalar(Radial::PFourth, one))),
-                1 => Err(refused(
-                    "p without a component is a vector, not a number".into(),
-                    "write a component, as P_z, or an even power: p^2, p^4",
-                )),
-                power if power > 0 && power % 2 == 0 => Err(refused(
-                    format!("{} is not an operator of its own here", written(atom)),
-                    "write it as a product: p^2 p^4",
-                )),
-                _ => Err(refused(
-                    format!("{} does not exist here", written(atom)),
-                    "the powers that exist are p^2 and p^4",
-                )),
-            }
-        }
+        "p" => momentum_power(atom),
         "delta(r)" => {
             no_component(atom)?;
             match atom.power {
-                1 => Ok(Some(Operator::Contact(Surd::pi_to(-1)))),
+                1 => Ok(Some(contact())),
                 _ => Err(refused(
                     format!("{} does not exist: a delta function has no powers", written(atom)),
                     "write delta(r) to the first power",
                 )),
             }
         }
-        "H" => {
-            no_component(atom)?;
-            power_of(atom, Operator::Scalar(Radial::Hamiltonian, one))
-        }
-        "mass_velocity" => {
-            no_component(atom)?;
-            power_of(atom, Operator::Scalar(Radial::PFourth, Rational::from((-1, 8))))
-        }
+        "H" => whole(atom, || scalar(Radial::Hamiltonian)),
+        "mass_velocity" => whole(atom, || times(&rational(-1, 8), scalar(Radial::PFourth))),
         "darwin" => {
-            no_component(atom)?;
-            power_of(atom, Operator::Contact(Surd::from(Rational::from(charge / 2))))
+            let strength = &Surd::pi_to(1) * &Surd::from(Rational::from(setting.charge / 2));
+            whole(atom, || times(&strength, contact()))
         }
-        _ => Err(SystemError::UnknownOperator {
-            name: atom.name.clone(),
-            known: NAMES.iter().map(|&known| known.to_string()).collect(),
-        }),
+        "spin_orbit" => {
+            let strength = Surd::from(Rational::from(setting.charge / 2));
+            whole(atom, || times(&strength, orbit_dot_spin(Radial::Power(-3))))
+        }
+        _ => {
+            let spin_names = if setting.electrons.spin { &SPIN_NAMES[..] } else { &[] };
+            let known = NAMES.iter().chain(spin_names).map(|&known| known.to_string()).collect();
+            Err(SystemError::UnknownOperator { name: atom.name.clone(), known })
+        }
     }
 }
 
-/// Powers beyond the first are for the caller to multiply out; negative ones do not exist.
-fn power_of(atom: &Atom, operator: Operator) -> Result<Option<Operator>, SystemError> {
+fn rational(n: i64, d: i64) -> Surd {
+    Surd::from(Rational::from((n, d)))
+}
+
+fn of_tensor(tensor: Tensor, component: Component, radial: Radial) -> Vec<Piece> {
+    pieces(chain::Operator::new(tensor, component), radial)
+}
+
+fn pieces(operator: chain::Operator, radial: Radial) -> Vec<Piece> {
+    operator.parts.into_iter().map(|part| Piece { part, radial }).collect()
+}
+
+fn times(factor: &Surd, mut pieces: Vec<Piece>) -> Vec<Piece> {
+    for piece in &mut pieces {
+        piece.part.coefficient = &piece.part.coefficient * factor;
+    }
+    pieces
+}
+
+/// The name of an element in `<2p||r||3d>`.
+fn element_name(radial: Radial) -> String {
+    if radial == Radial::Power(0) { IDENTITY.into() } else { radial.name() }
+}
+
+/// A function of r, p^2 or H: its element is an integral over r, as that of C^0.
+fn scalar(radial: Radial) -> Vec<Piece> {
+    pieces(chain::Operator::scalar(harmonic(&element_name(radial), 0)), radial)
+}
+
+fn contact() -> Vec<Piece> {
+    let radial = Radial::DeltaTimesPi;
+    pieces(chain::Operator::scalar(Tensor::contact(&element_name(radial))), radial)
+}
+
+fn orbit_dot_spin(radial: Radial) -> Vec<Piece> {
+    pieces(chain::Operator::dot(Tensor::orbit_dot_spin(&element_name(radial))), radial)
+}
+
+fn orbital(component: Component) -> Vec<Piece> {
+    of_tensor(Tensor::orbital_momentum(IDENTITY), component, Radial::Power(0))
+}
+
+fn spin(component: Component) -> Vec<Piece> {
+    of_tensor(Tensor::total_spin(IDENTITY), component, Radial::Power(0))
+}
+
+/// f(r) C^k; the rank is in range.
+fn harmonic(name: &str, k: u32) -> Tensor {
+    Tensor::harmonic(name, k).unwrap_or_else(|_| Tensor::scalar(name))
+}
+
+fn position() -> Tensor {
+    harmonic("r", 1)
+}
+
+/// The gradient, with C^1 taken out: its radial part changes sign when bra and ket change places.
+fn gradient() -> Tensor {
+    harmonic("grad", 1).with_adjoint(Sign::Minus)
+}
+
+/// L^2, S^2 = 3/4 and J^2 = L^2 + S^2 + 2 L.S.
+fn square(atom: &Atom) -> Read {
+    if atom.power != 2 {
+        return Err(refused(
+            format!("{} is not a scalar this atom has", written(atom)),
+            format!("write a component, as {0}_z, or the square {0}^2; products of these give the rest", atom.name),
+        ));
+    }
+    let orbital = pieces(chain::Operator::scalar(Tensor::orbital_square(IDENTITY)), Radial::Power(0));
+    let spin = times(&rational(3, 4), scalar(Radial::Power(0)));
+    let product = times(&Surd::from(2), orbit_dot_spin(Radial::Power(0)));
+    Ok(Some(match atom.name.as_str() {
+        "L" => orbital,
+        "S" => spin,
+        _ => [orbital, spin, product].concat(),
+    }))
+}
+
+fn momentum_power(atom: &Atom) -> Read {
+    no_component(atom)?;
     match atom.power {
-        1 => Ok(Some(operator)),
+        2 => Ok(Some(scalar(Radial::PSquared))),
+        4 => Ok(Some(scalar(Radial::PFourth))),
+        1 => Err(refused(
+            "p without a component is a vector, not a number".into(),
+            "write a component, as P_z, or an even power: p^2, p^4",
+        )),
+        power if power > 0 && power % 2 == 0 => Err(refused(
+            format!("{} is not an operator of its own here", written(atom)),
+            "write it as a product: p^2 p^4",
+        )),
+        _ => Err(refused(format!("{} does not exist here", written(atom)), "the powers that exist are p^2 and p^4")),
+    }
+}
+
+/// A scalar without powers of its own.
+fn whole(atom: &Atom, pieces: impl FnOnce() -> Vec<Piece>) -> Read {
+    no_component(atom)?;
+    power_of(atom, pieces)
+}
+
+/// Powers beyond the first are for the caller to multiply out; negative ones do not exist.
+fn power_of(atom: &Atom, pieces: impl FnOnce() -> Vec<Piece>) -> Read {
+    match atom.power {
+        1 => Ok(Some(pieces())),
         0.. => Ok(None),
         _ => Err(refused(
             format!("{} does not exist: only r has negative powers", written(atom)),
@@ -225,22 +270,22 @@ fn no_component(atom: &Atom) -> Result<(), SystemError> {
     }
 }
 
-fn vector(atom: &Atom, kind: Vector) -> Result<Option<Operator>, SystemError> {
-    let parts = components(atom, 1)?;
-    power_of(atom, Operator::Vector { kind, parts })
+fn vector(atom: &Atom, pieces: impl FnOnce(Component) -> Vec<Piece>) -> Read {
+    let component = component(atom, 1)?;
+    power_of(atom, || pieces(component))
 }
 
-fn spherical_tensor(atom: &Atom) -> Result<Option<Operator>, SystemError> {
+fn spherical_tensor(atom: &Atom) -> Read {
     let form = "write it as C(2)_0: the rank in parentheses, then the component";
     let [rank] = &atom.arguments[..] else {
         return Err(refused("C needs its rank, and nothing else, in parentheses".into(), form));
     };
-    let k = if *rank.denom() == 1 { rank.numer().to_i64() } else { None };
-    let Some(k) = k.filter(|k| (0..=LARGEST).contains(k)).and_then(|k| u32::try_from(k).ok()) else {
-        return Err(refused(format!("the rank of C is a whole number from 0 to {LARGEST}, not {rank}"), form));
+    let k = if *rank.denom() == 1 { rank.numer().to_u32() } else { None };
+    let Some(k) = k.filter(|k| *k <= LARGEST_RANK) else {
+        return Err(refused(format!("the rank of C is a whole number from 0 to {LARGEST_RANK}, not {rank}"), form));
     };
-    let parts = components(atom, k)?;
-    power_of(atom, Operator::Tensor { k, parts })
+    let component = component(atom, k)?;
+    power_of(atom, || of_tensor(harmonic(&format!("C({k})"), k), component, Radial::Power(0)))
 }
 
 /// The number a spherical component is.
@@ -250,7 +295,7 @@ fn component_number(text: &str) -> Option<i32> {
     if plain { text.parse().ok() } else { None }
 }
 
-fn components(atom: &Atom, k: u32) -> Result<Vec<SphericalWeight>, SystemError> {
+fn component(atom: &Atom, k: u32) -> Result<Component, SystemError> {
     let choices = if k == 1 {
         format!("{0}_x, {0}_y, {0}_z, {0}_+1, {0}_0 or {0}_-1", bare(atom))
     } else {
@@ -260,65 +305,20 @@ fn components(atom: &Atom, k: u32) -> Result<Vec<SphericalWeight>, SystemError> 
         return Err(refused(format!("{} needs a component", bare(atom)), format!("write {choices}")));
     };
     if let Some(q) = component_number(component).filter(|q| q.unsigned_abs() <= k) {
-        return Ok(vec![SphericalWeight { q, weight: Surd::one() }]);
+        return Ok(Component::Spherical(q));
     }
-    cartesian_components(component)
-        .filter(|_| k == 1)
-        .ok_or_else(|| refused(format!("{} has no component {component}", bare(atom)), format!("write {choices}")))
+    let mut letters = component.chars();
+    let axis = letters.next().filter(|_| k == 1 && letters.next().is_none()).and_then(Component::axis);
+    axis.ok_or_else(|| refused(format!("{} has no component {component}", bare(atom)), format!("write {choices}")))
 }
 
 fn bare(atom: &Atom) -> String {
     written(&Atom { component: None, power: 1, ..atom.clone() })
 }
 
-fn sector(l: u32, m: i32) -> Sector {
-    Sector { block: Block::Orbital { l }, twice_m: 2 * m }
-}
-
-/// Vectors and tensors that act on the angles as C^k; a momentum has the factor -i of -i grad.
-fn tensor(l: u32, m: i32, k: u32, parts: &[SphericalWeight], momentum: bool) -> Vec<Coupling> {
-    let radial = if momentum { Radial::Gradient } else { Radial::Power(1) };
-    let mut out = Vec::new();
-    for lp in (l.abs_diff(k)..=l + k).step_by(2) {
-        for part in parts {
-            let element = c_element(lp, k, part.q, l, m);
-            if element.is_zero() {
-                continue;
-            }
-            let mut factor = &element * &part.weight;
-            if momentum {
-                factor = -&(&factor * &Surd::i());
-            }
-            out.push(Coupling { to: sector(lp, m + part.q), factor, radial: radial.operator() });
-        }
-    }
-    out
-}
-
-/// L_0 |m> = m |m>, L_+-1 |m> = -+ sqrt((l -+ m)(l +- m + 1)/2) |m +- 1>.
-fn orbital(l: u32, m: i32, parts: &[SphericalWeight]) -> Vec<Coupling> {
-    let (li, mi) = (i64::from(l), i64::from(m));
-    let mut out = Vec::new();
-    for part in parts {
-        let q = i64::from(part.q);
-        let element = if q == 0 {
-            Surd::from(mi)
-        } else {
-            let square = Rational::from(((li - q * mi) * (li + q * mi + 1), 2));
-            Surd::sqrt_of(&square).unwrap_or_default().scaled(&Rational::from(-q))
-        };
-        if !element.is_zero() {
-            let radial = Radial::Power(0).operator();
-            out.push(Coupling { to: sector(l, m + part.q), factor: &element * &part.weight, radial });
-        }
-    }
-    out
-}
-
 #[cfg(test)]
 mod tests {
     use super::*;
-    use std::collections::BTreeMap;
 
     fn atom(name: &str, component: &str, power: i64) -> Atom {
         let component = (!component.is_empty()).then(|| component.to_string());
@@ -329,8 +329,12 @@ mod tests {
         Atom { name: "C".into(), component: Some(component.into()), arguments: vec![Rational::from(k)], power: 1 }
     }
 
-    fn couple_one(operator: &Atom, l: u32, m: i32) -> Vec<Coupling> {
-        couple(operator, sector(l, m), &Rational::from(1))
+    fn knows_with(operator: &Atom, electrons: Electrons) -> Result<bool, SystemError> {
+        super::knows(operator, Setting { charge: &Rational::from(1), electrons })
+    }
+
+    fn knows(operator: &Atom) -> Result<bool, SystemError> {
+        knows_with(operator, Electrons::ONE_WITHOUT_SPIN)
     }
 
     #[test]
@@ -365,7 +369,14 @@ mod tests {
                 other => panic!("{operator:?}: {other:?}"),
             }
         }
-        assert!(matches!(knows(&atom("S", "z", 1)), Err(SystemError::UnknownOperator { .. })));
+        for operator in [atom("S", "z", 1), atom("J", "", 2), atom("spin_orbit", "", 1)] {
+            assert!(matches!(knows(&operator), Err(SystemError::Refused { .. })));
+            assert_eq!(knows_with(&operator, Electrons::ONE), Ok(true));
+        }
+        match knows_with(&atom("K", "", 1), Electrons::ONE) {
+            Err(SystemError::UnknownOperator { known, .. }) => assert!(known.contains(&"S_z".to_string())),
+            other => panic!("{other:?}"),
+        }
     }
 
     #[test]
@@ -375,65 +386,5 @@ mod tests {
         assert_eq!(adjoint(&atom("D", "x", 1)), (1, atom("D", "x", 1)));
         assert_eq!(adjoint(&tensor_atom(3, "2")), (1, tensor_atom(3, "-2")));
         assert_eq!(adjoint(&atom("P", "0", 1)), (1, atom("P", "0", 1)));
-    }
-
-    /// The elements of an operator between all m of two blocks obey <a|T|b> = conj(<b|T^+|a>).
-    #[test]
-    fn factors_of_adjoints_are_conjugate() {
-        let mut operators: Vec<Atom> =
-            ["x", "y", "z", "+1", "0", "-1"].iter().flat_map(|c| [atom("D", c, 1), atom("L", c, 1)]).collect();
-        operators.extend((-2..=2).map(|q: i32| tensor_atom(2, &q.to_string())));
-        for operator in operators {
-            let (sign, other) = adjoint(&operator);
-            for l in 0..4_u32 {
-                let reach = i32::try_from(l).expect("small");
-                for m in -reach..=reach {
-                    for step in couple_one(&operator, l, m) {
-                        let mut back = Surd::zero();
-                        for coupling in couple(&other, step.to, &Rational::from(1)) {
-                            if coupling.to == sector(l, m) {
-                                back += &coupling.factor;
-                            }
-                        }
-                        assert_eq!(step.factor, back.conj().scaled(&Rational::from(sign)), "{operator:?} {l} {m}");
-                    }
-                }
-            }
-        }
-    }
-
-    /// L x L = i L, as L_x L_y - L_y L_x = i L_z on every state.
-    #[test]
-    fn angular_momentum_algebra() {
-        let walk = |first: &str, second: &str, l: u32, m: i32| {
-            let mut out: BTreeMap<Sector, Surd> = BTreeMap::new();
-            for one in couple_one(&atom("L", first, 1), l, m) {
-                for two in couple(&atom("L", second, 1), one.to, &Rational::from(1)) {
-                    *out.entry(two.to).or_default() += &(&one.factor * &two.factor);
-                }
-            }
-            out
-        };
-        for l in 0..4_u32 {
-            let reach = i32::try_from(l).expect("small");
-            for m in -reach..=reach {
-                let mut commutator = walk("y", "x", l, m);
-                for (to, factor) in walk("x", "y", l, m) {
-                    *commutator.entry(to).or_default() -= &factor;
-                }
-                commutator.retain(|_, factor| !factor.is_zero());
-                let expected: BTreeMap<Sector, Surd> =
-                    couple_one(&atom("L", "z", 1), l, m).into_iter().map(|c| (c.to, &c.factor * &Surd::i())).collect();
-                assert_eq!(commutator, expected);
-            }
-        }
-    }
-
-    #[test]
-    fn rules_in_words() {
-        assert_eq!(selection_rule(&atom("D", "z", 1)), "D_z changes l by one and keeps m");
-        assert_eq!(selection_rule(&atom("P", "+1", 1)), "P_+1 changes l by one and changes m by +1");
-        assert_eq!(selection_rule(&tensor_atom(2, "0")), "C(2)_0 changes l by 2 or 0 and keeps m");
-        assert_eq!(selection_rule(&atom("r", "", -2)), "r^-2 keeps l and m");
     }
 }

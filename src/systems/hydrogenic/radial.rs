@@ -1,5 +1,6 @@
 //! The radial operators of this system, and how each depends on the unit of length.
 
+use crate::num::Surd;
 use crate::systems::{Obstacle, RadialOperator};
 use rug::{Rational, ops::Pow};
 
@@ -44,6 +45,11 @@ impl Radial {
                 help: "use the operators that this atom has".into(),
             }),
         }
+    }
+
+    /// The factor between the operator of this name and the radial one.
+    pub(super) fn weight(self) -> Surd {
+        if self == Radial::DeltaTimesPi { Surd::pi_to(-1) } else { Surd::one() }
     }
 
     /// How a message calls it.

@@ -71,6 +71,13 @@ pub fn named_state(shape: &Shape, level: usize, twice_m: Option<i32>) -> State {
     }
 }
 
+/// The states of a level, one for every M.
+pub fn states_of(shape: &Shape, level: usize) -> Vec<State> {
+    let Some(entry) = shape.levels.get(level) else { return Vec::new() };
+    let twice_j = entry.twice_j();
+    (-twice_j..=twice_j).step_by(2).map(|twice_m| named_state(shape, level, Some(twice_m))).collect()
+}
+
 /// The state a label names; without M it is the level with every M.
 pub fn state(shape: &Shape, label: &StateLabel) -> Result<State, SystemError> {
     let (mut j, mut m) = (None, None);

@@ -55,7 +55,7 @@ impl LevelSystem {
         tensors.chain(["J".to_string()]).collect()
     }
 
-    fn level(&self, state: &State) -> Result<usize, Obstacle> {
+    fn index_of(&self, state: &State) -> Result<usize, Obstacle> {
         labels::level_of(state).filter(|level| *level < self.table.shape.levels.len()).ok_or(Obstacle::Inexact)
     }
 }
@@ -74,7 +74,7 @@ impl System for LevelSystem {
     }
 
     fn energy(&self, state: &State, _: u32, _: &Effort) -> Result<Number, Obstacle> {
-        Ok(Number::Exact(Surd::from(self.table.energy(self.level(state)?).clone())))
+        Ok(Number::Exact(Surd::from(self.table.energy(self.index_of(state)?).clone())))
     }
 
     fn degenerate(&self, a: &State, b: &State) -> bool {
@@ -86,6 +86,34 @@ impl System for LevelSystem {
 
     fn level_in(&self, state: &State, sector: Sector, _: &Effort) -> Result<Vec<State>, Obstacle> {
         Ok(labels::level_in(&self.table.shape, state, sector))
+    }
+
+    fn level(&self, state: &State, effort: &Effort) -> Result<Vec<State>, Obstacle> {
+        let level = self.index_of(state)?;
+        let shape = &self.table.shape;
+        let mut states = Vec::new();
+        for other in (0..shape.levels.len()).filter(|other| shape.degenerate(level, *other)) {
+            effort.check()?;
+            states.extend(labels::states_of(shape, other));
+        }
+        Ok(states)
+    }
+
+    fn states_of(&self, manifold: &Manifold, effort: &Effort) -> Result<Vec<State>, Obstacle> {
+        effort.check()?;
+        let levels = manifold.numbers.iter().filter_map(|index| usize::try_from(*index).ok());
+        Ok(levels.flat_map(|level| labels::states_of(&self.table.shape, level)).collect())
+    }
+
+    fn members(&self, manifold: &Manifold, sector: Sector) -> Vec<State> {
+        let shape = &self.table.shape;
+        let levels = manifold.numbers.iter().filter_map(|index| usize::try_from(*index).ok());
+        let here = levels.filter(|level| shape.levels.get(*level).is_some_and(|entry| entry.block == sector.block));
+        here.map(|level| labels::named_state(shape, level, Some(sector.twice_m))).collect()
+    }
+
+    fn holds(&self, manifold: &Manifold, state: &State) -> bool {
+        state.numbers.first().is_some_and(|level| manifold.numbers.contains(level))
     }
 
     fn knows(&self, atom: &Atom) -> Result<bool, SystemError> {

@@ -9,8 +9,8 @@ use crate::angular::label::Electrons;
 use crate::angular::polarization::Component;
 use crate::angular::selection::BlockRules;
 use crate::angular::tensor::{Sign, Tensor};
-use crate::angular::{HalfInteger, Parity, Term};
-use crate::systems::{Atom, Block, State, Symmetry, SystemError};
+use crate::angular::{HalfInteger, Level, Parity, Term};
+use crate::systems::{Atom, Block, Manifold, State, Symmetry, SystemError};
 
 impl Symmetry for LevelSystem {
     /// The J and parities of the levels: nothing else is known, not even of levels with an LS label, since elements depend on J one by one.
@@ -59,6 +59,12 @@ impl Symmetry for LevelSystem {
                 help: format!("write the factors one by one, as {0}_z {0}_z", atom.name),
             }),
         }
+    }
+
+    fn levels(&self, manifold: &Manifold) -> Vec<Level> {
+        let shape = &self.table.shape;
+        let found = manifold.numbers.iter().filter_map(|index| shape.levels.get(usize::try_from(*index).ok()?));
+        found.map(|entry| Level::new(term_of(entry.block), HalfInteger::from_twice(entry.twice_j()))).collect()
     }
 }
 

@@ -282,6 +282,15 @@ impl System for MatrixSystem {
         Ok(places.map(named).collect())
     }
 
+    fn level(&self, state: &State, effort: &Effort) -> Result<Vec<State>, Obstacle> {
+        self.level_in(state, Sector { block: Block::Whole, twice_m: 0 }, effort)
+    }
+
+    fn states_of(&self, manifold: &Manifold, effort: &Effort) -> Result<Vec<State>, Obstacle> {
+        let first = State { label: manifold.label.clone(), numbers: manifold.numbers.clone() };
+        self.level_in(&first, Sector { block: Block::Whole, twice_m: 0 }, effort)
+    }
+
     fn knows(&self, atom: &Atom) -> Result<bool, SystemError> {
         if !self.operators.iter().any(|(name, _)| *name == atom.name) {
             let known = self.operators.iter().map(|(name, _)| name.clone()).collect();

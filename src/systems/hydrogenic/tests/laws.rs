@@ -32,7 +32,7 @@ fn any_state(largest: u32) -> impl Strategy<Value = State> {
             let reach = i32::try_from(l).expect("small");
             (Just(n), Just(l), -reach..=reach)
         })
-        .prop_map(|(n, l, m)| super::super::labels::named_state(n, l, m))
+        .prop_map(|(n, l, m)| super::super::numbers::Numbers::orbital(n, l, m).state())
 }
 
 fn any_operator() -> impl Strategy<Value = &'static str> {
@@ -208,7 +208,7 @@ proptest! {
         let evaluate = |step: Step| size(&value(&atom, &*backend, &state, &chain("D_z Q D_z", &step), &state).expect("a value"));
         let mut sum = evaluate(without);
         for m in -1..=1 {
-            let p = super::super::labels::named_state(u32::try_from(n).expect("small"), 1, m);
+            let p = super::super::numbers::Numbers::orbital(u32::try_from(n).expect("small"), 1, m).state();
             let element = size(&value(&atom, &*backend, &p, &operators("D_z"), &state).expect("an element"));
             let gap = size(&z) - size(&energy(&atom, &p));
             sum += Complex::with_val(BITS, element.square_ref()) / gap;

@@ -1,0 +1,113 @@
+//! Evaluates what `vary` derives.
+
+use super::environment::Environment;
+use super::evaluator::{Evaluated, Evaluator, Systems};
+use super::problem::{Failure, Trouble};
+use crate::num::{Effort, Scalar};
+use crate::systems::{State, StateLabel};
+use crate::theory::normal::{Degeneracy, Expanded, Expander, NamedState};
+use crate::theory::terms::*;
+use crate::theory::{Fault, Problem};
+use rug::Rational;
+
+/// The levels of the systems of a session.
+struct Levels<'s> {
+    systems: &'s Systems,
+    effort: Effort,
+}
+
+impl Levels<'_> {
+    fn named(&self, system: &str, state: &State, place: Place) -> NamedState {
+        let name = format!("{system}[{}]", state.label);
+        let label = written_label(&state.label);
+        let options = label.options.into_iter().map(|(option, value)| {
+            let shown = value.to_string();
+            (option, Term::new(ScalarNode::Exact(value.into()), place, shown))
+        });
+        let label = LabelTerm {
+            parts: vec![LabelPiece::Text(label.text)],
+            options: options.collect(),
+            text: format!("[{}]", state.label).into(),
+        };
+        NamedState { term: StateTerm { system: system.to_string(), label, place }, shown: name.clone(), name }
+    }
+
+    fn problem(place: Place, message: String) -> Problem {
+        Problem::new(place, Fault::Other { message, help: String::new() })
+    }
+}
+
+/// The label of a state taken apart: `2p, m=1`.
+fn written_label(label: &str) -> StateLabel {
+    let mut pieces = label.split(", ");
+    let text = pieces.next().unwrap_or_default().to_string();
+    let options = pieces.filter_map(|piece| {
+        let (name, value) = piece.split_once('=')?;
+        Some((name.to_string(), value.parse::<Rational>().ok()?))
+    });
+    StateLabel { text, options: options.collect() }
+}
+
+impl Degeneracy for Levels<'_> {
+    fn level_of(&mut self, state: &NamedState) -> Expanded<Vec<NamedState>> {
+        let place = state.term.place;
+        let mut evaluator = Evaluator::new(self.systems, self.effort.clone());
+        let found = evaluator
+            .state(&state.term, &Environment::default())
+            .map_err(|failure| Self::problem(place, failure.trouble.to_string()))?;
+        let Some(system) = self.systems.get(&state.term.system) else { return Ok(vec![state.clone()]) };
+        let level =
+            system.level(&found, &self.effort).map_err(|obstacle| Self::problem(place, obstacle.to_string()))?;
+        let other = |other: &State| {
+            if *other == found { state.clone() } else { self.named(&state.term.system, other, place) }
+        };
+        Ok(level.iter().map(other).collect())
+    }
+
+    fn members_of(&mut self, manifold: &ManifoldTerm) -> Expanded<Vec<NamedState>> {
+        let place = manifold.place;
+        let mut evaluator = Evaluator::new(self.systems, self.effort.clone());
+        let found = evaluator
+            .manifold(manifold, &Environment::default())
+            .map_err(|failure| Self::problem(place, failure.trouble.to_string()))?;
+        let Some(system) = self.systems.get(&manifold.system) else { return Ok(Vec::new()) };
+        let states =
+            system.states_of(&found, &self.effort).map_err(|obstacle| Self::problem(place, obstacle.to_string()))?;
+        Ok(states.iter().map(|state| self.named(&manifold.system, state, place)).collect())
+    }
+}
+
+impl<'s> Evaluator<'s> {
+    /// An expander that knows the levels of the session's systems.
+    pub fn expander<'e>(&self, effort: &'e Effort) -> Expander<'e>
+    where
+        's: 'e,
+    {
+        Expander::with_levels(effort, Levels { systems: self.systems, effort: effort.clone() })
+    }
+
+    /// The value of a variation: derived by the rules, then evaluated chain by chain.
+    pub(super) fn vary(
+        &mut self,
+        term: &ScalarTerm,
+        variation: &Variation,
+        environment: &Environment,
+        bits: u32,
+    ) -> Evaluated<Scalar> {
+        let derived = match self.derived.get(&*term.text) {
+            Some(known) => known.clone(),
+            None => {
+                let effort = self.effort.clone();
+                let mut expander = self.expander(&effort).keeping_names();
+                let sum = expander
+                    .expand(term)
+                    .map_err(|problem| Failure::new(problem.place, Trouble::from(Box::new(problem.fault))))?;
+                let derived = expander.term(&sum, term.place);
+                self.derived.insert(term.text.to_string(), derived.clone());
+                derived
+            }
+        };
+        let _ = variation;
+        self.scalar(&derived, environment, bits)
+    }
+}
