@@ -11,9 +11,8 @@ use crate::sums::AngularSum;
 use crate::sums::{Environment, Failure, Trouble, Value, Wanted};
 use crate::systems::LevelShift;
 use crate::theory::free::free_variables;
-use crate::theory::normal::Expander;
 use crate::theory::terms::{Place, ScalarTerm};
-use crate::theory::{Binding, Fault, Problem, Resolver, formula};
+use crate::theory::{Binding, Fault, Problem, Resolver};
 use std::sync::Arc;
 
 /// Most digits that may be asked for.
@@ -118,7 +117,11 @@ impl Evaluation<'_> {
                 Ok(Done::Answered(answer))
             }
             EntryKind::Inspect { verb: InspectVerb::Formula, expression } => {
-                let text = formula::expanded(&mut self.resolver(), expression)?;
+                let free = free_variables(expression, &self.scope.names);
+                let term = self.resolver().with_variables(free).scalar(expression)?;
+                let mut expander = self.scope.evaluator(self.effort).expander(self.effort).keeping_names();
+                expander.name_functions(&self.scope.names)?;
+                let text = expander.expand(&term)?.to_string();
                 Ok(Done::Answered(Answer {
                     lines: vec![format!(": {text}")],
                     kind: AnswerKind::Formula,
@@ -164,8 +167,10 @@ impl Evaluation<'_> {
         let place = Place { entry: self.entry, span: expression.span };
         let free = free_variables(expression, &self.scope.names);
         let term = self.resolver().with_variables(free).scalar(expression)?;
-        let normal = Expander::new(self.effort).expand(&term)?;
         let mut evaluator = self.scope.evaluator(self.effort);
+        let mut expander = evaluator.expander(self.effort);
+        expander.name_functions(&self.scope.names)?;
+        let normal = expander.expand(&term)?;
         let angular = evaluator.angular_sum(&normal, place)?;
         let shifts = evaluator.level_shifts(&normal, place)?;
         Ok((angular, shifts))

@@ -269,7 +269,7 @@ fn whole(analysis: &Analysis, shifts: &[LevelShift]) -> String {
     let mut assumed = analysis.chains.iter().flat_map(|chain| chain.equal_levels.keys()).peekable();
     let any_assumed = assumed.peek().is_some();
     let moved = assumed.any(|term| shifts.iter().any(|shift| shift.level.term == *term));
-    let zero = if moved { "zero but for the shifts" } else { "zero" };
+    let but = if moved { " but for the shifts" } else { "" };
     let because = match (moved, any_assumed) {
         (true, _) => "by its angular factors",
         (false, true) => "by its angular factors, where the levels of a term have one energy",
@@ -277,10 +277,10 @@ fn whole(analysis: &Analysis, shifts: &[LevelShift]) -> String {
     };
     match analysis.whole() {
         Whole::NoPath => "zero: no path".into(),
-        Whole::Zero if analysis.columns.projections().is_empty() => format!("{zero}, {because}"),
-        Whole::Zero => format!("{zero} for every M, {because}"),
-        Whole::ZeroForAskedM => format!("{zero} for the M that is written, {because}"),
-        Whole::ZeroOnAverage => format!("{zero} in the average over M, {because}"),
+        Whole::Zero if analysis.columns.projections().is_empty() => format!("zero{but}, {because}"),
+        Whole::Zero => format!("zero for every M{but}, {because}"),
+        Whole::ZeroForAskedM => format!("zero for the M that is written{but}, {because}"),
+        Whole::ZeroOnAverage => format!("zero in the average over M{but}, {because}"),
         Whole::NotZero => {
             let proportional = analysis.chains.iter().find_map(|chain| match &chain.verdict {
                 Verdict::ProportionalTo { which, factor } => Some((which, factor)),

@@ -138,6 +138,10 @@ impl Turning<'_, '_> {
                 }
                 Piece::Atom(atom) => self.atom(atom, place)?,
                 Piece::Tensor(tensor) => vec![self.tensor(tensor, place)?],
+                Piece::Named(named) => {
+                    let message = format!("`{}` is not multiplied out", named.text);
+                    return Err(Failure::new(place, Trouble::Refused { message, help: String::new() }));
+                }
                 Piece::Hamiltonian => {
                     let atom = Atom { name: "H".into(), component: None, arguments: Vec::new(), power: 1 };
                     vec![self.tensors(&atom, place)?]
@@ -207,10 +211,6 @@ impl Turning<'_, '_> {
         let component = if open.is_some() { Some("z".to_string()) } else { atom.component.clone() };
         let mut plain =
             Atom { name: atom.name.clone(), component, arguments: atom.arguments.clone(), power: atom.power };
-        let mut sign = 1;
-        if atom.adjoint {
-            (sign, plain) = self.system.adjoint(&plain);
-        }
         let known = self.system.knows(&plain).map_err(|error| Failure::new(place, error))?;
         let count = if known { 1 } else { plain.power };
         if !known {
@@ -221,9 +221,6 @@ impl Turning<'_, '_> {
             for part in &mut operator.parts {
                 part.component = open.clone();
             }
-        }
-        if sign == -1 {
-            operator = operator.times(&Surd::from(-1));
         }
         let count = usize::try_from(count).unwrap_or(0);
         Ok(vec![operator; count])

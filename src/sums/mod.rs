@@ -8,6 +8,7 @@ mod bracket;
 mod environment;
 mod evaluator;
 mod factors;
+mod kets;
 mod level_part;
 mod problem;
 mod proof;

@@ -98,7 +98,7 @@ impl<'s> Evaluator<'s> {
             Some(known) => known.clone(),
             None => {
                 let effort = self.effort.clone();
-                let mut expander = self.expander(&effort);
+                let mut expander = self.expander(&effort).keeping_names();
                 let sum = expander
                     .expand(term)
                     .map_err(|problem| Failure::new(problem.place, Trouble::from(Box::new(problem.fault))))?;

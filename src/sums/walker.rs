@@ -18,8 +18,8 @@ pub(super) type Walked<T> = Result<T, Failure>;
 /// A ket over all sectors it has a part in, with the text that identifies it inside one evaluation.
 #[derive(Clone)]
 pub struct SectorKet {
-    key: Arc<str>,
-    parts: Arc<BTreeMap<Sector, BlockKet>>,
+    pub(super) key: Arc<str>,
+    pub(super) parts: Arc<BTreeMap<Sector, BlockKet>>,
 }
 
 /// Kets that were computed already, by their text; one table for each backend.
@@ -315,7 +315,7 @@ impl Walker<'_, '_> {
     }
 
     /// A factor on a ket.
-    fn act(&mut self, factor: &Factor, ket: &SectorKet) -> Walked<SectorKet> {
+    pub(super) fn act(&mut self, factor: &Factor, ket: &SectorKet) -> Walked<SectorKet> {
         self.evaluator.effort.check().map_err(|stop| Failure::new(factor.operator.place, stop))?;
         let key = format!("{}>{}", factor.key(), ket.key);
         if let Some(known) = self.kept.get(&key) {
@@ -393,7 +393,7 @@ impl Walker<'_, '_> {
     }
 
     /// Keeps a ket for the rest of the evaluation; a long sum or search does not pile them up.
-    fn keep(&mut self, key: String, ket: &SectorKet) {
+    pub(super) fn keep(&mut self, key: String, ket: &SectorKet) {
         if self.kept.len() >= MOST_KEPT {
             self.kept.clear();
         }
@@ -523,13 +523,13 @@ impl Walker<'_, '_> {
         self.collect(parts, place)
     }
 
-    fn scaled(&self, ket: &SectorKet, scale: &Number, place: Place) -> Walked<BTreeMap<Sector, BlockKet>> {
+    pub(super) fn scaled(&self, ket: &SectorKet, scale: &Number, place: Place) -> Walked<BTreeMap<Sector, BlockKet>> {
         let parts = ket.parts.iter().map(|(sector, part)| (*sector, vec![(scale.clone(), part.clone())])).collect();
         self.collect(parts, place)
     }
 
     /// Adds up what came into each sector and leaves out sectors where nothing is left.
-    fn collect(
+    pub(super) fn collect(
         &self,
         sum: BTreeMap<Sector, Vec<(Number, BlockKet)>>,
         place: Place,
@@ -545,67 +545,6 @@ impl Walker<'_, '_> {
             }
         }
         Ok(parts)
-    }
-
-    /// A ket term as parts over sectors.
-    fn ket(&mut self, term: &KetTerm, environment: &Environment) -> Walked<SectorKet> {
-        match &*term.node {
-            KetNode::State(state) => {
-                let state = self.evaluator.state(state, environment)?;
-                self.eigenstate(&state, term.place)
-            }
-            KetNode::Applied(operator, inner) => {
-                let flat = self.flatten(operator, environment)?;
-                let mut image = self.ket(inner, environment)?;
-                for factor in flat.factors.iter().rev() {
-                    image = self.act(factor, &image)?;
-                }
-                self.rescaled(image, &flat.coefficient, term.place)
-            }
-            KetNode::Sum(terms) => {
-                let mut sum: BTreeMap<Sector, Vec<(Number, BlockKet)>> = BTreeMap::new();
-                let one = Number::Exact(crate::num::Surd::one());
-                for inner in terms {
-                    for (sector, part) in self.ket(inner, environment)?.parts.iter() {
-                        sum.entry(*sector).or_default().push((one.clone(), part.clone()));
-                    }
-                }
-                let key = format!("({}){{{}}}", term.text, environment.fingerprint());
-                Ok(SectorKet { key: key.into(), parts: Arc::new(self.collect(sum, term.place)?) })
-            }
-            KetNode::Scaled(scalar, inner) => {
-                let coefficient = self.evaluator.scalar(scalar, environment, self.scalar_bits())?;
-                let image = self.ket(inner, environment)?;
-                self.rescaled(image, &coefficient, term.place)
-            }
-            KetNode::Call(call) => match &call.definition.body {
-                Meaning::Ket(body) => {
-                    let inside = self.evaluator.enter(call, environment, self.scalar_bits())?;
-                    self.ket(body, &inside)
-                }
-                _ => Err(Failure::new(term.place, Obstacle::Inexact)),
-            },
-        }
-    }
-
-    fn eigenstate(&mut self, state: &State, place: Place) -> Walked<SectorKet> {
-        let key = format!("|{}>", state.label);
-        if let Some(known) = self.kept.get(&key) {
-            return Ok(known.clone());
-        }
-        let parts = self.backend.state(state).map_err(|obstacle| Failure::new(place, obstacle))?;
-        let result = SectorKet { key: key.as_str().into(), parts: Arc::new(parts.into_iter().collect()) };
-        self.keep(key, &result);
-        Ok(result)
-    }
-
-    fn rescaled(&mut self, ket: SectorKet, coefficient: &Scalar, place: Place) -> Walked<SectorKet> {
-        if matches!(coefficient, Scalar::Exact(c) if c.is_one()) {
-            return Ok(ket);
-        }
-        let number = self.number(coefficient, place)?;
-        let key = format!("{coefficient:?}*{}", ket.key);
-        Ok(SectorKet { key: key.into(), parts: Arc::new(self.scaled(&ket, &number, place)?) })
     }
 }
 

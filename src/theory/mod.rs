@@ -4,7 +4,6 @@
 
 pub mod algebra;
 mod calls;
-pub mod formula;
 pub mod free;
 pub mod indices;
 pub mod names;

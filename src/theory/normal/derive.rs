@@ -4,7 +4,7 @@
 //! dE_a = <a|V|a>; d|a> = G'_a V|a> with G'_a = Q/(E_a - H), for normalised states; for a fraction f = Q/(c + s H), from which the states b are
 //! left out, df = -f (dc + s V) f - sum over b of (|b><b| V G_b f + f G_b V |b><b|), G_b = Q/(E_b - H). H itself gains V.
 
-use super::expand::{Arguments, Expanded, Expander, Strings, bracketed};
+use super::expand::{Arguments, Expanded, Expander, Strings};
 use super::pieces::{FunctionPiece, NamedState, NormalBracket, Piece};
 use super::{NormalSum, NormalTerm, SymbolMeaning, Symbols};
 use crate::angular::tensor::Sign;
@@ -111,8 +111,8 @@ impl<'d, 'e> Derivation<'d, 'e> {
                 _ => Ok(NormalSum::default()),
             },
             SymbolMeaning::Energy(state) => {
-                let diagonal = self.with_perturbation(&[Piece::Bra(state.clone())], &[Piece::Ket(state)], &Surd::one());
-                Ok(diagonal.joined())
+                let (bra, ket) = (Piece::Bra(state.clone()), Piece::Ket(state));
+                Ok(NormalSum { terms: self.with_perturbation(&[bra], &[ket], &Surd::one())? }.joined())
             }
             SymbolMeaning::Sum(inner) => self.change(&inner),
             SymbolMeaning::Function(function, inner) => self.change_of_function(function, &inner),
@@ -161,13 +161,15 @@ impl<'d, 'e> Derivation<'d, 'e> {
     }
 
     /// Left pieces, V, right pieces, for every term of V, as brackets.
-    fn with_perturbation(&self, left: &[Piece], right: &[Piece], factor: &Surd) -> NormalSum {
-        let terms = self.perturbation.iter().map(|(number, pieces)| {
-            let all = left.iter().chain(pieces).chain(right).cloned().collect();
-            let term = number.times(&bracketed(all, self.place));
-            NormalTerm { coefficient: &term.coefficient * factor, ..term }
-        });
-        NormalSum { terms: terms.collect() }
+    fn with_perturbation(&mut self, left: &[Piece], right: &[Piece], factor: &Surd) -> Expanded<Vec<NormalTerm>> {
+        let mut terms = Vec::with_capacity(self.perturbation.len());
+        for (number, pieces) in self.perturbation.clone() {
+            let all = left.iter().chain(&pieces).chain(right).cloned().collect();
+            let closed = self.expander.closed(all, self.place)?;
+            let number = NormalSum { terms: vec![number] }.scaled(factor);
+            terms.extend(self.expander.product(&number, &closed, self.place)?.terms);
+        }
+        Ok(terms)
     }
 
     fn reduced(&mut self, state: &NamedState, omitted: Vec<OmittedTerm>) -> Piece {
@@ -189,19 +191,19 @@ impl<'d, 'e> Derivation<'d, 'e> {
                 Piece::Bra(state) => {
                     let resolvent = self.reduced(state, vec![OmittedTerm::LevelOf(state.term.clone())]);
                     let after: Vec<Piece> = std::iter::once(resolvent).chain(right.iter().cloned()).collect();
-                    total.terms.extend(self.with_perturbation(&[piece.clone()], &after, &Surd::one()).terms);
+                    total.terms.extend(self.with_perturbation(std::slice::from_ref(piece), &after, &Surd::one())?);
                 }
                 Piece::Ket(state) => {
                     let resolvent = self.reduced(state, vec![OmittedTerm::LevelOf(state.term.clone())]);
                     let before: Vec<Piece> = left.iter().cloned().chain(std::iter::once(resolvent)).collect();
-                    total.terms.extend(self.with_perturbation(&before, &[piece.clone()], &Surd::one()).terms);
+                    total.terms.extend(self.with_perturbation(&before, std::slice::from_ref(piece), &Surd::one())?);
                 }
-                Piece::Hamiltonian => total.terms.extend(self.with_perturbation(left, right, &Surd::one()).terms),
+                Piece::Hamiltonian => total.terms.extend(self.with_perturbation(left, right, &Surd::one())?),
                 Piece::Function(function) => {
                     let changed = self.change_of_fraction(function, left, right, &minus)?;
                     total.terms.extend(changed.terms);
                 }
-                Piece::Atom(_) | Piece::Tensor(_) => {}
+                Piece::Atom(_) | Piece::Tensor(_) | Piece::Named(_) => {}
             }
         }
         Ok(total.joined())
@@ -226,11 +228,11 @@ impl<'d, 'e> Derivation<'d, 'e> {
         let after: Vec<Piece> = std::iter::once(piece.clone()).chain(right.iter().cloned()).collect();
         // -f s V f
         let sign = if function.slope == Sign::Plus { minus.clone() } else { Surd::one() };
-        let mut total = self.with_perturbation(&before, &after, &sign);
+        let mut total = NormalSum { terms: self.with_perturbation(&before, &after, &sign)? };
         // -f dc f
         let constant = self.change(&function.constant)?;
         let twice = before.iter().chain(&after).cloned().collect();
-        let squared = NormalSum { terms: vec![bracketed(twice, self.place)] };
+        let squared = self.expander.closed(twice, self.place)?;
         total.terms.extend(self.expander.product(&constant, &squared, self.place)?.scaled(minus).terms);
         // -sum over b of (|b><b| V G_b f + f G_b V |b><b|)
         for state in self.left_out(&function.omitted)? {
@@ -238,10 +240,10 @@ impl<'d, 'e> Derivation<'d, 'e> {
             let (ket, bra) = (Piece::Ket(state.clone()), Piece::Bra(state));
             let outer: Vec<Piece> = left.iter().cloned().chain([ket.clone(), bra.clone()]).collect();
             let inner: Vec<Piece> = std::iter::once(resolvent.clone()).chain(after.iter().cloned()).collect();
-            total.terms.extend(self.with_perturbation(&outer, &inner, minus).terms);
+            total.terms.extend(self.with_perturbation(&outer, &inner, minus)?);
             let inner: Vec<Piece> = before.iter().cloned().chain(std::iter::once(resolvent)).collect();
             let outer: Vec<Piece> = [ket, bra].into_iter().chain(right.iter().cloned()).collect();
-            total.terms.extend(self.with_perturbation(&inner, &outer, minus).terms);
+            total.terms.extend(self.with_perturbation(&inner, &outer, minus)?);
         }
         Ok(total)
     }

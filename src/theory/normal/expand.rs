@@ -1,12 +1,18 @@
 //! Multiplies expressions out.
 
 use super::derive::{Degeneracy, Derivation, Unknown};
-use super::pieces::{FunctionPiece, NamedState, NormalAtom, NormalBracket, NormalTensor, Piece, function_name};
-use super::{NormalSum, NormalTerm, SymbolMeaning, Symbols};
+use super::pieces::{
+    FunctionPiece, NamedOperator, NamedState, NormalAtom, NormalBracket, NormalTensor, Piece, adjoint, function_name,
+    pieces_key,
+};
+use super::{NormalSum, NormalTerm, SymbolMeaning};
 use crate::angular::HalfInteger;
 use crate::angular::tensor::Sign;
+use crate::lang::tree::DefinitionKind;
 use crate::num::{Effort, Scalar, Surd};
+use crate::theory::names::{Binding, Names};
 use crate::theory::problem::{Fault, Problem};
+use crate::theory::resolve::has_function_of_h;
 use crate::theory::terms::*;
 use rug::{Integer, Rational};
 use std::collections::{BTreeMap, HashMap};
@@ -37,10 +43,13 @@ pub struct Expander<'e> {
     depth: usize,
     /// The first name that was met for each energy, and for each function of H.
     energies: HashMap<String, String>,
+    states: HashMap<String, String>,
     functions: HashMap<String, String>,
     /// What every symbol stands for.
     meanings: HashMap<String, SymbolMeaning>,
     pub(super) degeneracy: Box<dyn Degeneracy + 'e>,
+    /// Whether named operators that are their own adjoints stand for themselves.
+    keep_names: bool,
 }
 
 impl<'e> Expander<'e> {
@@ -55,10 +64,37 @@ impl<'e> Expander<'e> {
             effort,
             depth: 0,
             energies: HashMap::new(),
+            states: HashMap::new(),
             functions: HashMap::new(),
             meanings: HashMap::new(),
             degeneracy: Box::new(degeneracy),
+            keep_names: false,
         }
+    }
+
+    /// Leaves named operators that are their own adjoints, and hold no function of H, as they are named.
+    #[must_use]
+    pub fn keeping_names(mut self) -> Self {
+        self.keep_names = true;
+        self
+    }
+
+    /// Calls the functions of H that the session has named, those without parameters, by their names.
+    ///
+    /// Errors: as for expanding them.
+    pub fn name_functions(&mut self, names: &Names) -> Expanded<()> {
+        for (name, binding) in &names.bound {
+            if let Binding::Definition(definition) = binding
+                && definition.kind == DefinitionKind::Resolvent
+                && definition.parameters.is_empty()
+                && let Meaning::Operator(body) = &definition.body
+            {
+                let call = Call { definition: definition.clone(), arguments: Vec::new() };
+                let term = Term::new(OperatorNode::Call(call), body.place, name.as_str());
+                self.operator(&term, &Arguments::new())?;
+            }
+        }
+        Ok(())
     }
 
     /// The normal form of a number; variables that are not bound stay symbols.
@@ -169,7 +205,7 @@ impl<'e> Expander<'e> {
                 if let Some(shown) = term.text.strip_prefix("E(").and_then(|rest| rest.strip_suffix(')'))
                     && !shown.contains('{')
                 {
-                    named.shown = shown.to_string();
+                    named.shown = self.states.entry(named.name.clone()).or_insert(shown.to_string()).clone();
                 }
                 self.energy(&named)
             }
@@ -351,7 +387,8 @@ impl<'e> Expander<'e> {
         name.push(']');
         let label = LabelTerm { parts: vec![LabelPiece::Text(text)], options, text: name.as_str().into() };
         let term = StateTerm { system: state.system.clone(), label, place: state.place };
-        Ok(NamedState { term, shown: name.clone(), name })
+        let shown = self.states.get(&name).cloned().unwrap_or_else(|| name.clone());
+        Ok(NamedState { term, shown, name })
     }
 
     fn bracket(&mut self, bracket: &Bracket, arguments: &Arguments, place: Place) -> Expanded<NormalSum> {
@@ -363,18 +400,61 @@ impl<'e> Expander<'e> {
                 self.joined(operators, kets, place)?
             }
         };
-        let bras: Strings = self
-            .ket(&bracket.bra, arguments)?
-            .into_iter()
-            .map(|(term, pieces)| {
-                let conj = NormalSum { terms: vec![term] }.conj();
-                let term = conj.terms.into_iter().next().unwrap_or_else(|| NormalTerm::number(Surd::zero()));
-                (term, pieces.iter().rev().map(Piece::adjoint).collect())
-            })
-            .collect();
+        let bras = adjoints(self.ket(&bracket.bra, arguments)?);
         strings = self.joined(bras, strings, place)?;
-        let terms = strings.into_iter().map(|(term, pieces)| term.times(&bracketed(pieces, place))).collect();
-        Ok(NormalSum { terms }.joined())
+        let mut sum = NormalSum::default();
+        for (term, pieces) in strings {
+            let brackets = self.closed(pieces, place)?;
+            sum.terms.extend(self.product(&NormalSum { terms: vec![term] }, &brackets, place)?.terms);
+        }
+        Ok(sum.joined())
+    }
+
+    /// The product of brackets a string stands for, with the functions of H that act on eigenstates as numbers.
+    pub(super) fn closed(&mut self, pieces: Vec<Piece>, place: Place) -> Expanded<NormalSum> {
+        let mut product = NormalSum::number(Surd::one());
+        for mut bracket in bracketed(pieces, place) {
+            while let Some(last) = bracket.pieces.last() {
+                let Some(number) = self.on_eigenstate(last.clone(), &bracket.ket, place)? else { break };
+                bracket.pieces.pop();
+                product = self.product(&product, &number, place)?;
+            }
+            while let Some(first) = bracket.pieces.first() {
+                let Some(number) = self.on_eigenstate(first.clone(), &bracket.bra, place)? else { break };
+                bracket.pieces.remove(0);
+                product = self.product(&product, &number, place)?;
+            }
+            // eigenstates are normalised
+            if !(bracket.pieces.is_empty() && bracket.bra == bracket.ket) {
+                for term in &mut product.terms {
+                    term.brackets.push(bracket.clone());
+                }
+            }
+        }
+        Ok(product)
+    }
+
+    /// The number that H or a fraction of H is on an eigenstate; `None` where that is not known.
+    fn on_eigenstate(&mut self, piece: Piece, state: &NamedState, place: Place) -> Expanded<Option<NormalSum>> {
+        match piece {
+            Piece::Hamiltonian => Ok(Some(self.energy(state))),
+            Piece::Function(function) if function.function.is_none() => {
+                match function.omitted.as_slice() {
+                    [] => {}
+                    [OmittedTerm::LevelOf(left_out)] if self.named_state(left_out)? == *state => {
+                        return Ok(Some(NormalSum::default()));
+                    }
+                    // another state may be degenerate with this one
+                    _ => return Ok(None),
+                }
+                let sign = if function.slope == Sign::Plus { 1 } else { -1 };
+                let energy = self.energy(state).scaled(&Surd::from(sign));
+                let denominator = function.constant.clone().plus(energy);
+                // at its own energy a resolvent is singular, which is said when it is evaluated
+                if denominator.terms.is_empty() { Ok(None) } else { Ok(Some(self.inverse(&denominator, place)?)) }
+            }
+            _ => Ok(None),
+        }
     }
 
     /// Every string of the one followed by every string of the other.
@@ -399,7 +479,7 @@ impl<'e> Expander<'e> {
                 let mut named = self.state(state, arguments)?;
                 // what is computed in a label is shown computed
                 if !term.text.contains('{') {
-                    named.shown = term.text.to_string();
+                    named.shown = self.states.entry(named.name.clone()).or_insert(term.text.to_string()).clone();
                 }
                 Ok(vec![(NormalTerm::number(Surd::one()), vec![Piece::Ket(named)])])
             }
@@ -437,14 +517,7 @@ impl<'e> Expander<'e> {
             OperatorNode::Atom(atom) => alone(Piece::Atom(self.atom(atom, arguments)?)),
             OperatorNode::Tensor(tensor) => alone(Piece::Tensor(NormalTensor { term: tensor.clone(), adjoint: false })),
             OperatorNode::Hamiltonian => alone(Piece::Hamiltonian),
-            OperatorNode::Adjoint(inner) => {
-                let strings = self.operator(inner, arguments)?;
-                let adjoint = strings.into_iter().flat_map(|(term, pieces)| {
-                    let pieces: Vec<Piece> = pieces.iter().rev().map(Piece::adjoint).collect();
-                    NormalSum { terms: vec![term] }.conj().terms.into_iter().map(move |term| (term, pieces.clone()))
-                });
-                Ok(adjoint.collect())
-            }
+            OperatorNode::Adjoint(inner) => Ok(adjoints(self.operator(inner, arguments)?)),
             OperatorNode::Sum(terms) => {
                 let mut sum = Strings::new();
                 for inner in terms {
@@ -471,14 +544,7 @@ impl<'e> Expander<'e> {
             }
             OperatorNode::Dyad(ket, bra) => {
                 let left = self.ket(ket, arguments)?;
-                let right: Strings = self
-                    .ket(bra, arguments)?
-                    .into_iter()
-                    .flat_map(|(term, pieces)| {
-                        let pieces: Vec<Piece> = pieces.iter().rev().map(Piece::adjoint).collect();
-                        NormalSum { terms: vec![term] }.conj().terms.into_iter().map(move |term| (term, pieces.clone()))
-                    })
-                    .collect();
+                let right = adjoints(self.ket(bra, arguments)?);
                 self.joined(left, right, place)
             }
             OperatorNode::Resolvent(linear) => self.function_of_h(None, linear, arguments, place),
@@ -493,6 +559,24 @@ impl<'e> Expander<'e> {
             return self.refuse(place, "an operator is needed here".into(), "");
         };
         let mut strings = self.inside(call, arguments, place, |this, inner| this.operator(body, inner))?;
+        if self.keep_names && !has_function_of_h(body) && is_self_adjoint(&strings) {
+            let shown: Expanded<Vec<String>> =
+                call.arguments.iter().map(|a| Ok(self.scalar(a, arguments)?.to_string())).collect();
+            let shown = shown?.join(", ");
+            let text = if shown.is_empty() {
+                call.definition.name.clone()
+            } else {
+                format!("{}({shown})", call.definition.name)
+            };
+            // a single operator with another name gains nothing; brackets inside must be seen by `vary`
+            let plain = strings
+                .iter()
+                .all(|(term, pieces)| term.brackets.is_empty() && !pieces.is_empty() && term.symbols.is_one());
+            if plain && strings.len() > 1 {
+                let named = Piece::Named(NamedOperator { text, expanded: strings });
+                return Ok(vec![(NormalTerm::number(Surd::one()), vec![named])]);
+            }
+        }
         if let [(term, pieces)] = strings.as_mut_slice()
             && let [Piece::Function(function)] = pieces.as_mut_slice()
             && *term == NormalTerm::number(Surd::one())
@@ -536,7 +620,6 @@ impl<'e> Expander<'e> {
             along: atom.along.clone(),
             arguments: numbers,
             power: atom.power,
-            adjoint: false,
         })
     }
 
@@ -581,8 +664,32 @@ impl<'e> Expander<'e> {
     }
 }
 
+/// Whether the adjoint of a sum of strings is the same sum, whatever the order of its terms.
+fn is_self_adjoint(strings: &Strings) -> bool {
+    let key = |strings: &Strings| {
+        let mut keys: Vec<String> = strings
+            .iter()
+            .map(|(term, pieces)| format!("{} {} {}", term.coefficient, term.symbols, pieces_key(pieces)))
+            .collect();
+        keys.sort();
+        keys
+    };
+    key(strings) == key(&adjoints(strings.clone()))
+}
+
+/// The adjoint of every string.
+fn adjoints(strings: Strings) -> Strings {
+    let turned = strings.into_iter().map(|(term, pieces)| {
+        let (sign, pieces) = adjoint(&pieces);
+        let term = term.conj();
+        let coefficient = if sign == Sign::Minus { -&term.coefficient } else { term.coefficient.clone() };
+        (NormalTerm { coefficient, ..term }, pieces)
+    });
+    turned.collect()
+}
+
 /// Takes a string that begins with a bra and ends with a ket apart into brackets.
-pub(super) fn bracketed(pieces: Vec<Piece>, place: Place) -> NormalTerm {
+fn bracketed(pieces: Vec<Piece>, place: Place) -> Vec<NormalBracket> {
     let mut brackets = Vec::new();
     let mut open: Option<NamedState> = None;
     let mut inner = Vec::new();
@@ -597,5 +704,5 @@ pub(super) fn bracketed(pieces: Vec<Piece>, place: Place) -> NormalTerm {
             other => inner.push(other),
         }
     }
-    NormalTerm { coefficient: Surd::one(), symbols: Symbols::one(), brackets }
+    brackets
 }

@@ -11,9 +11,10 @@ mod written;
 
 pub use derive::Degeneracy;
 pub use expand::{Expanded, Expander};
-pub use pieces::{FunctionPiece, NamedState, NormalAtom, NormalBracket, NormalTensor, Piece};
+pub use pieces::{FunctionPiece, NamedOperator, NamedState, NormalAtom, NormalBracket, NormalTensor, Piece};
 pub use symbols::Symbols;
 
+use crate::angular::tensor::Sign;
 use crate::num::Surd;
 use crate::theory::terms::{ScalarFunction, ScalarTerm};
 use rug::Rational;
@@ -57,6 +58,19 @@ impl NormalTerm {
             symbols: self.symbols.times(&other.symbols),
             brackets: self.brackets.iter().chain(&other.brackets).cloned().collect(),
         }
+    }
+
+    pub(super) fn conj(&self) -> Self {
+        let mut coefficient = self.coefficient.conj();
+        let mut brackets = Vec::with_capacity(self.brackets.len());
+        for bracket in &self.brackets {
+            let (sign, turned) = bracket.conj();
+            if sign == Sign::Minus {
+                coefficient = -&coefficient;
+            }
+            brackets.push(turned);
+        }
+        NormalTerm { coefficient, symbols: self.symbols.clone(), brackets }
     }
 
     /// What tells products apart, whatever their coefficients: brackets commute.
@@ -141,12 +155,7 @@ impl NormalSum {
 
     /// The complex conjugate.
     pub(super) fn conj(&self) -> Self {
-        let conj = |term: &NormalTerm| NormalTerm {
-            coefficient: term.coefficient.conj(),
-            symbols: term.symbols.clone(),
-            brackets: term.brackets.iter().map(NormalBracket::conj).collect(),
-        };
-        NormalSum { terms: self.terms.iter().map(conj).collect() }
+        NormalSum { terms: self.terms.iter().map(NormalTerm::conj).collect() }
     }
 }
 

@@ -1,6 +1,7 @@
 //! What chains are made of once they are multiplied out.
 
 use super::NormalSum;
+use super::expand::Strings;
 use crate::angular::tensor::Sign;
 use crate::theory::terms::{Direction, OmittedTerm, Place, ScalarFunction, StateTerm, TensorTerm};
 use rug::Rational;
@@ -13,6 +14,7 @@ pub enum Piece {
     Bra(NamedState),
     Atom(NormalAtom),
     Tensor(NormalTensor),
+    Named(NamedOperator),
     Hamiltonian,
     Function(FunctionPiece),
 }
@@ -43,9 +45,23 @@ pub struct NormalAtom {
     pub along: Option<Direction>,
     pub arguments: Vec<Rational>,
     pub power: i64,
-    /// Whether the adjoint is meant.
-    pub adjoint: bool,
 }
+
+/// A sum of operators that is its own adjoint, by the name it has in the session.
+#[derive(Clone, Debug)]
+pub struct NamedOperator {
+    pub text: String,
+    /// What it stands for: sums of strings without symbols or brackets.
+    pub expanded: Strings,
+}
+
+impl PartialEq for NamedOperator {
+    fn eq(&self, other: &Self) -> bool {
+        self.text == other.text
+    }
+}
+
+impl Eq for NamedOperator {}
 
 /// An operator known by its ranks.
 #[derive(Clone, PartialEq, Eq, Debug)]
@@ -88,24 +104,40 @@ pub struct NormalBracket {
     pub place: Place,
 }
 
+/// The adjoint of pieces in a row, with its sign: the pieces turned round, each its adjoint.
+pub(super) fn adjoint(pieces: &[Piece]) -> (Sign, Vec<Piece>) {
+    let mut sign = Sign::Plus;
+    let mut turned = Vec::with_capacity(pieces.len());
+    for piece in pieces.iter().rev() {
+        let (own, piece) = piece.adjoint();
+        sign = sign.times(own);
+        turned.push(piece);
+    }
+    (sign, turned)
+}
+
 impl Piece {
-    /// The adjoint of one piece.
-    pub(super) fn adjoint(&self) -> Piece {
-        match self {
+    fn adjoint(&self) -> (Sign, Piece) {
+        let piece = match self {
             Piece::Ket(state) => Piece::Bra(state.clone()),
             Piece::Bra(state) => Piece::Ket(state.clone()),
-            Piece::Atom(atom) => Piece::Atom(atom.adjoint()),
+            Piece::Atom(atom) => {
+                let (sign, atom) = atom.adjoint();
+                return (sign, Piece::Atom(atom));
+            }
             Piece::Tensor(tensor) => Piece::Tensor(NormalTensor { adjoint: !tensor.adjoint, ..tensor.clone() }),
-            Piece::Hamiltonian => Piece::Hamiltonian,
+            Piece::Named(_) | Piece::Hamiltonian => self.clone(),
             Piece::Function(function) => Piece::Function(function.conj()),
-        }
+        };
+        (Sign::Plus, piece)
     }
 }
 
 impl NormalAtom {
-    /// A spherical component has a mark for its adjoint, a direction is conjugated, everything else is its own adjoint.
-    fn adjoint(&self) -> Self {
+    /// (T_q)^+ = (-1)^q T_-q for a spherical component; a direction is conjugated; everything else is its own adjoint.
+    fn adjoint(&self) -> (Sign, Self) {
         let mut atom = self.clone();
+        let mut sign = Sign::Plus;
         match (&self.along, self.component.as_deref()) {
             (Some(along), Some(component)) => {
                 atom.along = Some(match along {
@@ -118,12 +150,17 @@ impl NormalAtom {
                     None => format!("{component}_conj"),
                 });
             }
-            (None, Some(component)) if component.parse::<i32>().is_ok_and(|q| q != 0) => {
-                atom.adjoint = !self.adjoint;
+            (None, Some(component)) => {
+                if let Some(q) = component.parse::<i32>().ok().filter(|q| *q != 0) {
+                    atom.component = Some(format!("{:+}", -q));
+                    if q % 2 != 0 && self.power % 2 != 0 {
+                        sign = Sign::Minus;
+                    }
+                }
             }
             _ => {}
         }
-        atom
+        (sign, atom)
     }
 }
 
@@ -186,27 +223,27 @@ pub(super) fn function_name(function: ScalarFunction) -> &'static str {
     }
 }
 
+/// A text that is the same for equal pieces only.
+pub(super) fn pieces_key(pieces: &[Piece]) -> String {
+    let piece = |piece: &Piece| match piece {
+        Piece::Tensor(tensor) => format!("{tensor:?}"),
+        Piece::Atom(atom) => format!("{atom:?}"),
+        Piece::Function(function) => function.key.clone(),
+        other => other.to_string(),
+    };
+    pieces.iter().map(piece).collect::<Vec<_>>().join(" ")
+}
+
 impl NormalBracket {
     /// A text that is the same for equal brackets only.
     pub(super) fn key(&self) -> String {
-        let piece = |piece: &Piece| match piece {
-            Piece::Tensor(tensor) => format!("{tensor:?}"),
-            Piece::Atom(atom) => format!("{atom:?}"),
-            Piece::Function(function) => function.key.clone(),
-            other => other.to_string(),
-        };
-        let pieces: Vec<String> = self.pieces.iter().map(piece).collect();
-        format!("<{}|{}|{}>", self.bra.name, pieces.join(" "), self.ket.name)
+        format!("<{}|{}|{}>", self.bra.name, pieces_key(&self.pieces), self.ket.name)
     }
 
-    /// <a|X|b>* = <b|X^+|a>
-    pub(super) fn conj(&self) -> Self {
-        NormalBracket {
-            bra: self.ket.clone(),
-            pieces: self.pieces.iter().rev().map(Piece::adjoint).collect(),
-            ket: self.bra.clone(),
-            place: self.place,
-        }
+    /// <a|X|b>* = <b|X^+|a>, with the sign of X^+.
+    pub(super) fn conj(&self) -> (Sign, Self) {
+        let (sign, pieces) = adjoint(&self.pieces);
+        (sign, NormalBracket { bra: self.ket.clone(), pieces, ket: self.bra.clone(), place: self.place })
     }
 }
 
@@ -223,7 +260,7 @@ impl fmt::Display for NormalAtom {
         if self.power != 1 {
             write!(f, "^{}", self.power)?;
         }
-        if self.adjoint { write!(f, "^+") } else { Ok(()) }
+        Ok(())
     }
 }
 
@@ -249,6 +286,7 @@ impl fmt::Display for Piece {
             Piece::Bra(state) => write!(f, "<{}|", state.shown),
             Piece::Atom(atom) => write!(f, "{atom}"),
             Piece::Tensor(tensor) => write!(f, "{tensor}"),
+            Piece::Named(named) => write!(f, "{}", named.text),
             Piece::Hamiltonian => write!(f, "H"),
             Piece::Function(function) => write!(f, "{}", function.label),
         }
@@ -257,7 +295,17 @@ impl fmt::Display for Piece {
 
 impl fmt::Display for NormalBracket {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        let pieces: Vec<String> = self.pieces.iter().map(Piece::to_string).collect();
+        let mut pieces: Vec<String> = Vec::new();
+        let mut rest = &self.pieces[..];
+        while let Some(first) = rest.first() {
+            // the same function of H several times is a power
+            let same = match first {
+                Piece::Function(_) => rest.iter().take_while(|piece| *piece == first).count(),
+                _ => 1,
+            };
+            pieces.push(if same > 1 { format!("{first}^{same}") } else { first.to_string() });
+            rest = &rest[same..];
+        }
         if pieces.is_empty() {
             return write!(f, "<{}|{}>", self.bra.shown, self.ket.shown);
         }

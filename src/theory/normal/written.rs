@@ -1,7 +1,7 @@
 //! Normal forms as terms that can be evaluated.
 
 use super::expand::Expander;
-use super::pieces::{FunctionPiece, NamedState, NormalAtom, NormalBracket, Piece};
+use super::pieces::{FunctionPiece, NamedState, NormalBracket, Piece, pieces_key};
 use super::{NormalSum, NormalTerm, SymbolMeaning};
 use crate::angular::tensor::Sign;
 use crate::lang::tree::{DefinitionKind, Expr, ExprKind};
@@ -102,7 +102,6 @@ impl Expander<'_> {
             Piece::Bra(_) | Piece::Ket(_) => return None,
             Piece::Hamiltonian => Term::new(OperatorNode::Hamiltonian, place, "H"),
             Piece::Atom(atom) => {
-                let plain = NormalAtom { adjoint: false, ..atom.clone() };
                 let arguments = atom.arguments.iter().map(|number| {
                     let shown = number.to_string();
                     Term::new(ScalarNode::Exact(Surd::from(number.clone())), place, shown)
@@ -114,12 +113,23 @@ impl Expander<'_> {
                     arguments: arguments.collect(),
                     power: atom.power,
                 };
-                let term = Term::new(OperatorNode::Atom(node), place, plain.to_string());
-                if atom.adjoint { Term::new(OperatorNode::Adjoint(term), place, text) } else { term }
+                Term::new(OperatorNode::Atom(node), place, text)
             }
             Piece::Tensor(tensor) => {
                 let plain = Term::new(OperatorNode::Tensor(tensor.term.clone()), place, text.as_str());
                 if tensor.adjoint { Term::new(OperatorNode::Adjoint(plain), place, text) } else { plain }
+            }
+            Piece::Named(named) => {
+                let terms = named.expanded.iter().map(|(term, pieces)| {
+                    let shown = term.coefficient.to_string();
+                    let number = Term::new(ScalarNode::Exact(term.coefficient.clone()), place, shown.as_str());
+                    let number = Term::new(OperatorNode::Scalar(number), place, shown.as_str());
+                    let mut factors = vec![number];
+                    factors.extend(pieces.iter().filter_map(|piece| self.piece_term(piece, place)));
+                    let text = format!("({shown}) {}", pieces_key(pieces));
+                    Term::new(OperatorNode::Product(factors), place, text)
+                });
+                Term::new(OperatorNode::Sum(terms.collect()), place, text)
             }
             Piece::Function(function) => self.function_term(function, place),
         })
