@@ -63,7 +63,14 @@ impl Evaluator<'_> {
         self.take_rules();
         self.take_couplings();
         let scalar = self.certain_to(term, digits)?;
-        let rules = self.take_rules();
+        let mut rules = self.take_rules();
+        // rules that close some chains are no reason where others cancel
+        if !rules.is_empty()
+            && scalar.is_zero()
+            && let Some(reason) = self.cancellation(term)
+        {
+            rules = vec![reason];
+        }
         let couplings = self.take_couplings();
         let limit = self.limit.clone();
         let mut sources = Vec::new();
