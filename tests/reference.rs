@@ -1,6 +1,6 @@
 //! Values against independent computations in Python (tests/reference/), run in the same test.
 
-use ketwork::num::parse_decimal;
+use ketwork::num::{parse_decimal, parse_uncertain};
 use ketwork::session::{NoFiles, Outcome, Session};
 use rug::Rational;
 use std::path::{Path, PathBuf};
@@ -94,4 +94,50 @@ fn series_recorded_in_sessions_come_out_without_a_basis() {
     let lines = reference("series.py");
     let compared: usize = lines[0].parse().expect("the number of records compared");
     assert!(compared >= 40, "{compared} records");
+}
+
+/// Every constant and what follows from it, value and standard uncertainty, in both sets.
+///
+/// A table rounds its uncertainties to two digits and what is exact to about ten; its adjustment knows small correlations between constants,
+/// which the program leaves out.
+#[test]
+fn constants_and_units_as_in_the_tables() {
+    let lines = reference("constants.py");
+    let rows: Vec<[&str; 4]> =
+        lines.iter().map(|line| line.split('\t').collect::<Vec<_>>().try_into().expect(line)).collect();
+    assert!(rows.len() >= 2 * 60, "{} rows", rows.len());
+    for set in ["CODATA-2018", "CODATA-2022"] {
+        let rows: Vec<&[&str; 4]> = rows.iter().filter(|row| row[0] == set).collect();
+        let expressions: Vec<String> = rows.iter().map(|row| row[1].to_string()).collect();
+        let (session, first) = evaluated(&format!("constants {set}\n"), &expressions);
+        for (position, row) in rows.iter().enumerate() {
+            let [_, expression, value, sigma] = **row;
+            let entry = session.entry(first + position).expect("an entry for each value");
+            let Some(Outcome::Result(answer)) = entry.outcome else { panic!("{expression}: {:?}", entry.outcome) };
+            let told = format!("{set} {expression}: {}, and the table has {value} +- {sigma}", answer.lines[0]);
+            let number = answer.value.as_deref().expect(&told);
+            let (value, sigma) = (decimal(value), decimal(sigma));
+            if sigma == 0 {
+                let got = fraction(number);
+                let distance = Rational::from(&got - &value).abs();
+                assert!(distance <= value.abs() * decimal("2e-9"), "{told}");
+                continue;
+            }
+            let (sign, number) = number.strip_prefix('-').map_or((1, number), |number| (-1, number));
+            let got = parse_uncertain(number).expect(&told);
+            let apart: Rational = got.value * sign - &value;
+            let distance = apart.abs();
+            assert!(distance <= Rational::from(&sigma * &decimal("0.55")), "{told}");
+            let spread = Rational::from(&got.uncertainty - &sigma).abs();
+            assert!(spread <= sigma * decimal("0.11"), "{told}");
+        }
+    }
+}
+
+/// A decimal or a fraction.
+fn fraction(text: &str) -> Rational {
+    match text.split_once('/') {
+        Some((above, below)) => decimal(above) / decimal(below),
+        None => decimal(text),
+    }
 }

@@ -46,6 +46,7 @@ pub(super) fn ascii_form(character: char) -> Option<&'static str> {
         '\u{feff}' | '\u{a0}' | '\u{2002}'..='\u{200a}' | '\u{202f}' | '\u{205f}' | '\u{3000}' => " ",
         'ħ' | 'ℏ' => "hbar",
         'ℓ' => "l",
+        'Å' | '\u{212b}' => "angstrom",
         'µ' => "mu",
         _ => return greek(character),
     })

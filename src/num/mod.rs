@@ -1,4 +1,4 @@
-//! Numbers: exact sums of square roots, real and complex balls at any precision, how many digits hold, uncertainties.
+//! Numbers: exact sums of square roots, real and complex balls at any precision, how many digits hold, uncertainties, units and constants.
 //!
 //! Nothing here knows of spans, systems or sessions. What this folder promises:
 //!
@@ -18,6 +18,7 @@ pub mod render;
 pub mod scalar;
 pub mod surd;
 pub mod uncertain;
+pub mod units;
 
 pub use ball::Ball;
 pub use complex_ball::ComplexBall;

@@ -12,6 +12,7 @@ pub fn outcome(outcome: &Outcome, indent: &str, paint: Paint) -> String {
         Outcome::Result(answer) => {
             answer.lines.iter().for_each(|text| line(paint.result(text)));
             answer.decimal.iter().for_each(|text| line(paint.faint(&format!("({text})"))));
+            answer.remarks.iter().for_each(|text| line(paint.faint(&format!("({text})"))));
             answer.notes.iter().for_each(|text| line(paint.warning(&format!("({text})"))));
         }
         Outcome::Failed(_) => line(paint.bad("failed")),
@@ -57,6 +58,7 @@ mod tests {
             unit: None,
             decimal: None,
             verdict: "fewer digits than asked".into(),
+            remarks: Vec::new(),
             notes: vec!["1 of the 30 digits asked hold".into()],
         })
     }

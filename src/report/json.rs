@@ -29,7 +29,7 @@ struct EntryObject<'e> {
     decimal: Option<&'e str>,
     verdict: &'e str,
     record: &'e [String],
-    notes: &'e [String],
+    notes: Vec<&'e String>,
     diagnostics: Vec<DiagnosticObject<'e>>,
 }
 
@@ -66,9 +66,9 @@ pub fn entry(view: &EntryView<'_>, place: &dyn Fn(usize, usize) -> Position) -> 
         Some(Outcome::Stopped) | None => (Kind::Other("stopped"), "stopped"),
     };
     let notes = match view.outcome {
-        Some(Outcome::Result(answer)) => &answer.notes[..],
-        Some(Outcome::Declared { told }) => &told[..],
-        _ => &[],
+        Some(Outcome::Result(answer)) => answer.remarks.iter().chain(&answer.notes).collect(),
+        Some(Outcome::Declared { told }) => told.iter().collect(),
+        _ => Vec::new(),
     };
     let diagnostics = match view.outcome {
         Some(Outcome::Failed(reports)) => {
@@ -146,6 +146,7 @@ mod tests {
             decimal: None,
             verdict: "digits hold".into(),
             notes: Vec::new(),
+            remarks: Vec::new(),
         });
         let wanted = "{\"version\":1,\"number\":2,\"line\":5,\"text\":\"sqrt(2) \\\"\",\"kind\":\"approximate\",\"value\":\"0.33\",\
                       \"digits\":2,\"unit\":null,\"decimal\":null,\"verdict\":\"digits hold\",\"record\":[\"~ 0.33\"],\"notes\":[],\"diagnostics\":[]}\n";

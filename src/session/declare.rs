@@ -4,6 +4,7 @@ use super::evaluate::Wrong;
 use super::files::DataFiles;
 use super::scope::{Effect, Scope};
 use crate::lang::tree::{Argument, Expr, ExprKind, LabelPart, Name};
+use crate::num::units::Dimension;
 use crate::num::{Effort, Scalar, Surd};
 use crate::sums::{Environment, Wanted};
 use crate::systems::hydrogenic::Hydrogenic;
@@ -12,7 +13,8 @@ use crate::systems::matrix::{ExactMatrix, MatrixSystem};
 use crate::systems::shifted::Shifted;
 use crate::systems::symbolic::Symbolic;
 use crate::systems::{StateLabel, System};
-use crate::theory::terms::{Place, Source};
+use crate::theory::dimensions::{Known, known};
+use crate::theory::terms::{Place, ScalarTerm, Source};
 use crate::theory::{Fault, Problem, Resolver};
 use rug::{Float, Rational};
 use std::borrow::Cow;
@@ -45,11 +47,12 @@ impl Declaration<'_> {
         Err(Problem::new(self.place(span), fault).into())
     }
 
-    /// `system name = kind(arguments)`
-    pub fn system(&self, name: &Name, kind: &Name, arguments: &[Argument]) -> Result<Effect, Wrong> {
+    /// `system name = kind(arguments)`, with what is to be told about it.
+    pub fn system(&self, name: &Name, kind: &Name, arguments: &[Argument]) -> Result<(Effect, Vec<String>), Wrong> {
+        let mut told = Vec::new();
         let (mut operators, mut tensors) = (Vec::new(), Vec::new());
         let system: Arc<dyn System> = match kind.text.as_str() {
-            "hydrogenic" => Arc::new(self.hydrogenic(kind, arguments)?),
+            "hydrogenic" => Arc::new(self.hydrogenic(kind, arguments, &mut told)?),
             "matrix" => {
                 let (system, matrices) = self.matrix(kind, arguments)?;
                 operators = matrices;
@@ -74,10 +77,10 @@ impl Declaration<'_> {
                 return Err(Problem::new(self.place(kind.span), fault).into());
             }
         };
-        Ok(Effect::System { name: name.text.clone(), system, operators, tensors })
+        Ok((Effect::System { name: name.text.clone(), system, operators, tensors }, told))
     }
 
-    fn hydrogenic(&self, kind: &Name, arguments: &[Argument]) -> Result<Hydrogenic, Wrong> {
+    fn hydrogenic(&self, kind: &Name, arguments: &[Argument], told: &mut Vec<String>) -> Result<Hydrogenic, Wrong> {
         let (mut charge, mut mass, mut spin) = (Rational::from(1), None, false);
         let mut seen: Vec<&str> = Vec::new();
         for argument in arguments {
@@ -95,7 +98,11 @@ impl Declaration<'_> {
             match name.text.as_str() {
                 "Z" => charge = self.positive(name, value)?,
                 "mass" if matches!(&value.kind, ExprKind::Name(inf) if inf == "inf") => mass = None,
-                "mass" => mass = Some(self.positive(name, value)?),
+                "mass" => {
+                    let (number, note) = self.nuclear_mass(value)?;
+                    told.extend(note);
+                    mass = Some(number);
+                }
                 "spin" => spin = self.spin(value)?,
                 other => {
                     return self.refuse(
@@ -186,6 +193,12 @@ impl Declaration<'_> {
     /// A real number with the standard uncertainty that is written in it.
     fn real(&self, expr: &Expr) -> Result<(Rational, Rational), Wrong> {
         let term = Resolver::new(&self.scope.names, self.source, self.entry).scalar(expr)?;
+        if let Known::Definite(dimension) = known(&term)
+            && dimension != Dimension::energy()
+        {
+            let message = format!("a level is moved by an energy, and this is {}", dimension.words());
+            return self.refuse(expr.span, message, "write an energy, as 31.9 GHz or 1e-6");
+        }
         let value = self.scope.evaluator(self.effort).value(&term, Wanted::Digits(SHIFT_DIGITS))?;
         let number = match &value.scalar {
             Scalar::Exact(exact) if exact.as_rational().is_some() => exact.as_rational().map(Cow::into_owned),
@@ -201,7 +214,12 @@ impl Declaration<'_> {
     }
 
     fn positive(&self, name: &Name, value: &Expr) -> Result<Rational, Wrong> {
-        let number = self.exact(value)?;
+        let term = Resolver::new(&self.scope.names, self.source, self.entry).scalar(value)?;
+        if let Known::Definite(dimension) = known(&term) {
+            let message = format!("{} = {} is no plain number", name.text, dimension.words());
+            return self.refuse(value.span, message, "write a positive whole number, fraction or decimal");
+        }
+        let number = self.exact_value(value, &term)?;
         match number.as_rational() {
             Some(q) if *q > 0 => Ok(q.into_owned()),
             _ => self.refuse(
@@ -215,14 +233,55 @@ impl Declaration<'_> {
     /// An argument as an exact number.
     fn exact(&self, expr: &Expr) -> Result<Surd, Wrong> {
         let term = Resolver::new(&self.scope.names, self.source, self.entry).scalar(expr)?;
-        if !crate::sums::measured_sources(&term).is_empty() {
+        match known(&term) {
+            Known::Definite(dimension) if dimension != Dimension::energy() => self.refuse(
+                expr.span,
+                format!("{} stands here, where a plain number or an energy is wanted", dimension.words()),
+                "numbers of a declaration are in atomic units",
+            ),
+            _ => self.exact_value(expr, &term),
+        }
+    }
+
+    /// The mass of a nucleus in electron masses, a number or a mass with its unit, and what is to be told: a system has an exact mass, so that
+    /// the uncertainty of constants is left out.
+    fn nuclear_mass(&self, value: &Expr) -> Result<(Rational, Option<String>), Wrong> {
+        const FORM: &str = "give it in electron masses, as mass=1836.15, or as a mass: mass=4.0026 u, mass=codata.m_p";
+        let term = Resolver::new(&self.scope.names, self.source, self.entry).scalar(value)?;
+        match known(&term) {
+            Known::Definite(dimension) | Known::Atomic(dimension) if dimension != Dimension::mass() => {
+                return self.refuse(value.span, format!("{} is no mass of a nucleus", dimension.words()), FORM);
+            }
+            _ => {}
+        }
+        let sources = crate::sums::measured_sources(&term);
+        if sources.iter().any(|(source, _)| !matches!(source, Source::Constant(_))) {
+            self.exact_value(value, &term)?;
+        }
+        let scalar = self.scope.evaluator(self.effort).scalar(&term, &Environment::default(), 128)?;
+        let Some(mass) = scalar.as_rational().filter(|mass| *mass > 0) else {
+            return self.refuse(value.span, "the mass of a nucleus is a positive rational number", FORM);
+        };
+        if sources.is_empty() {
+            return Ok((mass, None));
+        }
+        let full = self.scope.evaluator(self.effort).value(&term, Wanted::Digits(SHIFT_DIGITS))?;
+        let told = full.sigma().map(|sigma| {
+            let shown = super::evaluate::concise(&full.scalar, &sigma);
+            format!("mass {shown} electron masses; the uncertainty of the constants is left out")
+        });
+        Ok((mass, told))
+    }
+
+    fn exact_value(&self, expr: &Expr, term: &ScalarTerm) -> Result<Surd, Wrong> {
+        if !crate::sums::measured_sources(term).is_empty() {
             return self.refuse(
                 expr.span,
                 "a number with an uncertainty stands in the declaration of a system",
                 "declare the system with the value alone",
             );
         }
-        match self.scope.evaluator(self.effort).scalar(&term, &Environment::default(), 128)? {
+        match self.scope.evaluator(self.effort).scalar(term, &Environment::default(), 128)? {
             crate::num::Scalar::Exact(value) => Ok(value),
             crate::num::Scalar::Approx(_) => self.refuse(
                 expr.span,
@@ -257,16 +316,10 @@ impl Declaration<'_> {
             Err(faults) => faults,
         };
         let fault = match faults.as_slice() {
-            [only] => Fault::Other {
-                message: format!("\"{file}\", {}: {}", only.place(), only.defect),
-                help: only.defect.help(),
-            },
+            [only] => Fault::Other { message: format!("\"{file}\", {}", only.to_text()), help: only.defect.help() },
             several => Fault::DataFile {
                 name: file.clone(),
-                faults: several
-                    .iter()
-                    .map(|one| format!("{}: {} — {}", one.place(), one.defect, one.defect.help()))
-                    .collect(),
+                faults: several.iter().map(|one| format!("{}; {}", one.to_text(), one.defect.help())).collect(),
                 more: several.len() >= MOST_FAULTS,
             },
         };

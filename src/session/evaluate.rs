@@ -6,12 +6,13 @@ use super::outcome::{Answer, AnswerKind};
 use super::scope::{Effect, Scope};
 use crate::lang::tree::{DefinitionKind, DigitsWanted, Entry, EntryKind, Expr, InspectVerb, Span};
 use crate::num::render::{RenderedKind, render};
+use crate::num::units::Unit;
 use crate::num::{Effort, Scalar, uncertain};
 use crate::sums::AngularSum;
 use crate::sums::{Environment, Failure, Trouble, Value, Wanted};
 use crate::systems::LevelShift;
 use crate::theory::free::free_variables;
-use crate::theory::terms::{Place, ScalarTerm};
+use crate::theory::terms::{Place, ScalarNode, ScalarTerm, Term};
 use crate::theory::{Binding, Fault, Problem, Resolver};
 use std::sync::Arc;
 
@@ -56,11 +57,11 @@ pub(super) struct Evaluation<'e> {
 }
 
 impl Evaluation<'_> {
-    fn resolver(&self) -> Resolver<'_> {
+    pub(super) fn resolver(&self) -> Resolver<'_> {
         Resolver::new(&self.scope.names, self.source, self.entry)
     }
 
-    fn fault<T>(&self, span: Span, fault: Fault) -> Result<T, Wrong> {
+    pub(super) fn fault<T>(&self, span: Span, fault: Fault) -> Result<T, Wrong> {
         Err(Problem::new(Place { entry: self.entry, span }, fault).into())
     }
 
@@ -72,7 +73,7 @@ impl Evaluation<'_> {
         match &entry.kind {
             EntryKind::Digits(DigitsWanted::Exact) => Ok(Done::Declared(Effect::Digits(Wanted::Exact), Vec::new())),
             EntryKind::Digits(DigitsWanted::Count(expr)) => self.digits(expr),
-            EntryKind::Constants(name) => self.not_yet(name.span, "sets of constants (numbers are in atomic units)"),
+            EntryKind::Constants(name) => self.constants(name),
             EntryKind::System { name, kind, arguments } => {
                 let declaration = Declaration {
                     scope: self.scope,
@@ -81,7 +82,8 @@ impl Evaluation<'_> {
                     effort: self.effort,
                     files: self.files,
                 };
-                Ok(Done::Declared(declaration.system(name, kind, arguments)?, Vec::new()))
+                let (effect, told) = declaration.system(name, kind, arguments)?;
+                Ok(Done::Declared(effect, told))
             }
             EntryKind::State { name, system, label } => {
                 let term = self.resolver().state(system, label)?;
@@ -106,16 +108,7 @@ impl Evaluation<'_> {
                 let binding = Binding::Definition(Arc::new(definition));
                 Ok(Done::Declared(Effect::Bind(name.text.clone(), binding), Vec::new()))
             }
-            EntryKind::Evaluate { unit: Some(unit), .. } => {
-                self.not_yet(unit.span, "units (results are in atomic units)")
-            }
-            EntryKind::Evaluate { expression, unit: None } => {
-                let term = self.resolver().scalar(expression)?;
-                let value = self.scope.evaluator(self.effort).value(&term, self.scope.wanted)?;
-                let mut answer = self.answer(&value);
-                answer.notes.extend(value.couplings);
-                Ok(Done::Answered(answer))
-            }
+            EntryKind::Evaluate { expression, unit } => self.evaluate(expression, unit.as_ref()),
             EntryKind::Inspect { verb: InspectVerb::Formula, expression } => {
                 let free = free_variables(expression, &self.scope.names);
                 let term = self.resolver().with_variables(free).scalar(expression)?;
@@ -131,6 +124,7 @@ impl Evaluation<'_> {
                     decimal: None,
                     verdict: "formula".into(),
                     notes: Vec::new(),
+                    remarks: Vec::new(),
                 }))
             }
             EntryKind::Paths { expression, beside } => self.paths(expression, beside.as_ref()),
@@ -206,14 +200,14 @@ impl Evaluation<'_> {
     }
 
     /// Digits of approximate results in force.
-    fn digits_wanted(&self) -> u32 {
+    pub(super) fn digits_wanted(&self) -> u32 {
         match self.scope.wanted {
             Wanted::Exact => super::scope::DEFAULT_DIGITS,
             Wanted::Digits(digits) => digits,
         }
     }
 
-    fn answer(&self, value: &Value) -> Answer {
+    pub(super) fn answer(&self, value: &Value) -> Answer {
         if let Some(sigma) = value.sigma() {
             let text = concise(&value.scalar, &sigma);
             return Answer {
@@ -225,6 +219,7 @@ impl Evaluation<'_> {
                 decimal: None,
                 verdict: "uncertain".into(),
                 notes: value.limit.iter().cloned().collect(),
+                remarks: Vec::new(),
             };
         }
         let asked = self.digits_wanted();
@@ -267,6 +262,7 @@ impl Evaluation<'_> {
             decimal: if kind == AnswerKind::Exact { self.in_decimals(&value.scalar) } else { None },
             verdict: verdict.into(),
             notes,
+            remarks: Vec::new(),
         }
     }
 
@@ -278,38 +274,28 @@ impl Evaluation<'_> {
         Some(render(&Scalar::Approx(ball), digits).text)
     }
 
-    /// The value of one side of a comparison, and of the difference of both with what they share cancelled.
-    fn value(&self, term: &ScalarTerm) -> Result<Value, Wrong> {
+    /// The value of a term to the digits in force.
+    pub(super) fn value(&self, term: &ScalarTerm) -> Result<Value, Wrong> {
         Ok(self.scope.evaluator(self.effort).value(term, self.scope.wanted)?)
     }
 
     fn compare(&self, left: &Expr, right: &Expr) -> Result<Done, Wrong> {
-        let a = self.value(&self.resolver().scalar(left)?)?;
-        let b = self.value(&self.resolver().scalar(right)?)?;
-        let mut answer = super::compare::comparison(&a, &b, self.digits_wanted());
+        let (left, right, unit) = self.sides(left, right)?;
+        let (a, b) = (self.value(&left)?, self.value(&right)?);
+        let unit = unit.as_ref().map(Unit::text);
+        let mut answer = super::compare::comparison(&a, &b, self.digits_wanted(), unit);
         answer.notes.extend(a.limit.iter().chain(&b.limit).cloned());
         if let (Some(_), _) | (_, Some(_)) = (a.sigma(), b.sigma()) {
-            let difference = self.value(&self.difference(left, right)?)?;
-            super::compare::add_distance(&mut answer, &difference);
+            let difference = self.value(&difference(left, right))?;
+            super::compare::add_distance(&mut answer, &difference, unit);
         }
         Ok(Done::Answered(answer))
     }
 
-    /// left - right as one term, so that a source in both counts once.
-    fn difference(&self, left: &Expr, right: &Expr) -> Result<ScalarTerm, Wrong> {
-        use crate::theory::terms::{ScalarNode, Term};
-        let left = self.resolver().scalar(left)?;
-        let right = self.resolver().scalar(right)?;
-        let place = left.place;
-        let text = format!("({}) - ({})", left.text, right.text);
-        let minus = Term::new(ScalarNode::Negated(right), place, format!("-({text})"));
-        Ok(Term::new(ScalarNode::Sum(vec![left, minus]), place, text))
-    }
-
     fn expect(&self, left: &Expr, right: &Expr) -> Result<Done, Wrong> {
-        let a = self.value(&self.resolver().scalar(left)?)?;
-        let b = self.value(&self.resolver().scalar(right)?)?;
-        match super::compare::expectation(&a, &b, right, self.digits_wanted()) {
+        let (a, b, unit) = self.sides(left, right)?;
+        let (a, b) = (self.value(&a)?, self.value(&b)?);
+        match super::compare::expectation(&a, &b, right, self.digits_wanted(), unit.as_ref().map(Unit::text)) {
             Ok(answer) => Ok(Done::Answered(answer)),
             Err(message) => {
                 let span = left.span.to(right.span);
@@ -318,6 +304,14 @@ impl Evaluation<'_> {
             }
         }
     }
+}
+
+/// left - right as one term, so that a source in both counts once.
+fn difference(left: ScalarTerm, right: ScalarTerm) -> ScalarTerm {
+    let place = left.place;
+    let text = format!("({}) - ({})", left.text, right.text);
+    let minus = Term::new(ScalarNode::Negated(right), place, format!("-({text})"));
+    Term::new(ScalarNode::Sum(vec![left, minus]), place, text)
 }
 
 /// A real value with its standard uncertainty in the concise form.

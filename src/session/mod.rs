@@ -11,6 +11,7 @@ pub mod files;
 mod notebook;
 pub mod outcome;
 mod paths;
+mod quantities;
 mod replay;
 mod scope;
 mod words;

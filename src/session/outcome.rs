@@ -42,6 +42,8 @@ pub struct Answer {
     pub verdict: String,
     /// Warnings said beside the value (why fewer digits hold, what was left out); not recorded.
     pub notes: Vec<String>,
+    /// What is good to know of the value and no warning: where its uncertainty comes from; not recorded.
+    pub remarks: Vec<String>,
 }
 
 #[derive(Clone, Copy, PartialEq, Eq, Debug, Serialize)]

@@ -54,7 +54,17 @@ pub(super) fn answer(angular: &AngularSum, shifts: &[LevelShift], analysis: &Ana
                 .into(),
         );
     }
-    Answer { lines, kind: AnswerKind::Paths, value: None, digits: None, unit: None, decimal: None, verdict, notes }
+    Answer {
+        lines,
+        kind: AnswerKind::Paths,
+        value: None,
+        digits: None,
+        unit: None,
+        decimal: None,
+        verdict,
+        notes,
+        remarks: Vec::new(),
+    }
 }
 
 impl PathsReport<'_> {

@@ -4,7 +4,7 @@ use super::notebook::Session;
 use super::outcome::{Outcome, Report};
 use super::scope::Scope;
 use crate::lang::parser::parse_expression;
-use crate::num::{Effort, decimal};
+use crate::num::{Effort, decimal, parse_uncertain};
 use crate::sums::{Environment, bits_for};
 use crate::theory::Resolver;
 use rug::{Float, Rational};
@@ -113,14 +113,18 @@ fn compared(recorded: &[&str], recomputed: &[String]) -> ReplayVerdict {
 }
 
 /// Compares one record line against exactly what it claims: an exact value to the letter, an approximate one to its own last digit, which may be
-/// off by one.
+/// off by one, as may that of an uncertainty.
 fn compared_line(old: &str, new: &str) -> Result<Option<u32>, Option<u32>> {
     let (old, new) = (normal(old), normal(new));
-    let both = (old.strip_prefix("~ ").and_then(parts), new.strip_prefix("~ ").and_then(parts));
+    let both = (old.strip_prefix("~ ").and_then(number), new.strip_prefix("~ ").and_then(number));
     let (Some(a), Some(b)) = both else {
         return if old == new { Ok(None) } else { Err(digits_of_different_forms(&old, &new)) };
     };
-    if a.len() != b.len() || a.iter().zip(&b).any(|(x, y)| x.unit != y.unit) {
+    if a.unit != b.unit {
+        return Err(digits_of_different_forms(&old, &new).or(Some(0)));
+    }
+    let (a, b) = (a.parts, b.parts);
+    if a.len() != b.len() || a.iter().zip(&b).any(|(x, y)| x.imaginary != y.imaginary) {
         return Err(Some(0));
     }
     let mut held = u32::MAX;
@@ -129,8 +133,13 @@ fn compared_line(old: &str, new: &str) -> Result<Option<u32>, Option<u32>> {
         let place = x.place.clone().max(y.place.clone());
         let distance = Rational::from(&x.value - &y.value).abs();
         let common = common_digits(&x.value, &distance);
+        let spreads_agree = match (&x.spread, &y.spread) {
+            (None, None) => true,
+            (Some(p), Some(q)) => x.place == y.place && Rational::from(p - q).abs() <= place,
+            _ => false,
+        };
         // A record of more digits than are computed claims more than was checked.
-        if distance > place || x.place < y.place {
+        if distance > place || x.place < y.place || !spreads_agree {
             return Err(Some(common));
         }
         held = held.min(x.digits.min(y.digits));
@@ -138,13 +147,13 @@ fn compared_line(old: &str, new: &str) -> Result<Option<u32>, Option<u32>> {
     Ok(Some(held))
 }
 
-/// Digits two real values have in common when at least one of them is exact; `None` where a record is not one number.
+/// Digits two real values have in common when they are not written in the same form or unit; `None` where a record is not one number.
 fn digits_of_different_forms(old: &str, new: &str) -> Option<u32> {
     let (old, new) = (real_value(old)?, real_value(new)?);
     Some(common_digits(&old, &Rational::from(&old - &new).abs()))
 }
 
-/// The number a record line states, to more digits than are compared.
+/// The number a record line states, in atomic units, to more digits than are compared.
 fn real_value(line: &str) -> Option<Rational> {
     const BITS: u32 = 512;
     let text = line.strip_prefix("= ").or_else(|| line.strip_prefix("~ "))?;
@@ -161,12 +170,37 @@ fn normal(line: &str) -> String {
     line.split_whitespace().collect::<Vec<_>>().join(" ")
 }
 
-/// A decimal of a record: its value, one unit of its last digit, its number of significant digits, and the word behind it (`i`).
+/// The number of a record with the unit behind it.
+struct Recorded {
+    parts: Vec<Part>,
+    unit: String,
+}
+
+/// A decimal of a record: its value, its uncertainty where it has one, one unit of its last digit, its number of significant digits, and whether
+/// an `i` stands behind it.
 struct Part {
     value: Rational,
+    spread: Option<Rational>,
     place: Rational,
     digits: u32,
-    unit: String,
+    imaginary: bool,
+}
+
+/// The number at the front of `1.23(4) MHz`, `(1.23 + 4.56 i) eV`; `None` for anything else.
+fn number(text: &str) -> Option<Recorded> {
+    if let Some((number, unit)) = text.strip_prefix('(').and_then(|rest| rest.split_once(')')) {
+        return Some(Recorded { parts: parts(number)?, unit: unit.trim().into() });
+    }
+    let is_number = |word: &str| {
+        matches!(word, "+" | "-" | "i") || word.trim_start_matches('-').starts_with(|c: char| c.is_ascii_digit())
+    };
+    let words: Vec<&str> = text.split(' ').collect();
+    let count = words.iter().take_while(|word| is_number(word)).count();
+    let unit = words[count..].join(" ");
+    if unit.starts_with("below ") {
+        return None;
+    }
+    Some(Recorded { parts: parts(&words[..count].join(" "))?, unit })
 }
 
 /// The parts of `1.23 + 4.56 i`; `None` for anything that is not made of decimals.
@@ -177,25 +211,32 @@ fn parts(text: &str) -> Option<Vec<Part>> {
         match word {
             "+" => sign = 1,
             "-" => sign = -1,
-            "i" => parts.last_mut()?.unit = "i".into(),
+            "i" => parts.last_mut()?.imaginary = true,
             number => {
-                let value = decimal::parse_decimal(number.strip_prefix('-').unwrap_or(number)).ok()?;
                 let negative = number.starts_with('-') != (sign < 0);
-                let (mantissa, exponent) = number.split_once('e').unwrap_or((number, "0"));
-                let decimals = mantissa.split_once('.').map_or(0, |(_, fraction)| fraction.len());
-                let exponent = exponent.parse::<i64>().ok()? - i64::try_from(decimals).ok()?;
-                let place = decimal::parse_decimal(&format!("1e{exponent}")).ok()?;
-                let digits = mantissa.chars().filter(char::is_ascii_digit).skip_while(|c| *c == '0').count();
-                parts.push(Part {
-                    value: if negative { -value } else { value },
-                    place,
-                    digits: u32::try_from(digits).ok()?,
-                    unit: String::new(),
-                });
+                let part = part(number.strip_prefix('-').unwrap_or(number))?;
+                parts.push(if negative { Part { value: -part.value, ..part } } else { part });
             }
         }
     }
     Some(parts)
+}
+
+/// One decimal without a sign: `4.784`, `1.5(2)e-3`.
+fn part(number: &str) -> Option<Part> {
+    let (mantissa, exponent) = number.split_once('e').unwrap_or((number, "0"));
+    let bare = mantissa.split('(').next()?;
+    let decimals = bare.split_once('.').map_or(0, |(_, fraction)| fraction.len());
+    let exponent = exponent.parse::<i64>().ok()? - i64::try_from(decimals).ok()?;
+    let place = decimal::parse_decimal(&format!("1e{exponent}")).ok()?;
+    let digits = bare.chars().filter(char::is_ascii_digit).skip_while(|c| *c == '0').count();
+    let (value, spread) = if mantissa.contains('(') {
+        let measured = parse_uncertain(number).ok()?;
+        (measured.value, Some(measured.uncertainty))
+    } else {
+        (decimal::parse_decimal(number).ok()?, None)
+    };
+    Some(Part { value, spread, place, digits: u32::try_from(digits).ok()?, imaginary: false })
 }
 
 /// Digits in which two numbers a relative distance apart agree.
@@ -227,6 +268,27 @@ mod tests {
     #[test]
     fn a_record_of_more_digits_than_are_computed_is_not_confirmed() {
         assert_eq!(verdict("~ 2.718281828999", "~ 2.71828183"), ReplayVerdict::Differs { digits_in_common: Some(9) });
+    }
+
+    #[test]
+    fn units_and_uncertainties_are_compared() {
+        assert_eq!(verdict("~ 725736252(9) MHz", "~ 725736253(9) MHz"), ReplayVerdict::Agrees { digits: Some(9) });
+        assert_eq!(
+            verdict("~ 725736252(9) MHz", "~ 725736312(9) MHz"),
+            ReplayVerdict::Differs { digits_in_common: Some(7) }
+        );
+        assert_eq!(
+            verdict("~ 725736252(9) MHz", "~ 725736252(14) MHz"),
+            ReplayVerdict::Differs { digits_in_common: Some(0) }
+        );
+        assert_eq!(verdict("~ 0.5 GHz", "~ 500.1 MHz"), ReplayVerdict::Differs { digits_in_common: Some(3) });
+        assert_eq!(verdict("= 3 GHz", "~ 2999.9(2) MHz"), ReplayVerdict::Differs { digits_in_common: Some(4) });
+        assert_eq!(verdict("~ (1.5 + 2.5 i) eV", "~ (1.5 + 2.5 i) eV"), ReplayVerdict::Agrees { digits: Some(2) });
+        assert_eq!(
+            verdict("~ 0 below 1e-40 MHz, not proved", "~ 0 below 1e-40 MHz, not proved"),
+            ReplayVerdict::Agrees { digits: None }
+        );
+        assert_eq!(verdict("~ 4.5 a0^3", "~ 4.5 cm^3"), ReplayVerdict::Differs { digits_in_common: Some(0) });
     }
 
     #[test]

@@ -1,6 +1,7 @@
 //! What an entry sees: the names, systems and settings that the entries above it have made.
 
 use crate::num::Effort;
+use crate::num::units::ConstantSet;
 use crate::sums::{Evaluator, Systems, Wanted};
 use crate::systems::System;
 use crate::theory::{Binding, Names};
@@ -21,6 +22,7 @@ pub enum Effect {
         tensors: Vec<String>,
     },
     Digits(Wanted),
+    Constants(ConstantSet),
 }
 
 /// The names, systems and settings in force at a point of the session.
@@ -56,10 +58,12 @@ impl Scope {
                 self.names.matrix_operators.extend(operators.iter().cloned());
                 self.names.operators.extend(tensors.iter().cloned());
                 self.names.later.retain(|word, _| !tensors.contains(word));
+                self.names.parameters.insert(name.clone(), system.parameters());
                 self.systems.insert(name.clone(), system.clone());
                 self.bound_by.insert(name.clone(), number);
             }
             Effect::Digits(wanted) => self.wanted = *wanted,
+            Effect::Constants(set) => self.names.constants = *set,
         }
     }
 

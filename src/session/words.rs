@@ -8,9 +8,6 @@ pub fn names() -> Names {
     let mut names = Names::default();
     for (name, word) in vocabulary().names() {
         match (&word.status, word.kind) {
-            (_, WordKind::Unit) => {
-                names.units.insert(name.to_string());
-            }
             (Status::Later(what), WordKind::Function | WordKind::Operator | WordKind::System) => {
                 names.later.insert(base(name).to_string(), format!("`{name}`, {what}"));
             }

@@ -2,6 +2,7 @@
 
 use super::environment::Environment;
 use super::problem::{Failure, Trouble};
+use super::settled::Settled;
 use super::walker::Kept;
 use crate::angular::HalfInteger;
 use crate::angular::chain::AngularVector;
@@ -52,6 +53,8 @@ pub struct Evaluator<'s> {
     pub(super) known: HashMap<(String, u32), Scalar>,
     /// What variations have been derived to, by their text.
     pub(super) derived: HashMap<String, ScalarTerm>,
+    /// Costly values that hold whatever source is moved.
+    pub(super) settled: Settled,
     depth: usize,
 }
 
@@ -79,6 +82,7 @@ impl<'s> Evaluator<'s> {
             kept: HashMap::new(),
             never_exact: BTreeSet::new(),
             known: HashMap::new(),
+            settled: Settled::new(),
             derived: HashMap::new(),
             depth: 0,
         }
@@ -119,7 +123,7 @@ impl<'s> Evaluator<'s> {
         self.limit.as_deref()
     }
 
-    /// Forgets every computed ket and value; what does not depend on the shift of a source stays in the systems.
+    /// Forgets every computed ket and value that may rest on a moved source.
     pub(super) fn forget(&mut self) {
         self.kept.clear();
         self.known.clear();
@@ -174,13 +178,13 @@ impl<'s> Evaluator<'s> {
             self.effort
                 .check()
                 .map_err(|stop| Failure::new(term.place, stop))
-                .and_then(|()| self.scalar_node(term, environment, bits))
+                .and_then(|()| self.settled(term, environment, bits))
         };
         self.depth -= 1;
         result
     }
 
-    fn scalar_node(&mut self, term: &ScalarTerm, environment: &Environment, bits: u32) -> Evaluated<Scalar> {
+    pub(super) fn scalar_node(&mut self, term: &ScalarTerm, environment: &Environment, bits: u32) -> Evaluated<Scalar> {
         let place = term.place;
         let at = |error: NumberError| Failure::new(place, error);
         match &*term.node {
@@ -213,6 +217,7 @@ impl<'s> Evaluator<'s> {
                 }
                 Ok(product)
             }
+            ScalarNode::Quantity { value, .. } => self.scalar(value, environment, bits),
             ScalarNode::Negated(inner) => Ok(self.scalar(inner, environment, bits)?.neg()),
             ScalarNode::Quotient(a, b) => {
                 let a = self.scalar(a, environment, bits)?;

@@ -13,6 +13,7 @@ mod level_part;
 mod problem;
 mod proof;
 mod root;
+mod settled;
 mod value;
 mod vary;
 mod walker;

@@ -14,6 +14,9 @@ const GRADIENT_DIGITS: u32 = 12;
 /// A source is moved by its uncertainty over two to this power, so that the gradient is that of the tangent.
 const SHIFT_BITS: u32 = 24;
 
+/// Digits to which a value is had at both ends of a shift.
+const WORKING_DIGITS: u32 = GRADIENT_DIGITS + SHIFT_BITS / 2 + 10;
+
 /// How often precision is raised for a value before it is given with the digits it has.
 const RAISES: u32 = 4;
 
@@ -62,23 +65,35 @@ impl Evaluator<'_> {
         self.limit = None;
         self.take_rules();
         self.take_couplings();
-        let scalar = self.certain_to(term, digits)?;
+        let uncertain = self.uncertain_sources(term)?;
+        // What rests on an uncertain number is first had to the digits that its gradients need: often nothing more is.
+        let mut scalar = self.certain_to(term, if uncertain.is_empty() { digits } else { WORKING_DIGITS })?;
         let mut rules = self.take_rules();
+        let mut couplings = self.take_couplings();
+        let mut limit = self.limit.clone();
+        let mut sources = Vec::new();
+        for (source, sigma) in uncertain {
+            let gradient = self.gradient(term, &source, &sigma)?;
+            if !gradient.is_zero() {
+                sources.push((source, gradient));
+            }
+        }
+        if digits > WORKING_DIGITS && !is_blurred(&scalar, &sources) {
+            self.limit = None;
+            scalar = self.certain_to(term, digits)?;
+            limit = self.limit.clone();
+            // What is known already is not told again.
+            rules.extend(self.take_rules());
+            couplings.extend(self.take_couplings());
+            rules.dedup();
+            couplings.dedup();
+        }
         // rules that close some chains are no reason where others cancel
         if !rules.is_empty()
             && scalar.is_zero()
             && let Some(reason) = self.cancellation(term)
         {
             rules = vec![reason];
-        }
-        let couplings = self.take_couplings();
-        let limit = self.limit.clone();
-        let mut sources = Vec::new();
-        for (source, sigma) in self.uncertain_sources(term)? {
-            let gradient = self.gradient(term, &source, &sigma)?;
-            if !gradient.is_zero() {
-                sources.push((source, gradient));
-            }
         }
         if !sources.is_empty() && !scalar.is_real() {
             return Err(Failure::new(term.place, complex_with_uncertainty()));
@@ -142,7 +157,7 @@ impl Evaluator<'_> {
         for delta in [shift.clone(), Rational::from(-&shift)] {
             self.move_source(source, delta, term.place)?;
             // The difference of the two ends is smaller than they are by the shift.
-            let value = self.certain_to(term, GRADIENT_DIGITS + SHIFT_BITS / 2 + 10);
+            let value = self.certain_to(term, WORKING_DIGITS);
             self.put_back();
             ends.push(value?);
         }
@@ -152,7 +167,27 @@ impl Evaluator<'_> {
             return Err(Failure::new(term.place, complex_with_uncertainty()));
         }
         let real: &Ball = &ball.re;
+        if real.contains_zero() && is_negligible(real, &ends[0]) {
+            return Ok(Float::new(64));
+        }
         Ok(Float::with_val(64, real.mid()) << (SHIFT_BITS - 1))
+    }
+}
+
+/// Whether a difference that may be zero is so small beside the value that it would be no uncertainty anybody could have.
+fn is_negligible(difference: &Ball, value: &Scalar) -> bool {
+    const BITS: u32 = 60;
+    let change = Float::with_val(64, difference.rad()) << (SHIFT_BITS + BITS);
+    value.to_ball(128).is_ok_and(|ball| change < ball.magnitude_below())
+}
+
+/// Whether the standard uncertainty is so much larger than the radius of a value that further digits would not be shown.
+fn is_blurred(scalar: &Scalar, sources: &[(Source, Float)]) -> bool {
+    let largest =
+        sources.iter().map(|(_, part)| Float::with_val(64, part.abs_ref())).fold(Float::new(64), |a, b| a.max(&b));
+    match scalar {
+        Scalar::Exact(_) => true,
+        Scalar::Approx(ball) => ball.radius() < largest >> 10,
     }
 }
 

@@ -191,6 +191,11 @@ pub trait System: Send + Sync {
     /// The word that declares it (`hydrogenic`).
     fn kind(&self) -> &'static str;
 
+    /// What may be asked of it by name, as `h.mass`.
+    fn parameters(&self) -> Vec<(&'static str, Rational)> {
+        Vec::new()
+    }
+
     /// The eigenstate that carries a label.
     fn state(&self, label: &StateLabel, effort: &Effort) -> Result<State, SystemError>;
 

@@ -45,7 +45,9 @@ impl Resolver<'_> {
                     Meaning::Scalar(s) => Some(s),
                     _ => None,
                 });
-                Meaning::Scalar(self.term(ScalarNode::Sum(scalars.collect()), span))
+                let scalars: Vec<ScalarTerm> = scalars.collect();
+                self.check_sum(&scalars.iter().collect::<Vec<_>>(), false)?;
+                Meaning::Scalar(self.term(ScalarNode::Sum(scalars), span))
             }
             Kind::Ket => {
                 let kets = terms.into_iter().filter_map(|t| match t {
@@ -71,7 +73,13 @@ impl Resolver<'_> {
                     Meaning::Scalar(s) => Some(self.identity_multiple(s)),
                     _ => None,
                 });
-                let operators = operators.collect();
+                let operators: Vec<OperatorTerm> = operators.collect();
+                let numbers = operators.iter().filter_map(|o| match &*o.node {
+                    OperatorNode::Scalar(number) => Some(number),
+                    _ => None,
+                });
+                let with_hamiltonian = operators.iter().any(|o| matches!(self.linear(o), Some((_, Some(_)))));
+                self.check_sum(&numbers.collect::<Vec<_>>(), with_hamiltonian)?;
                 Meaning::Operator(self.term(OperatorNode::Sum(operators), span))
             }
         })
@@ -120,34 +128,47 @@ impl Resolver<'_> {
             factors.push((*operation, right.as_ref()));
             rest = left;
         }
-        let mut product = self.resolve(rest)?;
-        for (operation, factor) in factors.into_iter().rev() {
-            let span = expr.span.to(factor.span);
-            let span = Span::new(span.start, factor.span.end);
-            let factor = match operation {
-                Operation::Divide => self.inverse(factor, 1)?,
-                _ => match self.resolve(factor) {
-                    Err(problem) => return Err(self.unit_behind_number(rest, factor).unwrap_or(problem)),
-                    Ok(meaning) => meaning,
+        factors.reverse();
+        let (mut product, mut next) = match self.number_with_unit(rest, &factors)? {
+            Some(found) => found,
+            None => (self.resolve(rest)?, 0),
+        };
+        while let Some((operation, factor)) = factors.get(next) {
+            let span = Span::new(expr.span.start, factor.span.end);
+            if let Some((value, count)) = self.value_in_units(&product, &factors[next..], span)? {
+                (product, next) = (value, next + count);
+                continue;
+            }
+            let number = match operation {
+                Operation::Divide => None,
+                _ => self.number_with_unit(factor, &factors[next + 1..])?,
+            };
+            let (factor, count) = match (operation, number) {
+                (_, Some((number, count))) => (number, count),
+                (Operation::Divide, None) => (self.inverse(factor, 1)?, 0),
+                (_, None) => match self.resolve(factor) {
+                    Err(problem) => {
+                        let before = if next == 0 { rest } else { factors[next - 1].1 };
+                        return Err(self.unit_meant(before, factor).unwrap_or(problem));
+                    }
+                    Ok(meaning) => (meaning, 0),
                 },
             };
             product = self.multiply(product, factor, span)?;
+            next += 1 + count;
         }
         Ok(product)
     }
 
-    /// A unit is told from an unknown name by the number in front of it.
-    fn unit_behind_number(&self, before: &Expr, factor: &Expr) -> Option<Problem> {
+    /// Behind a number an unknown name is a misspelt unit, where one is close.
+    fn unit_meant(&self, before: &Expr, factor: &Expr) -> Option<Problem> {
         let (ExprKind::Number(_) | ExprKind::Measured { .. }, ExprKind::Name(name)) = (&before.kind, &factor.kind)
         else {
             return None;
         };
-        self.names.units.contains(name).then(|| {
-            Problem::new(
-                self.place(factor.span),
-                Fault::NotYet { what: format!("units (`{name}`); numbers are in atomic units") },
-            )
-        })
+        let near = crate::num::units::near(name).filter(|_| !self.names.bound.contains_key(name))?;
+        let fault = Fault::UnknownName { name: name.clone(), near: Some(near) };
+        Some(Problem::new(self.place(factor.span), fault))
     }
 
     fn multiply(&mut self, left: Meaning, right: Meaning, span: Span) -> Resolved<Meaning> {
@@ -252,7 +273,9 @@ impl Resolver<'_> {
                 },
                 _ => self.inverse_of_meaning(denominator, power),
             },
-            ExprKind::Binary { operation: Operation::Multiply | Operation::Juxtapose, left, right } => {
+            ExprKind::Binary { operation: Operation::Multiply | Operation::Juxtapose, left, right }
+                if !self.ends_in_unit(right) =>
+            {
                 // 1/(A B) = 1/B 1/A
                 let right = self.inverse(right, power)?;
                 let left = self.inverse(left, power)?;
@@ -412,6 +435,7 @@ impl Resolver<'_> {
         match self.resolve(base)? {
             Meaning::Scalar(base) => {
                 let exponent = self.scalar(exponent)?;
+                self.check_power(&base, &exponent)?;
                 Ok(Meaning::Scalar(self.term(ScalarNode::Power(base, exponent), span)))
             }
             Meaning::Operator(operator) => {
@@ -451,7 +475,7 @@ fn power_limit() -> Fault {
 }
 
 /// The whole number an exponent is written as, if it is.
-fn whole_number(expr: &Expr) -> Option<i64> {
+pub(super) fn whole_number(expr: &Expr) -> Option<i64> {
     match &expr.kind {
         ExprKind::Number(text) => text.parse().ok(),
         ExprKind::Negate(inner) => whole_number(inner).map(|n: i64| -n),

@@ -31,7 +31,10 @@ impl Resolver<'_> {
         if let Some(function) = function_named(&name.text) {
             let argument = self.only_argument(name, arguments, span)?;
             return match self.resolve(&argument)? {
-                Meaning::Scalar(inner) => Ok(Meaning::Scalar(self.term(ScalarNode::Function(function, inner), span))),
+                Meaning::Scalar(inner) => {
+                    self.check_function(function, &name.text, &inner)?;
+                    Ok(Meaning::Scalar(self.term(ScalarNode::Function(function, inner), span)))
+                }
                 Meaning::Operator(inner) => self.function_of_h(function, &inner, span),
                 other => self.fault(argument.span, Fault::WrongKind { wanted: Kind::Number, got: other.kind() }),
             };
@@ -41,6 +44,10 @@ impl Resolver<'_> {
             "tensor" => self.tensor(arguments, subscript, span),
             "coupled" => self.coupled(arguments, subscript, span),
             "vary" => self.vary(arguments, span),
+            "photon" | "wavelength" => {
+                let argument = self.only_argument(name, arguments, span)?;
+                self.photon_or_wavelength(name, &argument, span)
+            }
             "zero" | "sum" => self.bound_variable(name, arguments, span),
             symbol if WignerSymbol::named(symbol).is_some_and(|_| !self.names.later.contains_key(symbol)) => {
                 let plain = self.positional(symbol, arguments, span)?;
@@ -56,7 +63,7 @@ impl Resolver<'_> {
                         },
                     );
                 }
-                let terms = plain.iter().map(|a| self.scalar(a)).collect::<Resolved<Vec<_>>>()?;
+                let terms = plain.iter().map(|a| self.plain(a, "in the symbol")).collect::<Resolved<Vec<_>>>()?;
                 Ok(Meaning::Scalar(self.term(ScalarNode::Wigner(symbol, terms), span)))
             }
             "delta" if self.names.operators.contains("delta") => {
@@ -205,9 +212,16 @@ impl Resolver<'_> {
             );
         };
         let (from, to) = (self.scalar(from)?, self.scalar(to)?);
+        let known = self.check_range(&from, &to)?.of_variable();
+        if name.text == "sum" {
+            self.check_plain(&from, "in the range of a sum")?;
+            self.check_plain(&to, "in the range of a sum")?;
+        }
         self.variables.push(variable.text.clone());
+        self.variable_dimensions.push((variable.text.clone(), known));
         let body = self.scalar(body);
         self.variables.pop();
+        self.variable_dimensions.pop();
         let (variable, body) = (variable.text.clone(), body?);
         let node = if name.text == "zero" {
             ScalarNode::Root { variable, from, to, body }

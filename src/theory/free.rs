@@ -2,6 +2,7 @@
 
 use super::names::Names;
 use super::terms::function_named;
+use super::unit_words::{ends_in_quantity, is_unit};
 use crate::lang::tree::{Argument, Expr, ExprKind, Operation, StateRef, StateRefKind};
 use std::collections::BTreeSet;
 
@@ -36,6 +37,13 @@ impl Search<'_> {
         match &expr.kind {
             ExprKind::Name(name) if number && self.is_free(name) => {
                 self.found.insert(name.clone());
+            }
+            ExprKind::Binary {
+                operation: Operation::Multiply | Operation::Juxtapose | Operation::Divide,
+                left,
+                right,
+            } if is_unit(right) && ends_in_quantity(left) => {
+                self.expr(left, number);
             }
             ExprKind::Binary { operation, left, right } => {
                 let sum = matches!(operation, Operation::Add | Operation::Subtract);

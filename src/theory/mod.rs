@@ -4,14 +4,18 @@
 
 pub mod algebra;
 mod calls;
+mod checked;
+pub mod dimensions;
 pub mod free;
 pub mod indices;
 pub mod names;
 pub mod normal;
 pub mod problem;
+mod quantities;
 pub mod resolve;
 mod tensors;
 pub mod terms;
+pub mod unit_words;
 pub mod visit;
 
 pub use names::{Binding, Names};

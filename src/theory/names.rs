@@ -2,6 +2,8 @@
 
 use super::terms::{Definition, ManifoldTerm, StateTerm};
 use crate::angular::polarization::Polarization;
+use crate::num::units::ConstantSet;
+use rug::Rational;
 use std::collections::{BTreeMap, BTreeSet};
 use std::sync::Arc;
 
@@ -47,8 +49,10 @@ pub struct Names {
     pub later: BTreeMap<String, String>,
     /// Names an entry above should have bound, had it not failed, with its number.
     pub broken: BTreeMap<String, usize>,
-    /// Units, recognised behind a number only.
-    pub units: BTreeSet<String>,
+    /// The set of recommended constants in force.
+    pub constants: ConstantSet,
+    /// Parameters of systems by the system's name: `mass`, `reduced_mass`, `Z`.
+    pub parameters: BTreeMap<String, Vec<(&'static str, Rational)>>,
 }
 
 impl Names {

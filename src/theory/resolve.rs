@@ -1,5 +1,6 @@
 //! Resolves a tree into terms: what each name stands for, and whether each part is a number, an operator or a ket.
 
+use super::dimensions::Known;
 use super::indices::{count_indices, count_indices_ket};
 use super::names::{Binding, Names};
 use super::problem::{Fault, Kind, Problem};
@@ -18,13 +19,15 @@ pub struct Resolver<'a> {
     source: &'a str,
     entry: u64,
     pub(super) variables: Vec<String>,
+    /// What is known of the dimensions of variables of ranges.
+    pub(super) variable_dimensions: Vec<(String, Known)>,
     without: Vec<ManifoldTerm>,
 }
 
 impl<'a> Resolver<'a> {
     /// A resolver for the entry with this identity, whose text is `source`.
     pub fn new(names: &'a Names, source: &'a str, entry: u64) -> Self {
-        Resolver { names, source, entry, variables: Vec::new(), without: Vec::new() }
+        Resolver { names, source, entry, variables: Vec::new(), variable_dimensions: Vec::new(), without: Vec::new() }
     }
 
     /// The same with variables that need no value.
@@ -48,10 +51,11 @@ impl<'a> Resolver<'a> {
 
     /// A node with its place and text; what `without` leaves out belongs to the text, since it changes the meaning.
     pub(super) fn term<N>(&self, node: N, span: Span) -> Term<N> {
-        if self.without.is_empty() {
+        let constants = self.constants_text();
+        if self.without.is_empty() && constants.is_empty() {
             return Term::new(node, self.place(span), self.text(span));
         }
-        Term::new(node, self.place(span), format!("{}{}", self.text(span), self.left_out_text()))
+        Term::new(node, self.place(span), format!("{}{constants}{}", self.text(span), self.left_out_text()))
     }
 
     /// The manifolds left out at this point, as text.
@@ -115,6 +119,10 @@ impl<'a> Resolver<'a> {
             name: name.text.clone(),
             kind,
             parameters: parameters.iter().map(|p| p.text.clone()).collect(),
+            known: match &body_meaning {
+                Meaning::Scalar(term) => super::dimensions::known(term).of_variable(),
+                _ => Known::Free,
+            },
             body: body_meaning,
             written: body.clone(),
         })
@@ -126,6 +134,13 @@ impl<'a> Resolver<'a> {
             Meaning::Scalar(term) => Ok(term),
             other => self.fault(expr.span, Fault::WrongKind { wanted: Kind::Number, got: other.kind() }),
         }
+    }
+
+    /// Resolves an expression that must be a number without a unit.
+    pub(super) fn plain(&mut self, expr: &Expr, place: &str) -> Resolved<ScalarTerm> {
+        let term = self.scalar(expr)?;
+        self.check_plain(&term, place)?;
+        Ok(term)
     }
 
     /// Resolves an expression of any kind.
@@ -147,12 +162,7 @@ impl<'a> Resolver<'a> {
                 }
             }
             ExprKind::Name(name) => self.name(name, expr.span),
-            ExprKind::Member { owner, field } => self.fault(
-                expr.span,
-                Fault::NotYet {
-                    what: format!("`{}.{}` (constants and parameters of systems)", owner.text, field.text),
-                },
-            ),
+            ExprKind::Member { owner, field } => self.member(owner, field, expr.span),
             ExprKind::Text(_) | ExprKind::List(_) => self.fault(
                 expr.span,
                 Fault::Other {
@@ -245,7 +255,14 @@ impl<'a> Resolver<'a> {
 
     fn name(&mut self, name: &str, span: Span) -> Resolved<Meaning> {
         if self.variables.iter().any(|variable| variable == name) {
-            return Ok(Meaning::Scalar(self.term(ScalarNode::Variable(name.into()), span)));
+            let variable = self.term(ScalarNode::Variable(name.into()), span);
+            let known = self.variable_dimensions.iter().rev().find(|(known, _)| known == name).map(|(_, known)| known);
+            return Ok(Meaning::Scalar(match known {
+                None | Some(Known::Free | Known::Number) => variable,
+                Some(known) => {
+                    self.term(ScalarNode::Quantity { known: known.clone(), unit: None, value: variable }, span)
+                }
+            }));
         }
         match self.names.bound.get(name) {
             Some(Binding::Definition(definition)) => return self.call_definition(definition.clone(), &[], span),
@@ -302,11 +319,14 @@ impl<'a> Resolver<'a> {
                 },
             );
         }
-        self.unknown(name, span)
+        match self.lone_unit(&Expr { kind: ExprKind::Name(name.into()), span }) {
+            Some(refusal) => refusal,
+            None => self.unknown(name, span),
+        }
     }
 
     /// Tells whether a name, with its component, is an operator of the vocabulary or of a matrix.
-    fn operator_word(&self, name: &str) -> bool {
+    pub(super) fn operator_word(&self, name: &str) -> bool {
         let base = name.split_once('_').map_or(name, |(base, _)| base);
         self.names.matrix_operators.contains(name)
             || self.names.operators.contains(name)
@@ -340,8 +360,15 @@ impl<'a> Resolver<'a> {
         }
         let arguments = arguments.iter().map(|argument| self.scalar(argument)).collect::<Resolved<Vec<_>>>()?;
         let call = Call { definition: definition.clone(), arguments };
+        let known = self.check_call(&call, span)?;
         Ok(match definition.kind {
-            DefinitionKind::Define => Meaning::Scalar(self.term(ScalarNode::Call(call), span)),
+            DefinitionKind::Define => {
+                let value = self.term(ScalarNode::Call(call), span);
+                Meaning::Scalar(match known {
+                    Some(known) => self.term(ScalarNode::Quantity { known, unit: None, value }, span),
+                    None => value,
+                })
+            }
             DefinitionKind::Operator | DefinitionKind::Resolvent => {
                 Meaning::Operator(self.term(OperatorNode::Call(call), span))
             }
@@ -385,13 +412,13 @@ impl<'a> Resolver<'a> {
             .iter()
             .map(|part| match part {
                 LabelPart::Text(text) => Ok(LabelPiece::Text(text.clone())),
-                LabelPart::Computed(expr) => Ok(LabelPiece::Computed(self.scalar(expr)?)),
+                LabelPart::Computed(expr) => Ok(LabelPiece::Computed(self.plain(expr, "in a label")?)),
             })
             .collect::<Resolved<Vec<_>>>()?;
         let options = label
             .options
             .iter()
-            .map(|(name, value)| Ok((name.text.clone(), self.scalar(value)?)))
+            .map(|(name, value)| Ok((name.text.clone(), self.plain(value, "in a label")?)))
             .collect::<Resolved<Vec<_>>>()?;
         Ok(LabelTerm { parts, options, text: self.text(label.span).into() })
     }

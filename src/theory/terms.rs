@@ -3,12 +3,14 @@
 //! Terms know systems only by name. Every term carries the place it was written at and the text it was written as; the text, with the values of
 //! the variables in scope, identifies the term while names keep their meaning, which they do during one evaluation.
 
+use super::dimensions::Known;
 use crate::angular::polarization::Polarization;
 use crate::angular::tensor::Tensor;
 use crate::angular::{AngularError, HalfInteger, clebsch_gordan, ninej, sixj, threej};
 use crate::lang::tree::{DefinitionKind, Expr, Span};
 pub use crate::num::Function as ScalarFunction;
 use crate::num::Surd;
+use crate::num::units::Unit;
 use rug::Rational;
 use std::sync::Arc;
 
@@ -48,6 +50,8 @@ pub enum Source {
     Datum { system: String, index: usize },
 }
 
+// Terms are shared by their nodes; a node is made once.
+#[allow(clippy::large_enum_variant)]
 #[derive(Clone, Debug)]
 pub enum ScalarNode {
     Exact(Surd),
@@ -58,6 +62,12 @@ pub enum ScalarNode {
         sigma: Rational,
     },
     Pi,
+    /// A value of which the dimension is known, and the unit it is written in
+    Quantity {
+        known: Known,
+        unit: Option<Unit>,
+        value: ScalarTerm,
+    },
     /// Bound by `zero`, `sum` or a definition's parameter list.
     Variable(String),
     Sum(Vec<ScalarTerm>),
@@ -205,6 +215,8 @@ pub struct Definition {
     pub kind: DefinitionKind,
     pub parameters: Vec<String>,
     pub body: Meaning,
+    /// What is known of the dimension of a defined number.
+    pub known: Known,
     /// The body as it was written, for `formula`.
     pub written: Expr,
 }

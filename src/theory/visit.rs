@@ -41,7 +41,9 @@ impl Walk<'_> {
             ScalarNode::Sum(list) | ScalarNode::Product(list) | ScalarNode::Wigner(_, list) => {
                 list.iter().for_each(|inner| self.scalar(inner));
             }
-            ScalarNode::Negated(inner) | ScalarNode::Function(_, inner) => self.scalar(inner),
+            ScalarNode::Quantity { value: inner, .. } | ScalarNode::Negated(inner) | ScalarNode::Function(_, inner) => {
+                self.scalar(inner)
+            }
             ScalarNode::Quotient(a, b) | ScalarNode::Power(a, b) => {
                 self.scalar(a);
                 self.scalar(b);

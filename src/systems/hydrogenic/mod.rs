@@ -83,9 +83,7 @@ impl Hydrogenic {
                 "give the mass in electron masses, as mass=1836.15267343, or leave it out for an infinite one",
             );
         }
-        // mu = M/(1 + M)
-        let reduced_mass = mass.as_ref().map_or(Rational::from(1), |m| m / Rational::from(m + 1));
-        let scale = Scale::new(&charge, &reduced_mass);
+        let scale = Scale::new(&charge, &reduced_mass(mass.as_ref()));
         let electrons = Electrons::ONE_WITHOUT_SPIN;
         Ok(Hydrogenic { charge, mass, electrons, scale, kept: Arc::default(), couplings: Arc::default() })
     }
@@ -128,9 +126,21 @@ impl Hydrogenic {
     }
 }
 
+/// mu = M/(1 + M).
+fn reduced_mass(mass: Option<&Rational>) -> Rational {
+    mass.map_or(Rational::from(1), |m| m / Rational::from(m + 1))
+}
+
 impl System for Hydrogenic {
     fn kind(&self) -> &'static str {
         "hydrogenic"
+    }
+
+    /// Z, the mass of the nucleus where it is finite, and the reduced mass, in electron masses.
+    fn parameters(&self) -> Vec<(&'static str, Rational)> {
+        let mass = self.mass.iter().map(|mass| ("mass", mass.clone()));
+        let reduced = reduced_mass(self.mass.as_ref());
+        [("Z", self.charge.clone())].into_iter().chain(mass).chain([("reduced_mass", reduced)]).collect()
     }
 
     fn state(&self, label: &StateLabel, _: &Effort) -> Result<State, SystemError> {

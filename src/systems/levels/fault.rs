@@ -175,6 +175,11 @@ impl TableFault {
             None => format!("line {}", self.line),
         }
     }
+
+    /// Place and defect in one line.
+    pub fn to_text(&self) -> String {
+        format!("{}: {}", self.place(), self.defect)
+    }
 }
 
 impl Defect {

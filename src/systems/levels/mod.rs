@@ -12,8 +12,6 @@ mod reader;
 mod rows;
 mod symmetry;
 mod table;
-#[cfg(test)]
-mod tests;
 mod units;
 
 pub use fault::{Defect, MOST_FAULTS, TableFault};

@@ -145,6 +145,10 @@ impl System for Shifted {
         Ok(Arc::new(ShiftedBackend { system: self.clone(), base, bits: Some(level.bits), effort: effort.clone() }))
     }
 
+    fn parameters(&self) -> Vec<(&'static str, Rational)> {
+        self.base.parameters()
+    }
+
     fn basis_range(&self) -> Option<(usize, usize)> {
         self.base.basis_range()
     }

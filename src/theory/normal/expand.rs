@@ -12,6 +12,7 @@ use crate::lang::tree::DefinitionKind;
 use crate::num::{Effort, Scalar, Surd};
 use crate::theory::names::{Binding, Names};
 use crate::theory::problem::{Fault, Problem};
+use crate::theory::quantities::is_fixed;
 use crate::theory::resolve::has_function_of_h;
 use crate::theory::terms::*;
 use rug::{Integer, Rational};
@@ -164,6 +165,8 @@ impl<'e> Expander<'e> {
             ScalarNode::Exact(value) => NormalSum::number(value.clone()),
             ScalarNode::Pi => NormalSum::number(Surd::pi_to(1)),
             ScalarNode::Measured { .. } | ScalarNode::Root { .. } => self.given(term, arguments),
+            ScalarNode::Quantity { .. } if is_fixed(term) => self.given(term, arguments),
+            ScalarNode::Quantity { value, .. } => self.scalar(value, arguments)?,
             ScalarNode::Variable(name) => match arguments.get(name) {
                 Some(value) => value.clone(),
                 None => self.symbol(name.clone(), SymbolMeaning::Given(term.clone(), Vec::new())),

@@ -6,6 +6,7 @@ use super::{NormalSum, NormalTerm, SymbolMeaning};
 use crate::angular::tensor::Sign;
 use crate::lang::tree::{DefinitionKind, Expr, ExprKind};
 use crate::num::Surd;
+use crate::theory::dimensions::Known;
 use crate::theory::terms::*;
 use std::sync::Arc;
 
@@ -48,6 +49,7 @@ impl Expander<'_> {
                     kind: DefinitionKind::Define,
                     parameters: arguments.iter().map(|(name, _)| name.clone()).collect(),
                     body: Meaning::Scalar(term.clone()),
+                    known: Known::Free,
                     written: Expr { kind: ExprKind::Name(symbol.to_string()), span: place.span },
                 };
                 let call = Call { definition: Arc::new(definition), arguments: values };
