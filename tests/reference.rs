@@ -125,8 +125,8 @@ fn constants_and_units_as_in_the_tables() {
             }
             let (sign, number) = number.strip_prefix('-').map_or((1, number), |number| (-1, number));
             let got = parse_uncertain(number).expect(&told);
-            let apart: Rational = got.value * sign - &value;
-            let distance = apart.abs();
+            let distance: Rational = got.value * Rational::from(sign) - &value;
+            let distance = distance.abs();
             assert!(distance <= Rational::from(&sigma * &decimal("0.55")), "{told}");
             let spread = Rational::from(&got.uncertainty - &sigma).abs();
             assert!(spread <= sigma * decimal("0.11"), "{told}");
