@@ -15,7 +15,7 @@ const POLARIZABILITIES: &str = "\
 system h = hydrogenic(Z=1)
 state g = h[1s]
 state s = h[2s]
-state p = h[2p]
+state p = h[2p, m=0]
 state q = h[2p, m=1]
 resolvent R1(w) = 1/(E(g) + w - H)
 resolvent R2(w) = 1/(E(s) + w - H)

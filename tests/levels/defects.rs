@@ -67,6 +67,7 @@ fn large() -> Vec<String> {
         .fold(few + "row,from,to,operator,rank,value\n", |out, (a, b)| out + &format!("element,w{a},w{b},W,0,1\n"));
     vec![
         format!("{header}level,{},0,cm^-1,0,even\n", "x".repeat(1001)),
+        format!("{header}level{}\n", ",".repeat(1000)),
         format!("{header}{}", "# a long story\n".repeat(100_000)),
         levels,
         elements,
@@ -92,7 +93,9 @@ fn every_kind_of_defect_has_a_case() {
 #[test]
 fn large_tables_are_refused_in_words() {
     let told: Vec<String> = large().iter().map(|text| told(text)).collect();
-    for (text, words) in told.iter().zip(["1001 characters", "100000 lines", "10000 levels", "50000 elements"]) {
+    for (text, words) in
+        told.iter().zip(["1001 characters", "1001 cells", "100000 lines", "10000 levels", "50000 elements"])
+    {
         assert!(text.contains(words), "{text}");
     }
 }

@@ -4,7 +4,8 @@
 use super::random::{Random, cases};
 use super::value_of;
 use ketwork::angular::chain::{Bracket, ChainSum, Resolvent, State};
-use ketwork::angular::paths::{Orientation, Setting, decompose};
+use ketwork::angular::paths::{Orientation, Setting, blocked, decompose};
+use ketwork::angular::selection::SelectionRule;
 use ketwork::angular::term::Level;
 use ketwork::angular::{HalfInteger, threej};
 use ketwork::num::{Effort, Scalar, Surd};
@@ -54,18 +55,36 @@ fn known(random: &mut Random) -> Known {
     Known { levels, elements, text }
 }
 
-/// A random component of an operator of the table, with its atom.
-fn component(random: &mut Random, table: &Known) -> (&'static str, Atom) {
-    let given = |name: &str| table.elements.keys().any(|(other, ..)| *other == name);
-    let choices: Vec<&(&str, i32, bool)> = OPERATORS.iter().filter(|(name, ..)| given(name)).collect();
-    let (name, rank, _) = *choices[random.below(choices.len() as u64) as usize];
-    let component = match (rank, random.below(4)) {
-        (0, _) => None,
-        (1, 0) => Some(["x", "y", "z"][random.below(3) as usize].to_string()),
-        _ => Some(random.between(-i64::from(rank), i64::from(rank)).to_string()),
-    };
-    (name, Atom { name: name.to_string(), component, arguments: vec![], power: 1 })
+/// A chain between two levels that has a way through the table, from the left, with random components; M of the ket is that of the bra less the
+/// sum of spherical components.
+fn chain(random: &mut Random, table: &Known, length: u64) -> Option<(End, Operators, End)> {
+    let start = random.below(6) as usize;
+    let (mut level, mut operators) = (start, Vec::new());
+    for _ in 0..length {
+        let ways: Vec<(&'static str, usize)> =
+            table.elements.keys().filter(|(_, bra, _)| *bra == level).map(|(name, _, ket)| (*name, *ket)).collect();
+        let (name, next) = *ways.get(random.below(ways.len().max(1) as u64) as usize)?;
+        let (_, rank, _) = *OPERATORS.iter().find(|(known, ..)| *known == name)?;
+        let component = match (rank, random.below(5)) {
+            (0, _) => None,
+            (1, 0) => Some(["x", "y", "z"][random.below(3) as usize].to_string()),
+            _ => Some(random.between(-i64::from(rank), i64::from(rank)).to_string()),
+        };
+        operators.push((name, Atom { name: name.to_string(), component, arguments: vec![], power: 1 }));
+        level = next;
+    }
+    let change: i32 = operators.iter().filter_map(|(_, atom)| atom.component.as_ref()?.parse::<i32>().ok()).sum();
+    let twice_j = table.levels[start].0;
+    let twice_m = 2 * random.between(0, i64::from(twice_j)) as i32 - twice_j;
+    let end = twice_m - 2 * change;
+    (end.abs() <= table.levels[level].0).then_some(((start, twice_m), operators, (level, end)))
 }
+
+/// A level and twice its M.
+type End = (usize, i32);
+
+/// Operators of a chain by name, with their components.
+type Operators = Vec<(&'static str, Atom)>;
 
 fn written(atom: &Atom) -> String {
     match &atom.component {
@@ -88,13 +107,8 @@ fn paths_times_elements_are_the_sum_over_states() {
         let mut random = Random::new(u64::from(seed));
         let table = known(&mut random);
         let system = LevelSystem::read(&table.text).unwrap_or_else(|faults| panic!("{}", faults[0].to_text()));
-        let end = |random: &mut Random| {
-            let level = random.below(6) as usize;
-            let twice_j = table.levels[level].0;
-            (level, 2 * random.between(0, i64::from(twice_j)) as i32 - twice_j)
-        };
-        let (bra, ket) = (end(&mut random), end(&mut random));
-        let chain: Vec<(&str, Atom)> = (0..=random.below(3)).map(|_| component(&mut random, &table)).collect();
+        let length = 1 + random.below(4);
+        let Some((bra, chain, ket)) = chain(&mut random, &table, length) else { continue };
         let state = |(level, twice_m): (usize, i32)| format!("k[w{level}, M={}]", HalfInteger::from_twice(twice_m));
         let middle: Vec<String> = chain.iter().map(|(_, atom)| written(atom)).collect();
         let expression = format!("<{}| {} |{}>", state(bra), middle.join(" (1/(1/3 - H)) "), state(ket));
@@ -177,4 +191,23 @@ fn one_element_has_the_factor_of_wigner_and_eckart() {
     }
     // seven components and four M', without the six whose M is beyond 5/2
     assert_eq!(count, 22);
+}
+
+/// Where no way is open, the rule that closes it is one of J and the parity; nothing is said of an L or S that nobody knows.
+#[test]
+fn a_closed_way_is_told_in_terms_of_the_total_momentum() {
+    let text = "row,name,energy,unit,J,parity\nlevel,a,0,hartree,1/2,even\nlevel,b,1,hartree,5/2,even\nlevel,c,2,hartree,3/2,odd\n\
+                row,from,to,operator,rank,value\nelement,a,c,D,1,1\n";
+    let system = LevelSystem::read(text).expect("a good table");
+    let end = |name: &str| {
+        let label = StateLabel { text: name.into(), options: vec![] };
+        system.end(&system.state(&label, &Effort::new()).expect("a state")).expect("an end")
+    };
+    let dipole = Atom { name: "D".into(), component: Some("z".into()), arguments: vec![], power: 1 };
+    let operators = vec![system.tensors(&dipole).expect("a tensor")];
+    let bracket = Bracket { bra: end("a"), operators, gaps: vec![], ket: end("b") };
+    let broken = blocked(&bracket, &system.rules(), &Effort::new()).expect("not interrupted");
+    assert_eq!(broken.len(), 1);
+    assert_eq!(broken[0].rules, [SelectionRule::TotalTriangle, SelectionRule::Parity]);
+    assert_eq!((broken[0].bra.to_string(), broken[0].ket.to_string()), ("J=1/2 even".into(), "J=5/2 even".into()));
 }

@@ -8,7 +8,7 @@ use crate::num::{Effort, Surd};
 use crate::systems::{
     Backend, BlockKet, FunctionKind, FunctionOfH, Number, Obstacle, Omitted, RadialOperator, Resolvent, Sector, State,
 };
-use rug::{Complex, Float};
+use rug::{Complex, Rational};
 use std::collections::BTreeMap;
 use std::sync::Arc;
 
@@ -27,6 +27,9 @@ const MOST_ROOTS: usize = 64;
 
 /// Longest exact number in bits before the numeric backend takes over.
 const LONGEST_NUMBER: u32 = 400_000;
+
+/// Longest denominator, in bits, of an exact sum over the levels of a ket; beyond, nobody reads it, and numbers at a precision are faster.
+const LONGEST_DENOMINATOR: u64 = 8192;
 
 /// Components by level.
 type Ket = BTreeMap<usize, Number>;
@@ -95,31 +98,46 @@ impl LevelBackend {
         })
     }
 
-    /// value/(z - E) for the energy of a level.
-    fn divided(&self, z: &Number, level: usize, value: &Number) -> Result<Number, Obstacle> {
-        let singular = || Obstacle::Singular { level: self.table.shape.levels[level].name.clone() };
-        let energy = self.table.energy(level);
-        if let (None, Number::Exact(z), Number::Exact(value)) = (self.bits, z, value) {
-            let difference = z - &Surd::from(energy.clone());
-            if difference.is_zero() {
-                return Err(singular());
-            }
-            let inverse = difference.inverse().ok_or(Obstacle::Inexact)?;
-            return Ok(Number::Exact(value * &inverse));
+    /// value/(z - E) for the energy of a level, exactly.
+    fn divided_exactly(&self, z: &Surd, level: usize, value: &Number) -> Result<Number, Obstacle> {
+        let Number::Exact(value) = value else { return Err(Obstacle::Inexact) };
+        let difference = z - &Surd::from(self.table.energy(level).clone());
+        if difference.is_zero() {
+            return Err(self.singular(level));
         }
-        if let Number::Exact(z) = z
-            && (z - &Surd::from(energy.clone())).is_zero()
-        {
-            return Err(singular());
+        let inverse = difference.inverse().ok_or(Obstacle::Inexact)?;
+        Ok(Number::Exact(value * &inverse))
+    }
+
+    /// value/(z - E) for the energy of a level; `rational` is z where it is one.
+    fn divided(
+        &self,
+        z: &Complex,
+        rational: Option<&Rational>,
+        level: usize,
+        value: &Number,
+    ) -> Result<Number, Obstacle> {
+        let energy = self.table.energy(level);
+        if rational == Some(energy) {
+            return Err(self.singular(level));
         }
         let precision = self.precision();
-        let at = z.to_complex(precision);
-        let difference = Complex::with_val(precision, &at - energy);
-        let size = |x: &Complex| Float::with_val(32, Complex::with_val(32, x).abs().real());
-        if self.bits.is_none() || size(&difference) <= size(&at) >> (precision - precision / 8) {
-            return Err(if self.bits.is_none() { Obstacle::Inexact } else { Obstacle::Undecided });
+        let difference = Complex::with_val(precision, z - energy);
+        // a difference that the rounding of z may have made
+        let exponent = |x: &Complex| x.real().get_exp().max(x.imag().get_exp());
+        let lost = match (exponent(z), exponent(&difference)) {
+            (Some(whole), Some(left)) => i64::from(whole) - i64::from(left),
+            (None, _) => 0,
+            (_, None) => i64::MAX,
+        };
+        if lost >= i64::from(precision - precision / 8) {
+            return Err(Obstacle::Undecided);
         }
         Ok(Number::Approx(value.to_complex(precision) / difference))
+    }
+
+    fn singular(&self, level: usize) -> Obstacle {
+        Obstacle::Singular { level: self.table.shape.levels[level].name.clone() }
     }
 
     /// f(a + b E) for the energy of a level; on the cut of logarithm and square root the value from above, as for numbers.
@@ -204,12 +222,31 @@ impl Backend for LevelBackend {
 
     fn resolve(&self, resolvent: &Resolvent, _: Sector, ket: &BlockKet) -> Result<BlockKet, Obstacle> {
         self.effort.check()?;
-        let mut image = Ket::new();
-        for (level, value) in open(ket)? {
-            if !self.omitted(&resolvent.omitted, *level) {
-                let quotient = self.divided(&resolvent.z, *level, value)?;
-                self.add(&mut image, *level, quotient)?;
+        let ket = open(ket)?;
+        if let (None, Number::Exact(z)) = (self.bits, &resolvent.z) {
+            // the denominators of the energies seldom have a common factor
+            let energy = |level: &usize| u64::from(self.table.energy(*level).denom().significant_bits());
+            let length = |level| energy(level) + 2 * u64::from(z.bits());
+            if ket.keys().map(length).sum::<u64>() > LONGEST_DENOMINATOR {
+                return Err(Obstacle::Inexact);
             }
+        }
+        let z = resolvent.z.to_complex(self.precision());
+        let rational = match &resolvent.z {
+            Number::Exact(z) => z.as_rational(),
+            Number::Approx(_) => None,
+        };
+        let mut image = Ket::new();
+        for (level, value) in ket {
+            if self.omitted(&resolvent.omitted, *level) {
+                continue;
+            }
+            let quotient = match (self.bits, &resolvent.z) {
+                (None, Number::Exact(z)) => self.divided_exactly(z, *level, value)?,
+                (None, Number::Approx(_)) => return Err(Obstacle::Inexact),
+                (Some(_), _) => self.divided(&z, rational.as_deref(), *level, value)?,
+            };
+            self.add(&mut image, *level, quotient)?;
         }
         Ok(Arc::new(image))
     }

@@ -16,6 +16,9 @@ pub const MOST_LINES: usize = 100_000;
 pub const MOST_LEVELS: usize = 10_000;
 pub const MOST_ELEMENTS: usize = 50_000;
 
+/// Most cells a line may have.
+pub const MOST_CELLS: usize = 1000;
+
 /// Most characters a cell may have.
 pub const LONGEST_CELL: usize = 1000;
 
@@ -73,6 +76,8 @@ pub enum Defect {
     Quote,
     #[error("this cell has {length} characters, more than the {LONGEST_CELL} that are read")]
     LongCell { length: usize },
+    #[error("this line has {found} cells, more than the {MOST_CELLS} that are read")]
+    ManyCells { found: usize },
     #[error("the table has more than {MOST_LINES} lines")]
     TooManyLines,
     #[error("the table has more than {MOST_LEVELS} levels")]
@@ -194,6 +199,7 @@ impl Defect {
             Defect::MissingColumn { column, .. } => format!("write `{}` into the header, over its cells", column.word()),
             Defect::TooManyCells { .. } => "put a cell with a comma in it into quotation marks, and leave out what has no column".into(),
             Defect::Quote => "close it in the same line; a cell holds no line end".into(),
+            Defect::ManyCells { .. } => "a row has a cell for each column of its header, twelve at most".into(),
             Defect::LongCell { .. } => "write notes into comment lines, which begin with #".into(),
             Defect::TooManyLines | Defect::TooManyLevels | Defect::TooManyElements => "keep the levels that matter".into(),
             Defect::UnknownRow { near, .. } => meant(*near, || "a row begins with `level` or `element`, a header with `row`, a comment with #".into()),
