@@ -121,10 +121,27 @@ fn has_other_units(term: &ScalarTerm) -> bool {
     found
 }
 
-/// A rational as an exact decimal of few digits, where it is one.
+/// A rational as an exact decimal of few digits, where it is one: `29.9792458`, `1.602176634e-19`.
 fn short_decimal(scalar: &Scalar) -> Option<String> {
     let text = uncertain::concise(&scalar.as_rational()?, &Rational::new());
-    (!text.contains('/') && text.len() <= LONGEST_DECIMAL).then_some(text)
+    if text.contains('/') {
+        return None;
+    }
+    if text.len() <= LONGEST_DECIMAL {
+        return Some(text);
+    }
+    let (sign, size) = text.strip_prefix('-').map_or(("", text.as_str()), |size| ("-", size));
+    let whole = size.find('.').unwrap_or(size.len());
+    let all: String = size.chars().filter(char::is_ascii_digit).collect();
+    let leading = all.find(|digit| digit != '0')?;
+    let digits = all[leading..].trim_end_matches('0');
+    if digits.len() > LONGEST_DECIMAL {
+        return None;
+    }
+    let power = i64::try_from(whole).ok()? - i64::try_from(leading).ok()? - 1;
+    let (first, rest) = digits.split_at(1);
+    let point = if rest.is_empty() { "" } else { "." };
+    Some(format!("{sign}{first}{point}{rest}e{power}"))
 }
 
 /// A number with its sign of exactness, as an exact decimal where it is a short one.
@@ -174,6 +191,21 @@ pub(super) fn with_unit(line: &str, unit: &str) -> String {
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn exact_decimals_are_short() {
+        for (value, text) in [
+            ("29.9792458", Some("29.9792458")),
+            ("1.602176634e-19", Some("1.602176634e-19")),
+            ("1e400", Some("1e400")),
+            ("0.1234567890123456789012345", None),
+        ] {
+            let value = Scalar::from(crate::num::parse_decimal(value).expect(value));
+            assert_eq!(short_decimal(&value).as_deref(), text);
+            assert_eq!(short_decimal(&value.neg()), text.map(|text| format!("-{text}")));
+        }
+        assert_eq!(short_decimal(&Scalar::from(Rational::from((1, 3)))), None);
+    }
 
     #[test]
     fn units_stand_behind_numbers() {

@@ -1,5 +1,6 @@
 //! Sums, products, quotients and powers of resolved expressions: what may stand next to what.
 
+use super::dimensions::{Known, known};
 use super::problem::{Fault, Kind, Problem};
 use super::resolve::{Resolved, Resolver};
 use super::terms::*;
@@ -78,7 +79,7 @@ impl Resolver<'_> {
                     OperatorNode::Scalar(number) => Some(number),
                     _ => None,
                 });
-                let with_hamiltonian = operators.iter().any(|o| matches!(self.linear(o), Some((_, Some(_)))));
+                let with_hamiltonian = operators.iter().any(is_hamiltonian);
                 self.check_sum(&numbers.collect::<Vec<_>>(), with_hamiltonian)?;
                 Meaning::Operator(self.term(OperatorNode::Sum(operators), span))
             }
@@ -471,6 +472,21 @@ fn power_limit() -> Fault {
     Fault::Other {
         message: format!("an operator is raised to a power above {OPERATOR_POWER_LIMIT}"),
         help: "each power is one more application; chains of this length are not evaluated".into(),
+    }
+}
+
+/// Whether an operator is H times a plain number, as it stands: definitions are not looked into.
+fn is_hamiltonian(operator: &OperatorTerm) -> bool {
+    match &*operator.node {
+        OperatorNode::Hamiltonian => true,
+        OperatorNode::Product(factors) => match factors.as_slice() {
+            [scale, rest] => {
+                matches!(&*scale.node, OperatorNode::Scalar(number) if known(number) == Known::Number)
+                    && is_hamiltonian(rest)
+            }
+            _ => false,
+        },
+        _ => false,
     }
 }
 
