@@ -200,7 +200,7 @@ fn the_tour_of_the_readme_replays() {
     fs::write(&file, tour.strip_prefix("text\n").expect("a block of text")).expect("written");
     let run = Command::new(env!("CARGO_BIN_EXE_ketwork")).arg("replay").arg(&file).output().expect("ketwork runs");
     let told = String::from_utf8_lossy(&run.stdout);
-    assert!(run.status.success() && told.contains(": 6 agree"), "{told}{}", String::from_utf8_lossy(&run.stderr));
+    assert!(run.status.success() && told.contains(": 8 agree"), "{told}{}", String::from_utf8_lossy(&run.stderr));
 }
 
 #[test]

@@ -10,6 +10,9 @@ use super::term::Term;
 use crate::num::Surd;
 use rug::Rational;
 
+/// The name of an element whose radial part is an overlap, that of L, S and J.
+pub const IDENTITY: &str = "1";
+
 /// Largest rank of an operator.
 pub const LARGEST_RANK: u32 = 40;
 
@@ -276,6 +279,11 @@ impl Element {
             AngularPart::Spin => !same_s || !same_l || bra.s.twice() == 0,
             AngularPart::OrbitalMomentumAndSpin => !same_s || !same_l || bra.l == 0 || bra.s.twice() == 0,
         }
+    }
+
+    /// The element as far as its radial part goes: L, S and J leave the same overlap.
+    pub(crate) fn radial(&self) -> Element {
+        if self.name == IDENTITY { Tensor::scalar(IDENTITY).element } else { self.clone() }
     }
 
     /// The sign with which the radial element between two terms turns into that of the opposite order; `None` where tau is not said.

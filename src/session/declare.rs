@@ -208,8 +208,9 @@ impl Declaration<'_> {
         let Some(number) = number else {
             return self.refuse(expr.span, "a shift is a real number", "write an energy, as 31.9 GHz or 1e-6");
         };
-        let written = value.sources.iter().filter(|(source, _)| !matches!(source, Source::Constant(_)));
-        let squares = written.fold(Float::new(64), |sum, (_, part)| sum + Float::with_val(64, part.square_ref()));
+        // constants behind the unit count with what is written
+        let squares =
+            value.sources.iter().fold(Float::new(64), |sum, (_, part)| sum + Float::with_val(64, part.square_ref()));
         Ok((number, squares.sqrt().to_rational().unwrap_or_default()))
     }
 

@@ -146,18 +146,22 @@ impl Evaluation<'_> {
     /// `paths A` and `paths A with B`.
     fn paths(&self, expression: &Expr, beside: Option<&Expr>) -> Result<Done, Wrong> {
         let place = Place { entry: self.entry, span: expression.span };
-        let (angular, shifts) = self.angular_sum(expression)?;
+        let Some((angular, shifts)) = self.angular_sum(expression)? else {
+            return Ok(Done::Answered(super::paths::nothing_left()));
+        };
         let mut analysis = super::paths::analysis(&angular, &shifts, place, self.effort)?;
         if let Some(beside) = beside {
-            let (other, _) = self.angular_sum(beside)?;
-            let other = super::paths::analysis(&other, &shifts, place, self.effort)?;
-            let name = self.source.get(beside.span.start..beside.span.end).unwrap_or("the other sum");
-            analysis = analysis.compared_with(name, &other);
+            if let Some((other, _)) = self.angular_sum(beside)? {
+                let other = super::paths::analysis(&other, &shifts, place, self.effort)?;
+                let name = self.source.get(beside.span.start..beside.span.end).unwrap_or("the other sum");
+                analysis = analysis.compared_with(name, &other);
+            }
         }
         Ok(Done::Answered(super::paths::answer(&angular, &shifts, &analysis)))
     }
 
-    fn angular_sum(&self, expression: &Expr) -> Result<(AngularSum, Vec<LevelShift>), Wrong> {
+    /// The chains of an expression and the moved levels of its system; `None` where its terms cancel.
+    fn angular_sum(&self, expression: &Expr) -> Result<Option<(AngularSum, Vec<LevelShift>)>, Wrong> {
         let place = Place { entry: self.entry, span: expression.span };
         let free = free_variables(expression, &self.scope.names);
         let term = self.resolver().with_variables(free).scalar(expression)?;
@@ -165,9 +169,12 @@ impl Evaluation<'_> {
         let mut expander = evaluator.expander(self.effort);
         expander.name_functions(&self.scope.names)?;
         let normal = expander.expand(&term)?;
+        if normal.terms.is_empty() {
+            return Ok(None);
+        }
         let angular = evaluator.angular_sum(&normal, place)?;
         let shifts = evaluator.level_shifts(&normal, place)?;
-        Ok((angular, shifts))
+        Ok(Some((angular, shifts)))
     }
 
     fn digits(&self, expr: &Expr) -> Result<Done, Wrong> {

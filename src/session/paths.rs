@@ -4,6 +4,7 @@ use super::evaluate::Wrong;
 use super::outcome::{Answer, AnswerKind};
 use crate::angular::HalfInteger;
 use crate::angular::paths::Columns;
+use crate::angular::tensor::IDENTITY;
 use crate::angular::verdict::{Analysis, ChainReport, Residual, Verdict, Where, Whole, analyse};
 use crate::num::{Effort, Surd};
 use crate::sums::{AngularSum, Failure, Trouble};
@@ -43,17 +44,13 @@ pub(super) fn analysis(
     })
 }
 
-/// The answer of `paths`.
-pub(super) fn answer(angular: &AngularSum, shifts: &[LevelShift], analysis: &Analysis) -> Answer {
-    let report = PathsReport { angular, shifts, lines: Vec::new() };
-    let (lines, verdict) = report.written(analysis);
-    let mut notes = Vec::new();
-    if angular.beyond_fractions {
-        notes.push(
-            "a function of H other than a fraction stands in the sum: what is left of a cancellation when levels are split is not shown"
-                .into(),
-        );
-    }
+/// The answer where nothing is left to analyse.
+pub(super) fn nothing_left() -> Answer {
+    let verdict = "zero: the terms cancel before any angular algebra";
+    lines_answer(vec![format!(": in all: {verdict}")], verdict.to_string(), Vec::new())
+}
+
+fn lines_answer(lines: Vec<String>, verdict: String, notes: Vec<String>) -> Answer {
     Answer {
         lines,
         kind: AnswerKind::Paths,
@@ -65,6 +62,20 @@ pub(super) fn answer(angular: &AngularSum, shifts: &[LevelShift], analysis: &Ana
         notes,
         remarks: Vec::new(),
     }
+}
+
+/// The answer of `paths`.
+pub(super) fn answer(angular: &AngularSum, shifts: &[LevelShift], analysis: &Analysis) -> Answer {
+    let report = PathsReport { angular, shifts, lines: Vec::new() };
+    let (lines, verdict) = report.written(analysis);
+    let mut notes = Vec::new();
+    if angular.beyond_fractions {
+        notes.push(
+            "a function of H other than a fraction stands in the sum: what is left of a cancellation when levels are split is not shown"
+                .into(),
+        );
+    }
+    lines_answer(lines, verdict, notes)
 }
 
 impl PathsReport<'_> {
@@ -93,7 +104,7 @@ impl PathsReport<'_> {
                 let rules: Vec<&str> = broken.rules.iter().map(|rule| rule.words()).collect();
                 self.line(format!(
                     "no path{term}: {} between {} and {}: {}",
-                    broken.operator,
+                    if broken.operator == IDENTITY { "angular momentum" } else { broken.operator.as_str() },
                     broken.bra,
                     broken.ket,
                     rules.join("; ")

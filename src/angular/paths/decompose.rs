@@ -279,7 +279,7 @@ fn radial_chain(bracket: &Bracket, steps: &[Step], levels: &[Level], orientation
     RadialChain {
         orientation,
         bra: end(&bracket.bra),
-        elements: steps.iter().map(|step| step.tensor.element.clone()).collect(),
+        elements: steps.iter().map(|step| step.tensor.element.radial()).collect(),
         blocks,
         gaps,
         ket: end(&bracket.ket),

@@ -2,12 +2,9 @@
 
 use crate::angular::chain::Resolvent;
 use crate::angular::half_integer::HalfInteger;
-use crate::angular::tensor::{Element, Sign};
+use crate::angular::tensor::{Element, IDENTITY, Sign};
 use crate::angular::term::{Level, Term};
 use std::fmt;
-
-/// The name of an element whose radial part is an overlap, that of L, S and J.
-const IDENTITY: &str = "1";
 
 /// The order in which the two sides of a reduced element are written.
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Debug)]

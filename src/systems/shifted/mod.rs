@@ -93,8 +93,26 @@ impl System for Shifted {
         "shifted"
     }
 
+    /// Errors: as the base; a state of several J of which some are moved, since it is no eigenstate.
     fn state(&self, label: &StateLabel, effort: &Effort) -> Result<State, SystemError> {
-        self.base.state(label, effort)
+        let state = self.base.state(label, effort)?;
+        let Some(symmetry) = self.base.symmetry() else { return Ok(state) };
+        let end = symmetry.end(&state)?;
+        if matches!(end.vector, chain::AngularVector::Product { .. }) {
+            let own = family(&label.text);
+            let split = self.shifts.iter().find(|shift| {
+                family(&shift.manifold.label) == own
+                    && !self.base.holds(&shift.manifold, &state)
+                    && symmetry.levels(&shift.manifold).iter().any(|level| level.term == end.term)
+            });
+            if let Some(split) = split {
+                return Err(SystemError::Refused {
+                    message: format!("{} is no eigenstate, since {} is moved", state.label, split.manifold.label),
+                    help: "name a state of one J, as [2^3P_1, M=0]".into(),
+                });
+            }
+        }
+        Ok(state)
     }
 
     fn manifold(&self, label: &StateLabel, effort: &Effort) -> Result<Manifold, SystemError> {
