@@ -31,8 +31,8 @@ fn every_word_that_can_be_evaluated_has_an_example_that_uses_it() {
         }
         let used = word.examples.iter().any(|example| example.contains(word.name.as_str()));
         assert!(used, "{} has no example", word.name);
-        let recorded = word.examples.iter().any(|example| example.contains("\n  = ") || example.contains("\n  ~ "));
-        assert!(recorded || ["formula", "expect"].contains(&word.name.as_str()), "{} shows no result", word.name);
+        let recorded = word.examples.iter().any(|e| ["\n  = ", "\n  ~ ", "\n  : "].iter().any(|mark| e.contains(mark)));
+        assert!(recorded || word.name == "expect", "{} shows no result", word.name);
     }
 }
 
@@ -159,10 +159,9 @@ fn reads(rule: &str, example: &str) -> bool {
         "record" => {
             matches!(item(&format!("9/2\n  {example}")), Item::Entry(entry) if entry.records[0].text == example)
         }
-        "entry" | "digits" | "constants" | "system" | "level" | "definition" | "parameters" | "inspection"
-        | "compare" | "expect" | "sweep" | "converge" | "budget" | "budget_line" | "evaluation" | "unit" => {
-            reads_entry(rule, example)
-        }
+        "entry" | "digits" | "constants" | "system" | "level" | "definition" | "parameters" | "paths"
+        | "inspection" | "compare" | "expect" | "sweep" | "converge" | "budget" | "budget_line" | "evaluation"
+        | "unit" => reads_entry(rule, example),
         "argument" => matches!(argument(example), Argument::Range { .. }),
         "value" | "text" => matches!(argument(example), Argument::Positional(Expr { kind: ExprKind::Text(_), .. })),
         "list" => matches!(argument(example), Argument::Positional(Expr { kind: ExprKind::List(_), .. })),

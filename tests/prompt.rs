@@ -180,20 +180,20 @@ fn words_and_names_are_completed() {
     talk.types("defi");
     talk.types(TAB);
     talk.sees("define");
-    talk.types(" polarizability = 9/2\r");
+    talk.types(" susceptibility = 9/2\r");
     talk.sees("ket 2> ");
-    talk.types("2*polar");
+    talk.types("2*susce");
     talk.types(TAB);
-    talk.sees("2*polarizability");
+    talk.sees("2*susceptibility");
     talk.types(ENTER);
     talk.sees("  = 9\r\n");
     talk.sees("ket 3> ");
     // Inside a word the rest of the word is replaced, not doubled.
-    talk.types("polarxy + 1");
+    talk.types("suscexy + 1");
     talk.types(CTRL_A);
     talk.types(&RIGHT.repeat(5));
     talk.types(TAB);
-    talk.sees("polarizability + 1");
+    talk.sees("susceptibility + 1");
     talk.types(ENTER);
     talk.sees("  = 11/2\r\n");
     talk.sees("ket 4> ");
@@ -204,7 +204,7 @@ fn words_and_names_are_completed() {
     talk.abandons("ket 4> ");
     // The history brings the last entry back.
     talk.types(UP);
-    talk.sees("polarizability + 1");
+    talk.sees("susceptibility + 1");
     talk.types(ENTER);
     talk.sees("  = 11/2\r\n");
     talk.sees("ket 5> ");

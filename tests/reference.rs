@@ -15,7 +15,7 @@ const POLARIZABILITIES: &str = "\
 system h = hydrogenic(Z=1)
 state g = h[1s]
 state s = h[2s]
-state p = h[2p]
+state p = h[2p, m=0]
 state q = h[2p, m=1]
 resolvent R1(w) = 1/(E(g) + w - H)
 resolvent R2(w) = 1/(E(s) + w - H)
@@ -125,8 +125,8 @@ fn constants_and_units_as_in_the_tables() {
             }
             let (sign, number) = number.strip_prefix('-').map_or((1, number), |number| (-1, number));
             let got = parse_uncertain(number).expect(&told);
-            let apart: Rational = got.value * sign - &value;
-            let distance = apart.abs();
+            let distance: Rational = got.value * Rational::from(sign) - &value;
+            let distance = distance.abs();
             assert!(distance <= Rational::from(&sigma * &decimal("0.55")), "{told}");
             let spread = Rational::from(&got.uncertainty - &sigma).abs();
             assert!(spread <= sigma * decimal("0.11"), "{told}");

@@ -274,12 +274,21 @@ impl Declaration<'_> {
     }
 
     fn exact_value(&self, expr: &Expr, term: &ScalarTerm) -> Result<Surd, Wrong> {
-        if !crate::sums::measured_sources(term).is_empty() {
-            return self.refuse(
-                expr.span,
-                "a number with an uncertainty stands in the declaration of a system",
-                "declare the system with the value alone",
-            );
+        let sources = crate::sums::measured_sources(term);
+        if !sources.is_empty() {
+            let constants = sources.iter().all(|(source, _)| matches!(source, Source::Constant(_)));
+            let (message, help) = if constants {
+                (
+                    "a number that rests on constants with an uncertainty stands in the declaration of a system",
+                    "write it in atomic units",
+                )
+            } else {
+                (
+                    "a number with an uncertainty stands in the declaration of a system",
+                    "declare the system with the value alone",
+                )
+            };
+            return self.refuse(expr.span, message, help);
         }
         match self.scope.evaluator(self.effort).scalar(term, &Environment::default(), 128)? {
             crate::num::Scalar::Exact(value) => Ok(value),

@@ -2,21 +2,41 @@
 
 use super::evaluator::Evaluator;
 use crate::angular::verdict::{Verdict, Whole, analyse};
-use crate::theory::normal::Expander;
 use crate::theory::terms::ScalarTerm;
 
 /// Chains named in a reason.
 const MOST_NAMED: usize = 3;
+
+/// What makes a value zero.
+enum Proof {
+    /// Selection rules alone.
+    NoPath(String),
+    Cancels(String),
+}
 
 impl Evaluator<'_> {
     /// Why a value is exactly zero, if the angular factors of all of its chains say so; `None` where they do not.
     ///
     /// Levels that were moved apart are not taken to have one energy.
     pub(super) fn proved_zero(&mut self, term: &ScalarTerm) -> Option<String> {
+        match self.proof(term)? {
+            Proof::NoPath(reason) | Proof::Cancels(reason) => Some(reason),
+        }
+    }
+
+    /// Why the chains of an expression cancel, where that is what makes it zero.
+    pub(super) fn cancellation(&mut self, term: &ScalarTerm) -> Option<String> {
+        match self.proof(term)? {
+            Proof::Cancels(reason) => Some(reason),
+            Proof::NoPath(_) => None,
+        }
+    }
+
+    fn proof(&mut self, term: &ScalarTerm) -> Option<Proof> {
         let effort = self.effort.clone();
-        let normal = Expander::new(&effort).expand(term).ok()?;
+        let normal = self.expander(&effort).expand(term).ok()?;
         if normal.terms.is_empty() {
-            return Some("the terms of the expression cancel".into());
+            return Some(Proof::Cancels("the terms of the expression cancel".into()));
         }
         let angular = self.angular_sum(&normal, term.place).ok()?;
         let shifts = self.level_shifts(&normal, term.place).ok()?;
@@ -27,7 +47,7 @@ impl Evaluator<'_> {
         match analysis.whole() {
             Whole::NotZero | Whole::ZeroOnAverage => None,
             _ if analysis.chains.iter().any(split) => None,
-            Whole::NoPath => Some("no path leads through the intermediate blocks".into()),
+            Whole::NoPath => Some(Proof::NoPath("no path leads through the intermediate blocks".into())),
             Whole::Zero | Whole::ZeroForAskedM => {
                 let mut named: Vec<String> = analysis
                     .chains
@@ -39,7 +59,7 @@ impl Evaluator<'_> {
                     named.truncate(MOST_NAMED);
                     named.push("…".into());
                 }
-                Some(format!("the angular factors of {} sum to zero", named.join(" and of ")))
+                Some(Proof::Cancels(format!("the angular factors of {} sum to zero", named.join(" and of "))))
             }
         }
     }

@@ -71,6 +71,13 @@ impl Evaluator<'_> {
         let mut rules = self.take_rules();
         let mut couplings = self.take_couplings();
         let mut limit = self.limit.clone();
+        // rules that close some chains are no reason where others cancel
+        if !rules.is_empty()
+            && scalar.is_zero()
+            && let Some(reason) = self.cancellation(term)
+        {
+            rules = vec![reason];
+        }
         let mut sources = Vec::new();
         for (source, sigma) in uncertain {
             let gradient = self.gradient(term, &source, &sigma)?;

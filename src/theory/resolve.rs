@@ -287,6 +287,11 @@ impl<'a> Resolver<'a> {
                     },
                 );
             }
+            "codata" => {
+                let message = "`codata` is the set of constants, and one of them is wanted".into();
+                let help = "write for instance `codata.alpha`; `help codata` lists them".into();
+                return self.fault(span, Fault::Other { message, help });
+            }
             "pi" => return Ok(Meaning::Scalar(self.term(ScalarNode::Pi, span))),
             "i" => return Ok(Meaning::Scalar(self.term(ScalarNode::Exact(Surd::i()), span))),
             "H" => return Ok(Meaning::Operator(self.term(OperatorNode::Hamiltonian, span))),

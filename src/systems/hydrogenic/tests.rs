@@ -4,3 +4,4 @@ mod chain;
 mod exact_values;
 mod laws;
 mod numeric_values;
+mod spin;

@@ -6,6 +6,7 @@
 mod derive;
 mod expand;
 mod pieces;
+mod strings;
 mod symbols;
 mod written;
 

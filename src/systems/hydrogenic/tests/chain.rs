@@ -45,7 +45,7 @@ pub(super) fn operator(text: &str) -> Atom {
         Some((rest, power)) => (rest, power.parse().expect("a power")),
         None => (text, 1),
     };
-    let named = ["mass_velocity"].contains(&rest);
+    let named = ["mass_velocity", "spin_orbit"].contains(&rest);
     let (rest, component) = match rest.split_once('_').filter(|_| !named) {
         Some((rest, component)) => (rest, Some(component.to_string())),
         None => (rest, None),
