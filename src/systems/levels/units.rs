@@ -20,7 +20,7 @@ pub const DIPOLE_UNITS: [&str; 3] = ["e a0", "au", "debye"];
 pub fn energy_in_hartree(unit: &str, constants: ConstantSet) -> Option<Rational> {
     let [_, rydberg, _] = constants.behind_units();
     let per_metre = Rational::from(1) / (rydberg?.value * 2);
-    let hertz = || Rational::from(&per_metre / exact(SPEED_OF_LIGHT));
+    let hertz = || &per_metre / exact(SPEED_OF_LIGHT);
     let joule = || hertz() / exact(PLANCK);
     let electronvolt = || joule() * exact(ELEMENTARY_CHARGE);
     Some(match unit {
