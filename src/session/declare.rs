@@ -321,7 +321,7 @@ impl Declaration<'_> {
                 "write `levels(\"file.csv\")`; `help level-table` says what stands in the file",
             );
         };
-        let faults = match LevelSystem::read(&self.data_file(value, file)?) {
+        let faults = match LevelSystem::read(&self.data_file(value, file)?, self.scope.names.constants) {
             Ok(system) => return Ok(system),
             Err(faults) => faults,
         };

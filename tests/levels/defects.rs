@@ -1,6 +1,7 @@
 //! Every defect of a level table as a person is told it. `KETWORK_REFRESH=1` writes the file of cases anew, to be read before it is committed.
 
 use super::session_of;
+use ketwork::num::units::ConstantSet;
 use ketwork::session::Outcome;
 use ketwork::systems::levels::{LevelSystem, TableFault};
 use std::collections::HashSet;
@@ -79,7 +80,7 @@ fn large() -> Vec<String> {
 fn every_kind_of_defect_has_a_case() {
     let mut seen = HashSet::new();
     let mut look = |text: &str| {
-        if let Err(faults) = LevelSystem::read(text) {
+        if let Err(faults) = LevelSystem::read(text, ConstantSet::default()) {
             seen.extend(faults.iter().map(|TableFault { defect, .. }| std::mem::discriminant(defect)));
         }
     };

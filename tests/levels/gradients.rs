@@ -2,6 +2,7 @@
 
 use super::value_of;
 use ketwork::num::Scalar;
+use ketwork::num::units::ConstantSet;
 use ketwork::sums::Value;
 use ketwork::systems::levels::LevelSystem;
 use ketwork::theory::terms::Source;
@@ -80,7 +81,7 @@ fn alpha(w: &str) -> String {
 #[test]
 fn of_a_polarizability() {
     for (text, w) in [("0", 0.0), ("1/4", 0.25), ("0.55", 0.55)] {
-        let system = LevelSystem::read(TABLE).expect("a good table");
+        let system = LevelSystem::read(TABLE, ConstantSet::default()).expect("a good table");
         let value = value_of(system, &alpha(text));
         let (by_data, _) = derivatives(w);
         check(&value, |at| by_data[at]);
@@ -89,7 +90,7 @@ fn of_a_polarizability() {
 
 #[test]
 fn of_the_frequency_of_a_zero() {
-    let system = LevelSystem::read(TABLE).expect("a good table");
+    let system = LevelSystem::read(TABLE, ConstantSet::default()).expect("a good table");
     let value = value_of(system, &format!("zero(w in 0.505 .. 0.62, {ALPHA})"));
     let Scalar::Approx(root) = &value.scalar else { panic!("an exact zero") };
     let w = root.midpoint(64).real().to_f64();
@@ -101,7 +102,7 @@ fn of_the_frequency_of_a_zero() {
 /// A number that comes in twice counts once: the same table, subtracted from itself.
 #[test]
 fn one_source_counts_once() {
-    let system = LevelSystem::read(TABLE).expect("a good table");
+    let system = LevelSystem::read(TABLE, ConstantSet::default()).expect("a good table");
     let value = value_of(system, &format!("{0} - {0}", alpha("1/4")));
     assert!(value.sources.is_empty());
 }

@@ -1,6 +1,7 @@
 //! Files that nobody would write: read in time, without a panic.
 
 use super::random::{Random, cases};
+use ketwork::num::units::ConstantSet;
 use ketwork::systems::levels::LevelSystem;
 
 const GOOD: &str = include_str!("../../grammar/level-table.csv");
@@ -26,7 +27,7 @@ fn mutated_tables_are_read_or_refused() {
             }
         }
         let text: String = text.into_iter().collect();
-        if let Err(faults) = LevelSystem::read(&text) {
+        if let Err(faults) = LevelSystem::read(&text, ConstantSet::default()) {
             assert!((1..=20).contains(&faults.len()), "seed {seed}");
             for fault in faults {
                 assert!(!fault.to_text().is_empty() && !fault.defect.help().is_empty(), "seed {seed}");
@@ -47,9 +48,9 @@ fn bottomless_files_are_left_in_time() {
         format!("row{}\n", ",name".repeat(300_000)),
         "\u{0}".repeat(1000),
     ] {
-        let faults = LevelSystem::read(&text).err().expect("no table");
+        let faults = LevelSystem::read(&text, ConstantSet::default()).err().expect("no table");
         assert!(faults.len() <= 20);
     }
     let long = format!("{header}level,a,{},cm^-1,0,even\n", "9".repeat(999));
-    assert!(LevelSystem::read(&long).is_ok());
+    assert!(LevelSystem::read(&long, ConstantSet::default()).is_ok());
 }

@@ -8,6 +8,7 @@ use ketwork::angular::paths::{Orientation, Setting, blocked, decompose};
 use ketwork::angular::selection::SelectionRule;
 use ketwork::angular::term::Level;
 use ketwork::angular::{HalfInteger, threej};
+use ketwork::num::units::ConstantSet;
 use ketwork::num::{Effort, Scalar, Surd};
 use ketwork::systems::levels::LevelSystem;
 use ketwork::systems::{Atom, StateLabel, Symmetry, System};
@@ -106,7 +107,8 @@ fn paths_times_elements_are_the_sum_over_states() {
     for seed in 0..cases(400) {
         let mut random = Random::new(u64::from(seed));
         let table = known(&mut random);
-        let system = LevelSystem::read(&table.text).unwrap_or_else(|faults| panic!("{}", faults[0].to_text()));
+        let system = LevelSystem::read(&table.text, ConstantSet::default())
+            .unwrap_or_else(|faults| panic!("{}", faults[0].to_text()));
         let length = 1 + random.below(4);
         let Some((bra, chain, ket)) = chain(&mut random, &table, length) else { continue };
         let state = |(level, twice_m): (usize, i32)| format!("k[w{level}, M={}]", HalfInteger::from_twice(twice_m));
@@ -178,7 +180,7 @@ fn one_element_has_the_factor_of_wigner_and_eckart() {
             if twice_other.abs() > 3 {
                 continue;
             }
-            let system = LevelSystem::read(text).expect("a good table");
+            let system = LevelSystem::read(text, ConstantSet::default()).expect("a good table");
             let component =
                 written(&Atom { name: "T".into(), component: Some(q.to_string()), arguments: vec![], power: 1 });
             let expression = format!("<k[a, M={}]| {component} |k[b, M={}]>", half(twice_m), half(twice_other));
@@ -198,7 +200,7 @@ fn one_element_has_the_factor_of_wigner_and_eckart() {
 fn a_closed_way_is_told_in_terms_of_the_total_momentum() {
     let text = "row,name,energy,unit,J,parity\nlevel,a,0,hartree,1/2,even\nlevel,b,1,hartree,5/2,even\nlevel,c,2,hartree,3/2,odd\n\
                 row,from,to,operator,rank,value\nelement,a,c,D,1,1\n";
-    let system = LevelSystem::read(text).expect("a good table");
+    let system = LevelSystem::read(text, ConstantSet::default()).expect("a good table");
     let end = |name: &str| {
         let label = StateLabel { text: name.into(), options: vec![] };
         system.end(&system.state(&label, &Effort::new()).expect("a state")).expect("an end")

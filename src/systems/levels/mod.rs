@@ -20,6 +20,7 @@ use super::symmetry::Symmetry;
 use super::{
     Atom, Backend, Coupling, Level, Manifold, Number, Obstacle, Sector, State, StateLabel, System, SystemError,
 };
+use crate::num::units::ConstantSet;
 use crate::num::{Effort, Surd};
 use backend::LevelBackend;
 use rug::Rational;
@@ -43,10 +44,10 @@ pub struct LevelSystem {
 impl LevelSystem {
     /// The system of a file's text.
     ///
-    /// Units: as the file says; atomic units inside.
+    /// Units: as the file says; atomic units inside, by the Rydberg constant of the set.
     /// Errors: every defect of the text, by line and column, up to [`MOST_FAULTS`].
-    pub fn read(text: &str) -> Result<Self, Vec<TableFault>> {
-        rows::table(text).map(|table| LevelSystem { table: Arc::new(table), couplings: Arc::default() })
+    pub fn read(text: &str, constants: ConstantSet) -> Result<Self, Vec<TableFault>> {
+        rows::table(text, constants).map(|table| LevelSystem { table: Arc::new(table), couplings: Arc::default() })
     }
 
     /// The names of the operators: those of the file in its order, and the total J.

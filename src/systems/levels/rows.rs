@@ -9,6 +9,7 @@ use super::units::{ENERGY_UNITS, dipole_in_atomic, dipole_strength_in_atomic, en
 use crate::angular::{HalfInteger, Label, Parity};
 use crate::lang::diagnostic::did_you_mean;
 use crate::lang::vocabulary::is_reserved;
+use crate::num::units::ConstantSet;
 use crate::systems::Block;
 use rug::Rational;
 use std::collections::BTreeMap;
@@ -18,12 +19,12 @@ type Checked<T> = Result<T, TableFault>;
 /// The dipole operator, whose rank, parity and units are known.
 const DIPOLE: &str = "D";
 
-/// The table of a text.
+/// The table of a text, its units by a set of constants.
 ///
 /// Errors: its defects by line, at most [`MOST_FAULTS`].
-pub fn table(text: &str) -> Result<Table, Vec<TableFault>> {
+pub fn table(text: &str, constants: ConstantSet) -> Result<Table, Vec<TableFault>> {
     let Rows { rows, mut faults, levels_left_out } = rows(text);
-    let mut work = Work { levels_left_out, ..Work::default() };
+    let mut work = Work { levels_left_out, constants, ..Work::default() };
     for kind in [RowKind::Level, RowKind::Element] {
         for row in rows.iter().filter(|row| row.kind == kind) {
             if faults.len() >= MOST_FAULTS {
@@ -60,6 +61,7 @@ struct Work {
     /// By operator, lower and higher level: line and the element with its value.
     pairs: BTreeMap<(usize, usize, usize), (usize, usize)>,
     levels_left_out: bool,
+    constants: ConstantSet,
 }
 
 impl Work {
@@ -87,7 +89,7 @@ impl Work {
         let energy = row.needed(Column::Energy)?;
         let energy = numbers::datum(energy).map_err(|defect| row.fault(Column::Energy, defect))?;
         let unit = row.needed(Column::Unit)?;
-        let Some(unit) = energy_in_hartree(unit) else {
+        let Some(unit) = energy_in_hartree(unit, self.constants) else {
             let near = did_you_mean(unit, ENERGY_UNITS).and_then(|near| ENERGY_UNITS.into_iter().find(|u| *u == near));
             return Err(row.fault(Column::Unit, Defect::EnergyUnit { unit: shown(unit), near }));
         };
