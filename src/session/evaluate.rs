@@ -150,12 +150,12 @@ impl Evaluation<'_> {
             return Ok(Done::Answered(super::paths::nothing_left()));
         };
         let mut analysis = super::paths::analysis(&angular, &shifts, place, self.effort)?;
-        if let Some(beside) = beside {
-            if let Some((other, _)) = self.angular_sum(beside)? {
-                let other = super::paths::analysis(&other, &shifts, place, self.effort)?;
-                let name = self.source.get(beside.span.start..beside.span.end).unwrap_or("the other sum");
-                analysis = analysis.compared_with(name, &other);
-            }
+        if let Some(beside) = beside
+            && let Some((other, _)) = self.angular_sum(beside)?
+        {
+            let other = super::paths::analysis(&other, &shifts, place, self.effort)?;
+            let name = self.source.get(beside.span.start..beside.span.end).unwrap_or("the other sum");
+            analysis = analysis.compared_with(name, &other);
         }
         Ok(Done::Answered(super::paths::answer(&angular, &shifts, &analysis)))
     }

@@ -286,8 +286,29 @@ impl Resolver<'_> {
     }
 
     /// Constants of another set than the usual one are part of the meaning of a text.
-    pub(super) fn constants_text(&self) -> &'static str {
+    pub(super) fn constants_text(&self) -> String {
         let set = self.names.constants;
-        if set == ConstantSet::default() { "" } else { set.name() }
+        if set == ConstantSet::default() { String::new() } else { format!("{CONSTANTS_MARK}{}", set.name()) }
     }
+}
+
+/// Stands in the text of a term before the name of the constants that are part of its meaning.
+const CONSTANTS_MARK: char = '\u{1}';
+
+/// The text of a term as it was written, without the constants that are part of its meaning.
+pub(super) fn as_written(text: &str) -> &str {
+    text.split(CONSTANTS_MARK).next().unwrap_or(text)
+}
+
+/// The text of a term without the constants that are part of the meaning of any of its parts.
+pub(super) fn without_constants(text: &str) -> String {
+    let mut pieces = text.split(CONSTANTS_MARK);
+    let first = pieces.next().unwrap_or_default().to_string();
+    let is_name = |c: char| c.is_ascii_alphanumeric() || c == '-';
+    pieces.fold(first, |shown, piece| shown + piece.trim_start_matches(is_name))
+}
+
+/// The text of a term with the constants that are part of its meaning told.
+pub(super) fn with_constants(text: &str) -> String {
+    text.replace(CONSTANTS_MARK, " with ")
 }

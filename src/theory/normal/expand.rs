@@ -6,6 +6,7 @@ use super::{NormalSum, NormalTerm, SymbolMeaning};
 use crate::angular::HalfInteger;
 use crate::lang::tree::DefinitionKind;
 use crate::num::{Effort, Scalar, Surd};
+use crate::theory::dimensions::{as_written, with_constants, without_constants};
 use crate::theory::names::{Binding, Names};
 use crate::theory::problem::{Fault, Problem};
 use crate::theory::quantities::is_fixed;
@@ -200,7 +201,7 @@ impl<'e> Expander<'e> {
             }
             ScalarNode::Energy(state) => {
                 let mut named = self.state(state, arguments)?;
-                if let Some(shown) = term.text.strip_prefix("E(").and_then(|rest| rest.strip_suffix(')'))
+                if let Some(shown) = as_written(&term.text).strip_prefix("E(").and_then(|rest| rest.strip_suffix(')'))
                     && !shown.contains('{')
                 {
                     named.shown = self.states.entry(named.name.clone()).or_insert(shown.to_string()).clone();
@@ -246,7 +247,13 @@ impl<'e> Expander<'e> {
 
     /// A number that stays as it is written, with the arguments of the definition it stands in.
     fn given(&mut self, term: &ScalarTerm, arguments: &Arguments) -> NormalSum {
-        let mut symbol = term.text.to_string();
+        let mut symbol = without_constants(&term.text);
+        // the same unit by two sets of constants is two numbers
+        if let Some(SymbolMeaning::Given(known, _)) = self.meaning(&symbol)
+            && known.text != term.text
+        {
+            symbol = with_constants(&term.text);
+        }
         let mut used = Vec::new();
         if matches!(&*term.node, ScalarNode::Root { .. }) {
             for (name, value) in arguments {

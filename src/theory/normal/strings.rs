@@ -7,6 +7,7 @@ use super::pieces::{
 use super::{NormalSum, NormalTerm};
 use crate::angular::tensor::Sign;
 use crate::num::Surd;
+use crate::theory::dimensions::as_written;
 use crate::theory::resolve::has_function_of_h;
 use crate::theory::terms::*;
 use rug::Rational;
@@ -99,8 +100,9 @@ impl Expander<'_> {
             KetNode::State(state) => {
                 let mut named = self.state(state, arguments)?;
                 // what is computed in a label is shown computed
-                if !term.text.contains('{') {
-                    named.shown = self.states.entry(named.name.clone()).or_insert(term.text.to_string()).clone();
+                let written = as_written(&term.text);
+                if !written.contains('{') {
+                    named.shown = self.states.entry(named.name.clone()).or_insert(written.to_string()).clone();
                 }
                 Ok(vec![(NormalTerm::number(Surd::one()), vec![Piece::Ket(named)])])
             }
@@ -182,7 +184,7 @@ impl Expander<'_> {
         let mut strings = self.inside(call, arguments, place, |this, inner| this.operator(body, inner))?;
         if self.keep_names && !has_function_of_h(body) && is_self_adjoint(&strings) {
             let shown: Expanded<Vec<String>> =
-                call.arguments.iter().map(|a| Ok(self.scalar(a, arguments)?.to_string())).collect();
+                call.arguments.iter().map(|a| Ok(bare(self.scalar(a, arguments)?.to_string()))).collect();
             let shown = shown?.join(", ");
             let text = if shown.is_empty() {
                 call.definition.name.clone()
@@ -205,7 +207,7 @@ impl Expander<'_> {
             let mut label = call.definition.name.clone();
             if !call.arguments.is_empty() {
                 let shown: Expanded<Vec<String>> =
-                    call.arguments.iter().map(|a| Ok(self.scalar(a, arguments)?.to_string())).collect();
+                    call.arguments.iter().map(|a| Ok(bare(self.scalar(a, arguments)?.to_string()))).collect();
                 label += &format!("({})", shown?.join(", "));
             }
             let plain = FunctionPiece::written(
@@ -282,6 +284,14 @@ impl Expander<'_> {
         let piece = FunctionPiece::written(function, constant.scaled(&scale), sign, omitted);
         let piece = self.named_function(piece);
         Ok(vec![(NormalTerm::number(scale), vec![Piece::Function(piece)])])
+    }
+}
+
+/// A text without a pair of parentheses around all of it.
+fn bare(text: String) -> String {
+    match text.strip_prefix('(').and_then(|rest| rest.strip_suffix(')')) {
+        Some(inner) if !inner.contains(['(', ')']) => inner.to_string(),
+        _ => text,
     }
 }
 
