@@ -5,7 +5,7 @@ use super::evaluator::{Evaluated, Evaluator, Systems};
 use super::problem::{Failure, Trouble};
 use crate::num::{Effort, Scalar};
 use crate::systems::{State, StateLabel};
-use crate::theory::normal::{Degeneracy, Expanded, Expander, NamedState};
+use crate::theory::normal::{Coupled, Degeneracy, Expanded, Expander, NamedState};
 use crate::theory::terms::*;
 use crate::theory::{Fault, Problem};
 use rug::Rational;
@@ -97,17 +97,54 @@ impl<'s> Evaluator<'s> {
         let derived = match self.derived.get(&*term.text) {
             Some(known) => known.clone(),
             None => {
+                let at = |problem: Problem| Failure::new(problem.place, Trouble::from(Box::new(problem.fault)));
                 let effort = self.effort.clone();
                 let mut expander = self.expander(&effort).keeping_names();
-                let sum = expander
-                    .expand(term)
-                    .map_err(|problem| Failure::new(problem.place, Trouble::from(Box::new(problem.fault))))?;
+                let body = expander.expand(&variation.body).map_err(at)?;
+                let couplings = expander.couplings(&body, &variation.perturbation, variation.order > 1).map_err(at)?;
+                let couplings: Vec<(Coupled, ScalarTerm)> = couplings
+                    .into_iter()
+                    .map(|coupled| {
+                        let element = expander.term(&coupled.element, term.place);
+                        (coupled, element)
+                    })
+                    .collect();
+                let sum = expander.expand(term).map_err(at)?;
                 let derived = expander.term(&sum, term.place);
+                for (coupled, element) in couplings {
+                    self.refuse_coupling(&coupled, &element, variation, environment, bits)?;
+                }
                 self.derived.insert(term.text.to_string(), derived.clone());
                 derived
             }
         };
-        let _ = variation;
         self.scalar(&derived, environment, bits)
+    }
+
+    /// Refuses a perturbation that couples two states of one level: which states the level splits into is then for it to decide.
+    fn refuse_coupling(
+        &mut self,
+        coupled: &Coupled,
+        element: &ScalarTerm,
+        variation: &Variation,
+        environment: &Environment,
+        bits: u32,
+    ) -> Evaluated<()> {
+        let value = match self.scalar(element, environment, bits) {
+            Ok(value) => value,
+            // what has no value for a variable of the session has none here either, and says so itself
+            Err(failure) if failure.is_interrupted() => return Err(failure),
+            Err(_) => return Ok(()),
+        };
+        if value.may_be_zero() {
+            return Ok(());
+        }
+        let how = if coupled.order == 1 { "" } else { " in second order" };
+        let message = format!(
+            "the perturbation `{}` couples {} with {}{how}, which have one energy",
+            variation.perturbation.text, coupled.right.shown, coupled.left.shown
+        );
+        let help = "take states of the level that diagonalise the perturbation, such as the combinations that a field along z leaves apart";
+        Err(Failure::new(variation.perturbation.place, Trouble::Refused { message, help: help.into() }))
     }
 }

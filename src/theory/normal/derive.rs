@@ -268,3 +268,72 @@ impl<'d, 'e> Derivation<'d, 'e> {
         Ok(states)
     }
 }
+
+/// Two states of one level and what couples them.
+pub struct Coupled {
+    pub left: NamedState,
+    pub right: NamedState,
+    /// Of first order in the perturbation, or of second by way of other levels.
+    pub order: u32,
+    pub element: NormalSum,
+}
+
+impl Expander<'_> {
+    /// The elements of a perturbation inside the levels that an expression rests on, up to second order where `twice` says so.
+    ///
+    /// All of them have to vanish for the rules of [`Derivation`] to hold state by state.
+    pub fn couplings(&mut self, sum: &NormalSum, perturbation: &OperatorTerm, twice: bool) -> Expanded<Vec<Coupled>> {
+        let strings = self.operator(perturbation, &Arguments::new())?;
+        let mut states: Vec<NamedState> = Vec::new();
+        let add = |states: &mut Vec<NamedState>, state: &NamedState| {
+            if !states.contains(state) {
+                states.push(state.clone());
+            }
+        };
+        for term in &sum.terms {
+            for (symbol, _) in term.symbols.factors() {
+                if let Some(SymbolMeaning::Energy(state)) = self.meaning(symbol) {
+                    let state = state.clone();
+                    add(&mut states, &state);
+                }
+            }
+            for bracket in &term.brackets {
+                add(&mut states, &bracket.bra);
+                add(&mut states, &bracket.ket);
+            }
+        }
+        let mut found = Vec::new();
+        for state in states {
+            let level = self.degeneracy.level_of(&state)?;
+            for other in level.into_iter().filter(|other| *other != state) {
+                self.check(0, perturbation.place)?;
+                let (bra, ket) = (Piece::Bra(other.clone()), Piece::Ket(state.clone()));
+                let mut chains = vec![(1, Vec::new())];
+                if twice {
+                    let energy = self.energy(&state);
+                    let omitted = vec![OmittedTerm::LevelOf(state.term.clone())];
+                    let reduced = FunctionPiece::written(None, energy, Sign::Minus, omitted);
+                    chains.push((2, vec![Piece::Function(self.named_function(reduced))]));
+                }
+                for (order, between) in chains {
+                    let mut element = NormalSum::default();
+                    for (number, pieces) in &strings {
+                        let rights: &Strings =
+                            if order == 1 { &vec![(NormalTerm::number(Surd::one()), Vec::new())] } else { &strings };
+                        for (second, after) in rights {
+                            let all = std::iter::once(&bra).chain(pieces).chain(&between).chain(after).chain([&ket]);
+                            let closed = self.closed(all.cloned().collect(), perturbation.place)?;
+                            let factor = NormalSum { terms: vec![number.times(second)] };
+                            element.terms.extend(self.product(&factor, &closed, perturbation.place)?.terms);
+                        }
+                    }
+                    let element = element.joined();
+                    if !element.terms.is_empty() {
+                        found.push(Coupled { left: other.clone(), right: state.clone(), order, element });
+                    }
+                }
+            }
+        }
+        Ok(found)
+    }
+}

@@ -10,7 +10,7 @@ mod strings;
 mod symbols;
 mod written;
 
-pub use derive::Degeneracy;
+pub use derive::{Coupled, Degeneracy};
 pub use expand::{Expanded, Expander};
 pub use pieces::{FunctionPiece, NamedOperator, NamedState, NormalAtom, NormalBracket, NormalTensor, Piece};
 pub use symbols::Symbols;
