@@ -10,3 +10,4 @@ mod honesty;
 mod matrices;
 mod notebook;
 mod random;
+mod vary;

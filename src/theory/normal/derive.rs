@@ -281,7 +281,7 @@ pub struct Coupled {
 impl Expander<'_> {
     /// The elements of a perturbation inside the levels that an expression rests on, up to second order where `twice` says so.
     ///
-    /// All of them have to vanish for the rules of [`Derivation`] to hold state by state.
+    /// All of them have to vanish for the rules of variation to hold state by state.
     pub fn couplings(&mut self, sum: &NormalSum, perturbation: &OperatorTerm, twice: bool) -> Expanded<Vec<Coupled>> {
         let strings = self.operator(perturbation, &Arguments::new())?;
         let mut states: Vec<NamedState> = Vec::new();
