@@ -48,7 +48,10 @@ fn moved(h: &Rows, v: &Rows, steps: i64) -> Rows {
 /// Central differences of seven points.
 fn differences(f: &[Rational; 7], order: u32) -> Rational {
     let step = Rational::from(STEP);
-    let pair = |k: usize, sign: i32| Rational::from(&f[3 + k] + Rational::from(&f[3 - k] * sign));
+    let pair = |k: usize, sign: i32| -> Rational {
+        let other = Rational::from(&f[3 - k] * sign);
+        other + &f[3 + k]
+    };
     if order == 1 {
         (pair(1, -1) * 45 - pair(2, -1) * 9 + pair(3, -1)) / (step * 60)
     } else {
