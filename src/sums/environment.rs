@@ -82,6 +82,11 @@ impl Environment {
         self.inner.projection
     }
 
+    /// The variables with a value, with theirs.
+    pub fn variables(&self) -> &[(String, Scalar)] {
+        &self.inner.variables
+    }
+
     pub fn variable(&self, name: &str) -> Option<&Scalar> {
         self.inner.variables.iter().find(|(n, _)| n == name).map(|(_, value)| value)
     }

@@ -8,6 +8,7 @@ use crate::angular::HalfInteger;
 use crate::angular::chain::AngularVector;
 use crate::num::{Ball, ComplexBall, Effort, NumberError, Scalar, Surd};
 use crate::systems::{Level, Manifold, State, StateLabel, System};
+use crate::theory::normal::Conjugated;
 use crate::theory::terms::*;
 use rug::{Complex, Float, Integer, Rational};
 use std::collections::{BTreeMap, BTreeSet, HashMap};
@@ -52,7 +53,7 @@ pub struct Evaluator<'s> {
     /// Values of brackets at a precision.
     pub(super) known: HashMap<(String, u32), Scalar>,
     /// What variations have been derived to, by their text.
-    pub(super) derived: HashMap<String, ScalarTerm>,
+    pub(super) derived: HashMap<String, (ScalarTerm, Conjugated)>,
     /// Costly values that hold whatever source is moved.
     pub(super) settled: Settled,
     depth: usize,

@@ -94,7 +94,10 @@ impl<'s> Evaluator<'s> {
         environment: &Environment,
         bits: u32,
     ) -> Evaluated<Scalar> {
-        let derived = match self.derived.get(&*term.text) {
+        // a name may be a definition in one place and a parameter in another
+        let names: Vec<&str> = environment.variables().iter().map(|(name, _)| name.as_str()).collect();
+        let key = format!("{}{{{}}}", term.text, names.join(","));
+        let (derived, conjugated) = match self.derived.get(&key) {
             Some(known) => known.clone(),
             None => {
                 let at = |problem: Problem| Failure::new(problem.place, Trouble::from(Box::new(problem.fault)));
@@ -114,10 +117,22 @@ impl<'s> Evaluator<'s> {
                 for (coupled, element) in couplings {
                     self.refuse_coupling(&coupled, &element, variation, environment, bits)?;
                 }
-                self.derived.insert(term.text.to_string(), derived.clone());
+                let derived = (derived, expander.conjugated());
+                self.derived.insert(key, derived.clone());
                 derived
             }
         };
+        let complex = environment.variables().iter().any(|(_, value)| !value.is_real());
+        if conjugated.functions || conjugated.variables && complex {
+            return Err(Failure::new(
+                term.place,
+                Trouble::Refused {
+                    message: "a bra holds a number that need not be real, and its conjugate has no rule in a variation"
+                        .into(),
+                    help: "write the bracket with the conjugated number in front, without a bra of a ket".into(),
+                },
+            ));
+        }
         self.scalar(&derived, environment, bits)
     }
 

@@ -55,8 +55,11 @@ impl<'d, 'e> Derivation<'d, 'e> {
         perturbation: &OperatorTerm,
         arguments: &Arguments,
     ) -> Expanded<Self> {
-        let strings = expander.operator(perturbation, arguments)?;
-        Ok(Derivation { expander, perturbation: strings, place: perturbation.place })
+        let mut held = Strings::new();
+        for (term, pieces) in expander.operator(perturbation, arguments)? {
+            held.push((expander.held(term), pieces));
+        }
+        Ok(Derivation { expander, perturbation: held, place: perturbation.place })
     }
 
     /// The change of a sum, to first order.
@@ -114,6 +117,7 @@ impl<'d, 'e> Derivation<'d, 'e> {
                 let (bra, ket) = (Piece::Bra(state.clone()), Piece::Ket(state));
                 Ok(NormalSum { terms: self.with_perturbation(&[bra], &[ket], &Surd::one())? }.joined())
             }
+            SymbolMeaning::Held(_) => Ok(NormalSum::default()),
             SymbolMeaning::Sum(inner) => self.change(&inner),
             SymbolMeaning::Function(function, inner) => self.change_of_function(function, &inner),
             SymbolMeaning::Power(base, exponent) => {
@@ -278,7 +282,27 @@ pub struct Coupled {
     pub element: NormalSum,
 }
 
+/// Whether a perturbation holds parts that change with H themselves: H, functions of H, projectors on eigenstates.
+pub(super) fn moves_with_h(strings: &Strings) -> bool {
+    let moves =
+        |piece: &Piece| matches!(piece, Piece::Hamiltonian | Piece::Function(_) | Piece::Bra(_) | Piece::Ket(_));
+    strings.iter().flat_map(|(_, pieces)| pieces).any(moves)
+}
+
 impl Expander<'_> {
+    /// A product in front of a perturbation, with all that changes with H held as it is: H + lambda (V - <g|V|g>) shifts by one number.
+    fn held(&mut self, term: NormalTerm) -> NormalTerm {
+        let letters =
+            term.symbols.factors().all(|(symbol, _)| matches!(self.meaning(symbol), Some(SymbolMeaning::Given(..))));
+        if term.brackets.is_empty() && letters {
+            return term;
+        }
+        let number = NormalSum { terms: vec![NormalTerm { coefficient: Surd::one(), ..term.clone() }] };
+        let symbol = self.symbol(format!("({number})"), SymbolMeaning::Held(number));
+        let symbols = symbol.terms.into_iter().next().map_or_else(Symbols::one, |term| term.symbols);
+        NormalTerm { coefficient: term.coefficient, symbols, brackets: Vec::new() }
+    }
+
     /// The elements of a perturbation inside the levels that an expression rests on, up to second order where `twice` says so.
     ///
     /// All of them have to vanish for the rules of variation to hold state by state.

@@ -1,6 +1,6 @@
 //! Multiplies expressions out.
 
-use super::derive::{Degeneracy, Derivation, Unknown};
+use super::derive::{Degeneracy, Derivation, Unknown, moves_with_h};
 use super::pieces::{FunctionPiece, NamedState, Piece, function_name};
 use super::{NormalSum, NormalTerm, SymbolMeaning};
 use crate::angular::HalfInteger;
@@ -47,6 +47,17 @@ pub struct Expander<'e> {
     pub(super) degeneracy: Box<dyn Degeneracy + 'e>,
     /// Whether named operators that are their own adjoints stand for themselves.
     pub(super) keep_names: bool,
+    /// A variation under a perturbation that changes with H itself has been met.
+    moving: bool,
+    /// Symbols that need not be real were conjugated: variables, and functions.
+    pub(super) conjugated: Conjugated,
+}
+
+/// What was taken for real when an adjoint was taken.
+#[derive(Clone, Copy, PartialEq, Eq, Debug, Default)]
+pub struct Conjugated {
+    pub variables: bool,
+    pub functions: bool,
 }
 
 impl<'e> Expander<'e> {
@@ -66,6 +77,8 @@ impl<'e> Expander<'e> {
             meanings: HashMap::new(),
             degeneracy: Box::new(degeneracy),
             keep_names: false,
+            moving: false,
+            conjugated: Conjugated::default(),
         }
     }
 
@@ -115,6 +128,25 @@ impl<'e> Expander<'e> {
     /// A state whose label holds no variables.
     pub(super) fn named_state(&mut self, state: &StateTerm) -> Expanded<NamedState> {
         self.state(state, &Arguments::new())
+    }
+
+    /// What was taken for real when adjoints were taken.
+    pub fn conjugated(&self) -> Conjugated {
+        self.conjugated
+    }
+
+    /// Notes the symbols of a sum that is about to be conjugated and need not be real.
+    pub(super) fn note_conjugate(&mut self, sum: &NormalSum) {
+        for (symbol, _) in sum.terms.iter().flat_map(|term| term.symbols.factors()) {
+            match self.meanings.get(symbol).cloned() {
+                Some(SymbolMeaning::Given(term, _)) => {
+                    self.conjugated.variables |= matches!(&*term.node, ScalarNode::Variable(_));
+                }
+                Some(SymbolMeaning::Energy(_)) => {}
+                Some(SymbolMeaning::Sum(inner) | SymbolMeaning::Held(inner)) => self.note_conjugate(&inner),
+                Some(SymbolMeaning::Function(..) | SymbolMeaning::Power(..)) | None => self.conjugated.functions = true,
+            }
+        }
     }
 
     /// The symbol for the energy of a state.
@@ -228,7 +260,17 @@ impl<'e> Expander<'e> {
                 sum
             }
             ScalarNode::Vary(variation) => {
+                let outside = std::mem::take(&mut self.moving);
                 let mut sum = self.scalar(&variation.body, arguments)?;
+                let moving = moves_with_h(&self.operator(&variation.perturbation, arguments)?);
+                if self.moving || moving && variation.order > 1 {
+                    return self.refuse(
+                        place,
+                        "a perturbation that holds H, a function of H or a projector is varied again here".into(),
+                        "such a perturbation has a first-order change only; others may be nested and of any order",
+                    );
+                }
+                self.moving = outside || moving;
                 let mut factorial = Rational::from(1);
                 let mut derivation = Derivation::new(self, &variation.perturbation, arguments)?;
                 for order in 1..=variation.order {
@@ -301,6 +343,7 @@ impl<'e> Expander<'e> {
 
     pub(super) fn function(&mut self, function: ScalarFunction, inner: &NormalSum) -> NormalSum {
         if function == ScalarFunction::Conj {
+            self.note_conjugate(inner);
             return inner.conj();
         }
         match inner.as_number().map(|value| Scalar::Exact(value).apply(function, TRIED_BITS)) {

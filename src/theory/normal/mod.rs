@@ -11,7 +11,7 @@ mod symbols;
 mod written;
 
 pub use derive::{Coupled, Degeneracy};
-pub use expand::{Expanded, Expander};
+pub use expand::{Conjugated, Expanded, Expander};
 pub use pieces::{FunctionPiece, NamedOperator, NamedState, NormalAtom, NormalBracket, NormalTensor, Piece};
 pub use symbols::Symbols;
 
@@ -36,6 +36,8 @@ pub enum SymbolMeaning {
     /// A number as it is written, with the values of the variables around it.
     Given(ScalarTerm, Vec<(String, NormalSum)>),
     Energy(NamedState),
+    /// A number inside a perturbation, which stays what it is when H changes.
+    Held(NormalSum),
     /// A sum that stands in a denominator.
     Sum(NormalSum),
     Function(ScalarFunction, NormalSum),

@@ -22,7 +22,10 @@ impl Expander<'_> {
                 self.joined(operators, kets, place)?
             }
         };
-        let bras = adjoints(self.ket(&bracket.bra, arguments)?);
+        let bras = {
+            let kets = self.ket(&bracket.bra, arguments)?;
+            self.adjoints(kets)
+        };
         strings = self.joined(bras, strings, place)?;
         let mut sum = NormalSum::default();
         for (term, pieces) in strings {
@@ -91,6 +94,19 @@ impl Expander<'_> {
         Ok(out)
     }
 
+    /// The adjoint of every string, with a note of what is taken for real.
+    fn adjoints(&mut self, strings: Strings) -> Strings {
+        for (term, pieces) in &strings {
+            self.note_conjugate(&NormalSum { terms: vec![term.clone()] });
+            for piece in pieces {
+                if let Piece::Function(function) = piece {
+                    self.note_conjugate(&function.constant);
+                }
+            }
+        }
+        adjoints(strings)
+    }
+
     fn numbers(&mut self, scalar: &ScalarTerm, arguments: &Arguments) -> Expanded<Strings> {
         Ok(self.scalar(scalar, arguments)?.terms.into_iter().map(|term| (term, Vec::new())).collect())
     }
@@ -140,7 +156,10 @@ impl Expander<'_> {
             OperatorNode::Atom(atom) => alone(Piece::Atom(self.atom(atom, arguments)?)),
             OperatorNode::Tensor(tensor) => alone(Piece::Tensor(NormalTensor { term: tensor.clone(), adjoint: false })),
             OperatorNode::Hamiltonian => alone(Piece::Hamiltonian),
-            OperatorNode::Adjoint(inner) => Ok(adjoints(self.operator(inner, arguments)?)),
+            OperatorNode::Adjoint(inner) => {
+                let strings = self.operator(inner, arguments)?;
+                Ok(self.adjoints(strings))
+            }
             OperatorNode::Sum(terms) => {
                 let mut sum = Strings::new();
                 for inner in terms {
@@ -167,7 +186,8 @@ impl Expander<'_> {
             }
             OperatorNode::Dyad(ket, bra) => {
                 let left = self.ket(ket, arguments)?;
-                let right = adjoints(self.ket(bra, arguments)?);
+                let right = self.ket(bra, arguments)?;
+                let right = self.adjoints(right);
                 self.joined(left, right, place)
             }
             OperatorNode::Resolvent(linear) => self.function_of_h(None, linear, arguments, place),

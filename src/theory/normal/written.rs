@@ -58,7 +58,7 @@ impl Expander<'_> {
             Some(SymbolMeaning::Energy(state)) => {
                 Term::new(ScalarNode::Energy(state.term.clone()), place, format!("E({})", state.name))
             }
-            Some(SymbolMeaning::Sum(sum)) => self.term(sum, place),
+            Some(SymbolMeaning::Sum(sum) | SymbolMeaning::Held(sum)) => self.term(sum, place),
             Some(SymbolMeaning::Function(function, inner)) => {
                 Term::new(ScalarNode::Function(*function, self.term(inner, place)), place, symbol)
             }
