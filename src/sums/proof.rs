@@ -2,6 +2,7 @@
 
 use super::evaluator::Evaluator;
 use crate::angular::verdict::{Verdict, Whole, analyse};
+use crate::theory::normal::Conjugated;
 use crate::theory::terms::ScalarTerm;
 
 /// Chains named in a reason.
@@ -34,7 +35,12 @@ impl Evaluator<'_> {
 
     fn proof(&mut self, term: &ScalarTerm) -> Option<Proof> {
         let effort = self.effort.clone();
-        let normal = self.expander(&effort).expand(term).ok()?;
+        let mut expander = self.expander(&effort);
+        let normal = expander.expand(term).ok()?;
+        // the conjugate of what need not be real is not known
+        if expander.conjugated() != Conjugated::default() {
+            return None;
+        }
         if normal.terms.is_empty() {
             return Some(Proof::Cancels("the terms of the expression cancel".into()));
         }
